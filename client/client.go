@@ -1,0 +1,2 @@
+// Package client is the Go client of a wideberth service.
+package client

@@ -1,0 +1,269 @@
+package planner
+
+import (
+	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+)
+
+// Body is what moves: a disc about its reference point. Lengths are whole
+// micrometres; speeds m/s, braking m/s², times s.
+type Body struct {
+	Name        string
+	RadiusUm    int64 // half the width at its widest, load included
+	MarginUm    int64 // kept free beyond the radius
+	PreferredUm int64 // the wide berth; at least Required
+	MaxSpeed    float64
+	Braking     float64
+	Reaction    float64
+	SensingUm   int64 // 0: not said
+}
+
+// Required is the clearance the body's centre needs: radius plus margin.
+func (b Body) Required() int64 { return b.RadiusUm + b.MarginUm }
+
+// Pose is a place and the direction faced there, radians in (-pi, pi].
+type Pose struct {
+	At      geom.Point
+	Heading float64
+}
+
+// Preference is what a route should be.
+type Preference uint8
+
+// The preferences.
+const (
+	Balanced Preference = iota // metres below the preferred clearance cost more
+	Shortest                   // as short as the required clearance allows
+)
+
+// Roadmap is which roadmap is searched.
+type Roadmap uint8
+
+// The roadmaps.
+const (
+	Auto Roadmap = iota
+	Grid4
+	Grid8
+	Quadtree
+)
+
+// Options say how to plan. The zero value is a balanced plan on the default roadmap
+// with TightWeight 0; callers fill in the defaults they document.
+type Options struct {
+	Preference      Preference
+	Roadmap         Roadmap
+	KeepRoadmapPath bool    // no straightening
+	TightWeight     float64 // balanced: extra cost of a metre below PreferredUm
+	TightBelowUm    int64   // a leg is tight where clearance is below this
+	MaxSpacingUm    int64   // most distance between two route points; 0: no bound
+}
+
+// Request asks for a route for Body from Start to Goal.
+type Request struct {
+	Body        Body
+	Start, Goal Pose
+	Options     Options
+}
+
+// Counters say how much a search did.
+type Counters struct{ Expanded, Queued, SightChecks, ExactChecks int64 }
+
+// SpeedCause says why an advised speed ceiling is what it is.
+type SpeedCause uint8
+
+// The causes.
+const (
+	CauseBody SpeedCause = iota + 1
+	CauseZone
+	CauseRoom
+)
+
+// RoutePoint is a point of a route.
+type RoutePoint struct {
+	At           geom.Point
+	Heading      float64 // of travel leaving this point; at the goal, the goal's own
+	S            float64 // micrometres along the route from its start
+	ClearanceUm  int64   // rounded down, at most the floor's cap
+	SpeedCeiling float64 // m/s
+	SpeedCause   SpeedCause
+}
+
+// Leg is a stretch of a route that is tight throughout or open throughout. The
+// last point of a leg is the first of the next.
+type Leg struct {
+	Tight           bool
+	Points          []RoutePoint
+	LengthUm        float64
+	DurationS       float64
+	SmallestUm      int64 // smallest clearance, rounded down, at most the cap
+	SmallestAt      geom.Point
+	SmallestS       float64
+	LeftUm, RightUm int64  // free width at SmallestAt, from the centre line, at most the cap
+	Nearest         string // feature nearest at SmallestAt; "" for a cell or the border
+	SpeedCeiling    float64
+	SpeedCause      SpeedCause
+	BeyondSensing   bool // somewhere no solid is within the body's sensing range
+}
+
+// BoundKind says what is known of how good a route is.
+type BoundKind uint8
+
+// The kinds of bound.
+const (
+	RoadmapOptimum       BoundKind = iota + 1 // its cost is the least over the searched roadmap
+	AtMostRoadmapOptimum                      // straightened: at most that
+	Straight                                  // the straight line: nothing is shorter
+)
+
+// Bound says how good a route is and what the roadmap may have missed.
+type Bound struct {
+	Kind             BoundKind
+	LowerUm          float64 // no route whatever is shorter
+	WidthBiasUm      int64   // a passage up to this much wider than 2·Required may be missed
+	ClearanceShortUm int64   // reported clearances are at most this much below the truth
+}
+
+// Route is a checked way from Start to Goal.
+type Route struct {
+	Start, Goal Pose
+	Legs        []Leg
+	LengthUm    float64
+	DurationS   float64
+	CostUm      float64 // what the preference minimises
+	SmallestUm  int64
+	SmallestAt  geom.Point
+	Bound       Bound
+}
+
+// RefusalReason says why there is no route.
+type RefusalReason uint8
+
+// The reasons.
+const (
+	StartBlocked RefusalReason = iota + 1
+	GoalBlocked
+	NoPassage
+	OutOfTime
+)
+
+// BlockedEnd describes an end that cannot be stood on.
+type BlockedEnd struct {
+	At          geom.Point
+	ClearanceUm int64
+	RequiredUm  int64
+	ClosedZone  string // "" when clearance is the cause
+	Nearest     string
+	HasFree     bool // whether NearestFree was found within twice the cap
+	NearestFree geom.Point
+	DistanceUm  float64
+	Bearing     float64
+}
+
+// Bottleneck is the narrowest place on the widest way.
+type Bottleneck struct {
+	Exists       bool
+	At           geom.Point
+	WidthUm      int64 // rounded down
+	WidthShortUm int64 // how far WidthUm may be short of the truth
+	NeededUm     int64
+	Features     []string
+	Zone         string
+}
+
+// Refusal says why there is no route.
+type Refusal struct {
+	Reason     RefusalReason
+	Blocked    *BlockedEnd // StartBlocked, GoalBlocked
+	Bottleneck *Bottleneck // NoPassage
+}
+
+// Answer is a route or a refusal, never both, never neither.
+type Answer struct {
+	Route    *Route
+	Refusal  *Refusal
+	Counters Counters
+}
+
+// ReplanRequest asks what becomes of a route that is being driven.
+type ReplanRequest struct {
+	Previous    []geom.Point // the old route's points in order, two or more
+	Old         *floor.Map   // the version it was checked against; nil when not held any more
+	OldBody     Body
+	OldGoal     Pose
+	OldOptions  Options
+	Request     Request // the question now; Request.Start is the robot's pose
+	SwitchShare float64 // keep the old route unless a new one is cheaper by more than this share
+}
+
+// ReplanCause says why an old route was not kept.
+type ReplanCause uint8
+
+// The causes. The zero value means it was kept.
+const (
+	Cut ReplanCause = iota + 1
+	Cheaper
+	QuestionChanged
+	OffRoute
+	VersionGone
+)
+
+// ReplanAnswer is the answer to a ReplanRequest. Kept says whether Answer.Route
+// is the old route trimmed to the pose.
+type ReplanAnswer struct {
+	Answer
+	Kept  bool
+	Cause ReplanCause
+	CutS  float64 // where a change cuts the old route, micrometres along it
+}
+
+// GuideSetup is what a guided robot drives by.
+type GuideSetup struct {
+	Body         Body
+	Route        []geom.Point // two or more
+	HintBelowUm  int64
+	QuietAboveUm int64
+	OffRouteUm   int64
+}
+
+// GuideReport is where a guided robot says it is.
+type GuideReport struct {
+	Pose     Pose
+	SpreadUm int64
+	Speed    float64 // m/s along the heading
+	Hinting  bool    // whether hints were on at the last report
+	Stale    bool    // whether a newer version touches the rest of the route
+}
+
+// GuideState is what to make of a robot's surroundings.
+type GuideState uint8
+
+// The states. The zero value means hold.
+const (
+	Hold GuideState = iota
+	Clear
+	Hinting
+	ReplanAdvised
+)
+
+// Rejoin is where to go back to the route.
+type Rejoin struct {
+	At       geom.Point
+	S        float64
+	OffRoute float64
+	Bearing  float64
+	Clear    bool
+}
+
+// Hint is the advice for one report.
+type Hint struct {
+	State        GuideState
+	Hinting      bool // to be handed back with the next report
+	Explanation  string
+	ClearanceUm  int64
+	Bearing      float64 // to the nearest solid, floor frame
+	Nearest      string
+	FreeTravelUm int64
+	SpeedCeiling float64
+	SpeedCause   SpeedCause
+	Rejoin       *Rejoin
+}
