@@ -6,6 +6,12 @@
 // coordinates are exact and a wall 0.45 m away is 450,000 away, not
 // 449,999.99999. Metres exist only at the doors (the wire, files, pictures).
 // x runs right, y up, angles in radians counter-clockwise from +x.
+//
+// Predicates (Orient, SegmentsTouch, InPolygon, CheckPolygon) are exact: they
+// never answer wrongly because of rounding. Distances are exact between
+// axis-aligned things and within RelativeError otherwise. All functions are
+// pure, give the same bits on every machine, and may be called from any number
+// of goroutines.
 package geom
 
 import "math"
