@@ -1,2 +1,0 @@
-// Package client is the Go client of a wideberth service.
-package client
