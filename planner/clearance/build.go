@@ -1,0 +1,266 @@
+package clearance
+
+import (
+	"context"
+	"runtime"
+	"sync"
+	"sync/atomic"
+
+	"example.com/wideberth/mapstore/floor"
+)
+
+// Windows are computed in tiles, so that scratch space stays small and tiles can be
+// shared out; no value depends on how a window is cut.
+const (
+	tileWidth  = 4096 // vertices; keeps squared columns within 32 bits
+	tileHeight = 256
+	// buildWorkers is the most goroutines Build uses. Every tile writes blocks of its
+	// own, so their order does not matter.
+	buildWorkers = 2
+)
+
+// Build makes the field of one version from scratch, in time linear in the number
+// of cells. The error is ctx's.
+func Build(ctx context.Context, m *floor.Map) (*Field, error) {
+	f := frame(m)
+	nbx, nby := (f.cols+blockMask)>>blockShift, (f.rows+blockMask)>>blockShift
+	f.bits = newTable[*cellBits](nbx, nby)
+	f.barred = newTable[*cellBits](nbx, nby)
+	f.sums = newTable[*summary](nbx, nby)
+	f.buckets = newTable[bucket](nbx, nby)
+	f.values = newTable[*vertexBlock](f.cols>>blockShift+1, f.rows>>blockShift+1)
+	for n := max(nbx, nby); ; n = (n + 1) / 2 {
+		k := len(f.pyramid)
+		f.pyramid = append(f.pyramid, newTable[span]((nbx+1<<k-1)>>k, (nby+1<<k-1)>>k))
+		if n == 1 {
+			break
+		}
+	}
+	for by := range nby {
+		if ctx.Err() != nil {
+			return nil, ctx.Err()
+		}
+		for bx := range nbx {
+			f.bits.set(bx, by, f.readBits(bx, by))
+		}
+	}
+	for ft := range m.Features() {
+		if ft.Kind == floor.Solid {
+			f.enter(newSolid(ft), true)
+		}
+	}
+	tiles := window{0, 0, f.cols + 1, f.rows + 1}.tiles()
+	if err := f.shareOut(ctx, len(tiles), func(s *scratch, k int) error {
+		return f.compute(ctx, s, tiles[k], nil)
+	}); err != nil {
+		return nil, err
+	}
+	if err := f.shareOut(ctx, nby, func(s *scratch, by int) error {
+		for bx := range nbx {
+			f.barred.set(bx, by, f.bar(s, bx, by))
+			f.sums.set(bx, by, f.summarize(bx, by))
+		}
+		return nil
+	}); err != nil {
+		return nil, err
+	}
+	for by := range nby {
+		for bx := range nbx {
+			f.pyramid[0].set(bx, by, f.blockSpan(bx, by))
+		}
+	}
+	for k := 1; k < len(f.pyramid); k++ {
+		for y := range f.pyramid[k].ny {
+			for x := range f.pyramid[k].nx {
+				f.pyramid[k].set(x, y, f.joinSpan(k, x, y))
+			}
+		}
+	}
+	f.freeze()
+	return f, nil
+}
+
+func (f *Field) freeze() {
+	f.bits.freeze()
+	f.barred.freeze()
+	f.sums.freeze()
+	f.buckets.freeze()
+	f.values.freeze()
+	for k := range f.pyramid {
+		f.pyramid[k].freeze()
+	}
+}
+
+// joinSpan is the pyramid's entry (x, y) at level k, from the level below.
+func (f *Field) joinSpan(k, x, y int) span {
+	low := &f.pyramid[k-1]
+	sp := emptySpan
+	for q := range 4 {
+		if cx, cy := 2*x+q&1, 2*y+q>>1; cx < low.nx && cy < low.ny {
+			sp = sp.with(low.at(cx, cy))
+		}
+	}
+	return sp
+}
+
+// readBits is the solid cells of block (bx, by), nil when there are none.
+func (f *Field) readBits(bx, by int) *cellBits {
+	var words cellBits
+	any, all := f.m.SolidBits(bx, by, (*[blockSize]uint64)(&words))
+	switch {
+	case !any:
+		return nil
+	case all && words == *fullBits:
+		return fullBits
+	}
+	return &words
+}
+
+// scratch is what one worker works with.
+type scratch struct {
+	raster transformer
+	vector vectorizer
+	out    []int32
+	spans  []float64
+}
+
+// shareOut does n jobs on a few goroutines and gives the error of the first job that
+// failed.
+func (f *Field) shareOut(ctx context.Context, n int, job func(*scratch, int) error) error {
+	errs := make([]error, n)
+	var next atomic.Int64
+	var stop atomic.Bool
+	work := func() {
+		s := &scratch{raster: transformer{lad: f.lad}}
+		for !stop.Load() {
+			k := int(next.Add(1)) - 1
+			if k >= n {
+				return
+			}
+			if errs[k] = ctx.Err(); errs[k] == nil {
+				errs[k] = job(s, k)
+			}
+			if errs[k] != nil {
+				stop.Store(true)
+			}
+		}
+	}
+	var wg sync.WaitGroup
+	for range min(buildWorkers, runtime.GOMAXPROCS(0), n) - 1 {
+		wg.Go(work)
+	}
+	work()
+	wg.Wait()
+	for _, err := range errs {
+		if err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// tiles cuts w at multiples of the tile size.
+func (w window) tiles() []window {
+	var ts []window
+	for j := w.j0; j < w.j1; j = (j/tileHeight + 1) * tileHeight {
+		for i := w.i0; i < w.i1; i = (i/tileWidth + 1) * tileWidth {
+			ts = append(ts, w.intersect(window{i, j, (i/tileWidth + 1) * tileWidth, (j/tileHeight + 1) * tileHeight}))
+		}
+	}
+	return ts
+}
+
+// compute works out the values of w, which lies within one tile, and keeps those that
+// are new. changed, when not nil, is told which vertex blocks got other values.
+func (f *Field) compute(ctx context.Context, s *scratch, w window, changed func(bx, by int)) error {
+	s.out = grow(s.out, w.vertices())
+	if err := s.raster.raster(ctx, f, w, s.out); err != nil {
+		return err
+	}
+	s.vector.apply(f, w, s.out)
+	for by := w.j0 >> blockShift; by<<blockShift < w.j1; by++ {
+		for bx := w.i0 >> blockShift; bx<<blockShift < w.i1; bx++ {
+			if f.keep(w, s.out, bx, by) && changed != nil {
+				changed(bx, by)
+			}
+		}
+	}
+	return nil
+}
+
+// keep stores the part of w's values that belongs to vertex block (bx, by) and says
+// whether anything differs from before. Blocks that are 0 or the cap throughout
+// are shared ones.
+func (f *Field) keep(w window, out []int32, bx, by int) bool {
+	block := window{bx << blockShift, by << blockShift, (bx + 1) << blockShift, (by + 1) << blockShift}
+	whole := block.intersect(window{0, 0, f.cols + 1, f.rows + 1})
+	sub := block.intersect(w)
+	old := f.values.at(bx, by)
+	if old != nil && !f.differs(w, sub, out, old) {
+		return false
+	}
+	if sub == whole {
+		if v := out[(sub.j0-w.j0)*w.width()+sub.i0-w.i0]; v == 0 || int64(v) == f.cap {
+			shared := zeroBlock
+			if v != 0 {
+				shared = f.capBlock
+			}
+			if !f.differs(w, sub, out, shared) {
+				f.values.set(bx, by, shared)
+				return true
+			}
+		}
+	}
+	b := new(vertexBlock)
+	if old != nil {
+		f.copyBlock(b, old, whole)
+	}
+	for j := sub.j0; j < sub.j1; j++ {
+		at := (j-w.j0)*w.width() - w.i0
+		copy(b[(j&blockMask)<<blockShift+sub.i0&blockMask:], out[at+sub.i0:at+sub.i1])
+	}
+	if old != nil && sub != whole {
+		b = f.shareIfUniform(b, whole)
+	}
+	f.values.set(bx, by, b)
+	return true
+}
+
+// copyBlock copies the part of a block that is on the lattice; the rest stays 0.
+func (f *Field) copyBlock(dst, src *vertexBlock, whole window) {
+	for j := range whole.height() {
+		copy(dst[j<<blockShift:j<<blockShift+whole.width()], src[j<<blockShift:])
+	}
+}
+
+func (f *Field) shareIfUniform(b *vertexBlock, whole window) *vertexBlock {
+	v := b[0]
+	if v != 0 && int64(v) != f.cap {
+		return b
+	}
+	for j := range whole.height() {
+		for _, c := range b[j<<blockShift : j<<blockShift+whole.width()] {
+			if c != v {
+				return b
+			}
+		}
+	}
+	if v == 0 {
+		return zeroBlock
+	}
+	return f.capBlock
+}
+
+func (f *Field) differs(w, sub window, out []int32, b *vertexBlock) bool {
+	for j := sub.j0; j < sub.j1; j++ {
+		at := (j-w.j0)*w.width() - w.i0
+		row := out[at+sub.i0 : at+sub.i1]
+		is := b[(j&blockMask)<<blockShift+sub.i0&blockMask:][:len(row)]
+		for k, v := range row {
+			if is[k] != v {
+				return true
+			}
+		}
+	}
+	return false
+}

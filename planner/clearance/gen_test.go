@@ -1,0 +1,240 @@
+package clearance
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"testing"
+
+	"pgregory.net/rapid"
+
+	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+)
+
+func mustMap(t testing.TB, s floor.Settings, edits ...floor.Edit) *floor.Map {
+	t.Helper()
+	m, err := floor.New(s)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return mustApply(t, m, edits...)
+}
+
+func mustApply(t testing.TB, m *floor.Map, edits ...floor.Edit) *floor.Map {
+	t.Helper()
+	if len(edits) == 0 {
+		return m
+	}
+	m, err := m.Apply(edits)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return m
+}
+
+func mustBuild(t testing.TB, m *floor.Map) *Field {
+	t.Helper()
+	f, err := Build(context.Background(), m)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return f
+}
+
+func mustAdvance(t testing.TB, f *Field, m *floor.Map) *Field {
+	t.Helper()
+	g, err := f.Advance(context.Background(), m, floor.Diff(f.Map(), m))
+	if err != nil {
+		t.Fatal(err)
+	}
+	return g
+}
+
+// genSettings draws a small floor. Odd resolutions and origins keep cells off round
+// numbers; caps that are no whole number of cells exercise the last rung.
+func genSettings(t *rapid.T, most int) floor.Settings {
+	res := rapid.SampledFrom([]int64{1000, 50_000, 49_999, 77_777}).Draw(t, "resolution")
+	cells := rapid.IntRange(2, 14).Draw(t, "cap cells")
+	return floor.Settings{
+		ResolutionUm: res,
+		Columns:      rapid.IntRange(1, most).Draw(t, "columns"),
+		Rows:         rapid.IntRange(1, most).Draw(t, "rows"),
+		OriginX:      rapid.Int64Range(-3_000_000, 3_000_000).Draw(t, "origin x"),
+		OriginY:      rapid.Int64Range(-3_000_000, 3_000_000).Draw(t, "origin y"),
+		CapUm:        int64(cells)*res + rapid.Int64Range(0, res-1).Draw(t, "cap rest"),
+
+		UnknownIsFree: rapid.Bool().Draw(t, "unknown is free"),
+		OpenBorder:    rapid.Bool().Draw(t, "open border"),
+		Initial:       rapid.SampledFrom([]floor.Occupancy{floor.Free, floor.Free, floor.Free, floor.Unknown}).Draw(t, "initial"),
+	}
+}
+
+// genPoint draws a point about the floor: on the lattice, or anywhere, a little beyond
+// the border too.
+func genPoint(t *rapid.T, s floor.Settings, beyond int64) geom.Point {
+	x := rapid.Int64Range(-beyond, int64(s.Columns)*s.ResolutionUm+beyond).Draw(t, "x")
+	y := rapid.Int64Range(-beyond, int64(s.Rows)*s.ResolutionUm+beyond).Draw(t, "y")
+	if rapid.Bool().Draw(t, "on lattice") {
+		x, y = x/s.ResolutionUm*s.ResolutionUm, y/s.ResolutionUm*s.ResolutionUm
+	}
+	return geom.Point{X: float64(s.OriginX + x), Y: float64(s.OriginY + y)}
+}
+
+// genSolid draws a polygon (with a hole at times), a polyline or a disc.
+func genSolid(t *rapid.T, s floor.Settings) floor.Feature {
+	ft := floor.Feature{Kind: floor.Solid, Name: fmt.Sprintf("s%d", rapid.IntRange(0, 5).Draw(t, "name"))}
+	if rapid.IntRange(0, 3).Draw(t, "tolerant") == 0 {
+		ft.ToleranceUm = rapid.Int64Range(1, s.ResolutionUm).Draw(t, "tolerance")
+	}
+	switch rapid.IntRange(0, 2).Draw(t, "shape") {
+	case 0:
+		ft.Shape = floor.NewPolygon(genPolygon(t, s), ft.ToleranceUm)
+	case 1:
+		ft.WidthUm = rapid.Int64Range(1, 2*s.ResolutionUm).Draw(t, "width")
+		var chain []geom.Point
+		for range rapid.IntRange(2, 4).Draw(t, "points") {
+			chain = append(chain, genPoint(t, s, s.CapUm))
+		}
+		ft.Shape = floor.NewPolyline(chain, ft.WidthUm, ft.ToleranceUm)
+	default:
+		ft.RadiusUm = rapid.Int64Range(1, 3*s.ResolutionUm).Draw(t, "radius")
+		ft.Shape = floor.NewDisc(genPoint(t, s, s.CapUm), ft.RadiusUm, ft.ToleranceUm)
+	}
+	return ft
+}
+
+func genPolygon(t *rapid.T, s floor.Settings) [][]geom.Point {
+	o := genPoint(t, s, s.CapUm)
+	w := float64(rapid.Int64Range(1, 20*s.ResolutionUm).Draw(t, "w"))
+	h := float64(rapid.Int64Range(1, 20*s.ResolutionUm).Draw(t, "h"))
+	if rapid.Bool().Draw(t, "on lattice") {
+		h = math.Ceil(h/float64(s.ResolutionUm)) * float64(s.ResolutionUm)
+		w = math.Ceil(w/float64(s.ResolutionUm)) * float64(s.ResolutionUm)
+	}
+	at := func(x, y float64) geom.Point { return geom.Point{X: o.X + math.Round(x*w), Y: o.Y + math.Round(y*h)} }
+	switch rapid.IntRange(0, 2).Draw(t, "polygon") {
+	case 0:
+		return [][]geom.Point{{at(0, 0), at(1, 0), at(1, 1), at(0, 1)}}
+	case 1: // an L, clockwise
+		return [][]geom.Point{{at(0, 0), at(0, 2), at(1, 2), at(1, 1), at(2, 1), at(2, 0)}}
+	}
+	w, h = 4*w, 4*h // oblique, with a hole
+	return [][]geom.Point{
+		{at(0.5, 0), at(1, 0.5), at(0.5, 1), at(0, 0.5)},
+		{at(0.4, 0.4), at(0.6, 0.4), at(0.5, 0.6)},
+	}
+}
+
+// genEdits draws a patch that applies to m.
+func genEdits(t *rapid.T, m *floor.Map) []floor.Edit {
+	s := m.Settings()
+	var edits []floor.Edit
+	gone := map[string]bool{}
+	for range rapid.IntRange(1, 3).Draw(t, "edits") {
+		switch rapid.IntRange(0, 4).Draw(t, "edit") {
+		case 0, 1:
+			r := genCells(t, s)
+			fill := rapid.SampledFrom([]floor.Occupancy{floor.Free, floor.Occupied, floor.Occupied, floor.Unknown}).Draw(t, "fill")
+			edits = append(edits, floor.Edit{Kind: floor.PaintRect, Rect: r, Fill: fill})
+		case 2:
+			edits = append(edits, floor.Edit{Kind: floor.ClearRect, Rect: genCells(t, s)})
+		case 3:
+			var names []string
+			for ft := range m.Features() {
+				if !gone[ft.Name] {
+					names = append(names, ft.Name)
+				}
+			}
+			if len(names) == 0 {
+				continue
+			}
+			name := rapid.SampledFrom(names).Draw(t, "removed")
+			gone[name] = true
+			edits = append(edits, floor.Edit{Kind: floor.RemoveFeature, Name: name})
+		default:
+			ft := genSolid(t, s)
+			gone[ft.Name] = true // one edit a name
+			edits = append(edits, floor.Edit{Kind: floor.PutFeature, Feature: &ft})
+		}
+	}
+	return edits
+}
+
+func genCells(t *rapid.T, s floor.Settings) floor.CellRect {
+	x := rapid.IntRange(0, s.Columns-1).Draw(t, "column")
+	y := rapid.IntRange(0, s.Rows-1).Draw(t, "row")
+	return floor.CellRect{
+		X0: x, Y0: y,
+		X1: min(s.Columns, x+rapid.IntRange(1, 6).Draw(t, "across")),
+		Y1: min(s.Rows, y+rapid.IntRange(1, 6).Draw(t, "up")),
+	}
+}
+
+// tryApply applies edits that may be refused (a polygon that rounds to nothing).
+func tryApply(t *rapid.T, m *floor.Map, edits []floor.Edit) *floor.Map {
+	if len(edits) == 0 {
+		return m
+	}
+	next, err := m.Apply(edits)
+	if err != nil {
+		t.Logf("refused: %v", err)
+		return m
+	}
+	return next
+}
+
+// genMap draws a floor and a few patches on it.
+func genMap(t *rapid.T, most int) *floor.Map {
+	m, err := floor.New(genSettings(t, most))
+	if err != nil {
+		t.Fatal(err)
+	}
+	for range rapid.IntRange(0, 3).Draw(t, "patches") {
+		m = tryApply(t, m, genEdits(t, m))
+	}
+	return m
+}
+
+// plainAt is the clearance at p by looking at every solid in turn: the twin that
+// shares nothing with the field.
+func plainAt(m *floor.Map, p geom.Point) float64 {
+	return plainOver(m, func(r geom.Rect) float64 { return r.Dist(p) }, func(s *floor.Shape) float64 { d, _ := s.Dist(p); return d }, geom.Rect{Min: p, Max: p})
+}
+
+// plainRect is the smallest clearance over a closed rectangle, plainly.
+func plainRect(m *floor.Map, q geom.Rect) float64 {
+	return plainOver(m, func(r geom.Rect) float64 {
+		dx := max(0, r.Min.X-q.Max.X, q.Min.X-r.Max.X)
+		dy := max(0, r.Min.Y-q.Max.Y, q.Min.Y-r.Max.Y)
+		return geom.Dist(geom.Point{X: dx}, geom.Point{Y: dy})
+	}, func(s *floor.Shape) float64 { return s.RectDist(q) }, q)
+}
+
+// plainSegment is the smallest clearance over a closed segment, plainly.
+func plainSegment(m *floor.Map, a, b geom.Point) float64 {
+	return plainOver(m, func(r geom.Rect) float64 { return geom.RectSegmentDist(r, a, b) },
+		func(s *floor.Shape) float64 { d, _ := s.SegmentDist(a, b); return d }, geom.BoundsOf(a, b))
+}
+
+func plainOver(m *floor.Map, cell func(geom.Rect) float64, shape func(*floor.Shape) float64, extent geom.Rect) float64 {
+	s := m.Settings()
+	d := float64(s.CapUm)
+	if !s.OpenBorder {
+		b := m.Bounds()
+		d = min(d, extent.Min.X-b.Min.X, b.Max.X-extent.Max.X, extent.Min.Y-b.Min.Y, b.Max.Y-extent.Max.Y)
+	}
+	for r := range s.Rows {
+		for c := range s.Columns {
+			if m.Solid(c, r) {
+				d = min(d, cell(s.CellBounds(floor.CellRect{X0: c, Y0: r, X1: c + 1, Y1: r + 1})))
+			}
+		}
+	}
+	for ft := range m.Features() {
+		if ft.Kind == floor.Solid {
+			d = min(d, shape(&ft.Shape))
+		}
+	}
+	return max(0, d)
+}

@@ -1,0 +1,197 @@
+package clearance
+
+import (
+	"math"
+	"testing"
+
+	"pgregory.net/rapid"
+
+	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+)
+
+// TestLaw4PatchedEqualsRebuilt: a field advanced through random patches equals, bit for
+// bit, one built from scratch; the field it came from is untouched.
+func TestLaw4PatchedEqualsRebuilt(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := genMap(t, 150)
+		f := buildT(t, m)
+		for range rapid.IntRange(1, 4).Draw(t, "steps") {
+			next := tryApply(t, m, genEdits(t, m))
+			g, err := f.Advance(t.Context(), next, floor.Diff(m, next))
+			if err != nil {
+				t.Fatal(err)
+			}
+			if again := buildT(t, next); !g.Equal(again) {
+				t.Fatalf("patched differs from rebuilt")
+			}
+			if !f.Equal(buildT(t, m)) {
+				t.Fatalf("advancing changed the field it started from")
+			}
+			m, f = next, g
+		}
+	})
+}
+
+func buildT(t *rapid.T, m *floor.Map) *Field {
+	f, err := Build(t.Context(), m)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return f
+}
+
+// TestLaw5NeverOverstated: at every vertex, the field is the distance to all solids
+// looked at one by one, rounded down: never above it and less than 1 µm below.
+func TestLaw5NeverOverstated(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := genMap(t, 40)
+		f := buildT(t, m)
+		s := m.Settings()
+		for j := range s.Rows + 1 {
+			for i := range s.Columns + 1 {
+				want := plainAt(m, s.Vertex(i, j))
+				if got := f.Vertex(i, j); float64(got) != math.Floor(want) {
+					t.Fatalf("vertex (%d, %d): %d, want floor of %v", i, j, got, want)
+				}
+			}
+		}
+	})
+}
+
+// TestCellsAreExact: CellLower never exceeds the smallest clearance over the closed
+// cell; CellClear is exactly that clearance compared; ClearBits and Node.Kind say
+// the same.
+func TestCellsAreExact(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := genMap(t, 70)
+		f := buildT(t, m)
+		s := m.Settings()
+		um := rapid.Int64Range(1, s.CapUm).Draw(t, "um")
+		if rapid.Bool().Draw(t, "whole cells") {
+			um = max(s.ResolutionUm, um/s.ResolutionUm*s.ResolutionUm)
+		}
+		var words, zero [blockSize]uint64
+		for k := range 12 {
+			c, r := rapid.IntRange(0, s.Columns-1).Draw(t, "c"), rapid.IntRange(0, s.Rows-1).Draw(t, "r")
+			cell := s.CellBounds(floor.CellRect{X0: c, Y0: r, X1: c + 1, Y1: r + 1})
+			want := plainRect(m, cell)
+			if low := f.CellLower(c, r); float64(low) > want {
+				t.Fatalf("cell (%d, %d): lower bound %d above %v", c, r, low, want)
+			}
+			if k < 4 {
+				um = min(s.CapUm, max(1, int64(want)+int64(k)-1)) // at the edge of admittance
+			}
+			got := f.CellClear(c, r, um)
+			if got != (want >= float64(um)) {
+				t.Fatalf("cell (%d, %d) at %d: %v, but its clearance is %v", c, r, um, got, want)
+			}
+			f.ClearBits(c>>6, r>>6, um, &words)
+			f.ClearBits(c>>6, r>>6, 0, &zero)
+			for y := range blockSize {
+				for x := range blockSize {
+					cc, rr := c&^63+x, r&^63+y
+					if (words[y]>>x&1 == 1) != f.CellClear(cc, rr, um) || (zero[y]>>x&1 == 1) != f.CellClear(cc, rr, 0) {
+						t.Fatalf("ClearBits differs from CellClear at (%d, %d)", cc, rr)
+					}
+				}
+			}
+			if kind := f.node(0, c, r).Kind(um); (kind == Free) != got || kind == Mixed {
+				t.Fatalf("node of cell (%d, %d) at %d: %v", c, r, um, kind)
+			}
+		}
+	})
+}
+
+// TestFreeAtZero: at um = 0 a cell is free when nothing solid comes into its open square,
+// judged by the shrunken square: a solid that only touches from outside leaves it
+// free, one that comes in by a micrometre's hundredth does not.
+func TestFreeAtZero(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := genMap(t, 40)
+		f := buildT(t, m)
+		s := m.Settings()
+		for r := range s.Rows {
+			for c := range s.Columns {
+				cell := s.CellBounds(floor.CellRect{X0: c, Y0: r, X1: c + 1, Y1: r + 1})
+				free := !m.Solid(c, r)
+				for ft := range m.Features() {
+					free = free && ft.Shape.RectDist(cell.Grow(-0.01)) > 0
+				}
+				if got := f.CellClear(c, r, 0); got && !free {
+					t.Fatalf("cell (%d, %d): %v, want %v", c, r, got, free)
+				} else if !got && free {
+					// Only solids that end within 0.01 µm of the cell's border, without
+					// merely touching it, may do that.
+					touches := false
+					for ft := range m.Features() {
+						touches = touches || ft.Shape.RectDist(cell) == 0
+					}
+					if !touches {
+						t.Fatalf("cell (%d, %d): %v, want %v", c, r, got, free)
+					}
+				}
+			}
+		}
+	})
+}
+
+// within says whether two lengths agree to a thousandth of a micrometre: far more
+// than geom.RelativeError times any length here, far less than what is reported.
+func within(a, b float64) bool { return math.Abs(a-b) <= 1e-3 }
+
+// TestQueriesAgainstAllSolids: At, Segment and SegmentClear against every solid in turn.
+func TestQueriesAgainstAllSolids(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := genMap(t, 90)
+		f := buildT(t, m)
+		s := m.Settings()
+		for range 6 {
+			a, b := genPoint(t, s, s.ResolutionUm), genPoint(t, s, s.ResolutionUm)
+			if rapid.Bool().Draw(t, "short") {
+				b = geom.Point{X: a.X + math.Round((b.X-a.X)/16), Y: a.Y + math.Round((b.Y-a.Y)/16)}
+			}
+			checkNearest(t, m, f.At(a), plainAt(m, a), a, a)
+			want := plainSegment(m, a, b)
+			checkNearest(t, m, f.Segment(a, b), want, a, b)
+			for _, um := range []int64{1, int64(want) - 1, int64(want), int64(want) + 1, rapid.Int64Range(1, s.CapUm).Draw(t, "um")} {
+				if um < 1 || um > s.CapUm {
+					continue
+				}
+				if got := f.SegmentClear(a, b, um); got != (want >= float64(um)) && math.Abs(want-float64(um)) > 1e-6 {
+					t.Fatalf("segment %v %v clear by %d: %v, clearance %v", a, b, um, got, want)
+				}
+			}
+			if got := f.SegmentClear(a, b, 0); got != (want > 0) {
+				t.Fatalf("segment %v %v clear by 0: %v, clearance %v", a, b, got, want)
+			}
+		}
+	})
+}
+
+// checkNearest checks the figure, and that the places named bear it out.
+func checkNearest(t *rapid.T, m *floor.Map, n Nearest, want float64, a, b geom.Point) {
+	if !within(n.Um, want) {
+		t.Fatalf("%v %v: clearance %v, want %v", a, b, n.Um, want)
+	}
+	if named := n.Feature != nil || n.Border || n.Cell; !named {
+		if n.Um != float64(m.Settings().CapUm) || n.On != (geom.Point{}) {
+			t.Fatalf("%v %v: nothing named at clearance %v", a, b, n.Um)
+		}
+		return
+	}
+	if !m.Settings().OpenBorder && n.Border && n.Um == 0 {
+		return
+	}
+	if d := geom.Dist(n.On, n.At); !within(d, n.Um) {
+		t.Fatalf("%v %v: places %v and %v are %v apart, clearance %v", a, b, n.On, n.At, d, n.Um)
+	}
+	if d, _ := geom.SegmentDist(n.On, a, b); d > 1e-3 {
+		t.Fatalf("%v %v: %v is not on it", a, b, n.On)
+	}
+	if n.Feature != nil {
+		if d, _ := n.Feature.Shape.Dist(n.At); d > 1e-3 {
+			t.Fatalf("%v %v: %v is %v off feature %s", a, b, n.At, d, n.Feature.Name)
+		}
+	}
+}

@@ -1,0 +1,280 @@
+package clearance
+
+import (
+	"math"
+
+	"example.com/wideberth/mapstore/floor"
+)
+
+// lowestKept is the lowest level kept in a summary: squares of 8x8 cells. Below it,
+// smallest and largest are read from the vertices.
+const (
+	lowestKept = 3
+	keptNodes  = 64 + 16 + 4 + 1
+)
+
+// summary holds the smallest and largest value over the closed squares of 8, 16, 32
+// and 64 cells of one block, level by level, row by row. Squares beyond the floor
+// hold an empty range.
+type summary struct{ lo, hi [keptNodes]int32 }
+
+// levelStart is where the squares of 2^level cells start in a summary.
+func levelStart(level int) int { return [...]int{0, 64, 80, 84}[level-lowestKept] }
+
+func uniformSummary(v int32) *summary {
+	s := new(summary)
+	fill(s.lo[:], v)
+	fill(s.hi[:], v)
+	return s
+}
+
+// span is a node above the blocks: smallest and largest value, and whether some and
+// whether all of its cells are barred at clearance 0.
+type span struct {
+	lo, hi   int32
+	any, all bool
+	near     bool // a vector solid may be within the cap
+}
+
+var emptySpan = span{lo: math.MaxInt32, hi: -1, all: true}
+
+func (s span) with(o span) span {
+	return span{min(s.lo, o.lo), max(s.hi, o.hi), s.any || o.any, s.all && o.all, s.near || o.near}
+}
+
+// summarize works out the summary of cell block (bx, by) from the vertices.
+func (f *Field) summarize(bx, by int) *summary {
+	if s := f.sharedSummary(bx, by); s != nil {
+		return s
+	}
+	s := new(summary)
+	fill(s.lo[:], math.MaxInt32)
+	fill(s.hi[:], -1)
+	i1, j1 := min(f.cols-bx<<blockShift, blockSize), min(f.rows-by<<blockShift, blockSize)
+	var row [blockSize + 1]int32
+	for j := 0; j <= j1; j++ {
+		f.vertexRow(bx<<blockShift, by<<blockShift+j, row[:i1+1])
+		for g := 0; g<<lowestKept < i1; g++ {
+			lo, hi := int32(math.MaxInt32), int32(-1)
+			for _, v := range row[g<<lowestKept : min(g<<lowestKept+9, i1+1)] {
+				lo, hi = min(lo, v), max(hi, v)
+			}
+			if j < j1 {
+				at := j>>lowestKept<<3 | g
+				s.lo[at], s.hi[at] = min(s.lo[at], lo), max(s.hi[at], hi)
+			}
+			if j&7 == 0 && j > 0 {
+				at := (j>>lowestKept-1)<<3 | g
+				s.lo[at], s.hi[at] = min(s.lo[at], lo), max(s.hi[at], hi)
+			} else if j == j1 {
+				at := j>>lowestKept<<3 | g
+				s.lo[at], s.hi[at] = min(s.lo[at], lo), max(s.hi[at], hi)
+			}
+		}
+	}
+	for level := lowestKept + 1; level <= blockShift; level++ {
+		n := blockSize >> level
+		from, to := levelStart(level-1), levelStart(level)
+		for y := range n {
+			for x := range n {
+				a := from + (2*y)*(2*n) + 2*x
+				b := a + 2*n
+				s.lo[to+y*n+x] = min(s.lo[a], s.lo[a+1], s.lo[b], s.lo[b+1])
+				s.hi[to+y*n+x] = max(s.hi[a], s.hi[a+1], s.hi[b], s.hi[b+1])
+			}
+		}
+	}
+	return s
+}
+
+// sharedSummary is the summary of a whole block that is uniform, else nil.
+func (f *Field) sharedSummary(bx, by int) *summary {
+	if (bx+1)<<blockShift > f.cols || (by+1)<<blockShift > f.rows {
+		return nil
+	}
+	a := f.values.at(bx, by)
+	if a != zeroBlock && a != f.capBlock {
+		return nil
+	}
+	if f.values.at(bx+1, by) != a || f.values.at(bx, by+1) != a || f.values.at(bx+1, by+1) != a {
+		return nil
+	}
+	if a == zeroBlock {
+		return f.allClose
+	}
+	return f.allCap
+}
+
+// vertexRow copies the values from vertex (i, j) to the right into dst.
+func (f *Field) vertexRow(i, j int, dst []int32) {
+	blocks := f.values.rows[j>>blockShift]
+	base := (j & blockMask) << blockShift
+	for len(dst) > 0 {
+		n := copy(dst, blocks[i>>blockShift][base+i&blockMask:base+blockSize])
+		dst = dst[n:]
+		i += n
+	}
+}
+
+// blockSpan is the pyramid's entry for cell block (bx, by).
+func (f *Field) blockSpan(bx, by int) span {
+	s := f.sums.at(bx, by)
+	sp := span{lo: s.lo[keptNodes-1], hi: s.hi[keptNodes-1], all: true, near: f.nearVector(bx, by)}
+	b := f.barred.at(bx, by)
+	if b == nil {
+		sp.all = false
+		return sp
+	}
+	w := f.width(bx)
+	for y := range min(blockSize, f.rows-by<<blockShift) {
+		sp.any = sp.any || b[y] != 0
+		sp.all = sp.all && b[y]&w == w
+	}
+	return sp
+}
+
+// width is the columns of block column bx that are on the floor, as bits.
+func (f *Field) width(bx int) uint64 {
+	if n := f.cols - bx<<blockShift; n < blockSize {
+		return 1<<n - 1
+	}
+	return allBytes
+}
+
+// Node is a square of the quadtree over the floor's cells: 2^Level cells wide, cut
+// off at the floor's edge. One tree serves every body: Min and Max are the
+// smallest and the largest clearance, rounded down, over all lattice vertices of
+// the closed node.
+type Node struct {
+	Min, Max int32
+	Level    int
+	X, Y     int // column and row of its lower left cell
+	f        *Field
+}
+
+// Root is the whole floor.
+func (f *Field) Root() Node {
+	return f.node(len(f.pyramid)-1+blockShift, 0, 0)
+}
+
+// Cells is the part of the node that is on the floor.
+func (n Node) Cells() floor.CellRect {
+	return floor.CellRect{X0: n.X, Y0: n.Y, X1: min(n.X+1<<n.Level, n.f.cols), Y1: min(n.Y+1<<n.Level, n.f.rows)}
+}
+
+// Children writes the node's children that are on the floor, in the order lower left,
+// lower right, upper left, upper right, and says how many. A cell has none.
+func (n Node) Children(dst *[4]Node) int {
+	if n.Level == 0 {
+		return 0
+	}
+	k := 0
+	half := 1 << (n.Level - 1)
+	for q := range 4 {
+		x, y := n.X+half*(q&1), n.Y+half*(q>>1)
+		if x < n.f.cols && y < n.f.rows {
+			dst[k] = n.f.node(n.Level-1, x, y)
+			k++
+		}
+	}
+	return k
+}
+
+// node is the node of that level at cell (x, y).
+func (f *Field) node(level, x, y int) Node {
+	n := Node{Level: level, X: x, Y: y, f: f}
+	switch {
+	case level >= blockShift:
+		s := f.pyramid[level-blockShift].at(x>>level, y>>level)
+		n.Min, n.Max = s.lo, s.hi
+	case level >= lowestKept:
+		s := f.sums.at(x>>blockShift, y>>blockShift)
+		at := levelStart(level) + ((y&blockMask)>>level)<<(blockShift-level) + (x&blockMask)>>level
+		n.Min, n.Max = s.lo[at], s.hi[at]
+	default:
+		n.Min, n.Max = math.MaxInt32, -1
+		for j := y; j <= min(y+1<<level, f.rows); j++ {
+			for i := x; i <= min(x+1<<level, f.cols); i++ {
+				v := f.Vertex(i, j)
+				n.Min, n.Max = min(n.Min, v), max(n.Max, v)
+			}
+		}
+	}
+	return n
+}
+
+// Kind says what whole cells of a node are.
+type Kind uint8
+
+// The kinds of node.
+const (
+	Mixed   Kind = iota // some may be clear, some may not
+	Free                // every cell is clear
+	Blocked             // no cell is clear
+)
+
+// Kind sorts the node for a clearance of um micrometres, in terms of whole cells, as
+// CellClear does: Free and Blocked are exact; Mixed means that the node must be
+// cut further. At um = 0, and at a cell, Mixed is exact too: a cell is never Mixed.
+func (n Node) Kind(um int64) Kind {
+	if um <= 0 {
+		return n.kindAtZero()
+	}
+	switch {
+	case int64(n.Max) < um:
+		return Blocked
+	case n.f.lower(n.Min, n.near()) >= um:
+		return Free
+	case n.Level > 0:
+		return Mixed
+	case n.f.CellClear(n.X, n.Y, um):
+		return Free
+	}
+	return Blocked
+}
+
+func (n Node) kindAtZero() Kind {
+	any, all := false, true
+	if n.Level >= blockShift {
+		s := n.f.pyramid[n.Level-blockShift].at(n.X>>n.Level, n.Y>>n.Level)
+		any, all = s.any, s.all
+	} else if b := n.f.barred.at(n.X>>blockShift, n.Y>>blockShift); b == nil {
+		all = false
+	} else {
+		w := (uint64(1)<<(1<<n.Level) - 1) << (n.X & blockMask) & n.f.width(n.X>>blockShift)
+		for y := n.Y & blockMask; y < min(n.Y&blockMask+1<<n.Level, n.f.rows-n.Y&^blockMask); y++ {
+			any = any || b[y]&w != 0
+			all = all && b[y]&w == w
+		}
+	}
+	switch {
+	case !any:
+		return Free
+	case all:
+		return Blocked
+	}
+	return Mixed
+}
+
+// near says whether a vector solid may be within the cap of the node.
+func (n Node) near() bool {
+	k := max(0, n.Level-blockShift)
+	return n.f.pyramid[k].at(n.X>>(blockShift+k), n.Y>>(blockShift+k)).near
+}
+
+// nearVector says whether a bucket within the cap of cell block (bx, by) holds
+// anything.
+func (f *Field) nearVector(bx, by int) bool {
+	r := f.bucketReach()
+	for y := max(0, by-r); y <= min(f.buckets.ny-1, by+r); y++ {
+		for x := max(0, bx-r); x <= min(f.buckets.nx-1, bx+r); x++ {
+			if len(f.buckets.at(x, y)) > 0 {
+				return true
+			}
+		}
+	}
+	return false
+}
+
+// bucketReach is how many buckets away a piece within the cap of a block may be.
+func (f *Field) bucketReach() int { return f.lad.reach>>blockShift + 1 }

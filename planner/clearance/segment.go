@@ -1,0 +1,229 @@
+package clearance
+
+import (
+	"math"
+
+	"example.com/wideberth/mapstore/geom"
+)
+
+// stretch is a part of a segment, as shares of its length.
+type stretch struct{ from, to float64 }
+
+// Segment is the smallest distance from any point of the closed segment ab to a
+// solid, exact but for geom.RelativeError, at most the cap, and where on the segment
+// it is reached. Ties as in At.
+func (f *Field) Segment(a, b geom.Point) Nearest {
+	n := f.At(a)
+	if m := f.At(b); m.Um < n.Um {
+		n = m
+	}
+	// The border's distance is concave inside the floor: least at an end.
+	if n.Um == 0 || a == b {
+		return n
+	}
+	var buf [16]stretch
+	need := n.Um
+	doubtful, _ := f.doubtful(a, b, &need, false, buf[:0])
+	f.pieces(a, b, doubtful, n.Um, func(s *solid, p *piece) bool {
+		d, on, q := geom.SegmentSegmentDist(a, b, p.a, p.b)
+		if d -= s.grow; d < n.Um {
+			n = nearFeature(s, max(0, d), on, q)
+		}
+		return n.Um > 0
+	})
+	if n.Um > 0 {
+		f.rowsOf(a, b, doubtful, n.Um, func(y0, y1 float64) bool {
+			f.cellsNear(a, b, y0, y1, n.Um, &n)
+			return n.Um > 0
+		})
+	}
+	return n
+}
+
+// SegmentClear says, exactly but for geom.RelativeError, whether every point of the closed
+// segment ab has at least um micrometres of clearance; touching is clear. At um =
+// 0 it says whether the segment touches no solid. For um above the cap the answer
+// is no.
+func (f *Field) SegmentClear(a, b geom.Point, um int64) bool {
+	if !finite(a) || !finite(b) || um > f.cap {
+		return false
+	}
+	if !f.open && !(f.borderClear(a, um) && f.borderClear(b, um)) {
+		return false
+	}
+	need := float64(max(um, 1))
+	var buf [16]stretch
+	doubtful, ok := f.doubtful(a, b, &need, true, buf[:0])
+	if !ok {
+		return um <= 0 && f.Segment(a, b).Um > 0
+	}
+	if len(doubtful) == 0 {
+		return true
+	}
+	for _, p := range [2]geom.Point{a, b} {
+		if f.insideArea(p) {
+			return false
+		}
+	}
+	blocks := func(d float64) bool { return d < float64(um) || d <= 0 }
+	ok = true
+	f.pieces(a, b, doubtful, need, func(s *solid, p *piece) bool {
+		// As geom.SegmentSegmentDist, without the places.
+		d, _, _ := geom.SegmentSegmentDist(a, b, p.a, p.b)
+		ok = !blocks(d - s.grow)
+		return ok
+	})
+	if ok {
+		f.rowsOf(a, b, doubtful, need, func(y0, y1 float64) bool {
+			n := Nearest{Um: need}
+			f.cellsNear(a, b, y0, y1, need, &n)
+			ok = !n.Cell || !blocks(n.Um)
+			return ok
+		})
+	}
+	return ok
+}
+
+// borderClear says whether p is um or more inside the floor.
+func (f *Field) borderClear(p geom.Point, um int64) bool {
+	d := min(p.X-f.bounds.Min.X, f.bounds.Max.X-p.X, p.Y-f.bounds.Min.Y, f.bounds.Max.Y-p.Y)
+	return d >= float64(um) && d >= 0 && (um > 0 || d > 0)
+}
+
+// insideArea says whether a polygon holds p.
+func (f *Field) insideArea(p geom.Point) bool {
+	x, y, _, _ := f.bucketRange(geom.Rect{Min: p, Max: p})
+	for _, e := range f.buckets.at(x, y) {
+		if e.area && e.s.holds(p) {
+			return true
+		}
+	}
+	return false
+}
+
+// doubtful appends the stretches of ab where the clearance may be below need.
+// Clearance is 1-Lipschitz: where the field gives more than need, the segment is
+// clear for as far as the surplus (sphere tracing; Hart, "Sphere tracing", The
+// Visual Computer 12, 1996). Upper bounds found on the way lower need; with stop
+// set they end the walk instead, and the answer is false.
+func (f *Field) doubtful(a, b geom.Point, need *float64, stop bool, dst []stretch) ([]stretch, bool) {
+	length := geom.Dist(a, b)
+	if !f.bounds.Contains(a) || !f.bounds.Contains(b) || length == 0 {
+		return append(dst, stretch{0, 1}), true
+	}
+	for s := 0.0; s <= length; {
+		t := s / length
+		p := f.bounds.Nearest(along(a, b, t))
+		least, most := f.bracket(p)
+		if most < *need {
+			if stop {
+				return dst, false
+			}
+			*need = most
+		}
+		if ahead := least - *need; ahead >= f.h/2 {
+			s += ahead
+			continue
+		}
+		// Both ways, so that neither rounding nor the jump before leaves a gap.
+		from, to := max(0, (s-roundSlack)/length), min(1, (s+f.h+roundSlack)/length)
+		if k := len(dst) - 1; k >= 0 && dst[k].to >= from {
+			dst[k].to = to
+		} else {
+			dst = append(dst, stretch{from, to})
+		}
+		s += f.h
+	}
+	return dst, true
+}
+
+// along is the point at share t of the way from a to b.
+func along(a, b geom.Point, t float64) geom.Point {
+	return geom.Point{X: a.X + float64(t*(b.X-a.X)), Y: a.Y + float64(t*(b.Y-a.Y))}
+}
+
+// pieces calls do with the pieces of vector solids that may be nearer than need to the
+// stretches of ab, some more than once, until do says no.
+func (f *Field) pieces(a, b geom.Point, ss []stretch, need float64, do func(*solid, *piece) bool) {
+	length := geom.Dist(a, b)
+	side := blockSize * f.h
+	for _, st := range ss {
+		parts := 1
+		if a.X != b.X && a.Y != b.Y {
+			// Cut oblique stretches, whose bounds would hold much else.
+			parts = int(min(math.Ceil((st.to-st.from)*length/side), float64(f.buckets.nx+f.buckets.ny))) + 1
+		}
+		for k := range parts {
+			share := (st.to - st.from) / float64(parts)
+			box := geom.BoundsOf(along(a, b, st.from+float64(k)*share), along(a, b, st.from+float64(k+1)*share)).Grow(need + roundSlack)
+			x0, y0, x1, y1 := f.bucketRange(box)
+			for y := y0; y <= y1; y++ {
+				for x := x0; x <= x1; x++ {
+					for _, e := range f.buckets.at(x, y) {
+						if !box.Intersects(e.s.bounds) {
+							continue
+						}
+						for _, i := range e.pieces {
+							p := &e.s.pieces[i]
+							if box.Intersects(geom.BoundsOf(p.a, p.b).Grow(e.s.grow)) && !do(e.s, p) {
+								return
+							}
+						}
+					}
+				}
+			}
+		}
+	}
+}
+
+// rowsOf calls do with bands of y that hold every cell nearer than need to the
+// stretches of ab, none twice, until do says no.
+func (f *Field) rowsOf(a, b geom.Point, ss []stretch, need float64, do func(y0, y1 float64) bool) {
+	sign := 1.0
+	if b.Y < a.Y {
+		sign = -1
+	}
+	done := math.Inf(-1) // in the direction of travel
+	for _, st := range ss {
+		p, q := along(a, b, st.from), along(a, b, st.to)
+		lo, hi := max(done, sign*p.Y-need-roundSlack), sign*q.Y+need+roundSlack
+		if lo > hi {
+			continue
+		}
+		done = hi
+		if !do(min(sign*lo, sign*hi), max(sign*lo, sign*hi)) {
+			return
+		}
+	}
+}
+
+// Travel is how far, in micrometres, a disc of radiusUm about p can move straight along
+// heading (radians) before its swept area touches deeper than its border: at
+// least 0, at most maxUm and never over-stated, short by at most about a
+// micrometre. 0 when the disc overlaps a solid where it stands.
+func (f *Field) Travel(p geom.Point, heading float64, radiusUm int64, maxUm int64) float64 {
+	if math.IsNaN(heading) || math.IsInf(heading, 0) || maxUm <= 0 || !f.SegmentClear(p, p, radiusUm) {
+		return 0
+	}
+	ux, uy := math.Cos(heading), math.Sin(heading)
+	at := func(s float64) geom.Point {
+		return geom.Point{X: p.X + float64(s*ux), Y: p.Y + float64(s*uy)}
+	}
+	if f.SegmentClear(p, at(float64(maxUm)), radiusUm) {
+		return float64(maxUm)
+	}
+	// Clear up to lo, not up to hi. The clearance ahead says how far lo may jump.
+	lo, hi := 0.0, float64(maxUm)
+	for hi-lo > 1 {
+		mid := lo + max(f.At(at(lo)).Um-float64(radiusUm)-roundSlack, min(f.h, (hi-lo)/2))
+		if mid >= hi {
+			mid = (lo + hi) / 2
+		}
+		if f.SegmentClear(p, at(mid), radiusUm) {
+			lo = mid
+		} else {
+			hi = mid
+		}
+	}
+	return math.Floor(lo)
+}
