@@ -35,6 +35,11 @@ type Options struct {
 	// LockTimeout is how long to wait for a file that another process holds;
 	// 0 means DefaultLockTimeout.
 	LockTimeout time.Duration
+	// AcceptLostCommit opens a file one of whose two leading pages is damaged, in the
+	// state that the other page names. When it was the newer one, the newest commit
+	// is missing: an acknowledged version, or a snapshot. Without it such a file is a
+	// *journal.CorruptError.
+	AcceptLostCommit bool
 }
 
 // Journal is one open file. It implements journal.Journal.
@@ -66,7 +71,7 @@ func Open(path string, o Options) (*Journal, error) {
 		}
 	}
 	j := &Journal{path: path, turn: make(chan struct{}, 1), refused: map[string]error{}}
-	if err := j.open(o.LockTimeout); err != nil {
+	if err := j.open(o); err != nil {
 		return nil, err
 	}
 	if err := j.inspect(); err != nil {
@@ -79,7 +84,7 @@ func Open(path string, o Options) (*Journal, error) {
 
 // open hands the file to bbolt. bbolt reads pages while it opens, so a damaged file
 // may make it panic; the file's lock is let go of then.
-func (j *Journal) open(timeout time.Duration) (err error) {
+func (j *Journal) open(o Options) (err error) {
 	var file *os.File
 	defer func() {
 		if errors.Is(err, journal.ErrCorrupt) && file != nil {
@@ -89,7 +94,7 @@ func (j *Journal) open(timeout time.Duration) (err error) {
 	}()
 	defer j.guard(&err)()
 	j.db, err = bolt.Open(j.path, fileMode, &bolt.Options{
-		Timeout:      timeout,
+		Timeout:      o.LockTimeout,
 		FreelistType: bolt.FreelistMapType,
 		NoStatistics: true,
 		OpenFile: func(name string, flag int, mode os.FileMode) (*os.File, error) {
@@ -100,7 +105,7 @@ func (j *Journal) open(timeout time.Duration) (err error) {
 	})
 	switch {
 	case errors.Is(err, bolterrors.ErrTimeout):
-		return fmt.Errorf("%w: %q, waited %v", ErrLocked, j.path, timeout)
+		return fmt.Errorf("%w: %q, waited %v", ErrLocked, j.path, o.LockTimeout)
 	case errors.Is(err, bolterrors.ErrInvalid), errors.Is(err, bolterrors.ErrChecksum),
 		errors.Is(err, bolterrors.ErrVersionMismatch):
 		return fmt.Errorf("%w: %q: both leading pages are unreadable (%v)", ErrNotJournal, j.path, err)
@@ -108,6 +113,13 @@ func (j *Journal) open(timeout time.Duration) (err error) {
 		return fmt.Errorf("%w: %q: %v", ErrNotJournal, j.path, err)
 	case err != nil:
 		return fmt.Errorf("journal %q cannot be opened: %w", j.path, err)
+	}
+	if !o.AcceptLostCommit {
+		if err := checkLead(file, j.db.Info().PageSize); err != nil {
+			j.db.Close()
+			file = nil
+			return j.named(err)
+		}
 	}
 	return nil
 }
@@ -138,7 +150,7 @@ func create(path string) error {
 		if err != nil {
 			return err
 		}
-		return b.Put(formatKey, fileMark(fileFormat))
+		return errors.Join(b.Put(formatKey, fileMark(fileFormat)), b.Put(floorSumKey, withSum(keySum{}.append(nil))))
 	})
 	if err = errors.Join(err, db.Close()); err != nil {
 		return err

@@ -5,6 +5,7 @@
 // bucket:
 //
 //	wideberth                what the file is: "format" -> mark, format, checksum
+//	                         and "floors" -> the sum over their ids
 //	floors/<id>              "head" -> newest version, its hash, the sum over requests
 //	floors/<id>/records      version, 8 bytes big-endian -> journal.EncodeRecord
 //	floors/<id>/requests     request id -> version, 8 bytes big-endian

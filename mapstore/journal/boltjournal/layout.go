@@ -19,6 +19,7 @@ const fileFormat = 1
 var (
 	fileBucket   = []byte("wideberth")
 	formatKey    = []byte("format")
+	floorSumKey  = []byte("floors")
 	floorsBucket = []byte("floors")
 
 	headKey         = []byte("head")
@@ -53,29 +54,38 @@ func fileMark(format uint32) []byte {
 type head struct {
 	version  int64
 	hash     [32]byte
-	requests requestSum
+	requests keySum
 }
 
-// requestSum is a sum over a floor's request ids that does not depend on their
-// order. A request id that is missing from the index would be carried out twice, and
-// no look-up can notice; Open compares the sum instead.
-type requestSum struct{ count, sum uint64 }
+// keySum is a sum over the keys of a bucket that does not depend on their order. A
+// request id that is missing would be carried out twice, and a floor that is missing
+// could be created anew; no look-up can notice that, so Open compares the sums.
+type keySum struct{ count, sum uint64 }
 
-func (s *requestSum) add(id []byte, version int64) {
+const keySumBytes = 16
+
+func (s *keySum) add(k []byte, version int64) {
 	h := sha256.New()
 	h.Write(key(version))
-	h.Write(id)
+	h.Write(k)
 	s.count++
 	s.sum += binary.LittleEndian.Uint64(h.Sum(nil))
 }
 
-const headBytes = 8 + 32 + 8 + 8 + 4
+func (s keySum) append(b []byte) []byte {
+	b = binary.LittleEndian.AppendUint64(b, s.count)
+	return binary.LittleEndian.AppendUint64(b, s.sum)
+}
+
+func readKeySum(b []byte) keySum {
+	return keySum{binary.LittleEndian.Uint64(b), binary.LittleEndian.Uint64(b[8:])}
+}
+
+const headBytes = 8 + 32 + keySumBytes + 4
 
 func (h head) encode() []byte {
 	b := binary.LittleEndian.AppendUint64(nil, uint64(h.version))
-	b = append(b, h.hash[:]...)
-	b = binary.LittleEndian.AppendUint64(b, h.requests.count)
-	return withSum(binary.LittleEndian.AppendUint64(b, h.requests.sum))
+	return withSum(h.requests.append(append(b, h.hash[:]...)))
 }
 
 func key(version int64) []byte { return binary.BigEndian.AppendUint64(nil, uint64(version)) }
@@ -122,11 +132,13 @@ func (j *Journal) part(tx *bolt.Tx, id string) (*floorPart, error) {
 		return nil, err
 	}
 	top := floors.Bucket([]byte(id))
-	if top == nil {
+	if top == nil && floors.Get([]byte(id)) == nil {
 		return nil, nil
 	}
-	p := &floorPart{id: id, top: top,
-		records: top.Bucket(recordsBucket), requests: top.Bucket(requestsBucket), snapshots: top.Bucket(snapshotsBucket)}
+	p := &floorPart{id: id, top: top}
+	if top != nil {
+		p.records, p.requests, p.snapshots = top.Bucket(recordsBucket), top.Bucket(requestsBucket), top.Bucket(snapshotsBucket)
+	}
 	if p.records == nil || p.requests == nil || p.snapshots == nil {
 		return nil, p.damage(0, "a part of the floor is missing")
 	}
@@ -136,13 +148,31 @@ func (j *Journal) part(tx *bolt.Tx, id string) (*floorPart, error) {
 	}
 	p.head.version = int64(binary.LittleEndian.Uint64(b))
 	p.head.hash = [32]byte(b[8:40])
-	p.head.requests = requestSum{binary.LittleEndian.Uint64(b[40:]), binary.LittleEndian.Uint64(b[48:])}
+	p.head.requests = readKeySum(b[40:])
 	return p, nil
+}
+
+// floorSum is the sum over the ids of all floors.
+func floorSum(tx *bolt.Tx) (keySum, error) {
+	if file := tx.Bucket(fileBucket); file != nil {
+		if b, ok := checkSum(file.Get(floorSumKey), keySumBytes+4); ok {
+			return readKeySum(b), nil
+		}
+	}
+	return keySum{}, &journal.CorruptError{What: "the entry that counts the floors has a wrong checksum"}
 }
 
 // addPart makes a floor's buckets.
 func addPart(tx *bolt.Tx, id string) (p *floorPart, err error) {
 	p = &floorPart{id: id}
+	sum, err := floorSum(tx)
+	if err != nil {
+		return nil, err
+	}
+	sum.add([]byte(id), 0)
+	if err := tx.Bucket(fileBucket).Put(floorSumKey, withSum(sum.append(nil))); err != nil {
+		return nil, err
+	}
 	if p.top, err = tx.Bucket(floorsBucket).CreateBucket([]byte(id)); err != nil {
 		return nil, err
 	}
@@ -219,7 +249,9 @@ func (j *Journal) inspect() error {
 		if floors == nil {
 			return &journal.CorruptError{What: "the list of floors is missing"}
 		}
-		return floors.ForEachBucket(func(id []byte) error {
+		var ids keySum
+		if err := floors.ForEach(func(id, _ []byte) error {
+			ids.add(id, 0)
 			p, err := j.part(tx, string(id))
 			if err == nil {
 				err = p.checkRequests()
@@ -228,13 +260,22 @@ func (j *Journal) inspect() error {
 				j.refused[string(id)] = j.named(err)
 			}
 			return nil
-		})
+		}); err != nil {
+			return err
+		}
+		switch sum, err := floorSum(tx); {
+		case err != nil:
+			return err
+		case sum != ids:
+			return &journal.CorruptError{What: fmt.Sprintf("the floors are not those that were made: %d are kept, %d were made", ids.count, sum.count)}
+		}
+		return nil
 	})
 }
 
 // checkRequests compares a floor's request ids with the sum over them.
 func (p *floorPart) checkRequests() error {
-	var sum requestSum
+	var sum keySum
 	c := p.requests.Cursor()
 	for id, v := c.First(); id != nil; id, v = c.Next() {
 		version, ok := versionOf(v)

@@ -25,7 +25,7 @@ func (j *Journal) Floors(ctx context.Context) (ids []string, err error) {
 		if floors == nil {
 			return &journal.CorruptError{What: "the list of floors is missing"}
 		}
-		return floors.ForEachBucket(func(id []byte) error {
+		return floors.ForEach(func(id, _ []byte) error {
 			ids = append(ids, string(id))
 			return nil
 		})
