@@ -13,12 +13,6 @@ import (
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
 )
 
-// The contract's bounds on a floor's size, checked before memory is set aside.
-const (
-	maxSide  = 65_536
-	maxCells = 268_435_456
-)
-
 // FloorContent is everything one version of a floor holds. It is complete: every
 // cell and every feature arrived, and the counts agreed.
 type FloorContent struct {
@@ -118,8 +112,8 @@ func (a *assembly) start(h *wideberthv1.ReadFloorHeader) error {
 		return lost("a second header")
 	}
 	w, n := int64(h.GetSettings().GetColumns()), int64(h.GetSettings().GetRows())
-	if w < 1 || w > maxSide || n < 1 || n > maxSide || w*n > maxCells {
-		return lost("header: %d x %d cells, want 1 to %d a side and at most %d in all", w, n, maxSide, maxCells)
+	if w < 1 || w > floor.MaxSide || n < 1 || n > floor.MaxSide || w*n > floor.MaxCells {
+		return lost("header: %d x %d cells, want 1 to %d a side and at most %d in all", w, n, floor.MaxSide, floor.MaxCells)
 	}
 	cells := make([]byte, (w*n+3)/4)
 	for i := range cells {

@@ -6,6 +6,7 @@ import (
 	"context"
 	"fmt"
 
+	"example.com/wideberth/mapstore/floor"
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
 )
 
@@ -33,8 +34,8 @@ type CellLoad struct {
 // and RestoreVersion of Base undoes them.
 func (c *Client) LoadCells(ctx context.Context, l CellLoad) (*wideberthv1.Version, error) {
 	w, h := int(l.Rect.GetColumns()), int(l.Rect.GetRows())
-	if w < 1 || w > maxSide || h < 1 || h > maxSide || w*h > maxCells {
-		return nil, fmt.Errorf("client: rect is %d x %d cells, want 1 to %d a side and at most %d in all", w, h, maxSide, maxCells)
+	if w < 1 || w > floor.MaxSide || h < 1 || h > floor.MaxSide || w*h > floor.MaxCells {
+		return nil, fmt.Errorf("client: rect is %d x %d cells, want 1 to %d a side and at most %d in all", w, h, floor.MaxSide, floor.MaxCells)
 	}
 	if want := (w*h + 3) / 4; len(l.Cells) != want {
 		return nil, fmt.Errorf("client: cells has %d bytes for %d x %d cells, want %d", len(l.Cells), w, h, want)
