@@ -48,18 +48,26 @@ func SegmentDist(p, a, b Point) (float64, Point) {
 		}
 		return Dist(p, n), n
 	}
+	// The signs of fromA and fromB are exact, each measured from its own end.
 	dx, dy := b.X-a.X, b.Y-a.Y
 	wx, wy := p.X-a.X, p.Y-a.Y
-	along := diffOfProducts(wx, dx, -wy, dy)
-	if along <= 0 {
+	fromA := diffOfProducts(wx, dx, -wy, dy)
+	if fromA <= 0 {
 		return Dist(p, a), a
 	}
-	length2 := float64(dx*dx) + float64(dy*dy)
-	if along >= length2 {
+	fromB := diffOfProducts(b.X-p.X, dx, p.Y-b.Y, dy)
+	if fromB <= 0 {
 		return Dist(p, b), b
 	}
-	t := along / length2
-	n := Point{a.X + float64(t*dx), a.Y + float64(t*dy)}
+	length2 := float64(dx*dx) + float64(dy*dy)
+	var n Point
+	if fromA <= fromB {
+		t := fromA / length2
+		n = Point{a.X + float64(t*dx), a.Y + float64(t*dy)}
+	} else {
+		t := fromB / length2
+		n = Point{b.X - float64(t*dx), b.Y - float64(t*dy)}
+	}
 	return math.Abs(diffOfProducts(dx, wy, dy, wx)) / math.Sqrt(length2), n
 }
 

@@ -58,15 +58,8 @@ func compareProducts(a, b, c, d float64) int {
 }
 
 func orientRational(a, b, c Point) int {
-	rat := func(v float64) *big.Rat {
-		if r := new(big.Rat).SetFloat64(v); r != nil {
-			return r
-		}
-		return new(big.Rat) // not finite: outside the contract, but no panic
-	}
-	sub := func(x, y float64) *big.Rat { return new(big.Rat).Sub(rat(x), rat(y)) }
-	left := new(big.Rat).Mul(sub(a.X, c.X), sub(b.Y, c.Y))
-	right := new(big.Rat).Mul(sub(a.Y, c.Y), sub(b.X, c.X))
+	left := new(big.Rat).Mul(ratDiff(a.X, c.X), ratDiff(b.Y, c.Y))
+	right := new(big.Rat).Mul(ratDiff(a.Y, c.Y), ratDiff(b.X, c.X))
 	return left.Cmp(right)
 }
 

@@ -29,7 +29,7 @@ func plainCheck(chains [][]Point) bool {
 	for i, e := range edges {
 		for _, f := range edges[:i] {
 			n := len(chains[e.ring])
-			next := e.ring == f.ring && e.i == f.i+1            // f ends where e starts
+			next := e.ring == f.ring && e.i == f.i+1           // f ends where e starts
 			last := e.ring == f.ring && e.i == n-1 && f.i == 0 // e ends where f starts
 			switch {
 			case next || last:
@@ -88,4 +88,3 @@ func TestCheckPolygonAgainstAllPairs(t *testing.T) {
 	})
 	t.Logf("%d polygons were valid", valid)
 }
-
