@@ -56,10 +56,19 @@ func mustAdvance(t testing.TB, f *Field, m *floor.Map) *Field {
 func genSettings(t *rapid.T, most int) floor.Settings {
 	res := rapid.SampledFrom([]int64{1000, 50_000, 49_999, 77_777}).Draw(t, "resolution")
 	cells := rapid.IntRange(2, 14).Draw(t, "cap cells")
+	wide, tall := most, most
+	switch rapid.IntRange(0, 9).Draw(t, "floor") {
+	case 0: // a cap of more than a block, up to the limit
+		cells = rapid.IntRange(60, floor.MaxCapCells-1).Draw(t, "cap cells")
+	case 1: // over more than one tile
+		wide, tall = 8, 5*most
+	case 2:
+		wide, tall = 5*most, 8
+	}
 	return floor.Settings{
 		ResolutionUm: res,
-		Columns:      rapid.IntRange(1, most).Draw(t, "columns"),
-		Rows:         rapid.IntRange(1, most).Draw(t, "rows"),
+		Columns:      rapid.IntRange(1, wide).Draw(t, "columns"),
+		Rows:         rapid.IntRange(1, tall).Draw(t, "rows"),
 		OriginX:      rapid.Int64Range(-3_000_000, 3_000_000).Draw(t, "origin x"),
 		OriginY:      rapid.Int64Range(-3_000_000, 3_000_000).Draw(t, "origin y"),
 		CapUm:        int64(cells)*res + rapid.Int64Range(0, res-1).Draw(t, "cap rest"),
@@ -94,33 +103,32 @@ func genSolid(t *rapid.T, s floor.Settings) floor.Feature {
 		ft.WidthUm = rapid.Int64Range(1, 2*s.ResolutionUm).Draw(t, "width")
 		var chain []geom.Point
 		for range rapid.IntRange(2, 4).Draw(t, "points") {
-			chain = append(chain, genPoint(t, s, s.CapUm))
+			chain = append(chain, genPoint(t, s, 0))
 		}
 		ft.Shape = floor.NewPolyline(chain, ft.WidthUm, ft.ToleranceUm)
 	default:
 		ft.RadiusUm = rapid.Int64Range(1, 3*s.ResolutionUm).Draw(t, "radius")
-		ft.Shape = floor.NewDisc(genPoint(t, s, s.CapUm), ft.RadiusUm, ft.ToleranceUm)
+		ft.Shape = floor.NewDisc(genPoint(t, s, 0), ft.RadiusUm, ft.ToleranceUm)
 	}
 	return ft
 }
 
 func genPolygon(t *rapid.T, s floor.Settings) [][]geom.Point {
-	o := genPoint(t, s, s.CapUm)
-	w := float64(rapid.Int64Range(1, 20*s.ResolutionUm).Draw(t, "w"))
-	h := float64(rapid.Int64Range(1, 20*s.ResolutionUm).Draw(t, "h"))
-	if rapid.Bool().Draw(t, "on lattice") {
-		h = math.Ceil(h/float64(s.ResolutionUm)) * float64(s.ResolutionUm)
-		w = math.Ceil(w/float64(s.ResolutionUm)) * float64(s.ResolutionUm)
+	p, q := genPoint(t, s, 0), genPoint(t, s, 0)
+	box := geom.BoundsOf(p, q)
+	if rapid.Bool().Draw(t, "small") {
+		box = box.Intersect(geom.Rect{Min: box.Min, Max: geom.Point{X: box.Min.X + 4*float64(s.ResolutionUm), Y: box.Min.Y + 3*float64(s.ResolutionUm)}})
 	}
-	at := func(x, y float64) geom.Point { return geom.Point{X: o.X + math.Round(x*w), Y: o.Y + math.Round(y*h)} }
+	at := func(x, y float64) geom.Point {
+		return geom.Point{X: box.Min.X + math.Round(x*box.Width()), Y: box.Min.Y + math.Round(y*box.Height())}
+	}
 	switch rapid.IntRange(0, 2).Draw(t, "polygon") {
 	case 0:
 		return [][]geom.Point{{at(0, 0), at(1, 0), at(1, 1), at(0, 1)}}
 	case 1: // an L, clockwise
-		return [][]geom.Point{{at(0, 0), at(0, 2), at(1, 2), at(1, 1), at(2, 1), at(2, 0)}}
+		return [][]geom.Point{{at(0, 0), at(0, 1), at(0.5, 1), at(0.5, 0.5), at(1, 0.5), at(1, 0)}}
 	}
-	w, h = 4*w, 4*h // oblique, with a hole
-	return [][]geom.Point{
+	return [][]geom.Point{ // oblique, with a hole
 		{at(0.5, 0), at(1, 0.5), at(0.5, 1), at(0, 0.5)},
 		{at(0.4, 0.4), at(0.6, 0.4), at(0.5, 0.6)},
 	}
@@ -171,7 +179,7 @@ func genCells(t *rapid.T, s floor.Settings) floor.CellRect {
 	}
 }
 
-// tryApply applies edits that may be refused (a polygon that rounds to nothing).
+// tryApply applies edits that may be refused (a polygon without area).
 func tryApply(t *rapid.T, m *floor.Map, edits []floor.Edit) *floor.Map {
 	if len(edits) == 0 {
 		return m
@@ -179,6 +187,9 @@ func tryApply(t *rapid.T, m *floor.Map, edits []floor.Edit) *floor.Map {
 	next, err := m.Apply(edits)
 	if err != nil {
 		t.Logf("refused: %v", err)
+		if len(edits) > 1 {
+			return tryApply(t, m, edits[1:])
+		}
 		return m
 	}
 	return next

@@ -1,0 +1,356 @@
+package clearance
+
+import (
+	"context"
+	"errors"
+	"math"
+	"sync"
+	"testing"
+
+	"pgregory.net/rapid"
+
+	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+)
+
+// TestRasterCellLowerIsExact: without vector solids the smallest clearance over a closed
+// cell is the smallest over its four vertices, exactly.
+func TestRasterCellLowerIsExact(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m, err := floor.New(genSettings(t, 30))
+		if err != nil {
+			t.Fatal(err)
+		}
+		s := m.Settings()
+		for range rapid.IntRange(0, 8).Draw(t, "rects") {
+			m = tryApply(t, m, []floor.Edit{{Kind: floor.PaintRect, Rect: genCells(t, s), Fill: floor.Occupied}})
+		}
+		f := buildT(t, m)
+		for range 20 {
+			c, r := rapid.IntRange(0, s.Columns-1).Draw(t, "c"), rapid.IntRange(0, s.Rows-1).Draw(t, "r")
+			want := math.Floor(plainRect(m, f.cellRect(c, r)))
+			if got := f.CellLower(c, r); float64(got) != want {
+				t.Fatalf("cell (%d, %d): %d, want %v", c, r, got, want)
+			}
+		}
+	})
+}
+
+// TestLargestInCell: nowhere in a closed cell is the clearance above the largest of its
+// vertices by more than h/√2; Node.Max bounds squares of cells alike.
+func TestLargestInCell(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := genMap(t, 90)
+		f := buildT(t, m)
+		for range 20 {
+			p := genPoint(t, m.Settings(), 0)
+			d := f.At(p).Um
+			for n := f.Root(); ; {
+				if d > float64(n.Max)+1+f.h/math.Sqrt2 {
+					t.Fatalf("%v: clearance %v, largest vertex of node %v %d", p, d, n.Cells(), n.Max)
+				}
+				if d < float64(f.lower(n.Min, n.near())) {
+					t.Fatalf("%v: clearance %v, smallest vertex of node %v %d", p, d, n.Cells(), n.Min)
+				}
+				var kids [4]Node
+				k := 0
+				for _, c := range kids[:n.Children(&kids)] {
+					if f.m.Settings().CellBounds(c.Cells()).Contains(p) {
+						n, k = c, k+1
+					}
+				}
+				if k == 0 {
+					break
+				}
+			}
+		}
+	})
+}
+
+// TestBoundsAreTight: a tiny disc in the middle of a cell leaves its vertices h/√2 and the
+// cell 0; one in front of a side's middle leaves the cell sqrt(m² - h²/4).
+func TestBoundsAreTight(t *testing.T) {
+	const h = 1e6
+	f := mustBuild(t, cellsFloor(t, 9, 9, 6, true, disc("in", 4.5*h, 4.5*h, 1)))
+	if m, low := f.Vertex(4, 4), f.CellLower(4, 4); m != 707_105 || low != 0 {
+		t.Errorf("disc inside: vertex %d, lower bound %d", m, low)
+	}
+	f = mustBuild(t, cellsFloor(t, 9, 9, 6, true, disc("ahead", 4.5*h, 2*h, 1)))
+	// Cell (4, 4) begins 2 m above the disc: 2 m less 1 µm, known to the last micrometre
+	// but for the rounding of its vertices.
+	if low := f.CellLower(4, 4); low > 1_999_999 || low < 1_999_997 {
+		t.Errorf("disc ahead: lower bound %d", low)
+	}
+	if !f.CellClear(4, 4, 1_999_999) || f.CellClear(4, 4, 2_000_000) {
+		t.Errorf("disc ahead: clear by 1999999 %v, by 2000000 %v", f.CellClear(4, 4, 1_999_999), f.CellClear(4, 4, 2_000_000))
+	}
+}
+
+// TestNodesAgree: Node.Kind of every node is what its cells say, at 0 and above, and Min and
+// Max are those of its vertices.
+func TestNodesAgree(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := genMap(t, 80)
+		f := buildT(t, m)
+		s := m.Settings()
+		um := rapid.SampledFrom([]int64{0, 1, s.ResolutionUm / 2, s.ResolutionUm, 2 * s.ResolutionUm, s.CapUm}).Draw(t, "um")
+		var walk func(n Node) int
+		walk = func(n Node) int {
+			r := n.Cells()
+			clear, lo, hi := 0, int32(math.MaxInt32), int32(-1)
+			for y := r.Y0; y <= r.Y1; y++ {
+				for x := r.X0; x <= r.X1; x++ {
+					v := f.Vertex(x, y)
+					lo, hi = min(lo, v), max(hi, v)
+					if x < r.X1 && y < r.Y1 && f.CellClear(x, y, um) {
+						clear++
+					}
+				}
+			}
+			if lo != n.Min || hi != n.Max {
+				t.Fatalf("node %v: %d to %d, want %d to %d", r, n.Min, n.Max, lo, hi)
+			}
+			all := int(r.Count())
+			switch k := n.Kind(um); {
+			case k == Free && clear != all, k == Blocked && clear != 0:
+				t.Fatalf("node %v at %d: kind %v, %d of %d cells clear", r, um, k, clear, all)
+			case k == Mixed && um == 0 && (clear == 0 || clear == all):
+				t.Fatalf("node %v at 0: mixed, %d of %d cells clear", r, clear, all)
+			}
+			cells := 0
+			var kids [4]Node
+			for _, c := range kids[:n.Children(&kids)] {
+				cells += walk(c)
+			}
+			if n.Level == 0 {
+				return 1
+			} else if cells != all {
+				t.Fatalf("node %v: children hold %d cells", r, cells)
+			}
+			return cells
+		}
+		walk(f.Root())
+	})
+}
+
+// TestSameBlock: where SameBlock says so, every clearance gives the same bits; and a small
+// change leaves most of a floor the same.
+func TestSameBlock(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := genMap(t, 300)
+		f := buildT(t, m)
+		next := tryApply(t, m, genEdits(t, m))
+		g, err := f.Advance(t.Context(), next, floor.Diff(m, next))
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, o := range []*Field{g, buildT(t, next)} {
+			for by := range f.sums.ny {
+				for bx := range f.sums.nx {
+					if !f.SameBlock(o, bx, by) {
+						continue
+					}
+					var a, b [blockSize]uint64
+					for _, um := range []int64{0, 1, m.Settings().ResolutionUm, f.cap/2 + 1, f.cap} {
+						f.ClearBits(bx, by, um, &a)
+						o.ClearBits(bx, by, um, &b)
+						if a != b {
+							t.Fatalf("block (%d, %d) said to be the same, but not at %d", bx, by, um)
+						}
+					}
+				}
+			}
+		}
+	})
+	m := mustMap(t, floor.Settings{ResolutionUm: 50_000, Columns: 1024, Rows: 1024, CapUm: 5_000_000, Initial: floor.Free})
+	f := mustBuild(t, m)
+	for _, e := range []floor.Edit{paint(500, 500, 520, 520, floor.Occupied), disc("spill", 25e6, 25e6, 300_000)} {
+		g := mustAdvance(t, f, mustApply(t, m, e))
+		same := 0
+		for k := range 256 {
+			if f.SameBlock(g, k%16, k/16) {
+				same++
+			}
+		}
+		// The cap is not quite two blocks: a change in one block touches 5x5 at most,
+		// over a block's edge 6x6.
+		if same < 256-36 || same == 256 {
+			t.Errorf("%d of 256 blocks the same", same)
+		}
+	}
+}
+
+// TestTravel: over the distance given, a disc moves without overlapping a solid; three
+// micrometres further, or at the bound, it does.
+func TestTravel(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := genMap(t, 60)
+		f := buildT(t, m)
+		s := m.Settings()
+		p := genPoint(t, s, 0)
+		heading := rapid.Float64Range(-math.Pi, math.Pi).Draw(t, "heading")
+		if rapid.Bool().Draw(t, "square") {
+			heading = rapid.SampledFrom([]float64{0, math.Pi / 2, math.Pi, -math.Pi / 2}).Draw(t, "heading")
+		}
+		radius := rapid.Int64Range(1, s.CapUm).Draw(t, "radius")
+		most := rapid.Int64Range(1, 2*s.CapUm).Draw(t, "most")
+		at := func(d float64) geom.Point {
+			return geom.Point{X: p.X + d*math.Cos(heading), Y: p.Y + d*math.Sin(heading)}
+		}
+		got := f.Travel(p, heading, radius, most)
+		switch {
+		case got < 0 || got > float64(most):
+			t.Fatalf("travel %v beyond 0 to %d", got, most)
+		case got > 0 && plainSegment(m, p, at(got)) < float64(radius)-1e-6:
+			t.Fatalf("travel %v: clearance on the way %v, radius %d", got, plainSegment(m, p, at(got)), radius)
+		case got+3 < float64(most) && plainSegment(m, p, at(got+3)) >= float64(radius):
+			t.Fatalf("travel %v: could go on, radius %d", got, radius)
+		}
+	})
+}
+
+// TestManyChangesAtOnce: a patch that touches many places far apart takes another way
+// through Advance and still equals Build.
+func TestManyChangesAtOnce(t *testing.T) {
+	m := mustMap(t, floor.Settings{ResolutionUm: 50_000, Columns: 1300, Rows: 1300, CapUm: 400_000, Initial: floor.Free},
+		box("wall", 10e6, 3e6, 50e6, 3.3e6))
+	f := mustBuild(t, m)
+	var edits []floor.Edit
+	for k := range 150 {
+		x, y := k%13*97+20, k/13*101+30
+		if k%3 == 0 {
+			edits = append(edits, disc("d"+string(rune('a'+k%26))+string(rune('a'+k/26)), float64(x)*50_000, float64(y)*50_000, 70_001))
+		} else {
+			edits = append(edits, paint(x, y, x+2, y+1, floor.Occupied))
+		}
+	}
+	next := mustApply(t, m, edits...)
+	g := mustAdvance(t, f, next)
+	if !g.Equal(mustBuild(t, next)) {
+		t.Error("patched differs from rebuilt")
+	}
+	if back := mustAdvance(t, g, m); !back.Equal(f) {
+		t.Error("taking the patch back does not give the field it started from")
+	}
+}
+
+// TestEqualSeesEverything: Equal is the judge of law 4, so it must tell fields apart that
+// differ in one place only.
+func TestEqualSeesEverything(t *testing.T) {
+	base := cellsFloor(t, 100, 100, 5, false, box("a", 20e6, 20e6, 22e6, 30e6))
+	f := mustBuild(t, base)
+	for name, e := range map[string]floor.Edit{
+		"cell":    paint(70, 70, 71, 71, floor.Occupied),
+		"moved":   box("a", 20e6, 20e6, 22e6, 30.000001e6),
+		"renamed": box("b", 20e6, 20e6, 22e6, 30e6),
+		"hidden":  box("b", 20.2e6, 20.2e6, 21.8e6, 29.5e6), // inside a: no value differs
+	} {
+		if f.Equal(mustBuild(t, mustApply(t, base, e))) {
+			t.Errorf("%s: said to be equal", name)
+		}
+	}
+	if !f.Equal(mustBuild(t, base)) {
+		t.Error("equal fields said to differ")
+	}
+}
+
+// TestOutOfRange: questions off the floor, not finite or above the cap get an answer that
+// admits nothing.
+func TestOutOfRange(t *testing.T) {
+	nan, inf := math.NaN(), math.Inf(1)
+	for _, open := range []bool{false, true} {
+		f := mustBuild(t, cellsFloor(t, 10, 10, 3, open, disc("d", 5e6, 5e6, 1000)))
+		mid := geom.Point{X: 2e6, Y: 2e6}
+		for _, p := range []geom.Point{{X: nan, Y: 1}, {X: 1, Y: inf}, {X: -inf, Y: nan}} {
+			if n := f.At(p); n.Um != 0 {
+				t.Errorf("clearance at %v: %v", p, n.Um)
+			}
+			if n := f.Segment(mid, p); n.Um != 0 {
+				t.Errorf("clearance to %v: %v", p, n.Um)
+			}
+			if f.SegmentClear(mid, p, 1) || f.SegmentClear(p, mid, 0) || f.Travel(p, 0, 1, 1000) != 0 {
+				t.Errorf("%v admitted", p)
+			}
+		}
+		if f.Travel(mid, nan, 1, 1000) != 0 || f.Travel(mid, 0, 1, -5) != 0 {
+			t.Error("travel without a heading or distance")
+		}
+		if f.SegmentClear(mid, mid, f.Cap()+1) || f.CellClear(0, 0, f.Cap()+1) {
+			t.Error("admitted above the cap")
+		}
+		for _, c := range [][2]int{{-1, 0}, {0, -1}, {10, 0}, {0, 10}} {
+			if f.CellClear(c[0], c[1], 0) || f.CellClear(c[0], c[1], 1) || f.CellLower(c[0], c[1]) != 0 {
+				t.Errorf("cell %v admitted", c)
+			}
+		}
+		words := [blockSize]uint64{1}
+		if f.ClearBits(-1, 0, 1, &words); words != [blockSize]uint64{} {
+			t.Error("block off the floor admitted")
+		}
+		if f.Vertex(-1, 0) != 0 || f.Vertex(0, 11) != 0 {
+			t.Error("clearance off the lattice")
+		}
+		far := f.At(geom.Point{X: 1e15, Y: -1e15})
+		if closed := far.Border && far.Um == 0; closed == open {
+			t.Errorf("far off the floor: %+v", far)
+		}
+	}
+}
+
+// TestLargestCap: a cap beyond 32 bits of micrometres is cut to MaxCapUm, nothing else.
+func TestLargestCap(t *testing.T) {
+	m := mustMap(t, floor.Settings{ResolutionUm: 10_000_000, Columns: 300, Rows: 3, CapUm: 2_500_000_000, OpenBorder: true, Initial: floor.Free},
+		paint(0, 1, 1, 2, floor.Occupied))
+	f := mustBuild(t, m)
+	if f.Cap() != MaxCapUm {
+		t.Fatalf("cap %d", f.Cap())
+	}
+	for _, i := range []int{0, 1, 2, 100, 214, 215, 216, 300} {
+		want := min(int64(max(0, i-1))*10_000_000, MaxCapUm)
+		if got := f.Vertex(i, 1); int64(got) != want {
+			t.Errorf("vertex %d: %d, want %d", i, got, want)
+		}
+	}
+	if !f.CellClear(299, 0, MaxCapUm) || f.CellClear(215, 0, MaxCapUm) {
+		t.Error("cells about the cap misjudged")
+	}
+}
+
+// TestCancelled: a cancelled context ends the work with its error.
+func TestCancelled(t *testing.T) {
+	m := cellsFloor(t, 300, 300, 5, false)
+	f := mustBuild(t, m)
+	ctx, cancel := context.WithCancel(t.Context())
+	cancel()
+	if _, err := Build(ctx, m); !errors.Is(err, context.Canceled) {
+		t.Errorf("Build: %v", err)
+	}
+	next := mustApply(t, m, paint(1, 1, 2, 2, floor.Occupied))
+	if _, err := f.Advance(ctx, next, floor.Diff(m, next)); !errors.Is(err, context.Canceled) {
+		t.Errorf("Advance: %v", err)
+	}
+}
+
+// TestLaw1ReadersSeeOneVersion: readers of a field see the same values while fields are
+// advanced from it. Under the race detector it also shows that nothing shared is
+// written.
+func TestLaw1ReadersSeeOneVersion(t *testing.T) {
+	m := cellsFloor(t, 200, 200, 5, false, box("a", 20e6, 20e6, 22e6, 30e6))
+	f := mustBuild(t, m)
+	want := f.At(geom.Point{X: 50e6, Y: 50e6})
+	var wg sync.WaitGroup
+	for k := range 3 {
+		wg.Go(func() {
+			next := mustApply(t, m, paint(47+k, 47, 49+k, 49, floor.Occupied), disc("d", 52e6, 52e6, 500_000))
+			mustAdvance(t, f, next)
+		})
+	}
+	for range 100 {
+		if got := f.At(geom.Point{X: 50e6, Y: 50e6}); got != want {
+			t.Errorf("%+v, want %+v", got, want)
+		}
+		var words [blockSize]uint64
+		f.ClearBits(0, 0, 500_000, &words)
+	}
+	wg.Wait()
+}
