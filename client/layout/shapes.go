@@ -139,7 +139,7 @@ func (b *builder) point(path []any, p []float64, pl place) *wideberthv1.Point {
 	return &wideberthv1.Point{XM: x, YM: y}
 }
 
-func whole(m float64) float64 { return geom.Metres(geom.FromMetres(m)) }
+func whole(m float64) float64 { return geom.Metres(geom.FromMetres(m)) + 0 } // + 0: never -0
 
 func (b *builder) chain(path []any, pts [][]float64, pl place, least int) []*wideberthv1.Point {
 	if len(pts) < least || len(pts) > maxRingPoints {
@@ -213,5 +213,5 @@ func (b *builder) heading(path []any, deg float64) (float64, bool) {
 	for deg <= -180 {
 		deg += 360
 	}
-	return deg * math.Pi / 180, true
+	return deg*math.Pi/180 + 0, true // + 0: never -0
 }
