@@ -12,7 +12,7 @@ import (
 )
 
 //go:embed auction-hall.yaml
-var hall []byte
+var hallYAML []byte
 
 // HallFile is what faults in the hall's description are reported under.
 const HallFile = "testdata/auction-hall.yaml"
@@ -22,7 +22,7 @@ const HallFile = "testdata/auction-hall.yaml"
 const TwoOClock = "two-o-clock"
 
 // Hall is the auction hall's floor, read anew at each call.
-func Hall() (*layout.Layout, error) { return layout.Read(bytes.NewReader(hall), HallFile) }
+func Hall() (*layout.Layout, error) { return layout.Read(bytes.NewReader(hallYAML), HallFile) }
 
 // HallYAML is the description itself.
-func HallYAML() []byte { return bytes.Clone(hall) }
+func HallYAML() []byte { return bytes.Clone(hallYAML) }
