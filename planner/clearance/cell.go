@@ -162,27 +162,46 @@ func (f *Field) ClearBits(bx, by int, um int64, words *[blockSize]uint64) {
 
 // squareBits decides the 8x8 cells from (x, y) on by their vertices: into words those
 // whose vertices all reach sure, into maybe those whose vertices all reach um only.
+// Bits of cells beyond the floor's right edge are left undefined.
 func (f *Field) squareBits(x, y int, um, sure int64, shift int, words, maybe []uint64) {
 	const side = 1 << lowestKept
-	var row [side + 1]int32
 	var surePrev, okPrev uint32
-	n := min(side, f.cols-x)
-	for j := range side + 1 {
+	bx, i := x>>blockShift, x&blockMask
+	for j := y; j <= y+side; j++ {
 		var s, ok uint32
-		if y+j <= f.rows {
-			f.vertexRow(x, y+j, row[:n+1])
-			for i := range n + 1 {
-				s |= uint32(1&^((int64(row[i])-sure)>>63)) << i
-				ok |= uint32(1&^((int64(row[i])-um)>>63)) << i
+		if j <= f.rows {
+			blocks := f.values.rows[j>>blockShift]
+			base := (j&blockMask)<<blockShift + i
+			row := (*[side]int32)(blocks[bx][base:])
+			// The ninth vertex may be the next block's first.
+			var ninth int32
+			if i+side < blockSize {
+				ninth = blocks[bx][base+side]
+			} else if bx+1 < len(blocks) {
+				ninth = blocks[bx+1][base-i]
+			}
+			ok = reach(row, ninth, um)
+			if s = ok; sure != um && ok != 0 {
+				s = reach(row, ninth, sure)
 			}
 		}
 		s, ok = s&(s>>1), ok&(ok>>1)
-		if j > 0 {
-			words[j-1] = words[j-1]&^(0xff<<shift) | uint64(s&surePrev)<<shift
-			maybe[j-1] |= uint64(ok&okPrev&^(s&surePrev)) << shift
+		if j > y {
+			both := s & surePrev
+			words[j-y-1] = words[j-y-1]&^(0xff<<shift) | uint64(both)<<shift
+			maybe[j-y-1] |= uint64(ok&okPrev&^both) << shift
 		}
 		surePrev, okPrev = s, ok
 	}
+}
+
+// reach has bit k set where the k-th of nine values is at least v.
+func reach(row *[1 << lowestKept]int32, ninth int32, v int64) uint32 {
+	below := uint32(uint64(int64(ninth)-v)>>63) << 8
+	for k, c := range row {
+		below |= uint32(uint64(int64(c)-v)>>63) << k
+	}
+	return ^below & 0x1ff
 }
 
 // bar works out which cells of block (bx, by) are not free at clearance 0; nil when
@@ -202,10 +221,16 @@ func (f *Field) bar(s *scratch, bx, by int) *cellBits {
 	for _, e := range list {
 		for _, k := range e.pieces {
 			p := &e.s.pieces[k]
-			box := geom.BoundsOf(p.a, p.b).Grow(e.s.grow)
-			for r := f.cellAt(box.Min.Y-f.oy, r0, r1) - 1; r <= f.cellAt(box.Max.Y-f.oy, r0, r1); r++ {
-				for c := f.cellAt(box.Min.X-f.ox, c0, c1) - 1; c <= f.cellAt(box.Max.X-f.ox, c0, c1); c++ {
-					if r >= r0 && c >= c0 && b[r-r0]>>(c-c0)&1 == 0 && reachesInto(f.cellRect(c, r), p, e.s.grow) {
+			lo, hi := p.a, p.b
+			if lo.Y > hi.Y {
+				lo, hi = hi, lo
+			}
+			reach := e.s.grow + bucketSlack
+			for r := f.cellAt(lo.Y-reach-f.oy, r0, r1); r <= f.cellAt(hi.Y+reach-f.oy, r0, r1); r++ {
+				y := f.oy + float64(r)*f.h
+				x0, x1 := xWithin(lo, hi, y-reach, y+f.h+reach)
+				for c := f.cellAt(x0-reach-f.ox, c0, c1); c <= f.cellAt(x1+reach-f.ox, c0, c1); c++ {
+					if b[r-r0]>>(c-c0)&1 == 0 && reachesInto(f.cellRect(c, r), p, e.s.grow) {
 						b[r-r0] |= 1 << (c - c0)
 					}
 				}

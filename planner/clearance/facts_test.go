@@ -187,7 +187,7 @@ func TestTravel(t *testing.T) {
 		m := genMap(t, 60)
 		f := buildT(t, m)
 		s := m.Settings()
-		p := genPoint(t, s, 0)
+		p := genPlace(t, s, 0)
 		heading := rapid.Float64Range(-math.Pi, math.Pi).Draw(t, "heading")
 		if rapid.Bool().Draw(t, "square") {
 			heading = rapid.SampledFrom([]float64{0, math.Pi / 2, math.Pi, -math.Pi / 2}).Draw(t, "heading")
@@ -353,4 +353,66 @@ func TestLaw1ReadersSeeOneVersion(t *testing.T) {
 		f.ClearBits(0, 0, 500_000, &words)
 	}
 	wg.Wait()
+}
+
+// TestWideOutlines: an outline that covers whole blocks without an edge in them, with a
+// hole that does too, bars what is inside and nothing else.
+func TestWideOutlines(t *testing.T) {
+	const um = 1_000_000
+	m := cellsFloor(t, 700, 700, 70, false, floor.Edit{Kind: floor.PutFeature, Feature: &floor.Feature{
+		Name: "hall", Kind: floor.Solid, Shape: floor.NewPolygon([][]geom.Point{
+			{{X: 350 * um, Y: 3 * um}, {X: 697 * um, Y: 350*um + 17}, {X: 350 * um, Y: 697 * um}, {X: 3*um + 5, Y: 350 * um}},
+			{{X: 250 * um, Y: 250 * um}, {X: 250 * um, Y: 450 * um}, {X: 450 * um, Y: 450 * um}, {X: 450 * um, Y: 250 * um}},
+		}, 0),
+	}})
+	f := mustBuild(t, m)
+	bare := 0
+	for by := range f.buckets.ny {
+		for bx := range f.buckets.nx {
+			for _, e := range f.buckets.at(bx, by) {
+				if len(e.pieces) == 0 {
+					bare++
+				}
+			}
+		}
+	}
+	if bare == 0 {
+		t.Fatal("no block without an edge is covered: the outline is too small for this test")
+	}
+	rapid.Check(t, func(t *rapid.T) {
+		p := genPlace(t, m.Settings(), 0)
+		q := genPlace(t, m.Settings(), 0)
+		ft, _ := m.Feature("hall")
+		d, _ := ft.Shape.Dist(p)
+		want := max(0, min(d, float64(f.cap), p.X, p.Y, 700*um-p.X, 700*um-p.Y))
+		if got := f.At(p); !within(got.Um, want) {
+			t.Fatalf("%v: %v, want %v", p, got.Um, want)
+		}
+		sd, _ := ft.Shape.SegmentDist(p, q)
+		want = max(0, min(sd, want, q.X, q.Y, 700*um-q.X, 700*um-q.Y))
+		if got := f.Segment(p, q); !within(got.Um, want) {
+			t.Fatalf("%v %v: %v, want %v", p, q, got.Um, want)
+		}
+		if got := f.SegmentClear(p, q, 1); got != (want >= 1) && !within(want, 1) {
+			t.Fatalf("%v %v: clear %v at clearance %v", p, q, got, want)
+		}
+		c, r := int(p.X/um), int(p.Y/um)
+		if c >= 700 || r >= 700 {
+			return
+		}
+		in := ft.Shape.RectDist(f.cellRect(c, r).Grow(-0.001)) == 0
+		if got := f.CellClear(c, r, 0); got == in {
+			t.Fatalf("cell (%d, %d): free %v, inside %v", c, r, got, in)
+		}
+	})
+	// Taken away and put back.
+	ft, _ := m.Feature("hall")
+	without := mustApply(t, m, floor.Edit{Kind: floor.RemoveFeature, Name: "hall"})
+	g := mustAdvance(t, f, without)
+	if !g.Equal(mustBuild(t, without)) {
+		t.Error("taken away: patched differs from rebuilt")
+	}
+	if back := mustAdvance(t, g, mustApply(t, without, floor.Edit{Kind: floor.PutFeature, Feature: ft})); !back.Equal(f) {
+		t.Error("put back: patched differs from rebuilt")
+	}
 }

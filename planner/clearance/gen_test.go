@@ -90,6 +90,16 @@ func genPoint(t *rapid.T, s floor.Settings, beyond int64) geom.Point {
 	return geom.Point{X: float64(s.OriginX + x), Y: float64(s.OriginY + y)}
 }
 
+// genPlace is a point to ask about, which need not be whole micrometres.
+func genPlace(t *rapid.T, s floor.Settings, beyond int64) geom.Point {
+	p := genPoint(t, s, beyond)
+	if rapid.Bool().Draw(t, "fraction") {
+		p.X += rapid.Float64Range(0, 1).Draw(t, "dx")
+		p.Y += rapid.Float64Range(0, 1).Draw(t, "dy")
+	}
+	return p
+}
+
 // genSolid draws a polygon (with a hole at times), a polyline or a disc.
 func genSolid(t *rapid.T, s floor.Settings) floor.Feature {
 	ft := floor.Feature{Kind: floor.Solid, Name: fmt.Sprintf("s%d", rapid.IntRange(0, 5).Draw(t, "name"))}

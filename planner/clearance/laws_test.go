@@ -147,7 +147,7 @@ func TestQueriesAgainstAllSolids(t *testing.T) {
 		f := buildT(t, m)
 		s := m.Settings()
 		for range 6 {
-			a, b := genPoint(t, s, s.ResolutionUm), genPoint(t, s, s.ResolutionUm)
+			a, b := genPlace(t, s, s.ResolutionUm), genPlace(t, s, s.ResolutionUm)
 			if rapid.Bool().Draw(t, "short") {
 				b = geom.Point{X: a.X + math.Round((b.X-a.X)/16), Y: a.Y + math.Round((b.Y-a.Y)/16)}
 			}
