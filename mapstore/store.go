@@ -1,8 +1,13 @@
 package mapstore
 
 import (
+	"cmp"
 	"context"
 	"errors"
+	"fmt"
+	"slices"
+	"strings"
+	"sync"
 	"time"
 
 	"example.com/wideberth/mapstore/floor"
@@ -17,16 +22,16 @@ type Kind = journal.Kind
 type VersionInfo struct {
 	Floor     string
 	Version   int64
-	Digest    [32]byte
+	Digest    [32]byte // of the content: equal content, equal digest
 	Kind      Kind
-	Base      int64
+	Base      int64 // the base its author named; below Version-1 when it was rebased
 	Author    string
 	Reason    string
 	RequestID string
-	Time      time.Time
+	Time      time.Time // UTC, whole microseconds
 	EditCount int
-	Touched   geom.Rect // empty when nothing was touched
-	Restored  int64
+	Touched   geom.Rect // µm; holds all that the version touched, empty when nothing was
+	Restored  int64     // the version brought back, 0 for other kinds
 }
 
 // Snapshot is one version: its record and its content. It stays valid for as long as
@@ -41,34 +46,42 @@ type FloorInfo struct {
 	ID       string
 	Settings floor.Settings
 	Head     VersionInfo
-	Oldest   int64
-	Created  time.Time
+	Oldest   int64     // the oldest version that can be read; all records are kept, so 1
+	Created  time.Time // UTC; zero when version 1's record cannot be read any more
 }
 
 // Patch is what Push is given.
 type Patch struct {
-	Base         int64
-	Author       string
-	Reason       string
-	RequestID    string
-	Edits        []floor.Edit
+	Base      int64  // the version its author looked at
+	Author    string // 1 to MaxAuthorRunes characters
+	Reason    string // 1 to MaxReasonRunes characters
+	RequestID string // may be empty: then a repetition is a new patch
+	Edits     []floor.Edit
+	// ValidateOnly does everything but the append: the answer is what the version
+	// would have been, the error the one that the real call would give.
 	ValidateOnly bool
-	AllowRebase  bool
+	// AllowRebase accepts a base below the head when no feature that the patch names
+	// and no cell that it may paint differs between the base and the head.
+	AllowRebase bool
 }
 
-// Restore is what RestoreVersion is given.
+// Restore is what Store.Restore is given.
 type Restore struct {
 	Version   int64 // to bring back
-	Base      int64
+	Base      int64 // the head its author looked at; a stale one is refused
 	Author    string
 	Reason    string
 	RequestID string
 }
 
-// The failures a caller tells apart, with errors.Is and errors.As.
+// The failures a caller tells apart, with errors.Is and errors.As. Beside them
+// there are *ArgumentError, *StaleBaseError, *floor.EditError, floor.SettingsError,
+// the context's errors, and journal.ErrCorrupt for a floor that is refused or a
+// version that cannot be rebuilt.
 var (
 	ErrNoFloor       = errors.New("no such floor")
 	ErrFloorExists   = errors.New("floor exists with other settings")
+	ErrFloorLimit    = errors.New("no more floors can be made")
 	ErrFutureVersion = errors.New("version is above the head")
 	ErrGone          = errors.New("version is not held any more")
 	ErrRequestReused = errors.New("request id was used for another request")
@@ -78,98 +91,204 @@ var (
 
 // StaleBaseError says that a patch's base is not the head.
 type StaleBaseError struct {
-	Base      int64
-	Head      VersionInfo
-	Conflicts []string // names and areas touched since, in words, at most 20
+	Base int64
+	Head VersionInfo
+	// Conflicts are the features and cells that the patch touches and that differ
+	// between the base and the head, in words, at most MaxConflicts. Empty means that
+	// the patch would be accepted with AllowRebase.
+	Conflicts []string
 }
 
-func (e *StaleBaseError) Error() string { return "stale base" }
+// Error names base, head and conflicts.
+func (e *StaleBaseError) Error() string {
+	s := fmt.Sprintf("base version %d is stale: the head is version %d", e.Base, e.Head.Version)
+	if len(e.Conflicts) == 0 {
+		return s + "; nothing that the patch touches differs since, so it would be accepted with rebasing allowed"
+	}
+	return s + "; " + strings.Join(e.Conflicts, "; ")
+}
 
 // Options set a store's bounds. The zero value asks for the defaults.
 type Options struct {
 	KeepVersions  int // contents held in memory per floor; 0: 1,000
 	SnapshotEvery int // versions between journal snapshots; 0: 200
-	Now           func() time.Time
+	// Now is read once for each version and written into its record; nil: time.Now.
+	Now func() time.Time
+	// Report is told of trouble that fails no call: a journal snapshot that could not
+	// be written and will be tried again. It may be called from another goroutine.
+	// nil: nobody is told.
+	Report func(error)
 }
 
 // Store keeps every floor's versions.
-type Store struct{}
+type Store struct {
+	journal journal.Journal
+	keep    int
+	every   int64
+	now     func() time.Time
+	report  func(error)
 
-var errTodo = errors.New("mapstore: not built yet")
+	ctx    context.Context // ends at Close
+	end    context.CancelFunc
+	create chan struct{} // a turn: holds one token, taken to add a floor
 
-// Recovery says what Open did.
-type Recovery struct {
-	Floors, Versions, Replayed int
-	Notes                      []string // what was found wrong and what was done, in words
+	mu      sync.RWMutex
+	floors  map[string]*floorState
+	refused map[string]error // floors that are in the journal but damaged
+	closed  bool
+	work    sync.WaitGroup // snapshots being written
 }
 
-// Open reads the journal and makes every floor's head ready.
-func Open(ctx context.Context, j journal.Journal, o Options) (*Store, Recovery, error) {
-	return nil, Recovery{}, errTodo
+// Close stops watches and lets go of the contents; calls after it fail with
+// ErrClosed, calls under way end as they would have. It waits for journal snapshots
+// that are being written. It does not close the journal.
+func (s *Store) Close() error {
+	s.mu.Lock()
+	s.closed = true
+	s.floors = nil
+	s.mu.Unlock()
+	s.end()
+	s.work.Wait()
+	return nil
 }
 
-// Close stops watches and lets go of the contents. It does not close the journal.
-func (s *Store) Close() error { return errTodo }
-
-// CreateFloor makes a floor at version 1; the same call again gives the first answer.
-func (s *Store) CreateFloor(ctx context.Context, id string, set floor.Settings, author, requestID string) (FloorInfo, error) {
-	return FloorInfo{}, errTodo
+// lookup is a floor's state.
+func (s *Store) lookup(id string) (*floorState, error) {
+	s.mu.RLock()
+	defer s.mu.RUnlock()
+	if s.closed {
+		return nil, ErrClosed
+	}
+	if f := s.floors[id]; f != nil {
+		return f, nil
+	}
+	if err := s.refused[id]; err != nil {
+		return nil, fmt.Errorf("floor %q is refused: %w", id, err)
+	}
+	return nil, fmt.Errorf("%w: %q", ErrNoFloor, cut(id))
 }
 
 // Floor is one floor.
-func (s *Store) Floor(id string) (FloorInfo, error) { return FloorInfo{}, errTodo }
-
-// Floors are all floors, by id.
-func (s *Store) Floors() []FloorInfo { return nil }
-
-// Push makes a new version. repeated says that the request id had been carried out
-// before and the first answer is given again.
-func (s *Store) Push(ctx context.Context, id string, p Patch) (v VersionInfo, repeated bool, err error) {
-	return v, false, errTodo
+func (s *Store) Floor(id string) (FloorInfo, error) {
+	f, err := s.lookup(id)
+	if err != nil {
+		return FloorInfo{}, err
+	}
+	return f.info(), nil
 }
 
-// Restore makes a new version equal to an old one.
-func (s *Store) Restore(ctx context.Context, id string, r Restore) (v VersionInfo, repeated bool, err error) {
-	return v, false, errTodo
+// Floors are all floors, by id, without those that are refused.
+func (s *Store) Floors() []FloorInfo {
+	s.mu.RLock()
+	defer s.mu.RUnlock()
+	list := make([]FloorInfo, 0, len(s.floors))
+	for _, f := range s.floors {
+		list = append(list, f.info())
+	}
+	slices.SortFunc(list, func(a, b FloorInfo) int { return cmp.Compare(a.ID, b.ID) })
+	return list
 }
 
 // Head is the newest version.
-func (s *Store) Head(id string) (*Snapshot, error) { return nil, errTodo }
-
-// At is one version, rebuilt from the journal when it is not in memory.
-func (s *Store) At(ctx context.Context, id string, version int64) (*Snapshot, error) {
-	return nil, errTodo
+func (s *Store) Head(id string) (*Snapshot, error) {
+	f, err := s.lookup(id)
+	if err != nil {
+		return nil, err
+	}
+	return f.head(), nil
 }
 
-// Await waits until the head is at least version and gives the head, or ctx's error.
-func (s *Store) Await(ctx context.Context, id string, version int64) (*Snapshot, error) {
-	return nil, errTodo
+// background runs work that Close waits for; not at all once the store is closed.
+func (s *Store) background(work func()) bool {
+	s.mu.RLock()
+	defer s.mu.RUnlock()
+	if s.closed {
+		return false
+	}
+	s.work.Go(work)
+	return true
 }
 
-// Versions are up to limit records, newest first, below the version before (0: from the head).
-func (s *Store) Versions(ctx context.Context, id string, before int64, limit int) ([]VersionInfo, error) {
-	return nil, errTodo
+// floorState is one floor in memory.
+type floorState struct {
+	id      string
+	created time.Time
+	write   chan struct{} // a turn: holds one token, taken to make a version
+	hash    [32]byte      // of the head's record; belongs to whoever has the turn
+
+	mu       sync.RWMutex
+	held     []*Snapshot // without a gap, rising, at most Store.keep; the last is the head
+	changed  chan struct{}
+	snapped  int64 // version of the newest journal snapshot
+	snapping bool  // one is being written
+	rebuilt  []*Snapshot
+	building map[int64]*build
 }
 
-// Edits are what a patched version was made of; nil for other kinds.
-func (s *Store) Edits(ctx context.Context, id string, version int64) ([]floor.Edit, error) {
-	return nil, errTodo
+func newTurn() chan struct{} {
+	c := make(chan struct{}, 1)
+	c <- struct{}{}
+	return c
 }
 
-// Event is a version that is new to a watch.
-type Event struct {
-	Info    VersionInfo
-	Skipped int64 // versions between this event and the one before that were not given
+// take waits for a turn; the result gives it back.
+func take(ctx context.Context, turn chan struct{}) (done func(), err error) {
+	if err := ctx.Err(); err != nil {
+		return nil, err
+	}
+	select {
+	case <-turn:
+		return func() { turn <- struct{}{} }, nil
+	case <-ctx.Done():
+		return nil, ctx.Err()
+	}
 }
 
-// Watch gives versions as they appear.
-type Watch struct{}
+func (f *floorState) info() FloorInfo {
+	h := f.head()
+	return FloorInfo{ID: f.id, Settings: h.Map.Settings(), Head: h.Info, Oldest: 1, Created: f.created}
+}
 
-// Watch starts after a version; 0 means that the head is the first event.
-func (s *Store) Watch(id string, after int64) (*Watch, error) { return nil, errTodo }
+func (f *floorState) head() *Snapshot {
+	f.mu.RLock()
+	defer f.mu.RUnlock()
+	return f.held[len(f.held)-1]
+}
 
-// Next waits for the next event, or gives ctx's error or ErrClosed.
-func (w *Watch) Next(ctx context.Context) (Event, error) { return Event{}, errTodo }
+// headAndChange is the head and what is closed when there is a newer one.
+func (f *floorState) headAndChange() (*Snapshot, <-chan struct{}) {
+	f.mu.RLock()
+	defer f.mu.RUnlock()
+	return f.held[len(f.held)-1], f.changed
+}
 
-// Close ends the watch.
-func (w *Watch) Close() {}
+// get is a version when it is held in memory, else nil.
+func (f *floorState) get(version int64) *Snapshot {
+	f.mu.RLock()
+	defer f.mu.RUnlock()
+	return f.getLocked(version)
+}
+
+func (f *floorState) getLocked(version int64) *Snapshot {
+	if len(f.held) == 0 {
+		return nil
+	}
+	if i := version - f.held[0].Info.Version; i >= 0 && i < int64(len(f.held)) {
+		return f.held[i]
+	}
+	return nil
+}
+
+// publish makes snap the head. The caller has the turn.
+func (f *floorState) publish(snap *Snapshot, hash [32]byte, keep int) {
+	f.hash = hash
+	f.mu.Lock()
+	defer f.mu.Unlock()
+	f.held = append(f.held, snap)
+	for len(f.held) > keep {
+		f.held[0] = nil
+		f.held = f.held[1:]
+	}
+	close(f.changed)
+	f.changed = make(chan struct{})
+}
