@@ -30,7 +30,7 @@ func newMap(s Settings, t tree, names *nameNode) *Map {
 	m := &Map{settings: s, tree: t, names: names}
 	h := sha256.New()
 	h.Write([]byte("wideberth floor content 1\n"))
-	h.Write(EncodeSettings(s))
+	h.Write(appendSettings(nil, s))
 	h.Write(t.root.hash[:])
 	if names != nil {
 		h.Write(names.hash[:])

@@ -169,8 +169,8 @@ func (n *nameNode) walk(yield func(*entry) bool) bool {
 }
 
 // diffNames calls found for every entry that differs between two trees, in no
-// particular order, and skips what they share. cut and other cut are how many
-// bytes of the roots' labels are already matched. Either root may be nil.
+// particular order, and skips what they share. aCut and bCut are how many bytes of
+// the roots' labels are already matched. Either root may be nil.
 func diffNames(a *nameNode, aCut int, b *nameNode, bCut int, found func(before, after *entry)) {
 	switch {
 	case a == b && aCut == bCut:

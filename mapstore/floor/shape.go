@@ -125,6 +125,40 @@ func (s Shape) SegmentDist(a, b geom.Point) (float64, geom.Point) {
 	return max(0, best-s.Grow), at
 }
 
+// DistAtLeast says, exactly, whether p is at least um from the shape: the test for
+// "clearance >= required, equality admitted". um must be a whole number.
+func (s Shape) DistAtLeast(p geom.Point, um float64) bool {
+	if um <= 0 {
+		return true
+	}
+	if s.coreContains(p) {
+		return false
+	}
+	for a, b := range s.Edges {
+		if !geom.SegmentDistAtLeast(p, a, b, s.Grow+um) {
+			return false
+		}
+	}
+	return true
+}
+
+// SegmentDistAtLeast says, exactly, whether every point of the segment ab is at
+// least um from the shape. um must be a whole number.
+func (s Shape) SegmentDistAtLeast(a, b geom.Point, um float64) bool {
+	if um <= 0 {
+		return true
+	}
+	if s.coreContains(a) {
+		return false
+	}
+	for c, d := range s.Edges {
+		if !geom.SegmentSegmentDistAtLeast(a, b, c, d, s.Grow+um) {
+			return false
+		}
+	}
+	return true
+}
+
 // RectDist is the distance between the shape and the closed rectangle r, 0 when
 // they share a point, +Inf when r is empty.
 func (s Shape) RectDist(r geom.Rect) float64 {
