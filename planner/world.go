@@ -3,39 +3,73 @@ package planner
 import (
 	"context"
 	"errors"
+	"reflect"
 
 	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/clearance"
+	"example.com/wideberth/planner/internal/mask"
+	"example.com/wideberth/planner/internal/roadmap"
+	"example.com/wideberth/planner/internal/rules"
 )
 
-// World is one version made ready for planning. It is immutable and safe for any
-// number of readers.
-type World struct{}
-
-var errTodo = errors.New("planner: not built yet")
-
-// NewWorld makes a version ready from scratch.
-func NewWorld(ctx context.Context, m *floor.Map) (*World, error) { return nil, errTodo }
-
-// Advance makes m ready from the world of an earlier (or later) version of the
-// same floor, with work proportional to what differs.
-func (w *World) Advance(ctx context.Context, m *floor.Map) (*World, error) { return nil, errTodo }
-
-// Map is the version the world was made from.
-func (w *World) Map() *floor.Map { return nil }
-
-// Plan answers a request. The error is ctx's, or a *RequestError; "no way" is a Refusal.
-// A deadline that passes during the search gives a Refusal with OutOfTime when
-// the deadline is ctx's own cause ErrTimeBudget, else ctx's error.
-func (w *World) Plan(ctx context.Context, q Request) (Answer, error) { return Answer{}, errTodo }
-
-// Replan answers a replan request.
-func (w *World) Replan(ctx context.Context, q ReplanRequest) (ReplanAnswer, error) {
-	return ReplanAnswer{}, errTodo
+// World is one version made ready for planning: its clearance field, its zones, and
+// the free cells of the bodies that were planned for. What it answers never
+// changes; it is safe for any number of readers.
+type World struct {
+	m     *floor.Map
+	field *clearance.Field
+	rules *rules.Rules
+	masks *mask.Set
+	frame roadmap.Frame
 }
-
-// Advise gives the hint for one report.
-func (w *World) Advise(s GuideSetup, r GuideReport) Hint { return Hint{} }
 
 // ErrTimeBudget is the cause to set on a context whose deadline is the request's own
 // time budget (context.WithTimeoutCause).
 var ErrTimeBudget = errors.New("planner: time budget spent")
+
+// NewWorld makes a version ready from scratch, in time linear in its cells. The error
+// is ctx's, or says which of the floor's settings is out of range.
+func NewWorld(ctx context.Context, m *floor.Map) (*World, error) {
+	f, err := clearance.Build(ctx, m)
+	if err != nil {
+		return nil, err
+	}
+	r := rules.Of(m)
+	return &World{m: m, field: f, rules: r, masks: mask.NewSet(f, r), frame: roadmap.FrameOf(m.Settings())}, nil
+}
+
+// Advance makes m ready from the world of an earlier (or later) version of the
+// same floor, with work proportional to what differs, plus the number of features
+// and of blocks of 64x64 cells. The result answers as NewWorld's would, bit for bit.
+func (w *World) Advance(ctx context.Context, m *floor.Map) (*World, error) {
+	if m.Settings() != w.m.Settings() {
+		return NewWorld(ctx, m)
+	}
+	change := floor.Diff(w.m, m)
+	f, err := w.field.Advance(ctx, m, change)
+	if err != nil {
+		return nil, err
+	}
+	r := rules.Of(m)
+	return &World{m: m, field: f, rules: r, masks: w.masks.Carry(f, r, closedBounds(change)), frame: w.frame}, nil
+}
+
+// closedBounds are the bounds of the closed zones that differ, before and after.
+func closedBounds(c floor.Change) []geom.Rect {
+	var rs []geom.Rect
+	for _, fc := range c.Features {
+		if fc.Before != nil && fc.After != nil && fc.Before.Kind == fc.After.Kind && reflect.DeepEqual(fc.Before.Shape, fc.After.Shape) {
+			continue
+		}
+		for _, f := range []*floor.Feature{fc.Before, fc.After} {
+			if f != nil && f.Kind == floor.ClosedZone {
+				rs = append(rs, f.Shape.Bounds())
+			}
+		}
+	}
+	return rs
+}
+
+// Map is the version the world was made from.
+func (w *World) Map() *floor.Map { return w.m }

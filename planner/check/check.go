@@ -1,0 +1,263 @@
+// Package check goes over a route once more with code of its own. It shares nothing
+// with the search, the clearance field or the geometry they use: it reads the
+// version's cells and features themselves and does its own arithmetic, plainly.
+// A fault in either is then likely to show as a disagreement between them.
+package check
+
+import (
+	"fmt"
+	"math"
+	"math/bits"
+
+	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+)
+
+// SlackUm is how far, in micrometres, float64's rounding may put the checker's
+// distances off: a nanometre, where the error of a distance of d is about 1e-15·d for
+// solids near the route and no more than 1e-4 of this for any floor of a kilometre.
+const SlackUm = 1e-3
+
+// BackwardUm is how far, in micrometres, a straight piece may go against a one-way zone:
+// what rounding its two ends to whole micrometres may amount to.
+const BackwardUm = 2
+
+// Finding is what was found about a route.
+type Finding struct {
+	Problem    string  // "" when the route keeps what it must
+	SmallestUm float64 // smallest distance to a solid, at most the floor's cap
+	Piece      int     // the first straight piece, from 0, with that distance
+}
+
+// Way checks a polyline of two or more points: every point of it is on the floor, keeps
+// needUm from every solid, and radiusUm (at least 1 µm) from every closed zone,
+// and none of its pieces goes backward in a one-way zone. Time is proportional to
+// the cells within the smallest distance found, 64 at a time, plus the features.
+func Way(m *floor.Map, pts []geom.Point, needUm, radiusUm int64) Finding {
+	if len(pts) == 1 {
+		pts = append(pts, pts[0])
+	}
+	w := newWalker(m, pts)
+	f := Finding{SmallestUm: w.cap}
+	for i := 1; i < len(pts); i++ {
+		a, b := pts[i-1], pts[i]
+		if !w.onFloor(a) || !w.onFloor(b) {
+			f.Problem = fmt.Sprintf("piece %d leaves the floor", i-1)
+			return f
+		}
+		d, what := w.distance(a, b, f.SmallestUm, float64(needUm))
+		if d < f.SmallestUm {
+			f.SmallestUm, f.Piece = d, i-1
+		}
+		if d < float64(needUm)-SlackUm {
+			f.Problem = fmt.Sprintf("piece %d comes within %.3f µm of %s; %d µm are needed", i-1, d, what, needUm)
+			return f
+		}
+		if z := w.enters(a, b, float64(max(radiusUm, 1))); z != "" {
+			f.Problem = fmt.Sprintf("piece %d comes too near to the closed zone %s", i-1, z)
+			return f
+		}
+		if z := w.against(a, b); z != "" {
+			f.Problem = fmt.Sprintf("piece %d goes backward in the one-way zone %s", i-1, z)
+			return f
+		}
+	}
+	return f
+}
+
+// outline is a feature near the route.
+type outline struct {
+	f      *floor.Feature
+	lo, hi geom.Point // bounds, grown
+}
+
+type walker struct {
+	m                      *floor.Map
+	s                      floor.Settings
+	cap, h                 float64
+	lo, hi                 geom.Point // the floor
+	solids, closed, oneWay []outline
+	blocks                 map[int]*[floor.BlockSize]uint64
+}
+
+func newWalker(m *floor.Map, pts []geom.Point) *walker {
+	s := m.Settings()
+	w := &walker{m: m, s: s, cap: float64(s.CapUm), h: float64(s.ResolutionUm), blocks: map[int]*[floor.BlockSize]uint64{}}
+	w.lo = geom.Point{X: float64(s.OriginX), Y: float64(s.OriginY)}
+	w.hi = geom.Point{X: float64(s.OriginX + int64(s.Columns)*s.ResolutionUm), Y: float64(s.OriginY + int64(s.Rows)*s.ResolutionUm)}
+	lo, hi := extent(pts)
+	for f := range m.Features() {
+		o := outline{f: f}
+		o.lo, o.hi = geom.Point{X: math.Inf(1), Y: math.Inf(1)}, geom.Point{X: math.Inf(-1), Y: math.Inf(-1)}
+		for _, c := range f.Shape.Chains {
+			l, u := extent(c)
+			o.lo = geom.Point{X: min(o.lo.X, l.X-f.Shape.Grow), Y: min(o.lo.Y, l.Y-f.Shape.Grow)}
+			o.hi = geom.Point{X: max(o.hi.X, u.X+f.Shape.Grow), Y: max(o.hi.Y, u.Y+f.Shape.Grow)}
+		}
+		reach := max(w.cap, 10e6) // no body is wider than 10 m
+		if o.apart(lo, hi) >= reach {
+			continue
+		}
+		switch f.Kind {
+		case floor.Solid:
+			w.solids = append(w.solids, o)
+		case floor.ClosedZone:
+			w.closed = append(w.closed, o)
+		case floor.OneWayZone:
+			w.oneWay = append(w.oneWay, o)
+		}
+	}
+	return w
+}
+
+func extent(pts []geom.Point) (lo, hi geom.Point) {
+	lo, hi = geom.Point{X: math.Inf(1), Y: math.Inf(1)}, geom.Point{X: math.Inf(-1), Y: math.Inf(-1)}
+	for _, p := range pts {
+		lo = geom.Point{X: min(lo.X, p.X), Y: min(lo.Y, p.Y)}
+		hi = geom.Point{X: max(hi.X, p.X), Y: max(hi.Y, p.Y)}
+	}
+	return lo, hi
+}
+
+// apart is how far apart, at least, the outline and a box are.
+func (o *outline) apart(lo, hi geom.Point) float64 {
+	return max(o.lo.X-hi.X, lo.X-o.hi.X, o.lo.Y-hi.Y, lo.Y-o.hi.Y)
+}
+
+func (w *walker) onFloor(p geom.Point) bool {
+	return p.X >= w.lo.X && p.X <= w.hi.X && p.Y >= w.lo.Y && p.Y <= w.hi.Y
+}
+
+// distance is the smallest distance from ab to a solid, where it is below most, else
+// most or more; and what it is to. Windows about the piece grow until something is
+// found in one, or they are as wide as most.
+func (w *walker) distance(a, b geom.Point, most, need float64) (float64, string) {
+	best, what := most, "something"
+	if !w.s.OpenBorder {
+		for _, p := range [2]geom.Point{a, b} {
+			if d := min(p.X-w.lo.X, w.hi.X-p.X, p.Y-w.lo.Y, w.hi.Y-p.Y); d < best {
+				best, what = d, "the border"
+			}
+		}
+	}
+	lo, hi := extent([]geom.Point{a, b})
+	for i := range w.solids {
+		o := &w.solids[i]
+		if o.apart(lo, hi) >= best {
+			continue
+		}
+		if d := shapeDistance(o.f.Shape, a, b); d < best {
+			best, what = d, o.f.Name
+		}
+	}
+	for reach := need + w.h; ; reach *= 2 {
+		reach = min(reach, best)
+		if d := w.cells(a, b, reach); d < best {
+			best, what = d, "a cell"
+		}
+		if reach >= best {
+			return best, what
+		}
+	}
+}
+
+// cells is the smallest distance from ab to a solid cell below reach, else reach.
+func (w *walker) cells(a, b geom.Point, reach float64) float64 {
+	if b.Y < a.Y {
+		a, b = b, a
+	}
+	best := reach
+	first := int(math.Floor((a.Y - reach - w.lo.Y) / w.h))
+	last := int(math.Floor((b.Y + reach - w.lo.Y) / w.h))
+	for row := max(0, first); row <= min(w.s.Rows-1, last); row++ {
+		y0 := w.lo.Y + float64(row)*w.h
+		y1 := y0 + w.h
+		gap := max(y0-b.Y, a.Y-y1, 0)
+		if gap >= best {
+			continue
+		}
+		// The part of ab within best of the row, and best to either side of it.
+		x0, x1 := min(a.X, b.X), max(a.X, b.X)
+		if b.Y > a.Y {
+			t0 := max(0, (y0-best-a.Y)/(b.Y-a.Y))
+			t1 := min(1, (y1+best-a.Y)/(b.Y-a.Y))
+			p, q := a.X+t0*(b.X-a.X), a.X+t1*(b.X-a.X)
+			x0, x1 = min(p, q), max(p, q)
+		}
+		c0 := max(0, int(math.Floor((x0-best-w.lo.X)/w.h)))
+		c1 := min(w.s.Columns-1, int(math.Floor((x1+best-w.lo.X)/w.h)))
+		best = w.row(a, b, row, c0, c1, gap, best)
+	}
+	return best
+}
+
+// row looks at the solid cells of a row from column c0 to c1. gap is how near any of
+// them may be.
+func (w *walker) row(a, b geom.Point, row, c0, c1 int, gap, best float64) float64 {
+	for c := c0; c <= c1; {
+		bx := c / floor.BlockSize
+		word := uint64(0)
+		if blk := w.block(bx, row/floor.BlockSize); blk != nil {
+			word = blk[row%floor.BlockSize] >> (c % floor.BlockSize) << (c % floor.BlockSize)
+		}
+		end := min(c1, bx*floor.BlockSize+floor.BlockSize-1)
+		for word != 0 {
+			col := bx*floor.BlockSize + bits.TrailingZeros64(word)
+			word &= word - 1
+			if col > end {
+				break
+			}
+			x, y := w.lo.X+float64(col)*w.h, w.lo.Y+float64(row)*w.h
+			best = min(best, boxDistance(x, y, x+w.h, y+w.h, a, b))
+			if gap >= best {
+				return best
+			}
+		}
+		c = end + 1
+	}
+	return best
+}
+
+// block is the solid cells of a block, nil when there are none.
+func (w *walker) block(bx, by int) *[floor.BlockSize]uint64 {
+	key := by<<20 | bx
+	b, ok := w.blocks[key]
+	if !ok {
+		var words [floor.BlockSize]uint64
+		if any, _ := w.m.SolidBits(bx, by, &words); any {
+			b = &words
+		}
+		w.blocks[key] = b
+	}
+	return b
+}
+
+// enters is the first closed zone nearer to ab than radius.
+func (w *walker) enters(a, b geom.Point, radius float64) string {
+	lo, hi := extent([]geom.Point{a, b})
+	for i := range w.closed {
+		o := &w.closed[i]
+		if o.apart(lo, hi) < radius && shapeDistance(o.f.Shape, a, b) < radius-SlackUm {
+			return o.f.Name
+		}
+	}
+	return ""
+}
+
+// against is the first one-way zone in which ab goes backward.
+func (w *walker) against(a, b geom.Point) string {
+	lo, hi := extent([]geom.Point{a, b})
+	for i := range w.oneWay {
+		o := &w.oneWay[i]
+		ahead := (b.X-a.X)*math.Cos(o.f.Heading) + (b.Y-a.Y)*math.Sin(o.f.Heading)
+		if o.apart(lo, hi) > 0 || ahead >= -BackwardUm {
+			continue
+		}
+		for _, share := range insideShares(o.f.Shape, a, b) {
+			if share*ahead < -BackwardUm-SlackUm {
+				return o.f.Name
+			}
+		}
+	}
+	return ""
+}

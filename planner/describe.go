@@ -1,0 +1,285 @@
+package planner
+
+import (
+	"context"
+	"math"
+	"slices"
+
+	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/clearance"
+	"example.com/wideberth/planner/internal/judge"
+)
+
+// Describing a course adds points to it: where legs meet, where clearance is
+// smallest, where a speed limit begins or ends, and as many as the spacing asks for.
+// An added point is rounded to whole micrometres, so that it survives being sent,
+// and only where the course still keeps what it kept; else it is left as it falls.
+const (
+	// leastPiece, in micrometres, is how near an added point may be to another.
+	leastPiece = 100
+	// roundingUm is float64's rounding of exact distances, with room to spare: a
+	// clearance this little below a whole micrometre, or below a threshold, is that.
+	roundingUm = 1e-6
+)
+
+// ClearanceShortUm is how far, in micrometres, a reported clearance may be below the
+// truth: it is exact but for being rounded down to whole micrometres.
+const ClearanceShortUm = 1
+
+// piece is a straight part of a described course.
+type piece struct {
+	a, b geom.Point
+	near clearance.Nearest // smallest clearance along it
+}
+
+func (p *piece) tight(below float64) bool { return p.near.Um < below-roundingUm }
+
+// outline is a course cut up into pieces.
+type outline struct {
+	t      *task
+	below  float64 // tight below this
+	pieces []piece
+}
+
+func (t *task) outline(pts []geom.Point) *outline {
+	o := &outline{t: t, below: float64(t.q.Options.TightBelowUm)}
+	for i := 1; i < len(pts); i++ {
+		a, b := pts[i-1], pts[i]
+		o.pieces = append(o.pieces, piece{a, b, t.j.Segment(a, b)})
+		cuts := t.w.rules.SpeedCuts(nil, a, b)
+		if o.below > 0 {
+			for _, s := range t.j.Tight(a, b, o.below-roundingUm) {
+				cuts = append(cuts, s.From, s.To)
+			}
+		}
+		slices.Sort(cuts)
+		for _, share := range slices.Compact(cuts) {
+			o.cut(len(o.pieces)-1, judge.Along(a, b, share))
+		}
+	}
+	return o
+}
+
+// cut adds a point near at to piece i, if it is far enough from the piece's ends and if the
+// pieces it makes are as good: they may be driven, and neither is tight unless
+// the whole was.
+func (o *outline) cut(i int, at geom.Point) bool {
+	w := o.pieces[i]
+	if geom.Dist(w.a, at) < leastPiece || geom.Dist(at, w.b) < leastPiece {
+		return false
+	}
+	var spare *[2]piece
+	for _, p := range roundings(at) {
+		if !o.t.j.Sight(w.a, p) || !o.t.j.Sight(p, w.b) {
+			continue
+		}
+		two := [2]piece{{w.a, p, o.t.j.Segment(w.a, p)}, {p, w.b, o.t.j.Segment(p, w.b)}}
+		was, is0, is1 := w.tight(o.below), two[0].tight(o.below), two[1].tight(o.below)
+		if !was && (is0 || is1) {
+			continue
+		}
+		if was && is0 && is1 && p != at {
+			// One side was to be open, perhaps, and rounding made it tight.
+			if spare == nil {
+				spare = &two
+			}
+			continue
+		}
+		o.pieces = slices.Replace(o.pieces, i, i+1, two[0], two[1])
+		return true
+	}
+	if spare == nil {
+		return false
+	}
+	o.pieces = slices.Replace(o.pieces, i, i+1, spare[0], spare[1])
+	return true
+}
+
+// roundings are the whole-micrometre places about p, nearest first, and p itself.
+func roundings(p geom.Point) []geom.Point {
+	r := geom.Point{X: math.Round(p.X), Y: math.Round(p.Y)}
+	if r == p {
+		return []geom.Point{p}
+	}
+	var ps []geom.Point
+	for dy := -1.0; dy <= 1; dy++ {
+		for dx := -1.0; dx <= 1; dx++ {
+			ps = append(ps, geom.Point{X: r.X + dx, Y: r.Y + dy})
+		}
+	}
+	slices.SortStableFunc(ps, func(a, b geom.Point) int {
+		da, db := geom.Dist(a, p), geom.Dist(b, p)
+		switch {
+		case da < db:
+			return -1
+		case da > db:
+			return 1
+		}
+		return 0
+	})
+	return append(ps, p)
+}
+
+// legs gives the index of each leg's first piece, and the number of pieces last.
+func (o *outline) legs() []int {
+	starts := []int{0}
+	for i := 1; i < len(o.pieces); i++ {
+		if o.pieces[i].tight(o.below) != o.pieces[i-1].tight(o.below) {
+			starts = append(starts, i)
+		}
+	}
+	return append(starts, len(o.pieces))
+}
+
+// narrowest is the first piece of least clearance from piece i up to k.
+func (o *outline) narrowest(i, k int) int {
+	best := i
+	for ; i < k; i++ {
+		if o.pieces[i].near.Um < o.pieces[best].near.Um {
+			best = i
+		}
+	}
+	return best
+}
+
+// markSmallest makes each leg's place of smallest clearance a point.
+func (o *outline) markSmallest() {
+	starts := o.legs()
+	for n := len(starts) - 1; n > 0; n-- {
+		i := o.narrowest(starts[n-1], starts[n])
+		o.cut(i, o.pieces[i].near.On)
+	}
+}
+
+// space cuts pieces longer than most into equal parts.
+func (o *outline) space(most float64) {
+	for i := 0; i < len(o.pieces); i++ {
+		p := o.pieces[i]
+		n := math.Ceil(geom.Dist(p.a, p.b) / most)
+		for k := 1.0; k < n; k++ {
+			if o.cut(i, judge.Along(p.a, p.b, k/n)) {
+				i++
+			}
+		}
+	}
+}
+
+// describe turns a course into a route.
+func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
+	o := t.outline(c.pts)
+	o.markSmallest()
+	if most := t.q.Options.MaxSpacingUm; most > 0 {
+		long := 0.0
+		for i := range o.pieces {
+			long += geom.Dist(o.pieces[i].a, o.pieces[i].b)
+		}
+		if long/float64(most)+float64(len(o.pieces)) > MaxRoutePoints {
+			return nil, &RequestError{"options.max_spacing_m", "the route would have more than 100000 points: want a wider spacing"}
+		}
+		o.space(float64(most))
+	}
+	if ctx.Err() != nil {
+		return nil, context.Cause(ctx)
+	}
+	r := &Route{Start: t.q.Start, Goal: t.q.Goal, SmallestUm: math.MaxInt64}
+	pts := t.points(o)
+	starts := o.legs()
+	for n := 1; n < len(starts); n++ {
+		l := t.leg(o, pts, starts[n-1], starts[n])
+		r.Legs = append(r.Legs, l)
+		r.DurationS += l.DurationS
+		if l.SmallestUm < r.SmallestUm {
+			r.SmallestUm, r.SmallestAt = l.SmallestUm, l.SmallestAt
+		}
+	}
+	r.LengthUm = pts[len(pts)-1].S
+	for i := range o.pieces {
+		cost, _ := t.j.Weigh(o.pieces[i].a, o.pieces[i].b)
+		r.CostUm += cost
+	}
+	r.Bound = t.bound(c, r)
+	return r, nil
+}
+
+// points are the route's points: the pieces' ends.
+func (t *task) points(o *outline) []RoutePoint {
+	n := len(o.pieces)
+	pts := make([]RoutePoint, n+1)
+	for i := range pts {
+		p := &pts[i]
+		if i < n {
+			w := &o.pieces[i]
+			p.At, p.Heading = w.a, bearing(w.a, w.b)
+			if w.a == w.b {
+				p.Heading = t.q.Start.Heading
+			}
+			p.SpeedCeiling, p.SpeedCause = t.ceiling(w.a, w.b, p.Heading)
+		} else {
+			p.At, p.Heading = o.pieces[n-1].b, t.q.Goal.Heading
+			p.SpeedCeiling, p.SpeedCause = t.ceiling(p.At, p.At, p.Heading)
+		}
+		if i > 0 {
+			p.S = pts[i-1].S + geom.Dist(pts[i-1].At, p.At)
+		}
+		p.ClearanceUm = t.roundedDown(t.j.At(p.At).Um + roundingUm)
+	}
+	return pts
+}
+
+// leg describes the pieces from i up to k.
+func (t *task) leg(o *outline, pts []RoutePoint, i, k int) Leg {
+	l := Leg{Tight: o.pieces[i].tight(o.below), Points: slices.Clone(pts[i : k+1]), LengthUm: pts[k].S - pts[i].S}
+	l.SpeedCeiling, l.SpeedCause = t.q.Body.MaxSpeed, CauseBody
+	lower := func(v float64, c SpeedCause) {
+		if v < l.SpeedCeiling {
+			l.SpeedCeiling, l.SpeedCause = v, c
+		}
+	}
+	for n := i; n < k; n++ {
+		w := &o.pieces[n]
+		if long := geom.Dist(w.a, w.b); long > 0 {
+			l.DurationS += geom.Metres(long) / pts[n].SpeedCeiling
+		}
+		lower(t.w.rules.SpeedLimit(w.a, w.b), CauseZone)
+		l.BeyondSensing = l.BeyondSensing || t.beyondSensing(w.a, w.b)
+	}
+	for n := max(i, 1); n <= min(k, len(pts)-2); n++ {
+		lower(pts[n].SpeedCeiling, pts[n].SpeedCause)
+	}
+	n := o.narrowest(i, k)
+	w := &o.pieces[n]
+	l.SmallestUm = t.roundedDown(w.near.Um + roundingUm)
+	l.SmallestAt, l.SmallestS = w.near.On, pts[n].S+geom.Dist(w.a, w.near.On)
+	if w.near.Feature != nil {
+		l.Nearest = w.near.Feature.Name
+	}
+	l.LeftUm = t.room(l.SmallestAt, pts[n].Heading+math.Pi/2)
+	l.RightUm = t.room(l.SmallestAt, pts[n].Heading-math.Pi/2)
+	return l
+}
+
+// room is the free width from p along a direction, at most the floor's cap.
+func (t *task) room(p geom.Point, heading float64) int64 {
+	return t.roundedDown(t.w.travel(p, heading, 0, t.w.field.Cap()))
+}
+
+// bound says how good a route is. Its lower bound is the straight distance.
+func (t *task) bound(c *course, r *Route) Bound {
+	b := Bound{Kind: c.kind, LowerUm: geom.Dist(t.q.Start.At, t.q.Goal.At), ClearanceShortUm: ClearanceShortUm}
+	if b.Kind == RoadmapOptimum && r.CostUm < float64(c.roadmap*(1-1e-9)) {
+		// The search judged cells as a whole; the path itself is tight less often.
+		b.Kind = AtMostRoadmapOptimum
+	}
+	if b.Kind != Straight {
+		b.WidthBiasUm = widthBias(t.w.frame.Res)
+	}
+	return b
+}
+
+// widthBias is by how much, in micrometres, a passage may be wider than a body needs and
+// still be missed where cells are free only as a whole. A curve down the middle of
+// a passage passes through a chain of cells that share sides, and no point of
+// those is farther from the curve than a cell's diagonal: with a diagonal more
+// of clearance on either side they are all free. Passages along the axes need only
+// one cell on either side.
+func widthBias(res float64) int64 { return int64(math.Ceil(2 * math.Sqrt2 * res)) }

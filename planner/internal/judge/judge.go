@@ -1,0 +1,241 @@
+// Package judge decides, exactly, what a body may do on one version of a floor: where
+// it may stand, which straight pieces it may drive, and what they cost.
+package judge
+
+import (
+	"math"
+
+	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/clearance"
+	"example.com/wideberth/planner/internal/rules"
+)
+
+// LeastNeedUm is the clearance that a body of required clearance 0 keeps: with it, a
+// point is out of solids and does not slip between two that touch.
+const LeastNeedUm = 1
+
+// Judge is one body on one version. It counts what it does, and is for one goroutine.
+type Judge struct {
+	Field    *clearance.Field
+	Rules    *rules.Rules
+	NeedUm   int64   // required clearance, at least LeastNeedUm
+	RadiusUm int64   // kept from closed zones
+	WideUm   float64 // the preferred clearance, below which metres cost more
+	Weight   float64 // by how much more; 0: all metres are alike
+
+	Sights, Exacts int64 // lines of sight tried, distances evaluated
+}
+
+// New makes a judge for a body's required clearance and radius.
+func New(f *clearance.Field, r *rules.Rules, requiredUm, radiusUm int64) *Judge {
+	return &Judge{Field: f, Rules: r, NeedUm: max(requiredUm, LeastNeedUm), RadiusUm: radiusUm}
+}
+
+// At is the field's answer, counted.
+func (j *Judge) At(p geom.Point) clearance.Nearest {
+	j.Exacts++
+	return j.Field.At(p)
+}
+
+// Segment is the field's answer, counted.
+func (j *Judge) Segment(a, b geom.Point) clearance.Nearest {
+	j.Exacts++
+	return j.Field.Segment(a, b)
+}
+
+// Stands says whether the body may stand at p. When not, zone is the closed zone that
+// forbids it, nil when clearance or the floor's edge does.
+func (j *Judge) Stands(p geom.Point) (ok bool, zone *floor.Feature) {
+	if !j.Field.Bounds().Contains(p) || j.At(p).Um < float64(j.NeedUm) {
+		return false, nil
+	}
+	zone = j.Rules.Entered(p, p, float64(j.RadiusUm))
+	return zone == nil, zone
+}
+
+// Sight says whether the body may drive straight from a to b, both of which are on
+// the floor.
+func (j *Judge) Sight(a, b geom.Point) bool {
+	j.Sights++
+	return j.Field.SegmentClear(a, b, j.NeedUm) && j.Allowed(a, b)
+}
+
+// Allowed says whether zones let the body drive straight from a to b.
+func (j *Judge) Allowed(a, b geom.Point) bool {
+	return j.Rules.Entered(a, b, float64(j.RadiusUm)) == nil && j.Rules.Against(a, b) == nil
+}
+
+// Weigh is what the straight piece ab costs, in micrometres, and the smallest
+// clearance along it as far as it is below WideUm. With no weight, clearance is not
+// looked at: least is then 0.
+func (j *Judge) Weigh(a, b geom.Point) (cost, least float64) {
+	long := geom.Dist(a, b)
+	if j.Weight == 0 {
+		return long, 0
+	}
+	if least = j.Segment(a, b).Um; least >= j.WideUm {
+		return long, j.WideUm
+	}
+	share := 0.0
+	for _, s := range j.Tight(a, b, j.WideUm) {
+		share += s.To - s.From
+	}
+	return long + float64(j.Weight*float64(share*long)), least
+}
+
+// TightResolution is the length, in micrometres, down to which Tight tells
+// stretches apart.
+const TightResolution = 1000
+
+// Tight gives the stretches of ab where clearance is below um, in order and apart from one
+// another. What it leaves out has um or more throughout; a stretch may be longer
+// than the truth by up to TightResolution at either end.
+//
+// The smallest clearance over a stretch is exact (clearance.Field.Segment). For
+// the largest: the distance to a convex set is a convex function along a line,
+// largest at an end, so that one convex piece of a solid which both ends are near
+// to settles all between them. What neither settles is halved.
+func (j *Judge) Tight(a, b geom.Point, um float64) []geom.Span {
+	if a == b {
+		if j.At(a).Um < um {
+			return []geom.Span{{From: 0, To: 1}}
+		}
+		return nil
+	}
+	t := tightener{j: j, a: a, b: b, um: um, long: geom.Dist(a, b)}
+	t.halve(0, 1, j.At(a), j.At(b))
+	return t.out
+}
+
+type tightener struct {
+	j    *Judge
+	a, b geom.Point
+	um   float64
+	long float64
+	out  []geom.Span
+}
+
+func (t *tightener) halve(from, to float64, na, nb clearance.Nearest) {
+	a, b := na.On, nb.On
+	if t.j.Segment(a, b).Um >= t.um {
+		return
+	}
+	settled := float64((to-from)*t.long) <= TightResolution ||
+		na.Um < t.um && t.j.ceiling(a, b, na) < t.um ||
+		nb.Um < t.um && t.j.ceiling(a, b, nb) < t.um
+	if settled {
+		if n := len(t.out); n > 0 && t.out[n-1].To == from {
+			t.out[n-1].To = to
+		} else {
+			t.out = append(t.out, geom.Span{From: from, To: to})
+		}
+		return
+	}
+	mid := from + (to-from)/2
+	nm := t.j.At(Along(t.a, t.b, mid))
+	t.halve(from, mid, na, nm)
+	t.halve(mid, to, nm, nb)
+}
+
+// Along is the point at a share of the way from a to b.
+func Along(a, b geom.Point, share float64) geom.Point {
+	switch share {
+	case 0:
+		return a
+	case 1:
+		return b
+	}
+	return geom.Point{X: a.X + float64(share*(b.X-a.X)), Y: a.Y + float64(share*(b.Y-a.Y))}
+}
+
+// ceiling bounds the clearance over ab from above, by a convex piece of the solid n.
+func (j *Judge) ceiling(a, b geom.Point, n clearance.Nearest) float64 {
+	switch {
+	case n.Feature != nil:
+		return shapeCeiling(&n.Feature.Shape, a, b)
+	case n.Border:
+		return borderCeiling(j.Field.Bounds(), n.At, a, b)
+	case n.Cell:
+		return j.cellCeiling(a, b, n)
+	}
+	return math.Inf(1)
+}
+
+// shapeCeiling takes an edge of the outline: a convex part of the solid.
+func shapeCeiling(s *floor.Shape, a, b geom.Point) float64 {
+	best := math.Inf(1)
+	for c, d := range s.Edges {
+		da, _ := geom.SegmentDist(a, c, d)
+		if da >= best {
+			continue
+		}
+		db, _ := geom.SegmentDist(b, c, d)
+		best = min(best, max(da, db))
+	}
+	return best - s.Grow
+}
+
+// borderCeiling takes the side that at lies on.
+func borderCeiling(r geom.Rect, at, a, b geom.Point) float64 {
+	switch {
+	case at.X == r.Min.X:
+		return max(a.X, b.X) - r.Min.X
+	case at.X == r.Max.X:
+		return r.Max.X - min(a.X, b.X)
+	case at.Y == r.Min.Y:
+		return max(a.Y, b.Y) - r.Min.Y
+	case at.Y == r.Max.Y:
+		return r.Max.Y - min(a.Y, b.Y)
+	}
+	return math.Inf(1)
+}
+
+// cellCeiling takes the run of solid cells, along its row or its column, about the
+// cell that n names.
+func (j *Judge) cellCeiling(a, b geom.Point, n clearance.Nearest) float64 {
+	m := j.Field.Map()
+	s := m.Settings()
+	res := float64(s.ResolutionUm)
+	o := geom.Point{X: float64(s.OriginX), Y: float64(s.OriginY)}
+	d := geom.Dist(n.On, n.At)
+	if d == 0 {
+		return math.Inf(1)
+	}
+	// A micrometre beyond the outline, away from the place asked about.
+	c := int(math.Floor((n.At.X + (n.At.X-n.On.X)/d - o.X) / res))
+	r := int(math.Floor((n.At.Y + (n.At.Y-n.On.Y)/d - o.Y) / res))
+	if c < 0 || r < 0 || c >= s.Columns || r >= s.Rows || !m.Solid(c, r) {
+		return math.Inf(1)
+	}
+	cell := func(c0, r0, c1, r1 int) float64 {
+		q := geom.Rect{
+			Min: geom.Point{X: o.X + float64(float64(c0)*res), Y: o.Y + float64(float64(r0)*res)},
+			Max: geom.Point{X: o.X + float64(float64(c1+1)*res), Y: o.Y + float64(float64(r1+1)*res)},
+		}
+		return max(q.Dist(a), q.Dist(b))
+	}
+	span := func(v, w, origin float64, limit int) (lo, hi int) {
+		lo = int(max(0, math.Floor((min(v, w)-origin)/res)))
+		hi = int(min(float64(limit-1), math.Floor((max(v, w)-origin)/res)))
+		return lo, hi
+	}
+	lo, hi := span(a.X, b.X, o.X, s.Columns)
+	c0, c1 := c, c
+	for c0 > lo && m.Solid(c0-1, r) {
+		c0--
+	}
+	for c1 < hi && m.Solid(c1+1, r) {
+		c1++
+	}
+	best := cell(c0, r, c1, r)
+	lo, hi = span(a.Y, b.Y, o.Y, s.Rows)
+	r0, r1 := r, r
+	for r0 > lo && m.Solid(c, r0-1) {
+		r0--
+	}
+	for r1 < hi && m.Solid(c, r1+1) {
+		r1++
+	}
+	return min(best, cell(c, r0, c, r1))
+}

@@ -1,0 +1,211 @@
+package planner
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+
+	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/check"
+	"example.com/wideberth/planner/internal/judge"
+	"example.com/wideberth/planner/internal/mask"
+	"example.com/wideberth/planner/internal/pull"
+	"example.com/wideberth/planner/internal/roadmap"
+)
+
+// CheckError says that the search and the independent check disagree about a route:
+// a fault of this program. No route is given then.
+type CheckError struct{ Problem string }
+
+func (e *CheckError) Error() string { return "planner: route failed its check: " + e.Problem }
+
+// Plan answers a request. The error is ctx's, a *RequestError or a *CheckError;
+// "no way" is a Refusal. A deadline that passes during the search gives a Refusal with
+// OutOfTime when the deadline is ctx's own cause ErrTimeBudget, else ctx's error.
+func (w *World) Plan(ctx context.Context, q Request) (Answer, error) {
+	t, err := w.task(q)
+	if err != nil {
+		return Answer{}, err
+	}
+	a, err := t.plan(ctx)
+	return t.finish(ctx, a, err)
+}
+
+// task is one request being worked on.
+type task struct {
+	w          *World
+	q          Request
+	j          *judge.Judge
+	free, open *mask.Mask // open: nil where every metre costs the same
+	search     roadmap.Counters
+}
+
+func (w *World) task(q Request) (*task, error) {
+	if err := q.validate(w.m.Settings()); err != nil {
+		return nil, err
+	}
+	b := q.Body
+	t := &task{w: w, q: q, j: judge.New(w.field, w.rules, b.Required(), b.RadiusUm)}
+	t.free = w.masks.Mask(mask.Key{Um: b.Required(), RadiusUm: b.RadiusUm, Zones: true})
+	if q.Options.Preference == Balanced && q.Options.TightWeight > 0 {
+		t.j.Weight, t.j.WideUm = q.Options.TightWeight, float64(b.PreferredUm)
+		t.open = w.masks.Mask(mask.Key{Um: b.PreferredUm})
+	}
+	return t, nil
+}
+
+// finish fills in the counters and turns a spent time budget into a refusal.
+func (t *task) finish(ctx context.Context, a Answer, err error) (Answer, error) {
+	if err != nil && ctx.Err() != nil {
+		if !errors.Is(context.Cause(ctx), ErrTimeBudget) {
+			return Answer{}, ctx.Err()
+		}
+		a, err = Answer{Refusal: &Refusal{Reason: OutOfTime}}, nil
+	}
+	if err != nil {
+		return Answer{}, err
+	}
+	a.Counters = Counters{t.search.Expanded, t.search.Queued, t.j.Sights, t.j.Exacts}
+	return a, nil
+}
+
+// refused is the refusal for an end that cannot be stood on, nil when both can.
+func (t *task) refused(ctx context.Context) (*Refusal, error) {
+	for _, end := range []struct {
+		at     geom.Point
+		reason RefusalReason
+	}{{t.q.Start.At, StartBlocked}, {t.q.Goal.At, GoalBlocked}} {
+		if ok, zone := t.j.Stands(end.at); !ok {
+			b, err := t.blockedEnd(ctx, end.at, zone)
+			return &Refusal{Reason: end.reason, Blocked: b}, err
+		}
+	}
+	return nil, nil
+}
+
+func (t *task) plan(ctx context.Context) (Answer, error) {
+	if ctx.Err() != nil {
+		return Answer{}, context.Cause(ctx)
+	}
+	if r, err := t.refused(ctx); r != nil || err != nil {
+		return Answer{Refusal: r}, err
+	}
+	c, err := t.course(ctx)
+	if err != nil {
+		return Answer{}, err
+	}
+	if c == nil {
+		var r *Refusal
+		if c, r, err = t.noPassage(ctx); err != nil || r != nil {
+			return Answer{Refusal: r}, err
+		}
+	}
+	r, err := t.route(ctx, c)
+	if err != nil {
+		return Answer{}, err
+	}
+	return Answer{Route: r}, nil
+}
+
+// course is a way from start to goal, found but not described yet.
+type course struct {
+	pts  []geom.Point
+	kind BoundKind
+	// roadmap is the cost of the best path over the roadmap, each cell judged as a
+	// whole; +Inf when none was found.
+	roadmap float64
+}
+
+// direct is the straight way, when it can be driven and nothing can be cheaper.
+func (t *task) direct() *course {
+	s, g := t.q.Start.At, t.q.Goal.At
+	if t.q.Options.KeepRoadmapPath || !t.j.Sight(s, g) {
+		return nil
+	}
+	if cost, _ := t.j.Weigh(s, g); cost > geom.Dist(s, g) {
+		return nil
+	}
+	return &course{pts: []geom.Point{s, g}, kind: Straight, roadmap: math.Inf(1)}
+}
+
+// course searches the roadmap; nil when there is no path over it.
+func (t *task) course(ctx context.Context) (*course, error) {
+	if c := t.direct(); c != nil {
+		return c, nil
+	}
+	o := t.q.Options
+	q := &roadmap.Query{
+		Frame: t.w.frame, Free: t.free, Open: t.open, Weight: t.j.Weight, Rules: t.w.rules,
+		From: t.connect(t.q.Start.At, false), To: t.connect(t.q.Goal.At, true), Count: &t.search,
+	}
+	var p roadmap.Path
+	var out roadmap.Outcome
+	var err error
+	switch o.Roadmap {
+	case Quadtree:
+		p, out, err = roadmap.Quadtree(ctx, q)
+	default:
+		p, out, err = roadmap.Grid(ctx, q, o.Roadmap != Grid4)
+	}
+	if err != nil || out != roadmap.Found {
+		return nil, err
+	}
+	pts := joined(t.q.Start.At, p.Points, t.q.Goal.At)
+	c := &course{pts: pts, kind: RoadmapOptimum, roadmap: p.CostUm}
+	if !o.KeepRoadmapPath {
+		c.pts, err = t.straighten(ctx, pts)
+		c.kind = AtMostRoadmapOptimum
+	}
+	return c, err
+}
+
+// joined puts the ends to a path, dropping points that repeat.
+func joined(start geom.Point, path []geom.Point, goal geom.Point) []geom.Point {
+	pts := []geom.Point{start}
+	for _, p := range append(path, goal) {
+		if p != pts[len(pts)-1] {
+			pts = append(pts, p)
+		}
+	}
+	if len(pts) == 1 {
+		pts = append(pts, goal)
+	}
+	return pts
+}
+
+// leastGain is what a change of the straightened path must save, in cells.
+const leastGain = 1.0 / 50
+
+func (t *task) straighten(ctx context.Context, pts []geom.Point) ([]geom.Point, error) {
+	return pull.Straighten(ctx, t.j, pts, float64(leastGain*t.w.frame.Res))
+}
+
+// route describes a course and has it checked.
+func (t *task) route(ctx context.Context, c *course) (*Route, error) {
+	r, err := t.describe(ctx, c)
+	if err != nil {
+		return nil, err
+	}
+	return r, t.check(r)
+}
+
+// check compares a route with what code apart from search and field makes of it.
+func (t *task) check(r *Route) error {
+	var pts []geom.Point
+	for i := range r.Legs {
+		for k := range r.Legs[i].Points {
+			if p := r.Legs[i].Points[k].At; len(pts) == 0 || p != pts[len(pts)-1] {
+				pts = append(pts, p)
+			}
+		}
+	}
+	f := check.Way(t.w.m, pts, t.j.NeedUm, t.q.Body.RadiusUm)
+	switch {
+	case f.Problem != "":
+		return &CheckError{f.Problem}
+	case float64(r.SmallestUm) > f.SmallestUm+check.SlackUm:
+		return &CheckError{fmt.Sprintf("smallest clearance said to be %d µm, found to be %.3f µm", r.SmallestUm, f.SmallestUm)}
+	}
+	return nil
+}

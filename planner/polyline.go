@@ -1,0 +1,74 @@
+package planner
+
+import (
+	"math"
+
+	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/judge"
+)
+
+// spot is a place on a polyline.
+type spot struct {
+	piece int // from point piece to the one after it
+	at    geom.Point
+	s     float64 // micrometres along the polyline
+	off   float64 // how far the place asked about is from at
+}
+
+// project is the place of a polyline nearest to p, the first of several.
+func project(pts []geom.Point, p geom.Point) spot {
+	best := spot{off: math.Inf(1)}
+	s := 0.0
+	for i := 1; i < len(pts); i++ {
+		a, b := pts[i-1], pts[i]
+		if d, on := geom.SegmentDist(p, a, b); d < best.off {
+			best = spot{i - 1, on, s + geom.Dist(a, on), d}
+		}
+		s += geom.Dist(a, b)
+	}
+	return best
+}
+
+// ahead is the place s micrometres along a polyline, its end when s is beyond.
+func ahead(pts []geom.Point, s float64) (geom.Point, int) {
+	for i := 1; i < len(pts); i++ {
+		long := geom.Dist(pts[i-1], pts[i])
+		if s < long {
+			return judge.Along(pts[i-1], pts[i], s/long), i - 1
+		}
+		s -= long
+	}
+	return pts[len(pts)-1], len(pts) - 2
+}
+
+func lengthOf(pts []geom.Point) float64 {
+	s := 0.0
+	for i := 1; i < len(pts); i++ {
+		s += geom.Dist(pts[i-1], pts[i])
+	}
+	return s
+}
+
+// clearFor is how far along pts, from its start, the body may drive: the whole length,
+// or, to a micrometre, where the first piece that it may not drive becomes so.
+func clearFor(j *judge.Judge, pts []geom.Point) (s float64, all bool) {
+	for i := 1; i < len(pts); i++ {
+		a, b := pts[i-1], pts[i]
+		long := geom.Dist(a, b)
+		if j.Sight(a, b) {
+			s += long
+			continue
+		}
+		// A piece that may not be driven stays so when it gets longer.
+		lo, hi := 0.0, 1.0
+		for float64((hi-lo)*long) > 1 {
+			if mid := (lo + hi) / 2; j.Sight(a, judge.Along(a, b, mid)) {
+				lo = mid
+			} else {
+				hi = mid
+			}
+		}
+		return s + float64(lo*long), false
+	}
+	return s, true
+}

@@ -1,0 +1,147 @@
+package planner
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"slices"
+
+	"example.com/wideberth/mapstore/geom"
+)
+
+// keepSlack is the relative cost by which a kept route may exceed a fresh one when no
+// share is given: float64's rounding of sums, no more.
+const keepSlack = 1e-9
+
+// Replan answers a replan request. An old route that still answers the question is
+// trimmed to the pose and checked on this version; it is kept when nothing can be
+// cheaper (it runs straight to the goal in the open), or when a fresh plan is not
+// cheaper by more than SwitchShare. It is kept too when a fresh plan finds no way,
+// or runs out of time, while the old route is still clear.
+//
+// Counters are those of everything done. CutS is given for Cut only. A refusal
+// has the cause why the old route would not do.
+func (w *World) Replan(ctx context.Context, q ReplanRequest) (ReplanAnswer, error) {
+	t, err := w.task(q.Request)
+	if err != nil {
+		return ReplanAnswer{}, err
+	}
+	if err := q.validate(); err != nil {
+		return ReplanAnswer{}, err
+	}
+	r, err := t.replan(ctx, &q)
+	r.Answer, err = t.finish(ctx, r.Answer, err)
+	if r.Refusal != nil {
+		r.Kept = false
+	}
+	return r, err
+}
+
+func (q *ReplanRequest) validate() error {
+	var f fault
+	f.check(len(q.Previous) >= 2, "previous.legs", "%d points: want 2 or more", len(q.Previous))
+	for i, p := range q.Previous {
+		f.pose(fmt.Sprintf("previous.legs.points[%d]", i), Pose{At: p})
+	}
+	f.check(q.SwitchShare >= 0 && q.SwitchShare <= 1, "switch_share", "%g: want 0 to 1", q.SwitchShare)
+	return f.error()
+}
+
+// changed says whether the old route answered another question than where it starts.
+func (q *ReplanRequest) changed() bool {
+	old, now := q.OldBody, q.Request.Body
+	old.Name, now.Name = "", ""
+	end := q.Previous[len(q.Previous)-1]
+	return old != now || q.OldGoal != q.Request.Goal || q.OldOptions != q.Request.Options ||
+		geom.Dist(end, q.Request.Goal.At) > 1
+}
+
+func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, error) {
+	var r ReplanAnswer
+	var old []geom.Point
+	switch {
+	case q.changed():
+		r.Cause = QuestionChanged
+	case q.Old == nil:
+		r.Cause = VersionGone
+	default:
+		old, r.Cause, r.CutS = t.trim(q)
+	}
+	if old != nil {
+		if c := t.direct(); c != nil && len(old) == 2 {
+			route, err := t.route(ctx, c)
+			r.Answer.Route, r.Kept = route, err == nil
+			return r, err
+		}
+	}
+	fresh, err := t.plan(ctx)
+	if old == nil || ctx.Err() != nil && context.Cause(ctx) != ErrTimeBudget || err != nil && ctx.Err() == nil {
+		r.Answer = fresh
+		return r, err
+	}
+	cost := t.costOf(old)
+	if fresh.Route != nil && cost > float64(fresh.Route.CostUm*(1+max(q.SwitchShare, keepSlack))) {
+		r.Answer = fresh
+		if r.Cause = Cheaper; project(q.Previous, t.q.Start.At).off > t.w.frame.Res {
+			r.Cause = OffRoute
+		}
+		return r, nil
+	}
+	c := &course{pts: old, roadmap: math.Inf(1)}
+	if fresh.Route == nil || cost <= float64(fresh.Route.CostUm*(1+keepSlack)) {
+		c.kind = AtMostRoadmapOptimum
+	}
+	route, err := t.route(context.WithoutCancel(ctx), c)
+	r.Answer.Route, r.Kept = route, err == nil
+	return r, err
+}
+
+func (t *task) costOf(pts []geom.Point) float64 {
+	sum := 0.0
+	for i := 1; i < len(pts); i++ {
+		cost, _ := t.j.Weigh(pts[i-1], pts[i])
+		sum += cost
+	}
+	return sum
+}
+
+// trim is the rest of the old route from the pose on, nil with the cause when it
+// cannot be driven any more. The pose is joined to the next bend, or else to the
+// nearest place of the route, by a straight piece.
+func (t *task) trim(q *ReplanRequest) (pts []geom.Point, cause ReplanCause, cutS float64) {
+	pose, goal := t.q.Start.At, t.q.Goal.At
+	on := project(q.Previous, pose)
+	rest := slices.Clone(q.Previous[on.piece+1:])
+	rest[len(rest)-1] = goal
+	for len(rest) > 1 && rest[0] == pose {
+		rest = rest[1:]
+	}
+	if cut, clear := t.clearOn(q.Previous, on, rest); !clear {
+		return nil, Cut, cut
+	}
+	if pose == goal {
+		return []geom.Point{pose, goal}, 0, 0
+	}
+	if t.j.Sight(pose, rest[0]) {
+		return append([]geom.Point{pose}, rest...), 0, 0
+	}
+	for _, near := range roundings(on.at) {
+		if near != pose && near != rest[0] && t.j.Sight(pose, near) && t.j.Sight(near, rest[0]) {
+			return append([]geom.Point{pose, near}, rest...), 0, 0
+		}
+	}
+	return nil, OffRoute, 0
+}
+
+// clearOn says whether the old route is clear from a place on it, and, when not, how
+// far along it that ends.
+func (t *task) clearOn(old []geom.Point, on spot, rest []geom.Point) (cutS float64, all bool) {
+	a, b := old[on.piece], old[on.piece+1]
+	if !t.j.Sight(a, b) { // else any part of it is clear, too
+		if s, all := clearFor(t.j, []geom.Point{on.at, b}); !all {
+			return on.s + s, false
+		}
+	}
+	s, all := clearFor(t.j, rest)
+	return on.s + geom.Dist(on.at, rest[0]) + s, all
+}
