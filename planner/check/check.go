@@ -152,7 +152,7 @@ func (w *walker) distance(a, b geom.Point, most, need float64) (float64, string)
 	}
 	for reach := need + w.h; ; reach *= 2 {
 		reach = min(reach, best)
-		if d := w.cells(a, b, reach); d < best {
+		if d := w.cells(a, b, reach); d < reach {
 			best, what = d, "a cell"
 		}
 		if reach >= best {
