@@ -49,7 +49,12 @@ func (c *Client) unary(ctx context.Context, method string, req, reply any, cc *g
 		req, id = withRequestID(m, id)
 	}
 	ctx = withHeader(ctx, id)
-	return c.again(ctx, method, func() error { return invoke(ctx, method, req, reply, cc, opts...) })
+	err := c.again(ctx, method, func() error { return invoke(ctx, method, req, reply, cc, opts...) })
+	if code := status.Code(err); code == codes.Internal || code == codes.Unknown {
+		// The server's log has the cause, under this id.
+		return fmt.Errorf("client: request id %s: %w", headerOf(ctx), err)
+	}
+	return err
 }
 
 // stream names a stream in the server's log.
@@ -118,10 +123,19 @@ func sleep(ctx context.Context, d time.Duration) error {
 
 // withHeader names the call, unless the caller has.
 func withHeader(ctx context.Context, id string) context.Context {
-	if md, ok := metadata.FromOutgoingContext(ctx); ok && len(md.Get(requestIDHeader)) > 0 {
+	if headerOf(ctx) != "" {
 		return ctx
 	}
 	return metadata.AppendToOutgoingContext(ctx, requestIDHeader, id)
+}
+
+// headerOf is the name of the call; empty when it has none yet.
+func headerOf(ctx context.Context) string {
+	md, _ := metadata.FromOutgoingContext(ctx)
+	if ids := md.Get(requestIDHeader); len(ids) > 0 {
+		return ids[0]
+	}
+	return ""
 }
 
 // withRequestID gives m its request id where its message has one and it is empty,

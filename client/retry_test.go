@@ -110,6 +110,21 @@ func TestWhatIsSentAgain(t *testing.T) {
 	}
 }
 
+// The server keeps the cause of an internal error to its log: the caller needs the id.
+func TestInternalErrorsNameTheirRequest(t *testing.T) {
+	t.Parallel()
+	var header string
+	c := serve(t, &fakeService{getFloor: func(ctx context.Context, _ *wideberthv1.GetFloorRequest) (*wideberthv1.GetFloorResponse, error) {
+		md, _ := metadata.FromIncomingContext(ctx)
+		header = strings.Join(md.Get("x-request-id"), ",")
+		return nil, status.Error(codes.Internal, "see the log")
+	}})
+	_, err := c.GetFloor(t.Context(), "hall")
+	if header == "" || status.Code(err) != codes.Internal || !strings.Contains(err.Error(), header) {
+		t.Errorf("got %v, want INTERNAL and the request id %q", err, header)
+	}
+}
+
 func TestRetryInfoIsWaitedFor(t *testing.T) {
 	t.Parallel()
 	const ask = 60 * time.Millisecond

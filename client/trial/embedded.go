@@ -2,6 +2,7 @@ package trial
 
 import (
 	"context"
+	"errors"
 	"net"
 
 	"github.com/rs/zerolog"
@@ -24,7 +25,7 @@ func Embedded(ctx context.Context) (addr string, stop func() error, err error) {
 	lis, err := net.Listen("tcp", cfg.Listen)
 	if err != nil {
 		cancel()
-		return "", nil, err
+		return "", nil, errors.Join(err, s.Close())
 	}
 	served := make(chan error, 1)
 	go func() { served <- s.Serve(ctx, lis) }()

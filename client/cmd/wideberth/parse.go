@@ -1,0 +1,81 @@
+package main
+
+import (
+	"fmt"
+	"math"
+	"path/filepath"
+	"strconv"
+	"strings"
+
+	"google.golang.org/protobuf/encoding/protojson"
+
+	"example.com/wideberth/client/patchfile"
+	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
+)
+
+// numbers reads finite numbers with commas between.
+func numbers(text string) ([]float64, error) {
+	var out []float64
+	for _, part := range strings.Split(text, ",") {
+		v, err := strconv.ParseFloat(strings.TrimSpace(part), 64)
+		if err != nil || math.IsNaN(v) || math.IsInf(v, 0) {
+			return nil, fmt.Errorf("%q is not a number", part)
+		}
+		out = append(out, v)
+	}
+	return out, nil
+}
+
+// place reads an end of a route: a station's name, or x,y or x,y,heading in metres
+// and radians. Stations' names have no comma.
+func place(flag, text string) (*wideberthv1.Place, error) {
+	if text == "" {
+		return nil, usagef("--%s is missing: a station, or x,y or x,y,heading", flag)
+	}
+	if !strings.Contains(text, ",") {
+		return &wideberthv1.Place{Where: &wideberthv1.Place_Station{Station: text}}, nil
+	}
+	v, err := numbers(text)
+	if err != nil || len(v) > 3 {
+		return nil, usagef("--%s is %q, want a station, or x,y or x,y,heading", flag, text)
+	}
+	pose := &wideberthv1.Pose{XM: v[0], YM: v[1]}
+	if len(v) == 3 {
+		pose.HeadingRad = v[2]
+	}
+	return &wideberthv1.Place{Where: &wideberthv1.Place_Pose{Pose: pose}}, nil
+}
+
+// readBody reads a Body message in JSON; a member it does not have is an error.
+func readBody(path string) (*wideberthv1.Body, error) {
+	data, err := readFile(path, maxBodyBytes)
+	if err != nil {
+		return nil, err
+	}
+	body := &wideberthv1.Body{}
+	if err := protojson.Unmarshal(data, body); err != nil {
+		return nil, &patchfile.Error{File: path, Problem: strings.TrimLeft(strings.TrimPrefix(err.Error(), "proto:"), " \u00a0")}
+	}
+	return body, nil
+}
+
+// choice reads an enum's value by its name without prefix.
+func choice(flag, text, prefix string, values map[string]int32, want string) (int32, error) {
+	v, ok := values[prefix+strings.ToUpper(text)]
+	if !ok || v == 0 {
+		return 0, usagef("--%s is %q, want %s", flag, text, want)
+	}
+	return v, nil
+}
+
+// roadmap reads --roadmap; auto leaves it to the service.
+func roadmap(text string) (wideberthv1.Roadmap, error) {
+	if text == "auto" {
+		return wideberthv1.Roadmap_ROADMAP_UNSPECIFIED, nil
+	}
+	v, err := choice("roadmap", text, "ROADMAP_", wideberthv1.Roadmap_value, "auto, grid4, grid8 or quadtree")
+	return wideberthv1.Roadmap(v), err
+}
+
+// splitPath gives a file's folder and name.
+func splitPath(path string) (dir, base string) { return filepath.Dir(path), filepath.Base(path) }

@@ -1,0 +1,253 @@
+package main
+
+import (
+	"fmt"
+	"os"
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"example.com/wideberth/client"
+	"example.com/wideberth/client/picture"
+	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
+)
+
+// planFlags are what plan was asked.
+type planFlags struct {
+	from, to, body, preference, roadmap, picture string
+	radius, margin, preferred, tightWeight       float64
+	budget, spacing                              float64
+	shortest, balanced, keep                     bool
+	version                                      int64
+}
+
+func (a *app) plan() *cobra.Command {
+	var p planFlags
+	cmd := &cobra.Command{
+		Use:   "plan FLOOR",
+		Short: "Ask for a route",
+		Long: "Ask for a route and print its legs: how long, how tight and where. Ends are stations,\n" +
+			"or x,y or x,y,heading in metres and radians. The body comes from flags, or from a\n" +
+			"file with a Body message in JSON, which flags go before.",
+		Args: cobra.ExactArgs(1),
+		RunE: func(cmd *cobra.Command, args []string) error {
+			req, err := p.request(cmd, args[0])
+			if err != nil {
+				return err
+			}
+			return a.with(func(c *client.Client) error {
+				resp, err := c.Plan(cmd.Context(), req)
+				if err != nil {
+					return fmt.Errorf("plan on floor %q: %w", args[0], err)
+				}
+				if a.json() {
+					err = a.message(resp)
+				} else {
+					err = a.printPlan(resp)
+				}
+				if err != nil {
+					return err
+				}
+				if p.picture != "" {
+					if err := a.drawPlan(cmd, c, p, req, resp); err != nil {
+						return fmt.Errorf("picture: %w", err)
+					}
+				}
+				if resp.GetRoute() == nil {
+					return errRefused
+				}
+				a.notef("A planning figure, checked against version %d of the map and no safety function: people and\n"+
+					"loose loads are not on the map; detecting people, stopping and supervising speed stay with the truck.",
+					resp.GetStamp().GetVersion())
+				return nil
+			})
+		},
+	}
+	f := cmd.Flags()
+	f.StringVar(&p.from, "from", "", "where to start: a `place` (required)")
+	f.StringVar(&p.to, "to", "", "where to go: a `place` (required)")
+	f.StringVar(&p.body, "body", "", "read the body from this `file`")
+	f.Float64Var(&p.radius, "radius", 0, "half the body's width, load included, in `metres`")
+	f.Float64Var(&p.margin, "margin", 0, "kept free beyond the radius, in `metres`")
+	f.Float64Var(&p.preferred, "preferred", 0, "clearance to keep where the floor allows, in `metres`")
+	f.StringVar(&p.preference, "preference", "balanced", "what the route should be: shortest or balanced")
+	f.BoolVar(&p.shortest, "shortest", false, "the same as --preference shortest")
+	f.BoolVar(&p.balanced, "balanced", false, "the same as --preference balanced")
+	f.Float64Var(&p.tightWeight, "tight-weight", 0, "balanced: how much more a tight metre costs; 0 asks for 1")
+	f.StringVar(&p.roadmap, "roadmap", "auto", "which roadmap to search: auto, grid4, grid8 or quadtree")
+	f.BoolVar(&p.keep, "keep-roadmap-path", false, "the roadmap's own path, without straightening")
+	f.Float64Var(&p.spacing, "max-spacing", 0, "the most `metres` between two points; 0 sends points where they matter")
+	f.Float64Var(&p.budget, "time-budget", 0, "how many `seconds` the search may take; 0 asks for the server's own")
+	f.Int64Var(&p.version, "version", 0, "plan on this `version`; default the head")
+	f.StringVar(&p.picture, "picture", "", "draw the answer as SVG into this `file`")
+	cmd.MarkFlagsMutuallyExclusive("shortest", "balanced", "preference")
+	return cmd
+}
+
+// request makes the request that the flags ask for.
+func (p *planFlags) request(cmd *cobra.Command, floor string) (*wideberthv1.PlanRequest, error) {
+	start, err := place("from", p.from)
+	if err != nil {
+		return nil, err
+	}
+	goal, err := place("to", p.to)
+	if err != nil {
+		return nil, err
+	}
+	preference := p.preference
+	if p.shortest {
+		preference = "shortest"
+	}
+	pref, err := choice("preference", preference, "PREFERENCE_", wideberthv1.Preference_value, "shortest or balanced")
+	if err != nil {
+		return nil, err
+	}
+	road, err := roadmap(p.roadmap)
+	if err != nil {
+		return nil, err
+	}
+	given := cmd.Flags().Changed
+	body := &wideberthv1.Body{}
+	if p.body != "" {
+		if body, err = readBody(p.body); err != nil {
+			return nil, err
+		}
+	} else if !given("radius") {
+		return nil, usagef("--radius or --body is missing: a route is for a body")
+	}
+	for _, f := range []struct {
+		name string
+		from float64
+		to   *float64
+	}{{"radius", p.radius, &body.RadiusM}, {"margin", p.margin, &body.MarginM}, {"preferred", p.preferred, &body.PreferredClearanceM}} {
+		if given(f.name) {
+			*f.to = f.from
+		}
+	}
+	var version *wideberthv1.VersionSelector
+	if given("version") {
+		if p.version < 1 {
+			return nil, usagef("--version is %d, want 1 or more", p.version)
+		}
+		version = client.Pinned(p.version)
+	}
+	return &wideberthv1.PlanRequest{
+		Floor: floor, Version: version, Body: body, Start: start, Goal: goal,
+		Options: &wideberthv1.PlanOptions{
+			Preference: wideberthv1.Preference(pref), Roadmap: road, KeepRoadmapPath: p.keep,
+			TightWeight: p.tightWeight, TimeBudgetS: p.budget, MaxSpacingM: p.spacing,
+		},
+	}, nil
+}
+
+func (a *app) printPlan(resp *wideberthv1.PlanResponse) error {
+	stamp := resp.GetStamp()
+	on := []string{"floor", fmt.Sprintf("%s, version %d", stamp.GetFloor(), stamp.GetVersion())}
+	if r := resp.GetRefusal(); r != nil {
+		return a.table(append([][]string{on}, refusalRows(r)...)...)
+	}
+	r := resp.GetRoute()
+	if err := a.table(on,
+		[]string{"route", r.GetRouteId()},
+		[]string{"length", metres(r.GetLengthM()) + " m"},
+		[]string{"time", fmt.Sprintf("%.1f s at the advised speed ceilings", r.GetDurationS())},
+		[]string{"smallest clearance", fmt.Sprintf("%s m at %s", down(r.GetSmallestClearanceM()), at(r.GetSmallestAt()))},
+		[]string{"no route is below", down(r.GetBound().GetLowerBoundM()) + " m"},
+		[]string{"expanded", number(resp.GetCounters().GetExpanded())},
+	); err != nil {
+		return err
+	}
+	rows := [][]string{{"LEG", "KIND", "LENGTH", "SMALLEST", "AT", "LEFT", "RIGHT", "CEILING", "CAUSE", "NEAREST"}}
+	for i, l := range r.GetLegs() {
+		kind := word(l.GetKind(), "LEG_KIND_")
+		if l.GetBeyondSensing() {
+			kind += ", beyond sensing"
+		}
+		rows = append(rows, []string{
+			number(int64(i + 1)), kind, metres(l.GetLengthM()),
+			down(l.GetSmallestClearanceM()), at(l.GetSmallestAt()),
+			down(l.GetLeftRoomM()), down(l.GetRightRoomM()),
+			fmt.Sprintf("%.2f m/s", l.GetSpeedCeilingMps()), word(l.GetSpeedCause(), "SPEED_CAUSE_"),
+			or(l.GetNearestFeature(), "-"),
+		})
+	}
+	return a.table(rows...)
+}
+
+func refusalRows(r *wideberthv1.Refusal) [][]string {
+	rows := [][]string{
+		{"refused", word(r.GetReason(), "REFUSAL_REASON_")},
+		{"because", plain(r.GetExplanation())},
+	}
+	if e := r.GetBlockedEnd(); e != nil {
+		rows = append(rows,
+			[]string{"at", at(e.GetAt())},
+			[]string{"clearance there", down(e.GetClearanceM()) + " m"},
+			[]string{"clearance needed", metres(e.GetRequiredClearanceM()) + " m"})
+		if e.GetClosedZone() != "" {
+			rows = append(rows, []string{"closed zone", e.GetClosedZone()})
+		}
+		if e.GetNearestFeature() != "" {
+			rows = append(rows, []string{"nearest feature", e.GetNearestFeature()})
+		}
+		if e.GetNearestFree() != nil {
+			rows = append(rows, []string{"nearest free place", fmt.Sprintf("%s, %s m away", at(e.GetNearestFree()), metres(e.GetDistanceM()))})
+		}
+	}
+	if b := r.GetBottleneck(); b != nil {
+		if !b.GetExists() && b.GetZone() == "" {
+			rows = append(rows, []string{"bottleneck", "there is no way, however narrow"})
+		}
+		if b.GetExists() {
+			rows = append(rows,
+				[]string{"bottleneck", at(b.GetAt())},
+				[]string{"width there", down(b.GetWidthM()) + " m"},
+				[]string{"width needed", metres(b.GetWidthNeededM()) + " m"})
+		}
+		if len(b.GetFeatures()) > 0 {
+			rows = append(rows, []string{"between", strings.Join(b.GetFeatures(), " and ")})
+		}
+		if b.GetZone() != "" {
+			rows = append(rows, []string{"closed by zone", b.GetZone()})
+		}
+	}
+	if s := r.GetRetryAfterS(); s > 0 {
+		rows = append(rows, []string{"ask again after", fmt.Sprintf("%.1f s", s)})
+	}
+	return rows
+}
+
+// drawPlan draws the answer on the version it was made on.
+func (a *app) drawPlan(cmd *cobra.Command, c *client.Client, p planFlags, req *wideberthv1.PlanRequest, resp *wideberthv1.PlanResponse) error {
+	content, err := c.ReadFloor(cmd.Context(), req.GetFloor(), client.Pinned(resp.GetStamp().GetVersion()))
+	if err != nil {
+		return err
+	}
+	scene := picture.Scene{
+		Title:   req.GetFloor() + ": " + p.from + " to " + p.to,
+		Floor:   content,
+		Route:   resp.GetRoute(),
+		Refusal: resp.GetRefusal(),
+		Body:    req.GetBody(),
+		Start:   poseOf(content, req.GetStart()),
+		Goal:    poseOf(content, req.GetGoal()),
+	}
+	if err := writeFile(p.picture, func(f *os.File) error { return picture.Draw(f, scene) }); err != nil {
+		return err
+	}
+	a.notef("drawn: %s", p.picture)
+	return nil
+}
+
+// poseOf is where a place is on a version; nil when it has no such station.
+func poseOf(content *client.FloorContent, p *wideberthv1.Place) *wideberthv1.Pose {
+	if p.GetPose() != nil {
+		return p.GetPose()
+	}
+	for _, f := range content.Features {
+		if f.GetName() == p.GetStation() {
+			return f.GetStation().GetPose()
+		}
+	}
+	return nil
+}
