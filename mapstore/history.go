@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"slices"
+	"sort"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/journal"
@@ -150,59 +151,91 @@ func (s *Store) record(ctx context.Context, id string, version int64) (journal.R
 	return recs[0], nil
 }
 
+// base is a content to start from, and the restores among the records after it.
+type base struct {
+	low, top int64 // content of low; records low+1 to top were looked through
+	content  *floor.Map
+	restores []restore
+}
+
+// restore is a record that brought a version back.
+type restore struct{ at, version int64 }
+
+// base finds the nearest content at or below a version: in memory, in the journal's
+// snapshots, or the created version's.
+func (s *Store) base(ctx context.Context, f *floorState, version int64) (base, error) {
+	b := base{top: version}
+	b.low, b.content = f.closest(version)
+	if b.low == version {
+		return b, nil
+	}
+	at, content, _, err := s.nearest(ctx, f.id, version)
+	if err != nil {
+		return b, err
+	}
+	if at > b.low {
+		b.low, b.content = at, content
+	}
+	if b.low == 0 {
+		r, err := s.record(ctx, f.id, 1)
+		if err != nil {
+			return b, err
+		}
+		e, err := decodeEntry(&r)
+		if err != nil {
+			return b, err
+		}
+		b.low = 1
+		if b.content, err = s.carryOut(ctx, f, &r, &e, nil); err != nil {
+			return b, err
+		}
+	}
+	err = journal.Walk(ctx, s.journal, f.id, b.low+1, version, func(r *journal.Record) error {
+		if r.Kind != journal.Restored {
+			return nil
+		}
+		e, err := decodeEntry(r)
+		b.restores = append(b.restores, restore{r.Version, e.restored})
+		return err
+	})
+	return b, err
+}
+
+// lastRestore is the last one at or below a version.
+func (b *base) lastRestore(version int64) (r restore, ok bool) {
+	i := sort.Search(len(b.restores), func(i int) bool { return b.restores[i].at > version })
+	if i == 0 {
+		return restore{}, false
+	}
+	return b.restores[i-1], true
+}
+
 // content is a version's, from memory or the journal. A restored version's content
 // is that of the version it brought back, so the records before a restore need not
 // be carried out: content looks for the last restore on the way and goes on from
 // what it brought back, as often as needed, and then carries out what is left, the
-// oldest stretch first. Each step leads to a lower version, so it ends.
+// oldest stretch first. Each step leads to a lower version, so it ends; the records
+// of a stretch are read twice at most.
 func (s *Store) content(ctx context.Context, f *floorState, version int64) (*floor.Map, error) {
 	type stretch struct{ after, to int64 } // records after+1 to to are patches
 	var todo []stretch
-	var m *floor.Map
-	for m == nil {
-		at, start := f.closest(version)
-		if at != version {
-			above, content, _, err := s.nearest(ctx, f.id, version)
-			if err != nil {
+	var b base
+	for {
+		if version < b.low || b.content == nil {
+			var err error
+			if b, err = s.base(ctx, f, version); err != nil {
 				return nil, err
 			}
-			if above > at {
-				at, start = above, content
-			}
 		}
-		restored := int64(0)
-		part := stretch{after: at, to: version}
-		if err := journal.Walk(ctx, s.journal, f.id, at+1, version, func(r *journal.Record) error {
-			if r.Kind != journal.Restored {
-				return nil
-			}
-			e, err := decodeEntry(r)
-			restored, part.after = e.restored, r.Version
-			return err
-		}); err != nil {
-			return nil, err
+		r, ok := b.lastRestore(version)
+		if !ok {
+			todo = append(todo, stretch{b.low, version})
+			break
 		}
-		todo = append(todo, part)
-		if restored > 0 {
-			version = restored
-			continue
-		}
-		if start == nil { // from the first record
-			r, err := s.record(ctx, f.id, 1)
-			if err != nil {
-				return nil, err
-			}
-			e, err := decodeEntry(&r)
-			if err != nil {
-				return nil, err
-			}
-			if start, err = s.carryOut(ctx, f, &r, &e, nil); err != nil {
-				return nil, err
-			}
-			todo[len(todo)-1].after = 1
-		}
-		m = start
+		todo = append(todo, stretch{r.at, version})
+		version = r.version
 	}
+	m := b.content
 	for _, part := range slices.Backward(todo) {
 		if part.after >= part.to {
 			continue

@@ -303,7 +303,7 @@ func (s *Store) snapshotIfDue(f *floorState) {
 		err := s.journal.PutSnapshot(s.ctx, journal.Snapshot{
 			Floor: f.id, Version: head.Info.Version, Digest: head.Info.Digest, Content: head.Map.Encode()})
 		done(err)
-		if err != nil && s.ctx.Err() == nil {
+		if err != nil && !errors.Is(err, context.Canceled) {
 			s.report(fmt.Errorf("floor %q: the journal snapshot of version %d was not written: %w", f.id, head.Info.Version, err))
 		}
 	}) {
