@@ -120,22 +120,26 @@ func (d *drawing) plan(f frame, zoom float64) {
 }
 
 // focus is the place that a sheet is most about: the route's smallest clearance, or
-// where it was refused. The figure is what to write there.
+// where it was refused. The figure is what to write there, short where a heading
+// says already what it is.
 type focus struct {
-	at     xy
-	radius float64 // metres, how large to mark it
-	figure string
+	at            xy
+	radius        float64 // metres, how large to mark it
+	figure, short string
 }
 
 func (d *drawing) focus() (focus, bool) {
 	if r := d.scene.Route; r != nil && r.GetSmallestAt() != nil {
-		return focus{pt(r.GetSmallestAt()), r.GetSmallestClearanceM(), "smallest clearance " + metres(r.GetSmallestClearanceM())}, true
+		c := metres(r.GetSmallestClearanceM())
+		return focus{pt(r.GetSmallestAt()), r.GetSmallestClearanceM(), "smallest clearance " + c, c}, true
 	}
 	if b := d.scene.Refusal.GetBottleneck(); b.GetExists() && b.GetAt() != nil {
-		return focus{pt(b.GetAt()), b.GetWidthM() / 2, metres(b.GetWidthM()) + " wide, " + metres(b.GetWidthNeededM()) + " needed"}, true
+		words := metres(b.GetWidthM()) + " wide, " + metres(b.GetWidthNeededM()) + " needed"
+		return focus{pt(b.GetAt()), b.GetWidthM() / 2, words, words}, true
 	}
 	if e := d.scene.Refusal.GetBlockedEnd(); e.GetAt() != nil {
-		return focus{pt(e.GetAt()), e.GetClearanceM(), "clearance " + metres(e.GetClearanceM()) + ", " + metres(e.GetRequiredClearanceM()) + " needed"}, true
+		words := "clearance " + metres(e.GetClearanceM()) + ", " + metres(e.GetRequiredClearanceM()) + " needed"
+		return focus{pt(e.GetAt()), e.GetClearanceM(), words, words}, true
 	}
 	return focus{}, false
 }

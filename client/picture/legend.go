@@ -35,6 +35,12 @@ func (d *drawing) signs() []sign {
 		}
 		add(meaning, func(o *svg, x, y float64) { o.circle(x+signWidth/2, y, 8, "smallest", "") })
 	}
+	if _, ok := d.focus(); ok && d.body() != nil {
+		add("body, and with its margin (enlarged)", func(o *svg, x, y float64) {
+			o.circle(x+signWidth/2, y, 6, "body", "")
+			o.circle(x+signWidth/2, y, 9, "needs", "")
+		})
+	}
 	if d.scene.Route != nil || d.scene.Start != nil || d.scene.Goal != nil {
 		add("start, goal", func(o *svg, x, y float64) {
 			o.circle(x+8, y, 6, "end", "")

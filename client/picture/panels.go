@@ -137,12 +137,14 @@ func (d *drawing) scaleBar(x, y, lengthM, k float64, id string) {
 // detailLabels names what stands about the focus.
 func (d *drawing) detailLabels(f frame) {
 	p := d.placer(f)
+	paper := f.paper()
+	p.taken = append(p.taken, box{paper.maxX - f.width()/3 - 30, paper.maxY - 40, paper.maxX, paper.maxY}) // the scale bar's
 	o, _ := d.focus()
 	mark := o.radius
 	if b := d.body(); b != nil {
 		mark = max(mark, b.GetRadiusM()+b.GetMarginM())
 	}
-	p.add(label{at: f.at(o.at), gap: mark*f.k + 6, class: "figure", size: figureSize, lines: []string{o.figure}})
+	p.add(label{at: f.at(o.at), gap: mark*f.k + 6, class: "figure", size: figureSize, lines: []string{o.short}})
 	near := f.area
 	wanted := d.wantedNames()
 	for _, ft := range d.scene.Floor.Features {
@@ -239,14 +241,14 @@ func (d *drawing) tightFacts(out *[]fact) {
 		*out = append(*out, fact{text: "No tight leg"})
 		return
 	}
-	*out = append(*out, fact{head: true, text: fmt.Sprintf("Tight legs: %d", len(d.tight))})
+	*out = append(*out, fact{head: true, text: fmt.Sprintf("Tight legs: %d (s, clearance, ceiling, nearest)", len(d.tight))})
 	for i, l := range d.tight {
 		if i == maxTightListed {
 			*out = append(*out, fact{text: fmt.Sprintf("and %d more", len(d.tight)-i)})
 			return
 		}
 		from := l.wire.GetPoints()[0].GetSM()
-		text := fmt.Sprintf("s %.1f to %.1f m: %s, at most %.1f m/s", from, from+l.wire.GetLengthM(),
+		text := fmt.Sprintf("%.1f to %.1f m: %s, %.1f m/s", from, from+l.wire.GetLengthM(),
 			metres(l.wire.GetSmallestClearanceM()), l.wire.GetSpeedCeilingMps())
 		if n := l.wire.GetNearestFeature(); n != "" {
 			text += ", " + n

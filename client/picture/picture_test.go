@@ -212,9 +212,9 @@ func TestRouteShowsTightLegsApartAndItsSmallestClearance(t *testing.T) {
 	if bars != want {
 		t.Errorf("%d barred lines for %d tight legs", bars, want)
 	}
-	figure := "smallest clearance " + metres(s.Route.SmallestClearanceM)
-	if n := strings.Count(texts(es), figure); n < 2 { // on the plan and enlarged
-		t.Errorf("%q is written %d times, want it on the plan and enlarged", figure, n)
+	figure := metres(s.Route.SmallestClearanceM)
+	if n := strings.Count("\n"+texts(es)+"\n", "\n"+figure+"\n"); n != 1 || !strings.Contains(texts(es), "smallest clearance "+figure) {
+		t.Errorf("the smallest clearance, %s, is not on the plan, or %d times enlarged, want once", figure, n)
 	}
 	for _, f := range s.Floor.Features {
 		if f.GetStation() != nil && !strings.Contains(texts(es), f.GetName()) {

@@ -75,11 +75,17 @@ func (d *drive) smallestAhead() float64 {
 	return smallest
 }
 
+// What the robot reports of itself beside its pose.
+const (
+	poseSpreadM = 0.02
+	reportedMps = 0.5
+)
+
 // ask reports where the robot is and waits for the hint to that report.
 func (d *drive) ask(ctx context.Context, g *client.Guide) (*wideberthv1.Hint, error) {
 	d.sequence++
 	if err := g.Report(&wideberthv1.GuideReport{
-		Sequence: d.sequence, StampS: d.clock, Pose: d.pose(), PositionSpreadM: 0.02, SpeedMps: 0.5,
+		Sequence: d.sequence, StampS: d.clock, Pose: d.pose(), PositionSpreadM: poseSpreadM, SpeedMps: reportedMps,
 	}); err != nil {
 		return nil, err
 	}
@@ -94,8 +100,10 @@ func (d *drive) ask(ctx context.Context, g *client.Guide) (*wideberthv1.Hint, er
 	}
 }
 
-// maxPlaces bounds how many hints are asked for.
-const maxPlaces = 12
+const (
+	maxPlaces  = 12  // hints asked for, at most
+	leastApart = 0.3 // metres between two of them
+)
 
 // places are where to ask for hints: before, at the tightest point of, and after
 // each tight leg still ahead.
@@ -107,7 +115,7 @@ func (d *drive) places() []float64 {
 		}
 		from := l.GetPoints()[0].GetSM()
 		for _, s := range []float64{from - 1.5, from + 0.5, l.GetSmallestSM(), from + l.GetLengthM() + 1.5} {
-			if s > d.s && s < d.length() && (len(out) == 0 || s > out[len(out)-1]) && len(out) < maxPlaces {
+			if s > d.s && s < d.length() && (len(out) == 0 || s > out[len(out)-1]+leastApart) && len(out) < maxPlaces {
 				out = append(out, s)
 			}
 		}
