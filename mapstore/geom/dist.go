@@ -3,15 +3,16 @@ package geom
 import "math"
 
 // RelativeError bounds the rounding of Dist, SegmentDist, SegmentSegmentDist and
-// RectSegmentDist: for points whose coordinates are whole numbers below 2^53 in
-// size and whose differences are below 2^53, a distance d differs from the true
-// one by at most RelativeError*d. Where the two nearest points differ in x
-// alone or in y alone, and everywhere when that difference is a map coordinate's
-// (axis-aligned segments and rectangles), the distance is exact.
+// RectSegmentDist: between points whose coordinates are whole numbers below 2^53 in
+// size, as are their differences, a distance d is off the true one by at most
+// RelativeError*d, and is 0 only when the truth is. A distance that is taken along
+// x alone or y alone is exact; so, between axis-aligned segments, rectangles
+// and points, only one from corner to corner is rounded at all. Where rounding must
+// not decide, use SegmentDistAtLeast.
 //
-// The bound is the sum, in units of 2^-53, of the errors of a difference of
-// products (2; Jeannerod, Louvet & Muller 2013), a sum of squares (2, halved by the root),
-// a root (1) and a division (1), doubled.
+// The bound is, in units of 2^-53, the sum of the errors of a difference of
+// products (2; Jeannerod, Louvet & Muller 2013), of a sum of squares (2, halved by
+// the root), of the root (1) and of a division (1), with room to spare.
 const RelativeError = 0x1p-50
 
 // Dist is the distance between p and q.

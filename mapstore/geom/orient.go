@@ -18,7 +18,7 @@ import (
 func Orient(a, b, c Point) int {
 	acx, bcx := a.X-c.X, b.X-c.X
 	acy, bcy := a.Y-c.Y, b.Y-c.Y
-	left, right := acx*bcy, acy*bcx
+	left, right := float64(acx*bcy), float64(acy*bcx)
 	det := left - right
 	const bound = (3 + 16*0x1p-53) * 0x1p-53
 	if limit := bound * (math.Abs(left) + math.Abs(right)); det > limit {
