@@ -1,6 +1,7 @@
 package mapstore
 
 import (
+	"bytes"
 	"context"
 	"fmt"
 	"sort"
@@ -30,7 +31,7 @@ func (s *Store) judgeBase(ctx context.Context, f *floorState, p *Patch, head *Sn
 		stale.Conflicts = []string{fmt.Sprintf("version %d is %d versions back and was not compared with", p.Base, head.Info.Version-p.Base)}
 		return stale
 	}
-	stale.Conflicts = conflicts(p.Edits, p.Base, floor.Diff(base.Map, head.Map), head.Map.Settings())
+	stale.Conflicts = conflicts(p.Edits, base, head)
 	if p.AllowRebase && len(stale.Conflicts) == 0 {
 		return nil
 	}
@@ -84,28 +85,36 @@ func (e *StaleBaseError) addCells(r floor.CellRect) {
 		r.X0, r.X1-1, r.Y0, r.Y1-1, e.Base))
 }
 
-// conflicts are the features and cells of a change that edits touch too. The work
-// is edits times changed blocks of the edits' rows at worst.
-func conflicts(edits []floor.Edit, base int64, c floor.Change, set floor.Settings) []string {
-	e := StaleBaseError{Base: base}
-	features := make(map[string]*floor.FeatureChange, len(c.Features))
-	for i := range c.Features {
-		if c := &c.Features[i]; c.After != nil {
+// maxExactCells bounds how many cells one push compares one by one. Beyond it a
+// changed block's rectangle counts as changed throughout, so that a patch made to
+// keep the store busy is refused instead.
+const maxExactCells = 1 << 24
+
+// conflicts are the features and cells that edits touch and that differ between
+// base and head. The work is edits times changed blocks in the edits' rows at worst.
+func conflicts(edits []floor.Edit, base, head *Snapshot) []string {
+	change := floor.Diff(base.Map, head.Map)
+	e := StaleBaseError{Base: base.Info.Version}
+	features := make(map[string]*floor.FeatureChange, len(change.Features))
+	for i := range change.Features {
+		if c := &change.Features[i]; c.After != nil {
 			features[c.After.Name] = c
 		} else {
 			features[c.Before.Name] = c
 		}
 	}
 	var all floor.CellRect
-	for _, r := range c.Cells {
+	for _, r := range change.Cells {
 		all = all.Union(r)
 	}
-	said := make([]bool, len(c.Cells))
+	said := make([]bool, len(change.Cells))
+	var before, after []byte
+	exact := int64(maxExactCells)
 	for i := range edits {
 		if len(e.Conflicts) >= MaxConflicts {
 			break
 		}
-		name, r := touched(&edits[i], set)
+		name, r := touched(&edits[i], head.Map.Settings())
 		if c := features[name]; c != nil {
 			e.addFeature(c)
 			delete(features, name)
@@ -113,13 +122,23 @@ func conflicts(edits []floor.Edit, base int64, c floor.Change, set floor.Setting
 		if r.Intersect(all).IsEmpty() {
 			continue
 		}
-		// c.Cells go up by rows of blocks.
-		first := sort.Search(len(c.Cells), func(k int) bool { return c.Cells[k].Y0/floor.BlockSize >= r.Y0/floor.BlockSize })
-		for k := first; k < len(c.Cells) && c.Cells[k].Y0 < r.Y1; k++ {
-			if !said[k] && !c.Cells[k].Intersect(r).IsEmpty() {
-				said[k] = true
-				e.addCells(c.Cells[k])
+		// change.Cells go up by rows of blocks.
+		first := sort.Search(len(change.Cells), func(k int) bool {
+			return change.Cells[k].Y0/floor.BlockSize >= r.Y0/floor.BlockSize
+		})
+		for k := first; k < len(change.Cells) && change.Cells[k].Y0/floor.BlockSize*floor.BlockSize < r.Y1; k++ {
+			both := change.Cells[k].Intersect(r)
+			if said[k] || both.IsEmpty() {
+				continue
 			}
+			if exact -= both.Count(); exact >= 0 {
+				before, after = base.Map.ReadCells(before[:0], both), head.Map.ReadCells(after[:0], both)
+				if bytes.Equal(before, after) {
+					continue
+				}
+			}
+			said[k] = true
+			e.addCells(change.Cells[k])
 		}
 	}
 	return e.Conflicts

@@ -80,7 +80,7 @@ func TestFailedWrites(t *testing.T) {
 				before := head(t, s, "hall")
 				p := patch(before.Info.Version, trolley("t", 1_000_000+int64(i), 1_000_000))
 				p.RequestID = string(rune('a' + i))
-				v, repeated, err := s.Push(t.Context(), "hall", p)
+				v, _, err := s.Push(t.Context(), "hall", p)
 				if err != nil {
 					failed++
 					wantErr(t, "push", err, mapstore.ErrJournal)
@@ -92,6 +92,7 @@ func TestFailedWrites(t *testing.T) {
 						t.Errorf("write %d: reading: %v", k, err)
 					}
 					// The same request again finds out.
+					var repeated bool
 					if v, repeated, err = s.Push(t.Context(), "hall", p); err != nil || repeated != applied {
 						t.Errorf("write %d: again: repeated %v, %v", k, repeated, err)
 					}

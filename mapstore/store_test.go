@@ -169,22 +169,25 @@ func TestRefusedArguments(t *testing.T) {
 func TestStaleBase(t *testing.T) {
 	s, _ := memory(t, mapstore.Options{})
 	push(t, s, "hall", trolley("a", 1_000_000, 1_000_000), trolley("b", 2_000_000, 1_000_000), paint(100, 100, 110, 105, floor.Occupied))
-	push(t, s, "hall", trolley("a", 1_500_000, 1_000_000), remove("b"), trolley("c", 3_000_000, 1_000_000), paint(0, 0, 3, 2, floor.Unknown))
+	push(t, s, "hall", trolley("a", 1_500_000, 1_000_000), remove("b"), trolley("c", 3_000_000, 1_000_000), paint(0, 0, 3, 2, floor.Unknown),
+		paint(150, 30, 151, 31, floor.Occupied), paint(170, 60, 171, 61, floor.Occupied)) // two corners of one block
 	h := head(t, s, "hall")
 	square := floor.NewPolygon([][]geom.Point{{{X: 0, Y: 0}, {X: 500_000, Y: 0}, {X: 500_000, Y: 500_000}}}, 0)
 	for name, c := range map[string]struct {
 		edits     []floor.Edit
 		conflicts []string
 	}{
-		"same feature changed": {[]floor.Edit{trolley("a", 1_000_000, 1_000_000)}, []string{`feature "a" was changed after version 2`}},
-		"feature removed":      {[]floor.Edit{remove("b")}, []string{`feature "b" was removed after version 2`}},
-		"feature added":        {[]floor.Edit{trolley("c", 1_000_000, 1_000_000)}, []string{`feature "c" was added after version 2`}},
-		"cells":                {[]floor.Edit{paint(2, 1, 9, 9, floor.Free)}, []string{"cells in columns 0 to 2, rows 0 to 1 were changed after version 2"}},
-		"polygon":              {[]floor.Edit{{Kind: floor.PaintPolygon, Shape: square, Fill: floor.Free}}, []string{"cells in columns 0 to 2, rows 0 to 1 were changed after version 2"}},
-		"both, once each":      {[]floor.Edit{trolley("a", 1, 1), remove("a"), paint(0, 0, 1, 1, 0), paint(1, 0, 2, 1, 0)}, []string{`feature "a" was changed after version 2`, "cells in columns 0 to 2, rows 0 to 1 were changed after version 2"}},
-		"cells beside":         {[]floor.Edit{paint(3, 0, 9, 9, floor.Occupied)}, nil},
-		"new feature there":    {[]floor.Edit{trolley("d", 1_500_000, 1_000_000)}, nil},
-		"cells changed before": {[]floor.Edit{paint(100, 100, 110, 105, floor.Free)}, nil},
+		"same feature changed":  {[]floor.Edit{trolley("a", 1_000_000, 1_000_000)}, []string{`feature "a" was changed after version 2`}},
+		"feature removed":       {[]floor.Edit{remove("b")}, []string{`feature "b" was removed after version 2`}},
+		"feature added":         {[]floor.Edit{trolley("c", 1_000_000, 1_000_000)}, []string{`feature "c" was added after version 2`}},
+		"cells":                 {[]floor.Edit{paint(2, 1, 9, 9, floor.Free)}, []string{"cells in columns 0 to 2, rows 0 to 1 were changed after version 2"}},
+		"polygon":               {[]floor.Edit{{Kind: floor.PaintPolygon, Shape: square, Fill: floor.Free}}, []string{"cells in columns 0 to 2, rows 0 to 1 were changed after version 2"}},
+		"both, once each":       {[]floor.Edit{trolley("a", 1, 1), remove("a"), paint(0, 0, 1, 1, 0), paint(1, 0, 2, 1, 0)}, []string{`feature "a" was changed after version 2`, "cells in columns 0 to 2, rows 0 to 1 were changed after version 2"}},
+		"between changed cells": {[]floor.Edit{paint(150, 40, 170, 50, floor.Occupied), paint(151, 31, 152, 61, floor.Unknown)}, nil},
+		"a changed cell again":  {[]floor.Edit{paint(150, 30, 151, 31, floor.Free)}, []string{"cells in columns 150 to 170, rows 30 to 60 were changed after version 2"}},
+		"cells beside":          {[]floor.Edit{paint(3, 0, 9, 9, floor.Occupied)}, nil},
+		"new feature there":     {[]floor.Edit{trolley("d", 1_500_000, 1_000_000)}, nil},
+		"cells changed before":  {[]floor.Edit{paint(100, 100, 110, 105, floor.Free)}, nil},
 	} {
 		for _, rebase := range []bool{false, true} {
 			p := patch(2, c.edits...)
