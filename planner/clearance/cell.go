@@ -12,12 +12,12 @@ import (
 // the nearest point of a lattice square to a lattice cell is reached at a vertex.
 // With vector solids near: 0 when m <= h/sqrt 2, for one may hide inside a cell, else
 // sqrt(m² - h²/4), reached in front of the middle of a side.
-func (f *Field) lower(m int32, near bool) int64 {
+func (f *Field) lower(m int64, near bool) int64 {
 	if !near {
-		return int64(m)
+		return m
 	}
-	mm, hh := int64(m)*int64(m), int64(f.h)*int64(f.h)
-	if 2*mm <= hh {
+	mm, hh := m*m, int64(f.h)*int64(f.h)
+	if mm <= hh/2 {
 		return 0
 	}
 	return int64(isqrt(uint64(mm - (hh+3)/4)))
@@ -27,7 +27,7 @@ func (f *Field) lower(m int32, near bool) int64 {
 // least um.
 func (f *Field) surely(um int64) int64 {
 	m := max(int64(math.Sqrt(float64(um)*float64(um)+f.h*f.h/4))-1, um)
-	for m < MaxCapUm && f.lower(int32(m), true) < um {
+	for f.lower(m, true) < um {
 		m++
 	}
 	return m
@@ -40,7 +40,7 @@ func (f *Field) CellLower(c, r int) int32 {
 	if !f.onFloor(c, r) {
 		return 0
 	}
-	m := min(f.Vertex(c, r), f.Vertex(c+1, r), f.Vertex(c, r+1), f.Vertex(c+1, r+1))
+	m := int64(min(f.Vertex(c, r), f.Vertex(c+1, r), f.Vertex(c, r+1), f.Vertex(c+1, r+1)))
 	return int32(f.lower(m, f.pyramid[0].at(c>>blockShift, r>>blockShift).near))
 }
 
@@ -59,8 +59,8 @@ func (f *Field) CellClear(c, r int, um int64) bool {
 		b := f.barred.at(bx, by)
 		return b == nil || b[r&blockMask]>>(c&blockMask)&1 == 0
 	}
-	m := min(f.Vertex(c, r), f.Vertex(c+1, r), f.Vertex(c, r+1), f.Vertex(c+1, r+1))
-	if int64(m) < um {
+	m := int64(min(f.Vertex(c, r), f.Vertex(c+1, r), f.Vertex(c, r+1), f.Vertex(c+1, r+1)))
+	if m < um {
 		return false
 	}
 	return f.lower(m, f.pyramid[0].at(bx, by).near) >= um || f.vectorClear(c, r, um)

@@ -16,7 +16,7 @@ import (
 // TestRasterCellLowerIsExact: without vector solids the smallest clearance over a closed
 // cell is the smallest over its four vertices, exactly.
 func TestRasterCellLowerIsExact(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m, err := floor.New(genSettings(t, 30))
 		if err != nil {
 			t.Fatal(err)
@@ -39,7 +39,7 @@ func TestRasterCellLowerIsExact(t *testing.T) {
 // TestLargestInCell: nowhere in a closed cell is the clearance above the largest of its
 // vertices by more than h/√2; Node.Max bounds squares of cells alike.
 func TestLargestInCell(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m := genMap(t, 90)
 		f := buildT(t, m)
 		for range 20 {
@@ -49,7 +49,7 @@ func TestLargestInCell(t *testing.T) {
 				if d > float64(n.Max)+1+f.h/math.Sqrt2 {
 					t.Fatalf("%v: clearance %v, largest vertex of node %v %d", p, d, n.Cells(), n.Max)
 				}
-				if d < float64(f.lower(n.Min, n.near())) {
+				if d < float64(f.lower(int64(n.Min), n.near())) {
 					t.Fatalf("%v: clearance %v, smallest vertex of node %v %d", p, d, n.Cells(), n.Min)
 				}
 				var kids [4]Node
@@ -89,7 +89,7 @@ func TestBoundsAreTight(t *testing.T) {
 // TestNodesAgree: Node.Kind of every node is what its cells say, at 0 and above, and Min and
 // Max are those of its vertices.
 func TestNodesAgree(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m := genMap(t, 80)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -136,7 +136,7 @@ func TestNodesAgree(t *testing.T) {
 // TestSameBlock: where SameBlock says so, every clearance gives the same bits; and a small
 // change leaves most of a floor the same.
 func TestSameBlock(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m := genMap(t, 300)
 		f := buildT(t, m)
 		next := tryApply(t, m, genEdits(t, m))
@@ -180,10 +180,80 @@ func TestSameBlock(t *testing.T) {
 	}
 }
 
+// TestSameBlockSeesNeighbours: two changes that show in no vertex of the block itself. With
+// a cap of one cell, a cell painted right of the block changes only vertices that
+// are the neighbour's first; and an outline may come nearer to the middle of a cell's
+// side than to any vertex that something else is not nearer to.
+func TestSameBlockSeesNeighbours(t *testing.T) {
+	m := cellsFloor(t, 192, 192, 1, true)
+	f := mustBuild(t, m)
+	for _, e := range []floor.Edit{paint(64, 30, 65, 31, floor.Occupied), paint(30, 64, 31, 65, floor.Occupied), paint(64, 64, 65, 65, floor.Occupied)} {
+		g := mustAdvance(t, f, mustApply(t, m, e))
+		if f.SameBlock(g, 0, 0) || !f.CellClear(63, 63, 1) || g.SameBlock(f, 0, 0) {
+			t.Errorf("%+v: block said to be the same", e.Rect)
+		}
+	}
+
+	const h = 1e6
+	at := func(above float64) *Field {
+		return mustBuild(t, cellsFloor(t, 192, 192, 3, true,
+			disc("left", 29*h, 64*h, 1), disc("right", 32*h, 64*h, 1), disc("above", 30.5*h, 64*h+above, 1)))
+	}
+	near, far := at(0.90*h), at(0.95*h)
+	if *near.values.at(0, 0) != *far.values.at(0, 0) {
+		t.Fatal("a vertex of the block differs: this test shows nothing")
+	}
+	if near.CellClear(30, 63, 930_000) || !far.CellClear(30, 63, 930_000) {
+		t.Errorf("cell below the outline: clear %v and %v", near.CellClear(30, 63, 930_000), far.CellClear(30, 63, 930_000))
+	}
+	if near.SameBlock(far, 0, 0) {
+		t.Error("block said to be the same")
+	}
+}
+
+// TestAcrossBlocks: an outline in the next block is measured for the cells along the
+// edge, on all four sides.
+func TestAcrossBlocks(t *testing.T) {
+	const h = 1e6
+	for _, d := range []struct {
+		x, y float64
+		c, r int
+	}{{30.5, 65, 30, 63}, {30.5, 127, 30, 128}, {65, 30.5, 63, 30}, {127, 30.5, 128, 30}} {
+		f := mustBuild(t, cellsFloor(t, 192, 192, 3, true, disc("d", d.x*h, d.y*h, 1)))
+		if !f.CellClear(d.c, d.r, h-1) || f.CellClear(d.c, d.r, h) {
+			t.Errorf("disc at (%v, %v): cell clear by 999999 %v, by 1000000 %v", d.x, d.y, f.CellClear(d.c, d.r, h-1), f.CellClear(d.c, d.r, h))
+		}
+	}
+}
+
+// TestWindowsDoNotMatter: values computed for any window are those of the whole floor.
+func TestWindowsDoNotMatter(t *testing.T) {
+	check(t, 3, func(t *rapid.T) {
+		m := genMap(t, 150)
+		f := buildT(t, m)
+		var s scratch
+		s.raster.lad = f.lad
+		for range 12 {
+			i, j := rapid.IntRange(0, f.cols).Draw(t, "i"), rapid.IntRange(0, f.rows).Draw(t, "j")
+			w := window{i, j, i + rapid.IntRange(1, 80).Draw(t, "across"), j + rapid.IntRange(1, 80).Draw(t, "up")}.intersect(window{0, 0, f.cols + 1, f.rows + 1})
+			s.out = grow(s.out, w.vertices())
+			if err := s.raster.raster(t.Context(), f, w, s.out); err != nil {
+				t.Fatal(err)
+			}
+			s.vector.apply(f, w, s.out)
+			for k, v := range s.out {
+				if i, j := w.i0+k%w.width(), w.j0+k/w.width(); v != f.Vertex(i, j) {
+					t.Fatalf("window %v, vertex (%d, %d): %d, want %d", w, i, j, v, f.Vertex(i, j))
+				}
+			}
+		}
+	})
+}
+
 // TestTravel: over the distance given, a disc moves without overlapping a solid; three
 // micrometres further, or at the bound, it does.
 func TestTravel(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m := genMap(t, 60)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -300,7 +370,7 @@ func TestOutOfRange(t *testing.T) {
 // TestLargestCap: a cap beyond 32 bits of micrometres is cut to MaxCapUm, nothing else.
 func TestLargestCap(t *testing.T) {
 	m := mustMap(t, floor.Settings{ResolutionUm: 10_000_000, Columns: 300, Rows: 3, CapUm: 2_500_000_000, OpenBorder: true, Initial: floor.Free},
-		paint(0, 1, 1, 2, floor.Occupied))
+		paint(0, 1, 1, 2, floor.Occupied), disc("d", 1, 1, 1))
 	f := mustBuild(t, m)
 	if f.Cap() != MaxCapUm {
 		t.Fatalf("cap %d", f.Cap())
@@ -313,6 +383,10 @@ func TestLargestCap(t *testing.T) {
 	}
 	if !f.CellClear(299, 0, MaxCapUm) || f.CellClear(215, 0, MaxCapUm) {
 		t.Error("cells about the cap misjudged")
+	}
+	var words [blockSize]uint64
+	if f.ClearBits(3, 0, MaxCapUm, &words); words[0] != f.width(3)&^(1<<(216-192)-1) {
+		t.Errorf("bits about the cap %b", words[0])
 	}
 }
 
@@ -379,7 +453,7 @@ func TestWideOutlines(t *testing.T) {
 	if bare == 0 {
 		t.Fatal("no block without an edge is covered: the outline is too small for this test")
 	}
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		p := genPlace(t, m.Settings(), 0)
 		q := genPlace(t, m.Settings(), 0)
 		ft, _ := m.Feature("hall")
@@ -405,12 +479,15 @@ func TestWideOutlines(t *testing.T) {
 			t.Fatalf("cell (%d, %d): free %v, inside %v", c, r, got, in)
 		}
 	})
-	// Taken away and put back.
+	// Taken away and put back: blocks without anything near are shared again.
 	ft, _ := m.Feature("hall")
 	without := mustApply(t, m, floor.Edit{Kind: floor.RemoveFeature, Name: "hall"})
 	g := mustAdvance(t, f, without)
 	if !g.Equal(mustBuild(t, without)) {
 		t.Error("taken away: patched differs from rebuilt")
+	}
+	if g.values.at(5, 5) != g.capBlock || g.sums.at(5, 5) != g.allCap || f.values.at(5, 1) != zeroBlock {
+		t.Error("uniform blocks are not shared")
 	}
 	if back := mustAdvance(t, g, mustApply(t, without, floor.Edit{Kind: floor.PutFeature, Feature: ft})); !back.Equal(f) {
 		t.Error("put back: patched differs from rebuilt")

@@ -51,6 +51,23 @@ func mustAdvance(t testing.TB, f *Field, m *floor.Map) *Field {
 	return g
 }
 
+// check runs a property n times as often as rapid's flags say: its cases are small.
+func check(t *testing.T, n int, prop func(*rapid.T)) {
+	t.Helper()
+	for range n {
+		rapid.Check(t, prop)
+	}
+}
+
+// genSide draws the side of a floor: anything, or about a whole number of blocks.
+func genSide(t *rapid.T, most int, label string) int {
+	if most > blockSize && rapid.Bool().Draw(t, label+" by block") {
+		n := rapid.IntRange(1, most/blockSize).Draw(t, label+" blocks")
+		return n*blockSize + rapid.IntRange(-1, 1).Draw(t, label+" rest")
+	}
+	return rapid.IntRange(1, most).Draw(t, label)
+}
+
 // genSettings draws a small floor. Odd resolutions and origins keep cells off round
 // numbers; caps that are no whole number of cells exercise the last rung.
 func genSettings(t *rapid.T, most int) floor.Settings {
@@ -67,8 +84,8 @@ func genSettings(t *rapid.T, most int) floor.Settings {
 	}
 	return floor.Settings{
 		ResolutionUm: res,
-		Columns:      rapid.IntRange(1, wide).Draw(t, "columns"),
-		Rows:         rapid.IntRange(1, tall).Draw(t, "rows"),
+		Columns:      genSide(t, wide, "columns"),
+		Rows:         genSide(t, tall, "rows"),
 		OriginX:      rapid.Int64Range(-3_000_000, 3_000_000).Draw(t, "origin x"),
 		OriginY:      rapid.Int64Range(-3_000_000, 3_000_000).Draw(t, "origin y"),
 		CapUm:        int64(cells)*res + rapid.Int64Range(0, res-1).Draw(t, "cap rest"),
@@ -84,6 +101,10 @@ func genSettings(t *rapid.T, most int) floor.Settings {
 func genPoint(t *rapid.T, s floor.Settings, beyond int64) geom.Point {
 	x := rapid.Int64Range(-beyond, int64(s.Columns)*s.ResolutionUm+beyond).Draw(t, "x")
 	y := rapid.Int64Range(-beyond, int64(s.Rows)*s.ResolutionUm+beyond).Draw(t, "y")
+	if rapid.IntRange(0, 3).Draw(t, "by a block's edge") == 0 {
+		side := blockSize * s.ResolutionUm
+		x = max(-beyond, min((x+side/2)/side*side+rapid.Int64Range(-3, 3).Draw(t, "off")*s.ResolutionUm/2, int64(s.Columns)*s.ResolutionUm+beyond))
+	}
 	if rapid.Bool().Draw(t, "on lattice") {
 		x, y = x/s.ResolutionUm*s.ResolutionUm, y/s.ResolutionUm*s.ResolutionUm
 	}
@@ -102,7 +123,7 @@ func genPlace(t *rapid.T, s floor.Settings, beyond int64) geom.Point {
 
 // genSolid draws a polygon (with a hole at times), a polyline or a disc.
 func genSolid(t *rapid.T, s floor.Settings) floor.Feature {
-	ft := floor.Feature{Kind: floor.Solid, Name: fmt.Sprintf("s%d", rapid.IntRange(0, 5).Draw(t, "name"))}
+	ft := floor.Feature{Kind: floor.Solid, Name: fmt.Sprintf("s%d", rapid.IntRange(0, 20).Draw(t, "name"))}
 	if rapid.IntRange(0, 3).Draw(t, "tolerant") == 0 {
 		ft.ToleranceUm = rapid.Int64Range(1, s.ResolutionUm).Draw(t, "tolerance")
 	}
@@ -111,9 +132,19 @@ func genSolid(t *rapid.T, s floor.Settings) floor.Feature {
 		ft.Shape = floor.NewPolygon(genPolygon(t, s), ft.ToleranceUm)
 	case 1:
 		ft.WidthUm = rapid.Int64Range(1, 2*s.ResolutionUm).Draw(t, "width")
-		var chain []geom.Point
-		for range rapid.IntRange(2, 4).Draw(t, "points") {
-			chain = append(chain, genPoint(t, s, 0))
+		if rapid.Bool().Draw(t, "whole cells") {
+			ft.WidthUm = 2 * s.ResolutionUm
+		}
+		chain := []geom.Point{genPoint(t, s, 0)}
+		for range rapid.IntRange(1, 5).Draw(t, "points") {
+			q := genPoint(t, s, 0)
+			switch last := chain[len(chain)-1]; rapid.IntRange(0, 2).Draw(t, "turn") {
+			case 0:
+				q.X = last.X
+			case 1:
+				q.Y = last.Y
+			}
+			chain = append(chain, q)
 		}
 		ft.Shape = floor.NewPolyline(chain, ft.WidthUm, ft.ToleranceUm)
 	default:
@@ -149,8 +180,8 @@ func genEdits(t *rapid.T, m *floor.Map) []floor.Edit {
 	s := m.Settings()
 	var edits []floor.Edit
 	gone := map[string]bool{}
-	for range rapid.IntRange(1, 3).Draw(t, "edits") {
-		switch rapid.IntRange(0, 4).Draw(t, "edit") {
+	for range rapid.IntRange(1, 6).Draw(t, "edits") {
+		switch rapid.IntRange(0, 6).Draw(t, "edit") {
 		case 0, 1:
 			r := genCells(t, s)
 			fill := rapid.SampledFrom([]floor.Occupancy{floor.Free, floor.Occupied, floor.Occupied, floor.Unknown}).Draw(t, "fill")

@@ -13,7 +13,7 @@ import (
 // TestLaw4PatchedEqualsRebuilt: a field advanced through random patches equals, bit for
 // bit, one built from scratch; the field it came from is untouched.
 func TestLaw4PatchedEqualsRebuilt(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m := genMap(t, 150)
 		f := buildT(t, m)
 		for range rapid.IntRange(1, 4).Draw(t, "steps") {
@@ -44,16 +44,17 @@ func buildT(t *rapid.T, m *floor.Map) *Field {
 // TestLaw5NeverOverstated: at every vertex, the field is the distance to all solids
 // looked at one by one, rounded down: never above it and less than 1 µm below.
 func TestLaw5NeverOverstated(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m := genMap(t, 40)
 		f := buildT(t, m)
 		s := m.Settings()
-		for j := range s.Rows + 1 {
-			for i := range s.Columns + 1 {
-				want := plainAt(m, s.Vertex(i, j))
-				if got := f.Vertex(i, j); float64(got) != math.Floor(want) {
-					t.Fatalf("vertex (%d, %d): %d, want floor of %v", i, j, got, want)
-				}
+		// Every vertex of a tiny floor, some of a larger one: each costs a look at all solids.
+		step := 1 + (s.Rows+1)*(s.Columns+1)/300
+		for k := rapid.IntRange(0, step-1).Draw(t, "from"); k < (s.Rows+1)*(s.Columns+1); k += step {
+			i, j := k%(s.Columns+1), k/(s.Columns+1)
+			want := plainAt(m, s.Vertex(i, j))
+			if got := f.Vertex(i, j); float64(got) != math.Floor(want) {
+				t.Fatalf("vertex (%d, %d): %d, want floor of %v", i, j, got, want)
 			}
 		}
 	})
@@ -63,7 +64,7 @@ func TestLaw5NeverOverstated(t *testing.T) {
 // cell; CellClear is exactly that clearance compared; ClearBits and Node.Kind say
 // the same.
 func TestCellsAreExact(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m := genMap(t, 70)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -107,7 +108,7 @@ func TestCellsAreExact(t *testing.T) {
 // judged by the shrunken square: a solid that only touches from outside leaves it
 // free, one that comes in by a micrometre's hundredth does not.
 func TestFreeAtZero(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m := genMap(t, 40)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -121,13 +122,13 @@ func TestFreeAtZero(t *testing.T) {
 				if got := f.CellClear(c, r, 0); got && !free {
 					t.Fatalf("cell (%d, %d): %v, want %v", c, r, got, free)
 				} else if !got && free {
-					// Only solids that end within 0.01 µm of the cell's border, without
-					// merely touching it, may do that.
-					touches := false
+					// Only an oblique or round outline may end within 0.01 µm of the cell's
+					// border without merely touching it.
+					ends := false
 					for ft := range m.Features() {
-						touches = touches || ft.Shape.RectDist(cell) == 0
+						ends = ends || !square(&ft.Shape) && ft.Shape.RectDist(cell) == 0
 					}
-					if !touches {
+					if !ends {
 						t.Fatalf("cell (%d, %d): %v, want %v", c, r, got, free)
 					}
 				}
@@ -136,13 +137,22 @@ func TestFreeAtZero(t *testing.T) {
 	})
 }
 
+// square says whether a shape has horizontal and vertical edges only.
+func square(s *floor.Shape) bool {
+	ok := s.Kind != floor.Disc
+	for a, b := range s.Edges {
+		ok = ok && (a.X == b.X || a.Y == b.Y)
+	}
+	return ok
+}
+
 // within says whether two lengths agree to a thousandth of a micrometre: far more
 // than geom.RelativeError times any length here, far less than what is reported.
 func within(a, b float64) bool { return math.Abs(a-b) <= 1e-3 }
 
 // TestQueriesAgainstAllSolids: At, Segment and SegmentClear against every solid in turn.
 func TestQueriesAgainstAllSolids(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
+	check(t, 10, func(t *rapid.T) {
 		m := genMap(t, 90)
 		f := buildT(t, m)
 		s := m.Settings()

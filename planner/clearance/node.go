@@ -223,7 +223,7 @@ func (n Node) Kind(um int64) Kind {
 	switch {
 	case int64(n.Max) < um:
 		return Blocked
-	case n.f.lower(n.Min, n.near()) >= um:
+	case n.f.lower(int64(n.Min), n.near()) >= um:
 		return Free
 	case n.Level > 0:
 		return Mixed

@@ -80,8 +80,8 @@ type transformer struct {
 // Transforms in Linear Time", 2000). It reads sites up to the cap beyond w.
 func (t *transformer) raster(ctx context.Context, f *Field, w window, out []int32) error {
 	reach := t.lad.reach
-	// Read rectangle; its left edge on a word, with the cell left of it in view.
-	ri0 := max(0, w.i0-reach-1) &^ blockMask
+	// What is read; its left edge on a word.
+	ri0 := max(0, w.i0-reach) &^ blockMask
 	ri1 := min(f.cols+1, w.i1+reach)
 	rj0, rj1 := max(0, w.j0-reach), min(f.rows+1, w.j1+reach)
 	words := (ri1 - ri0 + blockMask) >> blockShift
