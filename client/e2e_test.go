@@ -110,6 +110,55 @@ func TestSurveyOfManyCellsArrives(t *testing.T) {
 	}
 }
 
+// A robot is guided along its route, and told when a newer version touches the rest of it.
+func TestGuideFollowsAFloorThatChanges(t *testing.T) {
+	t.Parallel()
+	ctx, cancel := context.WithTimeout(t.Context(), 20*time.Second)
+	defer cancel()
+	c, stop := serve()
+	t.Cleanup(stop)
+	newHall(ctx, c)
+	answer, err := c.Plan(ctx, &wideberthv1.PlanRequest{
+		Floor: "hall", Start: at(1, 2), Goal: at(7, 2), Body: &wideberthv1.Body{RadiusM: 0.4},
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	g := c.Guide(ctx, &wideberthv1.GuideSetup{Route: answer.GetRoute()})
+	defer g.Close()
+	ask := func(sequence int64, x float64) *wideberthv1.Hint {
+		t.Helper()
+		stamp := float64(sequence) / 10
+		if err := g.Report(&wideberthv1.GuideReport{Sequence: sequence, StampS: stamp, Pose: &wideberthv1.Pose{XM: x, YM: 2}, SpeedMps: 0.5}); err != nil {
+			t.Fatal(err)
+		}
+		h, err := g.Next(ctx)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if h.GetSequence() != sequence || client.Advice(h, stamp) != h.GetState() {
+			t.Errorf("hint %v, want one to report %d that may be followed", h, sequence)
+		}
+		return h
+	}
+	if h := ask(1, 2); h.GetState() != wideberthv1.GuideState_GUIDE_STATE_CLEAR {
+		t.Errorf("in the open: %v, want clear", h)
+	}
+	if _, err := c.PushPatch(ctx, &wideberthv1.PushPatchRequest{Floor: "hall", Patch: &wideberthv1.Patch{
+		BaseVersion: 1, Author: "night shift", Reason: "spill", Edits: []*wideberthv1.Edit{spill(5, 2, 0.5)},
+	}}); err != nil {
+		t.Fatal(err)
+	}
+	if h := ask(2, 2.1); h.GetState() != wideberthv1.GuideState_GUIDE_STATE_REPLAN_ADVISED || h.GetStamp().GetVersion() != 2 {
+		t.Errorf("after a spill on the route: %v, want a replan advised on version 2", h)
+	}
+	if _, err := c.GuideOnce(ctx, &wideberthv1.GuideOnceRequest{}); status.Code(err) != codes.InvalidArgument {
+		t.Errorf("GuideOnce without a setup: %v, want INVALID_ARGUMENT", err)
+	} else if p := client.FieldProblems(err); len(p) == 0 {
+		t.Errorf("no field named in %v", err)
+	}
+}
+
 // A watch outlives the server: what was pushed after it came back is told, once.
 func TestWatchOutlivesAServer(t *testing.T) {
 	t.Parallel()

@@ -1,6 +1,7 @@
 package client
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"math/rand/v2"
@@ -73,8 +74,9 @@ func (c *Client) again(ctx context.Context, what string, try func() error) error
 		}
 		wait, ok := retryAfter(err)
 		if !ok {
-			if before != nil && ctx.Err() != nil {
-				return fmt.Errorf("client: %s: try %d (the one before: %w): %w", what, n, before, err)
+			// The server's clock may find the deadline over before this one's does.
+			if over := cmp.Or(ctx.Err(), deadlineOf(err)); before != nil && over != nil {
+				return givenUp(what, n, over, before)
 			}
 			return err
 		}
@@ -84,12 +86,27 @@ func (c *Client) again(ctx context.Context, what string, try func() error) error
 		}
 		wait += c.cfg.backoff.after(n)
 		if end, has := ctx.Deadline(); has && time.Until(end) < wait {
-			return fmt.Errorf("client: %s: no time left after %d tries (%w): %w", what, n, context.DeadlineExceeded, err)
+			return givenUp(what, n, context.DeadlineExceeded, err)
 		}
 		if ctxErr := sleep(ctx, wait); ctxErr != nil {
-			return fmt.Errorf("client: %s: given up after %d tries (%w): %w", what, n, ctxErr, err)
+			return givenUp(what, n, ctxErr, err)
 		}
 	}
+}
+
+// givenUp is the error of a call whose context ended: errors.Is tells how, and the
+// code and details are those of the last failure that the service or the
+// connection had.
+func givenUp(what string, tries int, ended, last error) error {
+	return fmt.Errorf("client: %s: given up after %d tries (%w): %w", what, tries, ended, last)
+}
+
+// deadlineOf is context.DeadlineExceeded for an error with that code.
+func deadlineOf(err error) error {
+	if status.Code(err) == codes.DeadlineExceeded {
+		return context.DeadlineExceeded
+	}
+	return nil
 }
 
 // retryAfter says whether a failed call may be sent again and how long the server

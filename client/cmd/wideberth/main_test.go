@@ -5,6 +5,7 @@ import (
 	"context"
 	"encoding/json"
 	"fmt"
+	"net"
 	"os"
 	"path/filepath"
 	"strings"
@@ -329,9 +330,20 @@ func TestUsageExits2(t *testing.T) {
 func TestUnreachableExits5(t *testing.T) {
 	t.Parallel()
 	x := &tool{t: t, addr: "127.0.0.1:1"}
-	code, out, errs := x.run("floors")
-	if code != exitUnreachable || out != "" || !strings.Contains(errs, "127.0.0.1:1") {
-		t.Errorf("exit code %d, stdout %q, stderr %q; want %d and the address", code, out, errs, exitUnreachable)
+	for _, command := range [][]string{{"floors"}, {"watch", "hall"}} {
+		code, out, errs := x.run(command...)
+		if code != exitUnreachable || out != "" || !strings.Contains(errs, "127.0.0.1:1") {
+			t.Errorf("%q: exit code %d, stdout %q, stderr %q; want %d and the address", command, code, out, errs, exitUnreachable)
+		}
+	}
+	// One that takes connections and says nothing.
+	lis, err := net.Listen("tcp", "127.0.0.1:0")
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer func() { _ = lis.Close() }()
+	if code, _, errs := x.run("floors", "--server", lis.Addr().String(), "--timeout", "200ms"); code != exitUnreachable {
+		t.Errorf("a silent server: exit code %d, stderr %q; want %d", code, errs, exitUnreachable)
 	}
 }
 

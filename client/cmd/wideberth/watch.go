@@ -27,6 +27,10 @@ func (a *app) watch() *cobra.Command {
 				return usagef("--after and --count must not be below 0")
 			}
 			return a.with(func(c *client.Client) error {
+				// A watch would try for ever: say now if there is no server, or no floor.
+				if _, err := c.GetFloor(cmd.Context(), args[0]); err != nil {
+					return err
+				}
 				seen, down := 0, false
 				for ev, err := range c.Watch(cmd.Context(), args[0], after) {
 					switch {
