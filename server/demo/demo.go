@@ -40,7 +40,11 @@ const stayAddress = "127.0.0.1:7443"
 // Run plays the demonstration and tells it on w. It returns nil when everything
 // in the story happened, and when ctx ends a Stay.
 func Run(ctx context.Context, o Options, w io.Writer) error {
-	_, err := play(ctx, o, w)
+	lis, err := listen(ctx, o.Stay)
+	if err != nil {
+		return err
+	}
+	_, err = play(ctx, o, lis, w)
 	return err
 }
 
@@ -62,15 +66,12 @@ Everything is kept in temporary files. Pictures of it are written as SVG.`,
 	return cmd
 }
 
-// play starts the service, tells the story and says what happened.
-func play(ctx context.Context, o Options, w io.Writer) (happened facts, err error) {
+// play starts the service on lis, tells the story and says what happened. It closes
+// lis.
+func play(ctx context.Context, o Options, lis net.Listener, w io.Writer) (happened facts, err error) {
 	out, err := folder(o.Out)
 	if err != nil {
-		return facts{}, err
-	}
-	lis, err := listen(ctx, o.Stay)
-	if err != nil {
-		return facts{}, err
+		return facts{}, errors.Join(err, lis.Close())
 	}
 	cfg := server.DefaultConfig()
 	cfg.Listen = lis.Addr().String()

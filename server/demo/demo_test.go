@@ -53,9 +53,13 @@ func TestNightShift(t *testing.T) {
 	var happened facts
 	out := filepath.Join(t.TempDir(), "pictures")
 	ended := make(chan error, 1)
+	lis, err := listen(ctx, false) // not on the daemon's own port, which may be in use
+	if err != nil {
+		t.Fatal(err)
+	}
 	go func() {
 		var err error
-		happened, err = play(ctx, Options{Out: out, Stay: true}, &told)
+		happened, err = play(ctx, Options{Out: out, Stay: true}, lis, &told)
 		ended <- err
 	}()
 	reachable := regexp.MustCompile(`Still serving on (\S+)`)
