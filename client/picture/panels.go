@@ -2,7 +2,6 @@ package picture
 
 import (
 	"fmt"
-	"math"
 	"strings"
 
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
@@ -270,10 +269,8 @@ func placeWords(p *wideberthv1.Point) string {
 	if p == nil {
 		return "a place not said"
 	}
-	return fmt.Sprintf("x %.2f, y %.2f", roundHalf(p.GetXM()), roundHalf(p.GetYM()))
+	return fmt.Sprintf("x %.2f, y %.2f", p.GetXM(), p.GetYM())
 }
-
-func roundHalf(v float64) float64 { return math.Round(v*100) / 100 }
 
 func reasonWords(r wideberthv1.RefusalReason) string {
 	switch r {

@@ -208,7 +208,7 @@ func (s *story) floorChanges(ctx context.Context, watch *watch, old *drive) (*dr
 	s.say.line("  A robot still on the old route is told: %s (%s).", stateWords(hint.GetState()), hint.GetExplanation())
 	route := replan.GetRoute()
 	s.facts.After = route
-	s.say.line("  Replan: %s, %s. %s from push to new route.", resultWords(replan), causeWords(replan), took(began))
+	s.say.line("  Replan: %s, %s. %s from push to new route.", resultWords(replan), causeWords(replan), length(s.facts.PushToPlan))
 	s.say.line("    rest of the old route  %6.1f m, smallest clearance %.2f m", old.left(), down(old.smallestAhead()))
 	s.say.line("    new route              %6.1f m, smallest clearance %.2f m", route.GetLengthM(), down(route.GetSmallestClearanceM()))
 	s.route(route)

@@ -90,8 +90,11 @@ func (s *story) draw(ctx context.Context, name string, sc scene) error {
 }
 
 // took is the time since then, for reading.
-func took(since time.Time) string {
-	switch d := time.Since(since); {
+func took(since time.Time) string { return length(time.Since(since)) }
+
+// length is a time for reading.
+func length(d time.Duration) string {
+	switch {
 	case d < 10*time.Millisecond:
 		return d.Round(100 * time.Microsecond).String()
 	case d < time.Second:
