@@ -153,13 +153,10 @@ func (g *guide) rejoin(on spot, off bool) *Rejoin {
 	to := func(at geom.Point, s float64, clear bool) *Rejoin {
 		return &Rejoin{At: at, S: s, OffRoute: on.off, Bearing: bearing(p, at), Clear: clear}
 	}
-	if !g.w.field.Bounds().Contains(p) {
-		return to(on.at, on.s, false)
-	}
 	for k := rejoinTries; k >= 0; k-- {
 		s := on.s + float64(reach*float64(k))/rejoinTries
 		at, _ := ahead(g.s.Route, s)
-		if g.w.field.Bounds().Contains(at) && g.j.Sight(p, at) {
+		if g.j.Sight(p, at) {
 			return to(at, s, true)
 		}
 	}

@@ -70,10 +70,14 @@ type gate struct {
 
 // widest finds the widest way and widens it; nil when there is none.
 func (t *task) widest(ctx context.Context, r *rules.Rules) (*gate, error) {
-	way, ok, err := roadmap.Widest(ctx, &roadmap.WideQuery{
+	q := &roadmap.WideQuery{
 		Frame: t.w.frame, Field: t.w.field, Rules: r, RadiusUm: t.q.Body.RadiusUm, NeedUm: t.j.NeedUm,
 		From: t.q.Start.At, To: t.q.Goal.At, Count: &t.search, Exact: &t.j.Exacts,
-	})
+	}
+	if t.shut == roadmap.ToShut { // from the end that has less about it
+		q.From, q.To, q.Backward = q.To, q.From, true
+	}
+	way, ok, err := roadmap.Widest(ctx, q)
 	if err != nil || !ok {
 		return nil, err
 	}
@@ -106,7 +110,7 @@ func (t *task) widen(way []geom.Point, r *rules.Rules) []geom.Point {
 		return r == nil || t.j.Allowed(a, b)
 	}
 	fits := func(a, b geom.Point, least float64) bool {
-		return t.j.Segment(a, b).Um >= least && allowed(a, b)
+		return t.w.field.Bounds().Contains(a) && t.w.field.Bounds().Contains(b) && t.j.Segment(a, b).Um >= least && allowed(a, b)
 	}
 	// First every bend for itself, keeping what it had.
 	way = slices.Clone(way)

@@ -253,8 +253,9 @@ func (t *task) leg(o *outline, pts []RoutePoint, i, k int) Leg {
 	if w.near.Feature != nil {
 		l.Nearest = w.near.Feature.Name
 	}
-	l.LeftUm = t.room(l.SmallestAt, pts[n].Heading+math.Pi/2)
-	l.RightUm = t.room(l.SmallestAt, pts[n].Heading-math.Pi/2)
+	// Nothing is nearer than the smallest clearance, to either side.
+	l.LeftUm = max(l.SmallestUm, t.room(l.SmallestAt, pts[n].Heading+math.Pi/2))
+	l.RightUm = max(l.SmallestUm, t.room(l.SmallestAt, pts[n].Heading-math.Pi/2))
 	return l
 }
 

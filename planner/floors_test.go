@@ -3,7 +3,6 @@ package planner_test
 import (
 	"context"
 	"math"
-	"testing"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -29,7 +28,7 @@ func settings(x, y, w, h, res float64) floor.Settings {
 	}
 }
 
-func newMap(t testing.TB, s floor.Settings, edits ...floor.Edit) *floor.Map {
+func newMap(t testingT, s floor.Settings, edits ...floor.Edit) *floor.Map {
 	t.Helper()
 	f, err := floor.New(s)
 	if err != nil {
@@ -44,7 +43,7 @@ func newMap(t testing.TB, s floor.Settings, edits ...floor.Edit) *floor.Map {
 	return f
 }
 
-func newWorld(t testing.TB, f *floor.Map) *planner.World {
+func newWorld(t testingT, f *floor.Map) *planner.World {
 	t.Helper()
 	w, err := planner.NewWorld(context.Background(), f)
 	if err != nil {
@@ -83,7 +82,7 @@ func body(radius float64) planner.Body {
 	return planner.Body{RadiusUm: r, PreferredUm: r, MaxSpeed: 1, Braking: 0.5, Reaction: 0.5}
 }
 
-func plan(t testing.TB, w *planner.World, q planner.Request) planner.Answer {
+func plan(t testingT, w *planner.World, q planner.Request) planner.Answer {
 	t.Helper()
 	a, err := w.Plan(context.Background(), q)
 	if err != nil {
@@ -95,7 +94,7 @@ func plan(t testing.TB, w *planner.World, q planner.Request) planner.Answer {
 	return a
 }
 
-func mustRoute(t testing.TB, w *planner.World, q planner.Request) *planner.Route {
+func mustRoute(t testingT, w *planner.World, q planner.Request) *planner.Route {
 	t.Helper()
 	a := plan(t, w, q)
 	if a.Route == nil {
@@ -118,4 +117,11 @@ func points(r *planner.Route) []geom.Point {
 		}
 	}
 	return ps
+}
+
+// testingT is what a helper needs of a test or of a property's draw.
+type testingT interface {
+	Helper()
+	Fatal(args ...any)
+	Fatalf(format string, args ...any)
 }

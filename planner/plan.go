@@ -39,6 +39,7 @@ type task struct {
 	j          *judge.Judge
 	free, open *mask.Mask // open: nil where every metre costs the same
 	search     roadmap.Counters
+	shut       roadmap.Outcome // which end is shut in, once no path was found
 }
 
 func (w *World) task(q Request) (*task, error) {
@@ -148,7 +149,13 @@ func (t *task) course(ctx context.Context) (*course, error) {
 	default:
 		p, out, err = roadmap.Grid(ctx, q, o.Roadmap != Grid4)
 	}
-	if err != nil || out != roadmap.Found {
+	if err == nil && out != roadmap.Found {
+		if t.shut = out; o.Roadmap == Quadtree {
+			t.shut, err = roadmap.Smaller(ctx, q)
+		}
+		return nil, err
+	}
+	if err != nil {
 		return nil, err
 	}
 	pts := joined(t.q.Start.At, p.Points, t.q.Goal.At)

@@ -32,16 +32,25 @@ func New(f *clearance.Field, r *rules.Rules, requiredUm, radiusUm int64) *Judge 
 	return &Judge{Field: f, Rules: r, NeedUm: max(requiredUm, LeastNeedUm), RadiusUm: radiusUm}
 }
 
-// At is the field's answer, counted.
+// At is the field's answer, counted. Where nothing is nearer than the cap, the nearest
+// place is p itself.
 func (j *Judge) At(p geom.Point) clearance.Nearest {
 	j.Exacts++
-	return j.Field.At(p)
+	return placed(j.Field.At(p), p)
 }
 
-// Segment is the field's answer, counted.
+// Segment is the field's answer, counted. Where nothing is nearer than the cap, both
+// places are a.
 func (j *Judge) Segment(a, b geom.Point) clearance.Nearest {
 	j.Exacts++
-	return j.Field.Segment(a, b)
+	return placed(j.Field.Segment(a, b), a)
+}
+
+func placed(n clearance.Nearest, p geom.Point) clearance.Nearest {
+	if n.Feature == nil && !n.Border && !n.Cell {
+		n.On, n.At = p, p
+	}
+	return n
 }
 
 // Stands says whether the body may stand at p. When not, zone is the closed zone that
@@ -54,11 +63,11 @@ func (j *Judge) Stands(p geom.Point) (ok bool, zone *floor.Feature) {
 	return zone == nil, zone
 }
 
-// Sight says whether the body may drive straight from a to b, both of which are on
-// the floor.
+// Sight says whether the body may drive straight from a to b.
 func (j *Judge) Sight(a, b geom.Point) bool {
 	j.Sights++
-	return j.Field.SegmentClear(a, b, j.NeedUm) && j.Allowed(a, b)
+	r := j.Field.Bounds()
+	return r.Contains(a) && r.Contains(b) && j.Field.SegmentClear(a, b, j.NeedUm) && j.Allowed(a, b)
 }
 
 // Allowed says whether zones let the body drive straight from a to b.

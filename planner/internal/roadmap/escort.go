@@ -1,5 +1,7 @@
 package roadmap
 
+import "context"
+
 // A search that cannot succeed sees everything that its start can reach, which may be
 // a whole hall when the goal is in a shut cupboard. From escortAfter nodes on the
 // search is escorted by a flood from the goal, escortSteps cells for each node
@@ -10,88 +12,96 @@ const (
 	escortSteps = 2
 )
 
-// bitTiles is a bit for every cell, made by block.
-type bitTiles struct {
-	nx  int
-	all []*[side]uint64
+// flood goes through the free cells that can be reached from some, or, backward, from
+// which some can be reached, nearest first, a bit of memory for each.
+type flood struct {
+	q         *Query
+	backward  bool
+	nx        int
+	seen      []*[side]uint64
+	now, next []Cell
+	visited   func(Cell) // may be nil
 }
 
-func newBitTiles(nx, ny int) *bitTiles {
-	return &bitTiles{nx: nx, all: make([]*[side]uint64, nx*ny)}
+func newFlood(q *Query, from []Link, backward bool, visited func(Cell)) *flood {
+	nx, ny := q.Free.Size()
+	f := &flood{q: q, backward: backward, nx: nx, seen: make([]*[side]uint64, nx*ny), visited: visited}
+	for _, l := range from {
+		f.visit(l.Cell)
+	}
+	return f
 }
 
-// mark sets a cell's bit and says whether it was clear.
-func (b *bitTiles) mark(c Cell) bool {
-	p := &b.all[c.Row/side*b.nx+c.Col/side]
+func (f *flood) visit(c Cell) {
+	p := &f.seen[c.Row/side*f.nx+c.Col/side]
 	if *p == nil {
 		*p = new([side]uint64)
 	}
 	w := &(*p)[c.Row%side]
 	bit := uint64(1) << (c.Col % side)
 	if *w&bit != 0 {
-		return false
-	}
-	*w |= bit
-	return true
-}
-
-// escort floods backward from the goal, nearest cells first.
-type escort struct {
-	g         *grid
-	seen      *bitTiles
-	now, next []Cell
-	met       bool
-}
-
-func newEscort(g *grid) *escort {
-	e := &escort{g: g, seen: newBitTiles(g.tiles.nx, g.tiles.ny)}
-	for _, l := range g.To {
-		e.visit(l.Cell)
-	}
-	return e
-}
-
-func (e *escort) visit(c Cell) {
-	if !e.seen.mark(c) {
 		return
 	}
-	if t := e.g.tiles.all[c.Row/side*e.g.tiles.nx+c.Col/side]; t != nil && t.state[(c.Row%side)*side+c.Col%side]&isClosed != 0 {
-		e.met = true
+	*w |= bit
+	f.next = append(f.next, c)
+	if f.visited != nil {
+		f.visited(c)
 	}
-	e.next = append(e.next, c)
 }
 
-// step goes on for n cells and says whether the flood has ended without meeting the
-// search: then no way leads to the goal.
-func (e *escort) step(n int) bool {
-	g := e.g
-	for ; n > 0 && !e.met; n-- {
-		if len(e.now) == 0 {
-			e.now, e.next = e.next, e.now[:0]
+// step goes on for at most n cells and says whether there are none left.
+func (f *flood) step(n int) bool {
+	q := f.q
+	oneWay := q.Rules.HasOneWay()
+	for ; n > 0; n-- {
+		if len(f.now) == 0 {
+			f.now, f.next = f.next, f.now[:0]
 		}
-		last := len(e.now) - 1
+		last := len(f.now) - 1
 		if last < 0 {
 			return true
 		}
-		c := e.now[last]
-		e.now = e.now[:last]
+		c := f.now[last]
+		f.now = f.now[:last]
 		var can uint8
-		for d := range g.moves {
-			if d >= 4 && (can&sides[d] != sides[d] || !g.Rules.HasOneWay()) {
+		for d := range 8 {
+			if d >= 4 && (can&sides[d] != sides[d] || !oneWay) {
 				continue // without one-way zones, diagonal moves reach nothing more
 			}
-			from := Cell{c.Col + moveX[d], c.Row + moveY[d]}
-			if !g.Free.Free(from.Col, from.Row) {
+			to := Cell{c.Col + moveX[d], c.Row + moveY[d]}
+			if !q.Free.Free(to.Col, to.Row) {
 				continue
 			}
 			if d < 4 {
 				can |= 1 << d
 			}
-			if g.Rules.HasOneWay() && g.Rules.Against(g.Frame.Centre(from), g.Frame.Centre(c)) != nil {
-				continue
+			if oneWay {
+				a, b := q.Frame.Centre(c), q.Frame.Centre(to)
+				if f.backward {
+					a, b = b, a
+				}
+				if q.Rules.Against(a, b) != nil {
+					continue
+				}
 			}
-			e.visit(from)
+			f.visit(to)
 		}
 	}
 	return false
+}
+
+// Smaller floods from both ends in turn and says which is shut in first: FromShut or
+// ToShut. It is for queries that have no path.
+func Smaller(ctx context.Context, q *Query) (Outcome, error) {
+	from, to := newFlood(q, q.From, false, nil), newFlood(q, q.To, true, nil)
+	for {
+		switch {
+		case ctx.Err() != nil:
+			return FromShut, context.Cause(ctx)
+		case from.step(PollEvery):
+			return FromShut, nil
+		case to.step(PollEvery):
+			return ToShut, nil
+		}
+	}
 }

@@ -67,7 +67,8 @@ type grid struct {
 	goal     map[int64]int // cell number to index in To
 	lo, hi   Cell          // rectangle of To's cells
 	least    int64         // least cost of To's links
-	escort   *escort
+	escort   *flood
+	met      bool // the escort has met the search
 }
 
 var queuePool = sync.Pool{New: func() any { return new(queue) }}
@@ -125,13 +126,20 @@ func (g *grid) run(ctx context.Context) (Path, Outcome, error) {
 			return Path{}, Found, err
 		}
 		if g.Count.Expanded++; p.n == escortAfter {
-			g.escort = newEscort(g)
+			g.escort = newFlood(g.Query, g.To, true, g.meet)
 		}
-		if g.escort != nil && g.escort.step(escortSteps) {
+		if g.escort != nil && !g.met && g.escort.step(escortSteps) && !g.met {
 			return Path{}, ToShut, nil
 		}
 	}
 	return Path{}, FromShut, nil
+}
+
+// meet is told of the cells that the escort comes to.
+func (g *grid) meet(c Cell) {
+	if t := g.tiles.all[c.Row/side*g.tiles.nx+c.Col/side]; t != nil && t.state[(c.Row%side)*side+c.Col%side]&isClosed != 0 {
+		g.met = true
+	}
 }
 
 // heuristic is the least that the way from c to the goal can cost.

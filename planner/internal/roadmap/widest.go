@@ -18,6 +18,7 @@ type WideQuery struct {
 	RadiusUm int64        // kept from closed zones
 	NeedUm   int64        // clearance from which on a place is as good as any, 1 or more
 	From, To geom.Point
+	Backward bool // the way asked for leads from To to From
 	Count    *Counters
 	Exact    *int64 // counts exact distance evaluations
 }
@@ -41,7 +42,7 @@ type wide struct {
 // The moves into a cell that are not from a neighbour.
 const fromStart = 9
 
-// Widest gives a way from From to To over middles of cells, joined where the straight
+// Widest gives a way from From to To (from To to From when Backward) over middles of cells, joined where the straight
 // piece keeps more than 0 clearance, such that the smallest clearance along it, as
 // far as it is below NeedUm, is the largest. found is false when there is none.
 func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, err error) {
@@ -53,6 +54,9 @@ func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, er
 		queuePool.Put(heap)
 	}()
 	if v := w.value(q.From, q.To, false); v >= q.NeedUm {
+		if q.Backward {
+			return []geom.Point{q.To, q.From}, true, nil
+		}
 		return []geom.Point{q.From, q.To}, true, nil
 	}
 	for _, c := range w.around(q.From) {
@@ -118,6 +122,9 @@ func (w *wide) around(p geom.Point) []Cell {
 // value is the clearance along a straight piece, rounded down, at most NeedUm; 0 where
 // a zone forbids it. clear says that it is known to keep NeedUm.
 func (w *wide) value(a, b geom.Point, clear bool) int64 {
+	if w.Backward {
+		a, b = b, a
+	}
 	if w.Rules != nil && (w.Rules.Entered(a, b, float64(w.RadiusUm)) != nil || w.Rules.Against(a, b) != nil) {
 		return 0
 	}
@@ -159,6 +166,8 @@ func (w *wide) way(cell int64) []geom.Point {
 		c = Cell{c.Col - moveX[d-1], c.Row - moveY[d-1]}
 	}
 	way = append(way, w.From)
-	slices.Reverse(way)
+	if !w.Backward {
+		slices.Reverse(way)
+	}
 	return way
 }
