@@ -48,5 +48,6 @@
 //	SHUTTING_DOWN       UNAVAILABLE          the server is draining; RetryInfo
 //	JOURNAL_UNAVAILABLE UNAVAILABLE          the journal cannot be written; RetryInfo
 //	JOURNAL_DAMAGED     DATA_LOSS            the journal cannot be read
+//	ROUTE_CHECK_FAILED  INTERNAL             a route failed the check that is apart from the search, and is withheld; the log says how
 //	INTERNAL            INTERNAL             a fault of the server's; its log has it under the call's x-request-id
 package server

@@ -18,6 +18,7 @@ import (
 	"example.com/wideberth/mapstore"
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/journal"
+	"example.com/wideberth/planner"
 )
 
 // errorDomain is ErrorInfo.domain of every failure.
@@ -146,7 +147,7 @@ func describe(ctx context.Context, err error, about subject) failure {
 		return failure{code: code, reason: reason, message: message, meta: meta}
 	}
 	unmet := func(f failure, kind, subject string) failure {
-		f.state = &errdetails.PreconditionFailure_Violation{Type: kind, Subject: subject, Description: cut(f.message, maxFaultText)}
+		f.state = &errdetails.PreconditionFailure_Violation{Type: kind, Subject: cut(subject, maxFaultPath), Description: cut(f.message, maxFaultText)}
 		return f
 	}
 	later := func(f failure, d time.Duration) failure { f.retry = d; return f }
@@ -157,6 +158,8 @@ func describe(ctx context.Context, err error, about subject) failure {
 		stale   *mapstore.StaleBaseError
 		edit    *floor.EditError
 		setting floor.SettingsError
+		request *planner.RequestError
+		checked *planner.CheckError
 	)
 	switch {
 	case errors.As(err, &input):
@@ -171,6 +174,12 @@ func describe(ctx context.Context, err error, about subject) failure {
 			f.fields = append(f.fields, fault{"settings." + s.Field, s.Problem})
 		}
 		return f
+	case errors.As(err, &request):
+		f := fail(codes.InvalidArgument, "INVALID_FIELD", request.Error())
+		f.fields = []fault{{request.Field, request.Problem}}
+		return f
+	case errors.As(err, &checked):
+		return fail(codes.Internal, "ROUTE_CHECK_FAILED", "the route that was found failed its check and is withheld; the server's log says how")
 	case errors.As(err, &station):
 		meta["station"] = station.station
 		meta["version"] = strconv.FormatInt(station.at.Version, 10)

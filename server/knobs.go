@@ -26,7 +26,7 @@ const maxConfigFileBytes = 1 << 20
 
 // neighbourVariables start with envPrefix and belong to other programs of the
 // project: the operator's tool and the tests.
-var neighbourVariables = []string{"WIDEBERTH_SERVER", "WIDEBERTH_FLOOR", "WIDEBERTH_AUTHOR", "WIDEBERTH_SLOW"}
+var neighbourVariables = []string{"WIDEBERTH_SERVER", "WIDEBERTH_SLOW"}
 
 // knob is one thing that can be set. The flag is --key with dashes, the variable
 // WIDEBERTH_KEY in capitals, the file key the key itself.

@@ -19,6 +19,7 @@ import (
 	"google.golang.org/grpc/status"
 
 	"example.com/wideberth/server"
+	"example.com/wideberth/server/demo"
 )
 
 // defaultData is where serve keeps the journal when nothing else is said: in the
@@ -48,7 +49,7 @@ func newRoot(environ []string) *cobra.Command {
 		SilenceErrors: true,
 	}
 	root.SetFlagErrorFunc(func(_ *cobra.Command, err error) error { return &usageError{err} })
-	root.AddCommand(newServe(environ), newHealthcheck(), newVersion())
+	root.AddCommand(newServe(environ), newHealthcheck(), demo.NewCommand(), newVersion())
 	for _, c := range root.Commands() {
 		c.Args = func(_ *cobra.Command, args []string) error {
 			if len(args) > 0 {

@@ -1,6 +1,7 @@
 // Command wideberthd is the wideberth server.
 //
 //	wideberthd serve         answer calls until SIGTERM or SIGINT
+//	wideberthd demo          play one night on a fictional auction hall
 //	wideberthd healthcheck   ask a running server whether it is serving
 //	wideberthd version       say what was built
 //
