@@ -226,6 +226,41 @@ func TestAcrossBlocks(t *testing.T) {
 	}
 }
 
+// TestTouchingIsFree: at 0 a cell that a solid touches from outside is free, even where
+// the touching place is a corner; at um, equality is admitted. Distances are 3-4-5
+// triangles' and diagonals', exact in float64.
+func TestTouchingIsFree(t *testing.T) {
+	const h = 1e6
+	// A disc of 5 cells whose border passes through the corner (20, 20) of cell (20, 20).
+	f := mustBuild(t, cellsFloor(t, 40, 40, 12, true, disc("d", 17*h, 16*h, 5*h)))
+	if !f.CellClear(20, 20, 0) || f.CellClear(20, 20, 1) || f.CellClear(19, 19, 0) || f.Vertex(20, 20) != 0 {
+		t.Error("cell that a disc touches at a corner")
+	}
+	// The same disc, 5 cells further from the corner (23, 24) of cell (23, 24).
+	if !f.CellClear(23, 24, 5*h) || f.CellClear(23, 24, 5*h+1) || f.Vertex(23, 24) != 5*h {
+		t.Errorf("cell 5 cells from a disc: vertex %d", f.Vertex(23, 24))
+	}
+	if a, b := f.point(23, 24), f.point(26, 28); !f.SegmentClear(a, b, 5*h) || f.SegmentClear(a, b, 5*h+1) {
+		t.Error("segment 5 cells from a disc")
+	}
+	// A diamond through lattice vertices: its sides cut cells from corner to corner and
+	// touch the cells beside at a corner only.
+	f = mustBuild(t, cellsFloor(t, 40, 40, 12, true, floor.Edit{Kind: floor.PutFeature, Feature: &floor.Feature{Name: "p", Kind: floor.Solid,
+		Shape: floor.NewPolygon([][]geom.Point{{{X: 20 * h, Y: 10 * h}, {X: 30 * h, Y: 20 * h}, {X: 20 * h, Y: 30 * h}, {X: 10 * h, Y: 20 * h}}}, 0)}}))
+	barred := 0
+	for r := range 40 {
+		for c := range 40 {
+			if !f.CellClear(c, r, 0) {
+				barred++
+			}
+		}
+	}
+	// Row by row 2, 4, ... 20, twice.
+	if want := 2 * (2 + 20) * 10 / 2; barred != want {
+		t.Errorf("diamond bars %d cells, want %d", barred, want)
+	}
+}
+
 // TestWindowsDoNotMatter: values computed for any window are those of the whole floor.
 func TestWindowsDoNotMatter(t *testing.T) {
 	check(t, 3, func(t *rapid.T) {
@@ -235,6 +270,9 @@ func TestWindowsDoNotMatter(t *testing.T) {
 		s.raster.lad = f.lad
 		for range 12 {
 			i, j := rapid.IntRange(0, f.cols).Draw(t, "i"), rapid.IntRange(0, f.rows).Draw(t, "j")
+			if rapid.Bool().Draw(t, "read from a block's edge") {
+				i = min(f.cols, i&^blockMask+f.lad.reach)
+			}
 			w := window{i, j, i + rapid.IntRange(1, 80).Draw(t, "across"), j + rapid.IntRange(1, 80).Draw(t, "up")}.intersect(window{0, 0, f.cols + 1, f.rows + 1})
 			s.out = grow(s.out, w.vertices())
 			if err := s.raster.raster(t.Context(), f, w, s.out); err != nil {

@@ -76,7 +76,7 @@ func genSettings(t *rapid.T, most int) floor.Settings {
 	wide, tall := most, most
 	switch rapid.IntRange(0, 9).Draw(t, "floor") {
 	case 0: // a cap of more than a block, up to the limit
-		cells = rapid.IntRange(60, floor.MaxCapCells-1).Draw(t, "cap cells")
+		cells = rapid.IntRange(30, floor.MaxCapCells-1).Draw(t, "cap cells")
 	case 1: // over more than one tile
 		wide, tall = 8, 5*most
 	case 2:
@@ -132,8 +132,11 @@ func genSolid(t *rapid.T, s floor.Settings) floor.Feature {
 		ft.Shape = floor.NewPolygon(genPolygon(t, s), ft.ToleranceUm)
 	case 1:
 		ft.WidthUm = rapid.Int64Range(1, 2*s.ResolutionUm).Draw(t, "width")
-		if rapid.Bool().Draw(t, "whole cells") {
+		switch rapid.IntRange(0, 3).Draw(t, "thick") {
+		case 0:
 			ft.WidthUm = 2 * s.ResolutionUm
+		case 1:
+			ft.WidthUm *= 20
 		}
 		chain := []geom.Point{genPoint(t, s, 0)}
 		for range rapid.IntRange(1, 5).Draw(t, "points") {
@@ -276,8 +279,9 @@ func plainOver(m *floor.Map, cell func(geom.Rect) float64, shape func(*floor.Sha
 		b := m.Bounds()
 		d = min(d, extent.Min.X-b.Min.X, b.Max.X-extent.Max.X, extent.Min.Y-b.Min.Y, b.Max.Y-extent.Max.Y)
 	}
-	for r := range s.Rows {
-		for c := range s.Columns {
+	near := s.TouchedCells(extent.Grow(d)) // cells farther than the cap do not matter
+	for r := near.Y0; r < near.Y1; r++ {
+		for c := near.X0; c < near.X1; c++ {
 			if m.Solid(c, r) {
 				d = min(d, cell(s.CellBounds(floor.CellRect{X0: c, Y0: r, X1: c + 1, Y1: r + 1})))
 			}

@@ -45,7 +45,7 @@ func buildT(t *rapid.T, m *floor.Map) *Field {
 // looked at one by one, rounded down: never above it and less than 1 µm below.
 func TestLaw5NeverOverstated(t *testing.T) {
 	check(t, 10, func(t *rapid.T) {
-		m := genMap(t, 40)
+		m := genMap(t, 130)
 		f := buildT(t, m)
 		s := m.Settings()
 		// Every vertex of a tiny floor, some of a larger one: each costs a look at all solids.
@@ -153,7 +153,7 @@ func within(a, b float64) bool { return math.Abs(a-b) <= 1e-3 }
 // TestQueriesAgainstAllSolids: At, Segment and SegmentClear against every solid in turn.
 func TestQueriesAgainstAllSolids(t *testing.T) {
 	check(t, 10, func(t *rapid.T) {
-		m := genMap(t, 90)
+		m := genMap(t, 200)
 		f := buildT(t, m)
 		s := m.Settings()
 		for range 6 {
