@@ -11,9 +11,9 @@ import (
 	"example.com/wideberth/mapstore/journal"
 )
 
-// maxConflicts is how often in a row a push may find that another writer of the
+// maxRaces is how often in a row a push may find that another writer of the
 // journal was faster; each time that writer made a version.
-const maxConflicts = 100
+const maxRaces = 100
 
 // maxEditBytes is how long a patch's encoded edits may be; the rest of a payload is
 // the entry's own.
@@ -226,7 +226,7 @@ func (r *Restore) repeats(rec *journal.Record, e *entry) bool {
 }
 
 // makeVersion is what all writers of a floor have in common: the turn, the request
-// id, the append, and another writer who was faster. draw is called with the head
+// id, the append, and another writer who was faster. drawUp is called with the head
 // on top of which the version is to stand, again for each new head.
 func (s *Store) makeVersion(ctx context.Context, f *floorState, requestID string, validateOnly bool,
 	repeats func(*journal.Record, *entry) bool, drawUp func(head *Snapshot) (draft, error),
@@ -236,7 +236,7 @@ func (s *Store) makeVersion(ctx context.Context, f *floorState, requestID string
 		return v, false, err
 	}
 	defer done()
-	for range maxConflicts {
+	for range maxRaces {
 		if v, repeated, err = s.answerAgain(ctx, f, requestID, repeats); err != nil || repeated {
 			return v, repeated, err
 		}
@@ -262,7 +262,7 @@ func (s *Store) makeVersion(ctx context.Context, f *floorState, requestID string
 			return VersionInfo{}, false, err
 		}
 	}
-	return VersionInfo{}, false, fmt.Errorf("%w: another writer of floor %q was faster %d times in a row", ErrJournal, f.id, maxConflicts)
+	return VersionInfo{}, false, fmt.Errorf("%w: another writer of floor %q was faster %d times in a row", ErrJournal, f.id, maxRaces)
 }
 
 // answerAgain is the first answer to a request id. The caller has the turn.

@@ -58,13 +58,6 @@ func hashOf(fields []byte) [32]byte {
 	return [32]byte(h.Sum(nil))
 }
 
-// Check says whether a journal may take r: the error is an ErrInvalid when a field
-// is out of bounds or r is not sealed.
-func (r *Record) Check() error {
-	_, err := EncodeRecord(*r)
-	return err
-}
-
 func (r *Record) checkBounds() error {
 	switch {
 	case r.Floor == "":
@@ -101,8 +94,8 @@ func (r *Record) appendFields(b []byte) []byte {
 	return append(b, r.Payload...)
 }
 
-// EncodeRecord is a record as it is stored. The error is an ErrInvalid, as from
-// Record.Check.
+// EncodeRecord is a record as it is stored. The error is an ErrInvalid when a field is
+// out of bounds or r is not sealed: no journal takes it then.
 func EncodeRecord(r Record) ([]byte, error) {
 	if err := r.checkBounds(); err != nil {
 		return nil, err
