@@ -20,16 +20,15 @@ import (
 // wide, so that lengths read in cells.
 func gridFloor(t testing.TB, rows ...string) *floor.Map {
 	s := settings(0, 0, float64(len(rows[0])), float64(len(rows)), 1)
-	var es []floor.Edit
+	packed := make([]byte, (s.Columns*s.Rows+3)/4)
 	for i, row := range rows {
 		for c, ch := range row {
-			if ch == '*' {
-				r := len(rows) - 1 - i
-				es = append(es, floor.Edit{Kind: floor.PaintRect, Fill: floor.Occupied, Rect: floor.CellRect{X0: c, Y0: r, X1: c + 1, Y1: r + 1}})
+			if k := (s.Rows-1-i)*s.Columns + c; ch == '*' {
+				packed[k/4] |= byte(floor.Occupied) << (2 * (k % 4))
 			}
 		}
 	}
-	return newMap(t, s, es...)
+	return newMap(t, s, floor.Edit{Kind: floor.PaintCells, Rect: floor.CellRect{X1: s.Columns, Y1: s.Rows}, Cells: packed})
 }
 
 // cellPose is the middle of a cell given by text row and column.

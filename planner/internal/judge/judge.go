@@ -106,7 +106,7 @@ const TightResolution = 1000
 // largest at an end, so that one convex piece of a solid which both ends are near
 // to settles all between them. What neither settles is halved.
 func (j *Judge) Tight(a, b geom.Point, um float64) []geom.Span {
-	if a == b {
+	if a == b || um > float64(j.Field.Cap()) { // which no clearance exceeds
 		if j.At(a).Um < um {
 			return []geom.Span{{From: 0, To: 1}}
 		}

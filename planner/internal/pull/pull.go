@@ -107,10 +107,13 @@ const (
 )
 
 // try says whether the way through via may replace the stretch from i to k: it is
-// allowed, costs less by the gain, and comes no nearer to anything. When it may, it
-// is given.
+// allowed, comes no nearer to anything, and costs less by the gain, or, straight
+// from i to k, at least no more. When it may, it is given.
 func (l *line) try(i, k int, via ...geom.Point) (way, verdict) {
 	cost, least := l.stretch(i, k)
+	if len(via) > 0 {
+		cost -= l.gain // fewer points are worth it for nothing
+	}
 	w := way{pts: []geom.Point{l.pts[i]}}
 	long := 0.0
 	for _, p := range append(via, l.pts[k]) {
@@ -119,7 +122,7 @@ func (l *line) try(i, k int, via ...geom.Point) (way, verdict) {
 			w.pts = append(w.pts, p)
 		}
 	}
-	if long > cost-l.gain || len(w.pts) < 2 {
+	if long > cost || len(w.pts) < 2 {
 		return w, idle
 	}
 	for n := 1; n < len(w.pts); n++ {
@@ -130,7 +133,7 @@ func (l *line) try(i, k int, via ...geom.Point) (way, verdict) {
 	sum := 0.0
 	for n := 1; n < len(w.pts); n++ {
 		c, m := l.j.Weigh(w.pts[n-1], w.pts[n])
-		if sum += c; m < least || sum > cost-l.gain {
+		if sum += c; m < least || sum > cost {
 			return w, barred
 		}
 		w.cost, w.least = append(w.cost, c), append(w.least, m)

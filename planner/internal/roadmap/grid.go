@@ -74,7 +74,7 @@ type grid struct {
 var queuePool = sync.Pool{New: func() any { return new(queue) }}
 
 // goalID is the node that stands for the far end of every link of To.
-const goalID = math.MaxInt64
+const goalID = 1 << 40
 
 // Grid searches the grid: 8-connected with the octile distance as heuristic, or
 // 4-connected with the Manhattan distance.
@@ -116,8 +116,8 @@ func (g *grid) run(ctx context.Context) (Path, Outcome, error) {
 	p := poll{ctx: ctx}
 	for len(g.open) > 0 {
 		e := g.open.pop()
-		if e.id == goalID {
-			return g.path(e.key, int(e.dir)), Found, nil
+		if e.id() == goalID {
+			return g.path(e.key, int(e.dir())), Found, nil
 		}
 		if !g.expand(e) {
 			continue
@@ -161,24 +161,24 @@ func (g *grid) queueIn(t *tile, k int, c Cell, cost int64, dir uint8) {
 		return
 	}
 	t.state[k], t.cost[k] = dir, cost
-	g.open.push(entry{key: cost + g.heuristic(c), tie: cost, id: g.number(c), dir: dir})
+	g.open.push(newEntry(cost+g.heuristic(c), cost, g.number(c), dir))
 	g.Count.Queued++
 }
 
 // expand closes a node and queues its neighbours; false for a stale entry.
 func (g *grid) expand(e entry) bool {
-	c := Cell{int(e.id % int64(g.Frame.Cols)), int(e.id / int64(g.Frame.Cols))}
+	c := Cell{int(e.id() % int64(g.Frame.Cols)), int(e.id() / int64(g.Frame.Cols))}
 	t := g.tiles.at(c.Col/side, c.Row/side)
 	x, y := c.Col%side, c.Row%side
 	k := y*side + x
 	if t.state[k]&isClosed != 0 {
 		return false
 	}
-	t.close(k, e.dir)
+	t.close(k, e.dir())
 	g0, heavy := e.tie, tight(t, x, y)
-	if i, ok := g.goal[e.id]; ok {
+	if i, ok := g.goal[e.id()]; ok {
 		cost := g0 + g.costs.fromUm(g.To[i].CostUm)
-		g.open.push(entry{key: cost, tie: cost, id: goalID, dir: uint8(i)})
+		g.open.push(newEntry(cost, cost, goalID, uint8(i)))
 	}
 	var can uint8 // straight moves that are possible
 	inner := x > 0 && x < side-1 && y > 0 && y < side-1

@@ -4,9 +4,13 @@ package roadmap
 // key comes first, then the larger tie, then the smaller id.
 type entry struct {
 	key, tie int64
-	id       int64
-	dir      uint8
+	ref      int64 // id, and how it was come by in the lowest byte
 }
+
+func newEntry(key, tie, id int64, dir uint8) entry { return entry{key, tie, id<<8 | int64(dir)} }
+
+func (a *entry) id() int64  { return a.ref >> 8 }
+func (a *entry) dir() uint8 { return uint8(a.ref) }
 
 func (a *entry) before(b *entry) bool {
 	if a.key != b.key {
@@ -15,7 +19,7 @@ func (a *entry) before(b *entry) bool {
 	if a.tie != b.tie {
 		return a.tie > b.tie
 	}
-	return a.id < b.id
+	return a.ref < b.ref
 }
 
 // queue is a 4-ary heap. Entries are not moved when a node gets cheaper: the search

@@ -14,7 +14,7 @@ import (
 // is not closed: with a consistent heuristic a closed node's cost is never asked
 // for again. A search that floods a 4096x4096 floor holds 16 MiB plus the blocks
 // along its front; the worst case, a walled-in free cell in every block, 144 MiB.
-// Queued nodes take 32 bytes each. All of it comes from pools and goes back.
+// Queued nodes take 24 bytes each. All of it comes from pools and goes back.
 
 const (
 	side    = floor.BlockSize

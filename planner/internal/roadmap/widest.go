@@ -69,24 +69,24 @@ func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, er
 	p := poll{ctx: ctx}
 	for len(w.open) > 0 {
 		e := w.open.pop()
-		if e.id == goalID {
+		if e.id() == goalID {
 			return w.way(e.tie), true, nil
 		}
-		c := Cell{int(e.id % int64(q.Frame.Cols)), int(e.id / int64(q.Frame.Cols))}
+		c := Cell{int(e.id() % int64(q.Frame.Cols)), int(e.id() / int64(q.Frame.Cols))}
 		s := w.state(c)
 		if *s&isClosed != 0 {
 			continue
 		}
-		*s = e.dir | isClosed
+		*s = e.dir() | isClosed
 		if err := p.err(); err != nil {
 			return nil, false, err
 		}
 		q.Count.Expanded++
 		here := q.Frame.Centre(c)
-		if last[e.id] {
+		if last[e.id()] {
 			if v := min(-e.key, w.value(here, q.To, false)); v > 0 {
 				// tie carries the cell; the goal comes before any other node of its key.
-				w.open.push(entry{key: -v, tie: e.id, id: goalID})
+				w.open.push(newEntry(-v, e.id(), goalID, 0))
 			}
 		}
 		clear := int64(q.Field.CellLower(c.Col, c.Row)) >= q.NeedUm
@@ -150,7 +150,7 @@ func (w *wide) queue(c Cell, value int64, dir uint8) {
 		return
 	}
 	far := geom.Dist(w.Frame.Centre(c), w.To)
-	w.open.push(entry{key: -value, tie: -int64(far), id: w.number(c), dir: dir})
+	w.open.push(newEntry(-value, -int64(far), w.number(c), dir))
 	w.Count.Queued++
 }
 
