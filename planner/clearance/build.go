@@ -45,6 +45,9 @@ func Build(ctx context.Context, m *floor.Map) (*Field, error) {
 		}
 	}
 	for ft := range m.Features() {
+		if ctx.Err() != nil {
+			return nil, ctx.Err()
+		}
 		if ft.Kind == floor.Solid {
 			f.enter(newSolid(ft), true)
 		}
@@ -177,7 +180,9 @@ func (f *Field) compute(ctx context.Context, s *scratch, w window, changed func(
 	if err := s.raster.raster(ctx, f, w, s.out); err != nil {
 		return err
 	}
-	s.vector.apply(f, w, s.out)
+	if err := s.vector.apply(ctx, f, w, s.out); err != nil {
+		return err
+	}
 	for by := w.j0 >> blockShift; by<<blockShift < w.j1; by++ {
 		for bx := w.i0 >> blockShift; bx<<blockShift < w.i1; bx++ {
 			if f.keep(w, s.out, bx, by) && changed != nil {

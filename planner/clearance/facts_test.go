@@ -278,7 +278,9 @@ func TestWindowsDoNotMatter(t *testing.T) {
 			if err := s.raster.raster(t.Context(), f, w, s.out); err != nil {
 				t.Fatal(err)
 			}
-			s.vector.apply(f, w, s.out)
+			if err := s.vector.apply(t.Context(), f, w, s.out); err != nil {
+				t.Fatal(err)
+			}
 			for k, v := range s.out {
 				if i, j := w.i0+k%w.width(), w.j0+k/w.width(); v != f.Vertex(i, j) {
 					t.Fatalf("window %v, vertex (%d, %d): %d, want %d", w, i, j, v, f.Vertex(i, j))
@@ -286,6 +288,34 @@ func TestWindowsDoNotMatter(t *testing.T) {
 			}
 		}
 	})
+}
+
+// TestReadsOneCapFurther: a solid exactly the cap's whole cells beyond a window's edge is
+// seen, wherever the window lies relative to the blocks.
+func TestReadsOneCapFurther(t *testing.T) {
+	const res, reach = 50_000, 14
+	for c := range 200 {
+		m := mustMap(t, floor.Settings{ResolutionUm: res, Columns: 230, Rows: 230, CapUm: reach*res + 20_000, OpenBorder: true, Initial: floor.Free},
+			paint(c, c, c+1, c+1, floor.Occupied))
+		f := mustBuild(t, m)
+		var s scratch
+		s.raster.lad = f.lad
+		for _, w := range []window{
+			{c + 1 + reach, c, c + 3 + reach, c + 1}, {c - reach - 1, c, c - reach + 1, c + 1},
+			{c, c + 1 + reach, c + 1, c + 3 + reach}, {c, c - reach - 1, c + 1, c - reach + 1},
+		} {
+			if w.i0 < 0 || w.j0 < 0 {
+				continue
+			}
+			out := make([]int32, w.vertices())
+			if err := s.raster.raster(t.Context(), f, w, out); err != nil {
+				t.Fatal(err)
+			}
+			if got := min(out[0], out[1]); got != reach*res {
+				t.Errorf("cell (%d, %d), window %v: %d, want %d", c, c, w, got, reach*res)
+			}
+		}
+	}
 }
 
 // TestTravel: over the distance given, a disc moves without overlapping a solid; three

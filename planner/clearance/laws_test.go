@@ -1,6 +1,7 @@
 package clearance
 
 import (
+	"fmt"
 	"math"
 	"testing"
 
@@ -108,8 +109,8 @@ func TestCellsAreExact(t *testing.T) {
 // judged by the shrunken square: a solid that only touches from outside leaves it
 // free, one that comes in by a micrometre's hundredth does not.
 func TestFreeAtZero(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
-		m := genMap(t, 40)
+	check(t, 4, func(t *rapid.T) {
+		m := genMap(t, 130)
 		f := buildT(t, m)
 		s := m.Settings()
 		for r := range s.Rows {
@@ -174,6 +175,43 @@ func TestQueriesAgainstAllSolids(t *testing.T) {
 			}
 			if got := f.SegmentClear(a, b, 0); got != (want > 0) {
 				t.Fatalf("segment %v %v clear by 0: %v, clearance %v", a, b, got, want)
+			}
+		}
+	})
+}
+
+// TestSegmentsAmongColumns: long segments past many single cells and discs, where what is
+// nearest changes along the way.
+func TestSegmentsAmongColumns(t *testing.T) {
+	check(t, 1, func(t *rapid.T) {
+		s := floor.Settings{ResolutionUm: 50_000, Columns: 200, Rows: 200, CapUm: 1_510_000, OpenBorder: true, Initial: floor.Free}
+		m, err := floor.New(s)
+		if err != nil {
+			t.Fatal(err)
+		}
+		var edits []floor.Edit
+		for k := range rapid.IntRange(5, 60).Draw(t, "columns") {
+			c := genCells(t, s)
+			if k%4 == 0 {
+				edits = append(edits, disc(fmt.Sprint("d", k), float64(c.X0)*50_000+11, float64(c.Y0)*50_000+7, 60_000))
+			} else {
+				edits = append(edits, paint(c.X0, c.Y0, c.X0+1, c.Y0+1, floor.Occupied))
+			}
+		}
+		m = tryApply(t, m, edits)
+		f := buildT(t, m)
+		for range 20 {
+			a, b := genPlace(t, s, 0), genPlace(t, s, 0)
+			switch rapid.IntRange(0, 3).Draw(t, "along") {
+			case 0:
+				b.X = a.X
+			case 1:
+				b.Y = a.Y
+			}
+			want := plainSegment(m, a, b)
+			checkNearest(t, m, f.Segment(a, b), want, a, b)
+			if um := int64(want); um > 0 && (!f.SegmentClear(a, b, um) || um < f.cap && f.SegmentClear(a, b, um+1)) {
+				t.Fatalf("%v %v: clear by %d %v, by one more %v, clearance %v", a, b, um, f.SegmentClear(a, b, um), f.SegmentClear(a, b, um+1), want)
 			}
 		}
 	})

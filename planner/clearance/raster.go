@@ -101,8 +101,8 @@ func (t *transformer) raster(ctx context.Context, f *Field, w window, out []int3
 	}
 	fill(cur, 255)
 	for j := rj1 - 1; j >= w.j0; j-- {
-		if err := ctx.Err(); err != nil {
-			return context.Cause(ctx)
+		if ctx.Err() != nil {
+			return ctx.Err()
 		}
 		f.siteRow(j, ri0>>blockShift, t.sites)
 		sweep(cur, t.sites)

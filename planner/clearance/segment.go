@@ -24,7 +24,7 @@ func (f *Field) Segment(a, b geom.Point) Nearest {
 	var buf [16]stretch
 	need := n.Um
 	doubtful, _ := f.doubtful(a, b, &need, false, buf[:0])
-	f.pieces(a, b, doubtful, n.Um, func(s *solid, p *piece) bool {
+	f.pieces(a, b, doubtful, need, func(s *solid, p *piece) bool {
 		d, on, q := geom.SegmentSegmentDist(a, b, p.a, p.b)
 		if d -= s.grow; d < n.Um {
 			n = nearFeature(s, max(0, d), on, q)
@@ -32,8 +32,8 @@ func (f *Field) Segment(a, b geom.Point) Nearest {
 		return n.Um > 0
 	})
 	if n.Um > 0 {
-		f.rowsOf(a, b, doubtful, n.Um, func(y0, y1 float64) bool {
-			f.cellsNear(a, b, y0, y1, n.Um, &n)
+		f.rowsOf(a, b, doubtful, min(need, n.Um), func(y0, y1 float64) bool {
+			f.cellsNear(a, b, y0, y1, need, &n)
 			return n.Um > 0
 		})
 	}

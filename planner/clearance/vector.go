@@ -1,6 +1,7 @@
 package clearance
 
 import (
+	"context"
 	"math"
 
 	"example.com/wideberth/mapstore/geom"
@@ -32,11 +33,14 @@ const pruneSlack = 1
 const leafSide = 8
 
 // apply lowers out, the values of w, to the distance of the nearest vector solid.
-func (v *vectorizer) apply(f *Field, w window, out []int32) {
+func (v *vectorizer) apply(ctx context.Context, f *Field, w window, out []int32) error {
 	for by := w.j0 >> blockShift; by<<blockShift < w.j1; by++ {
 		for bx := w.i0 >> blockShift; bx<<blockShift < w.i1; bx++ {
 			block := window{bx << blockShift, by << blockShift, (bx + 1) << blockShift, (by + 1) << blockShift}
 			sub := block.intersect(w)
+			if ctx.Err() != nil {
+				return ctx.Err()
+			}
 			v.gather(f, sub)
 			if len(v.order) == 0 {
 				continue
@@ -49,6 +53,7 @@ func (v *vectorizer) apply(f *Field, w window, out []int32) {
 			}
 		}
 	}
+	return nil
 }
 
 // gather collects the solids and pieces within the cap of w, each once.
