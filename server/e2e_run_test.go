@@ -9,6 +9,7 @@ import (
 	"testing"
 	"time"
 
+	"github.com/rs/zerolog"
 	"golang.org/x/net/http2"
 	"google.golang.org/grpc"
 	"google.golang.org/grpc/codes"
@@ -282,5 +283,56 @@ func pingRaw(t *testing.T, conn net.Conn, n int) bool {
 				}
 			}
 		}
+	}
+}
+
+// Serving without TLS where others can reach it is said loudly; on loopback it is not.
+func TestPlainTextBeyondLoopbackWarns(t *testing.T) {
+	for addr, want := range map[string]bool{"0.0.0.0:0": true, "127.0.0.1:0": false} {
+		lis, err := net.Listen("tcp", addr)
+		if err != nil {
+			t.Fatal(err)
+		}
+		log := &logBuffer{}
+		s, err := New(t.Context(), DefaultConfig(), zerolog.New(log))
+		if err != nil {
+			t.Fatal(err)
+		}
+		ctx, stop := context.WithCancel(t.Context())
+		served := make(chan error, 1)
+		go func() { served <- s.Serve(ctx, lis) }()
+		for !strings.Contains(log.String(), `"message":"serving"`) {
+			time.Sleep(time.Millisecond)
+		}
+		stop()
+		if err := <-served; err != nil {
+			t.Error(err)
+		}
+		if warned := strings.Contains(log.String(), "without TLS"); warned != want {
+			t.Errorf("%s: warned %v, wanted %v", addr, warned, want)
+		}
+	}
+}
+
+// Clients may compress what they send, and are answered alike.
+func TestGzip(t *testing.T) {
+	r := start(t)
+	r.hall()
+	got, err := r.routes.Plan(r.ctx(), toBench(), grpc.UseCompressor("gzip"))
+	if err != nil || got.GetRoute() == nil {
+		t.Errorf("%v, %v", got, err)
+	}
+}
+
+// Two servers on one journal file would each think they own the head: the second is
+// refused.
+func TestOneServerForAFile(t *testing.T) {
+	r := start(t)
+	cfg := DefaultConfig()
+	cfg.Data = r.s.cfg.Data
+	if s, err := New(t.Context(), cfg, zerolog.Nop()); err == nil {
+		t.Errorf("a second server took %s (%v)", cfg.Data, s.Close())
+	} else if !strings.Contains(err.Error(), "test.db") {
+		t.Errorf("%v does not name the file", err)
 	}
 }
