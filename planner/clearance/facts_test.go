@@ -16,7 +16,7 @@ import (
 // TestRasterCellLowerIsExact: without vector solids the smallest clearance over a closed
 // cell is the smallest over its four vertices, exactly.
 func TestRasterCellLowerIsExact(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		m, err := floor.New(genSettings(t, 30))
 		if err != nil {
 			t.Fatal(err)
@@ -39,7 +39,7 @@ func TestRasterCellLowerIsExact(t *testing.T) {
 // TestLargestInCell: nowhere in a closed cell is the clearance above the largest of its
 // vertices by more than h/√2; Node.Max bounds squares of cells alike.
 func TestLargestInCell(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		m := genMap(t, 90)
 		f := buildT(t, m)
 		for range 20 {
@@ -89,7 +89,7 @@ func TestBoundsAreTight(t *testing.T) {
 // TestNodesAgree: Node.Kind of every node is what its cells say, at 0 and above, and Min and
 // Max are those of its vertices.
 func TestNodesAgree(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		m := genMap(t, 80)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -136,7 +136,7 @@ func TestNodesAgree(t *testing.T) {
 // TestSameBlock: where SameBlock says so, every clearance gives the same bits; and a small
 // change leaves most of a floor the same.
 func TestSameBlock(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		m := genMap(t, 300)
 		f := buildT(t, m)
 		next := tryApply(t, m, genEdits(t, m))
@@ -321,7 +321,7 @@ func TestReadsOneCapFurther(t *testing.T) {
 // TestTravel: over the distance given, a disc moves without overlapping a solid; three
 // micrometres further, or at the bound, it does.
 func TestTravel(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		m := genMap(t, 60)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -521,7 +521,7 @@ func TestWideOutlines(t *testing.T) {
 	if bare == 0 {
 		t.Fatal("no block without an edge is covered: the outline is too small for this test")
 	}
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		p := genPlace(t, m.Settings(), 0)
 		q := genPlace(t, m.Settings(), 0)
 		ft, _ := m.Feature("hall")

