@@ -1,3 +1,45 @@
 // Package planner answers how a body gets from here to there on one version of a
-// floor.
+// floor, and what to make of where a robot is on its way.
+//
+// A World is one version made ready: NewWorld from scratch, Advance from the world of
+// another version with work proportional to what changed. Its methods are pure: no
+// clock, no network, no disk, no logging; the same question gets the same answer, at
+// any time, from any number of goroutines.
+//
+//	w, err := planner.NewWorld(ctx, snapshot.Map)
+//	a, err := w.Plan(ctx, planner.Request{Body: body, Start: s, Goal: g, Options: o})
+//	// a.Route or a.Refusal, never both, never neither
+//
+// # How a plan is made
+//
+// The two ends are judged exactly (clearance.Field.At, zones). If the straight way is
+// clear and nothing can be cheaper, it is the route. Else a roadmap is searched whose
+// nodes are cells, or quadtree leaves of cells, that keep the required clearance as a
+// whole; ends join it by straight pieces that are clear. Auto is the 8-connected grid. The
+// path found is straightened by exact lines of sight (package pull): bends are
+// pulled to corners, and a corner is cut as often as that saves a fiftieth of a cell.
+//
+// Balanced counts a metre below the preferred clearance 1 + TightWeight times. The search
+// judges a cell by whether it is wholly clear at the preferred clearance; CostUm counts
+// what is truly below it, and is never more.
+//
+// Whole cells miss passages up to 2·sqrt 2 cells wider than the body needs
+// (Bound.WidthBiasUm). With Auto and straightening, a search that finds nothing goes on to
+// the widest chain of cells joined by exactly clear pieces and takes it when it is wide
+// enough; a named roadmap keeps its bias, and its refusal then shows a Bottleneck
+// no narrower than needed.
+//
+// A required clearance of 0 means a point that keeps 1 µm off solids: it does not slip
+// between two that touch.
+//
+// Before it is given, every route is gone over by package check, which shares
+// nothing with any of this. Should they disagree, the answer is a *CheckError.
+//
+// # Reading the source
+//
+// plan.go is the way through; ends.go joins ends to roadmaps, bottleneck.go explains
+// refusals, describe.go makes legs and points, replan.go keeps or replaces old routes,
+// advise.go guides. Beneath: internal/judge decides exactly, internal/mask holds free
+// cells, internal/roadmap searches, internal/pull straightens, internal/rules knows the
+// zones.
 package planner

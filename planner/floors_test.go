@@ -116,6 +116,9 @@ func points(r *planner.Route) []geom.Point {
 			}
 		}
 	}
+	if len(ps) == 1 { // standing still
+		ps = append(ps, ps[0])
+	}
 	return ps
 }
 

@@ -61,7 +61,9 @@ func drawEdits(t *rapid.T, s floor.Settings, b geom.Rect, zones bool) []floor.Ed
 			w := rapid.Int64Range(1, 5*s.ResolutionUm).Draw(t, "width")
 			ps := []geom.Point{drawPoint(t, b, "a"), drawPoint(t, b, "b")}
 			if ps[0] == ps[1] {
-				ps[1].X++
+				if ps[1] = b.Min; ps[0] == b.Min {
+					ps[1] = b.Max
+				}
 			}
 			es = append(es, put(&floor.Feature{Name: name, Kind: floor.Solid, WidthUm: w, Shape: floor.NewPolyline(ps, w, 0)}))
 		case 2:

@@ -79,21 +79,27 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 		r.Answer = fresh
 		return r, err
 	}
+	dearer := func(cost, share float64) bool {
+		return fresh.Route != nil && cost > float64(fresh.Route.CostUm*(1+max(share, keepSlack)))
+	}
 	cost := t.costOf(old)
-	if fresh.Route != nil && cost > float64(fresh.Route.CostUm*(1+max(q.SwitchShare, keepSlack))) {
-		r.Answer = fresh
-		if r.Cause = Cheaper; project(q.Previous, t.q.Start.At).off > t.w.frame.Res {
-			r.Cause = OffRoute
+	if !dearer(cost, q.SwitchShare) {
+		c := &course{pts: old, roadmap: math.Inf(1)}
+		if !dearer(cost, 0) {
+			c.kind = AtMostRoadmapOptimum
 		}
-		return r, nil
+		route, err := t.route(context.WithoutCancel(ctx), c)
+		// The points that describing adds are rounded, which may tip the balance.
+		if err != nil || !dearer(route.CostUm, q.SwitchShare) {
+			r.Answer.Route, r.Kept = route, err == nil
+			return r, err
+		}
 	}
-	c := &course{pts: old, roadmap: math.Inf(1)}
-	if fresh.Route == nil || cost <= float64(fresh.Route.CostUm*(1+keepSlack)) {
-		c.kind = AtMostRoadmapOptimum
+	r.Answer = fresh
+	if r.Cause = Cheaper; project(q.Previous, t.q.Start.At).off > t.w.frame.Res {
+		r.Cause = OffRoute
 	}
-	route, err := t.route(context.WithoutCancel(ctx), c)
-	r.Answer.Route, r.Kept = route, err == nil
-	return r, err
+	return r, nil
 }
 
 func (t *task) costOf(pts []geom.Point) float64 {

@@ -65,10 +65,27 @@ func (j *Judge) Stands(p geom.Point) (ok bool, zone *floor.Feature) {
 
 // Sight says whether the body may drive straight from a to b.
 func (j *Judge) Sight(a, b geom.Point) bool {
+	return j.Keeps(a, b, 0)
+}
+
+// Keeps is Sight, with least, rounded down, for the clearance to keep where that is more.
+func (j *Judge) Keeps(a, b geom.Point, least float64) bool {
 	j.Sights++
 	r := j.Field.Bounds()
-	return r.Contains(a) && r.Contains(b) && j.Field.SegmentClear(a, b, j.NeedUm) && j.Allowed(a, b)
+	need := max(j.NeedUm, int64(math.Floor(min(least, float64(j.Field.Cap())))))
+	return r.Contains(a) && r.Contains(b) && j.Field.SegmentClear(a, b, need) && j.Allowed(a, b)
 }
+
+// Open is the clearance from which on a piece costs its length.
+func (j *Judge) Open() float64 {
+	if j.Weight == 0 {
+		return 0
+	}
+	return j.WideUm
+}
+
+// Dearest is what a micrometre costs at most.
+func (j *Judge) Dearest() float64 { return 1 + j.Weight }
 
 // Allowed says whether zones let the body drive straight from a to b.
 func (j *Judge) Allowed(a, b geom.Point) bool {
@@ -76,16 +93,16 @@ func (j *Judge) Allowed(a, b geom.Point) bool {
 }
 
 // Weigh is what the straight piece ab costs, in micrometres, and the smallest
-// clearance along it as far as it is below WideUm. With no weight, clearance is not
-// looked at: least is then 0.
+// clearance along it, at most Open. With no weight, clearance is not looked at.
 func (j *Judge) Weigh(a, b geom.Point) (cost, least float64) {
 	long := geom.Dist(a, b)
 	if j.Weight == 0 {
 		return long, 0
 	}
-	if least = j.Segment(a, b).Um; least >= j.WideUm {
+	if j.Field.SegmentClear(a, b, int64(j.WideUm)) {
 		return long, j.WideUm
 	}
+	least = j.Segment(a, b).Um
 	share := 0.0
 	for _, s := range j.Tight(a, b, j.WideUm) {
 		share += s.To - s.From

@@ -13,11 +13,15 @@ import (
 
 // Judge says what straight pieces are worth.
 type Judge interface {
-	// Sight says whether the piece may be driven.
-	Sight(a, b geom.Point) bool
-	// Weigh is the piece's cost, at least its length, and its smallest clearance as far
-	// as that matters.
+	// Keeps says whether the piece may be driven and keeps least micrometres of
+	// clearance, rounded down to whole ones.
+	Keeps(a, b geom.Point, least float64) bool
+	// Weigh is the piece's cost and its smallest clearance, at most Open.
 	Weigh(a, b geom.Point) (cost, least float64)
+	// Open is the clearance from which on a piece costs its length, and Dearest what
+	// a micrometre costs at most.
+	Open() float64
+	Dearest() float64
 }
 
 // The bounds of the work.
@@ -40,16 +44,20 @@ type line struct {
 	gain   float64
 	checks int
 	pts    []geom.Point
-	cost   []float64 // of the piece from pts[i] to pts[i+1]
-	least  []float64
+	pieces []worth // of the piece from pts[i] to pts[i+1]
 }
 
-// Straighten gives a path with the same ends. Changes that gain less than gain
+// worth is what a piece costs and keeps; not known yet when cost is below 0.
+type worth struct{ cost, least float64 }
+
+// Straighten gives a path with the same ends. Moves of bends that gain less than gain
 // micrometres are not made. The points of the result are points of the path or
-// whole micrometres. The error is ctx's cause.
+// whole micrometres. No stretch comes nearer to solids than what it replaces, to
+// the micrometre, rounded down, where that is below the judge's Open. The error is
+// ctx's cause.
 func Straighten(ctx context.Context, j Judge, pts []geom.Point, gain float64) ([]geom.Point, error) {
-	l := &line{ctx: ctx, j: j, gain: gain}
-	l.set(pts)
+	l := &line{ctx: ctx, j: j, gain: gain, pts: append([]geom.Point(nil), pts...)}
+	l.pieces = unknown(len(pts) - 1)
 	l.shortcut()
 	for range maxRounds {
 		before := l.total()
@@ -65,36 +73,34 @@ func Straighten(ctx context.Context, j Judge, pts []geom.Point, gain float64) ([
 	return l.pts, nil
 }
 
-func (l *line) set(pts []geom.Point) {
-	l.pts = append([]geom.Point(nil), pts...)
-	for i := 1; i < len(pts); i++ {
-		c, m := l.j.Weigh(pts[i-1], pts[i])
-		l.cost, l.least = append(l.cost, c), append(l.least, m)
+func unknown(n int) []worth {
+	w := make([]worth, n)
+	for i := range w {
+		w[i].cost = -1
 	}
+	return w
 }
 
-func (l *line) total() float64 {
-	sum := 0.0
-	for _, c := range l.cost {
-		sum += c
+// stretch is the cost and the smallest clearance from point i to point k.
+func (l *line) stretch(i, k int) worth {
+	sum := worth{0, math.Inf(1)}
+	for ; i < k; i++ {
+		w := &l.pieces[i]
+		if w.cost < 0 {
+			w.cost, w.least = l.j.Weigh(l.pts[i], l.pts[i+1])
+		}
+		sum.cost += w.cost
+		sum.least = min(sum.least, w.least)
 	}
 	return sum
 }
 
-// stretch is the cost and the smallest clearance from point i to point k.
-func (l *line) stretch(i, k int) (cost, least float64) {
-	least = math.Inf(1)
-	for ; i < k; i++ {
-		cost += l.cost[i]
-		least = min(least, l.least[i])
-	}
-	return cost, least
-}
+func (l *line) total() float64 { return l.stretch(0, len(l.pieces)).cost }
 
 // way is a piece of path that might replace a stretch.
 type way struct {
-	pts         []geom.Point // ends included
-	cost, least []float64
+	pts    []geom.Point // ends included
+	pieces []worth
 }
 
 // verdict is what comes of trying a way.
@@ -110,9 +116,9 @@ const (
 // allowed, comes no nearer to anything, and costs less by the gain, or, straight
 // from i to k, at least no more. When it may, it is given.
 func (l *line) try(i, k int, via ...geom.Point) (way, verdict) {
-	cost, least := l.stretch(i, k)
+	was := l.stretch(i, k)
 	if len(via) > 0 {
-		cost -= l.gain // fewer points are worth it for nothing
+		was.cost -= l.gain // fewer points are worth it for nothing
 	}
 	w := way{pts: []geom.Point{l.pts[i]}}
 	long := 0.0
@@ -122,21 +128,31 @@ func (l *line) try(i, k int, via ...geom.Point) (way, verdict) {
 			w.pts = append(w.pts, p)
 		}
 	}
-	if long > cost || len(w.pts) < 2 {
+	if long > was.cost || len(w.pts) < 2 {
 		return w, idle
 	}
 	for n := 1; n < len(w.pts); n++ {
-		if l.spent() || !l.j.Sight(w.pts[n-1], w.pts[n]) {
+		if l.spent() || !l.j.Keeps(w.pts[n-1], w.pts[n], was.least) {
 			return w, barred
 		}
 	}
+	w.pieces = unknown(len(w.pts) - 1)
+	if was.least >= l.j.Open() {
+		for n := range w.pieces {
+			w.pieces[n] = worth{geom.Dist(w.pts[n], w.pts[n+1]), was.least}
+		}
+		return w, good
+	}
+	if float64(long*l.j.Dearest()) <= was.cost {
+		return w, good
+	}
 	sum := 0.0
-	for n := 1; n < len(w.pts); n++ {
-		c, m := l.j.Weigh(w.pts[n-1], w.pts[n])
-		if sum += c; m < least || sum > cost {
+	for n := range w.pieces {
+		v := &w.pieces[n]
+		if v.cost, v.least = l.j.Weigh(w.pts[n], w.pts[n+1]); sum+v.cost > was.cost {
 			return w, barred
 		}
-		w.cost, w.least = append(w.cost, c), append(w.least, m)
+		sum += v.cost
 	}
 	return w, good
 }
@@ -155,8 +171,7 @@ func (l *line) spent() bool {
 
 func (l *line) replace(i, k int, w way) {
 	l.pts = splice(l.pts, i, k+1, w.pts)
-	l.cost = splice(l.cost, i, k, w.cost)
-	l.least = splice(l.least, i, k, w.least)
+	l.pieces = splice(l.pieces, i, k, w.pieces)
 }
 
 func splice[T any](s []T, i, k int, by []T) []T {
