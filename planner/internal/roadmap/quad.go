@@ -226,9 +226,6 @@ func (s *quad) expand(i int32) {
 			continue
 		}
 		to := s.point(t)
-		if to == at && p.dir != sourceDir {
-			continue // back through the portal it came by
-		}
 		cost := g + float64(factor*geom.Dist(at, to))
 		if known && s.nodes[k].g <= cost || s.Rules.Against(at, to) != nil {
 			continue
