@@ -30,12 +30,15 @@ type WideQuery struct {
 const WidestShort = math.Sqrt2 / 2
 
 // wide is a best-first search: the largest bottleneck first (Pollack, "The maximum
-// capacity through a network", Operations Research 8(5), 1960), among equals the
-// node nearest to the other end.
+// capacity through a network", Operations Research 8(5), 1960), among equals below
+// NeedUm the node nearest to the other end.
 type wide struct {
 	*WideQuery
 	from map[int32]*[cellsIn]uint8
 	nx   int
+	// sure holds entered nodes as wide as can be, in order of coming; open the rest.
+	sure []entry
+	next int
 	open queue
 }
 
@@ -67,8 +70,8 @@ func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, er
 		last[w.number(c)] = true
 	}
 	p := poll{ctx: ctx}
-	for len(w.open) > 0 {
-		e := w.open.pop()
+	for w.next < len(w.sure) || len(w.open) > 0 {
+		e := w.take()
 		if e.id() == goalID {
 			return w.way(e.tie), true, nil
 		}
@@ -86,7 +89,7 @@ func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, er
 		if last[e.id()] {
 			if v := min(-e.key, w.value(here, q.To, false)); v > 0 {
 				// tie carries the cell; the goal comes before any other node of its key.
-				w.open.push(newEntry(-v, e.id(), goalID, 0))
+				w.put(newEntry(-v, e.id(), goalID, 0))
 			}
 		}
 		clear := int64(q.Field.CellLower(c.Col, c.Row)) >= q.NeedUm
@@ -146,12 +149,38 @@ func (w *wide) state(c Cell) *uint8 {
 }
 
 func (w *wide) queue(c Cell, value int64, dir uint8) {
-	if value <= 0 || *w.state(c)&isClosed != 0 {
+	s := w.state(c)
+	if value <= 0 || *s != unseen { // closed, or waiting and as wide as can be
 		return
 	}
+	if value == w.NeedUm {
+		*s = dir
+	}
 	far := geom.Dist(w.Frame.Centre(c), w.To)
-	w.open.push(newEntry(-value, -int64(far), w.number(c), dir))
+	w.put(newEntry(-value, -int64(far), w.number(c), dir))
 	w.Count.Queued++
+}
+
+// put queues a node. Among those as wide as can be the first to come goes first, which
+// costs less than a heap and keeps the way short.
+func (w *wide) put(e entry) {
+	if e.key <= -w.NeedUm {
+		w.sure = append(w.sure, e)
+		return
+	}
+	w.open.push(e)
+}
+
+func (w *wide) take() entry {
+	if w.next == len(w.sure) {
+		return w.open.pop()
+	}
+	e := w.sure[w.next]
+	if w.next++; w.next > len(w.sure)/2 && w.next > cellsIn {
+		w.sure = w.sure[:copy(w.sure, w.sure[w.next:])]
+		w.next = 0
+	}
+	return e
 }
 
 func (w *wide) way(cell int64) []geom.Point {
