@@ -1,8 +1,6 @@
 package client
 
 import (
-	"bytes"
-	"compress/flate"
 	"context"
 	"io"
 
@@ -11,6 +9,7 @@ import (
 
 	"example.com/wideberth/mapstore/floor"
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 // FloorContent is everything one version of a floor holds. It is complete: every
@@ -115,7 +114,7 @@ func (a *assembly) start(h *wideberthv1.ReadFloorHeader) error {
 	if w < 1 || w > floor.MaxSide || n < 1 || n > floor.MaxSide || w*n > floor.MaxCells {
 		return lost("header: %d x %d cells, want 1 to %d a side and at most %d in all", w, n, floor.MaxSide, floor.MaxCells)
 	}
-	cells := make([]byte, (w*n+3)/4)
+	cells := make([]byte, wire.CellBytes(w*n))
 	for i := range cells {
 		cells[i] = 0xff
 	}
@@ -131,17 +130,13 @@ func (a *assembly) block(b *wideberthv1.CellBlock) error {
 	if x < 0 || y < 0 || w < 1 || h < 1 || x+w > cols || y+h > rows {
 		return lost("cells: rectangle %d,%d %dx%d is not within %dx%d cells", x, y, w, h, cols, rows)
 	}
-	packed, err := unpack(b, int(w*h))
+	packed, err := wire.CellsIn(b)
 	if err != nil {
-		return err
+		return lost("cells: %v", err)
 	}
 	for j := range h {
 		for i := range w {
-			v := twoBit(packed, int(j*w+i))
-			if v == unset {
-				return lost("cells: column %d, row %d holds 3, want 0 to 2", x+i, y+j)
-			}
-			setTwoBit(a.content.Cells, int((y+j)*cols+x+i), v)
+			setTwoBit(a.content.Cells, int((y+j)*cols+x+i), twoBit(packed, int(j*w+i)))
 		}
 	}
 	a.received += w * h
@@ -170,29 +165,6 @@ func (a *assembly) finish(end *wideberthv1.ReadFloorEnd) (*FloorContent, error) 
 		return nil, lost("%d features arrived, %d were sent", len(c.Features), end.GetFeatureCount())
 	}
 	return c, nil
-}
-
-// unpack gives a block's cells at two bits each.
-func unpack(b *wideberthv1.CellBlock, n int) ([]byte, error) {
-	want := (n + 3) / 4
-	switch b.GetEncoding() {
-	case wideberthv1.CellEncoding_CELL_ENCODING_TWO_BIT:
-		if len(b.GetCells()) != want {
-			return nil, lost("cells: %d bytes for %d cells, want %d", len(b.GetCells()), n, want)
-		}
-		return b.GetCells(), nil
-	case wideberthv1.CellEncoding_CELL_ENCODING_TWO_BIT_DEFLATE:
-		out := make([]byte, want)
-		z := flate.NewReader(bytes.NewReader(b.GetCells()))
-		if _, err := io.ReadFull(z, out); err != nil {
-			return nil, lost("cells: inflating %d cells: %v", n, err)
-		}
-		if extra, err := io.CopyN(io.Discard, z, 1); extra != 0 || err != io.EOF {
-			return nil, lost("cells: more inflated than %d cells need", n)
-		}
-		return out, nil
-	}
-	return nil, lost("cells: encoding %v is not known to this client", b.GetEncoding())
 }
 
 func twoBit(cells []byte, i int) byte { return cells[i>>2] >> (2 * (i & 3)) & 3 }

@@ -1,13 +1,12 @@
 package client
 
 import (
-	"bytes"
-	"compress/flate"
 	"context"
 	"fmt"
 
 	"example.com/wideberth/mapstore/floor"
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 // MaxLoadCells is how many cells LoadCells puts into one patch: 1 MiB at two bits
@@ -37,7 +36,7 @@ func (c *Client) LoadCells(ctx context.Context, l CellLoad) (*wideberthv1.Versio
 	if w < 1 || w > floor.MaxSide || h < 1 || h > floor.MaxSide || w*h > floor.MaxCells {
 		return nil, fmt.Errorf("client: rect is %d x %d cells, want 1 to %d a side and at most %d in all", w, h, floor.MaxSide, floor.MaxCells)
 	}
-	if want := (w*h + 3) / 4; len(l.Cells) != want {
+	if want := int(wire.CellBytes(int64(w) * int64(h))); len(l.Cells) != want {
 		return nil, fmt.Errorf("client: cells has %d bytes for %d x %d cells, want %d", len(l.Cells), w, h, want)
 	}
 	band := min(h, MaxLoadCells/w)
@@ -47,7 +46,8 @@ func (c *Client) LoadCells(ctx context.Context, l CellLoad) (*wideberthv1.Versio
 	for part := range total {
 		y := part * band
 		n := min(band, h-y)
-		packed, err := deflate(slice(l.Cells, y*w, n*w))
+		x0, y0 := int(l.Rect.GetColumn()), int(l.Rect.GetRow())+y
+		block, err := wire.BlockOut(floor.CellRect{X0: x0, X1: x0 + w, Y0: y0, Y1: y0 + n}, slice(l.Cells, y*w, n*w))
 		if err != nil {
 			return version, err
 		}
@@ -60,13 +60,7 @@ func (c *Client) LoadCells(ctx context.Context, l CellLoad) (*wideberthv1.Versio
 			Patch: &wideberthv1.Patch{
 				BaseVersion: base, Author: l.Author, Reason: reason,
 				Edits: []*wideberthv1.Edit{{Action: &wideberthv1.Edit_PaintOccupancy{
-					PaintOccupancy: &wideberthv1.PaintOccupancy{Paint: &wideberthv1.PaintOccupancy_Cells{
-						Cells: &wideberthv1.CellBlock{
-							Rect:     &wideberthv1.CellRect{Column: l.Rect.GetColumn(), Row: l.Rect.GetRow() + int32(y), Columns: int32(w), Rows: int32(n)},
-							Encoding: wideberthv1.CellEncoding_CELL_ENCODING_TWO_BIT_DEFLATE,
-							Cells:    packed,
-						},
-					}},
+					PaintOccupancy: &wideberthv1.PaintOccupancy{Paint: &wideberthv1.PaintOccupancy_Cells{Cells: block}},
 				}}},
 			},
 		})
@@ -89,19 +83,4 @@ func slice(cells []byte, i, n int) []byte {
 		setTwoBit(out, k, twoBit(cells, i+k))
 	}
 	return out
-}
-
-func deflate(b []byte) ([]byte, error) {
-	var buf bytes.Buffer
-	z, err := flate.NewWriter(&buf, flate.BestSpeed)
-	if err != nil {
-		return nil, err
-	}
-	if _, err := z.Write(b); err != nil {
-		return nil, err
-	}
-	if err := z.Close(); err != nil {
-		return nil, err
-	}
-	return buf.Bytes(), nil
 }

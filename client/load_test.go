@@ -10,6 +10,7 @@ import (
 	"google.golang.org/grpc/status"
 
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 func TestLoadCellsInBands(t *testing.T) {
@@ -33,7 +34,7 @@ func TestLoadCellsInBands(t *testing.T) {
 		if n > MaxLoadCells {
 			t.Errorf("%d cells in one patch, want at most %d", n, MaxLoadCells)
 		}
-		packed, err := unpack(b, n)
+		packed, err := wire.CellsIn(b)
 		if err != nil {
 			return nil, err
 		}

@@ -8,6 +8,7 @@ import (
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner"
 	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 // Defaults of a body, its options and a guide's setup, from the contract.
@@ -22,10 +23,7 @@ const (
 )
 
 func poseIn(p *pb.Pose) planner.Pose {
-	return planner.Pose{
-		At:      geom.Point{X: geom.FromMetres(p.GetXM()), Y: geom.FromMetres(p.GetYM())},
-		Heading: heading(p.GetHeadingRad()),
-	}
+	return planner.Pose{At: wire.PointIn(p), Heading: wire.Heading(p.GetHeadingRad())}
 }
 
 func poseOut(p planner.Pose) *pb.Pose {
@@ -47,7 +45,7 @@ func bodyIn(b *pb.Body, set floor.Settings) planner.Body {
 		MaxSpeed:    b.MaxSpeedMps,
 		Braking:     b.BrakingMps2,
 		Reaction:    b.ReactionS,
-		SensingUm:   um(b.SensingRangeM),
+		SensingUm:   wire.Um(b.SensingRangeM),
 	}
 	if out.PreferredUm == 0 {
 		out.PreferredUm = max(out.Required(), min(out.Required()+defaultBerthUm, set.CapUm))
@@ -67,13 +65,13 @@ func bodyIn(b *pb.Body, set floor.Settings) planner.Body {
 func bodyOut(b planner.Body) *pb.Body {
 	return &pb.Body{
 		Name:                b.Name,
-		RadiusM:             metres(b.RadiusUm),
-		MarginM:             metres(b.MarginUm),
-		PreferredClearanceM: metres(b.PreferredUm),
+		RadiusM:             wire.Metres(b.RadiusUm),
+		MarginM:             wire.Metres(b.MarginUm),
+		PreferredClearanceM: wire.Metres(b.PreferredUm),
 		MaxSpeedMps:         b.MaxSpeed,
 		BrakingMps2:         b.Braking,
 		ReactionS:           b.Reaction,
-		SensingRangeM:       metres(b.SensingUm),
+		SensingRangeM:       wire.Metres(b.SensingUm),
 	}
 }
 
@@ -81,21 +79,12 @@ func bodyOut(b planner.Body) *pb.Body {
 // clearance. The time budget is the caller's business.
 func optionsIn(o *pb.PlanOptions, b planner.Body) planner.Options {
 	out := planner.Options{
+		Preference:      preferences.in(o.GetPreference()),
+		Roadmap:         roadmaps.in(o.GetRoadmap()),
 		KeepRoadmapPath: o.GetKeepRoadmapPath(),
 		TightWeight:     o.GetTightWeight(),
 		TightBelowUm:    geom.RadiusFromMetres(o.GetTightBelowM()),
-		MaxSpacingUm:    um(o.GetMaxSpacingM()),
-	}
-	if o.GetPreference() == pb.Preference_PREFERENCE_SHORTEST {
-		out.Preference = planner.Shortest
-	}
-	switch o.GetRoadmap() {
-	case pb.Roadmap_ROADMAP_GRID4:
-		out.Roadmap = planner.Grid4
-	case pb.Roadmap_ROADMAP_GRID8:
-		out.Roadmap = planner.Grid8
-	case pb.Roadmap_ROADMAP_QUADTREE:
-		out.Roadmap = planner.Quadtree
+		MaxSpacingUm:    wire.Um(o.GetMaxSpacingM()),
 	}
 	if out.TightWeight == 0 {
 		out.TightWeight = defaultTightWeight
@@ -110,30 +99,15 @@ func optionsIn(o *pb.PlanOptions, b planner.Body) planner.Options {
 // which stays the server's choice when it was, and budgetS, which is the
 // request's own.
 func optionsOut(o planner.Options, budgetS float64) *pb.PlanOptions {
-	out := &pb.PlanOptions{
-		Preference:      pb.Preference_PREFERENCE_BALANCED,
+	return &pb.PlanOptions{
+		Preference:      preferences.out(o.Preference),
+		Roadmap:         roadmaps.out(o.Roadmap),
 		KeepRoadmapPath: o.KeepRoadmapPath,
 		TightWeight:     o.TightWeight,
-		TightBelowM:     metres(o.TightBelowUm),
+		TightBelowM:     wire.Metres(o.TightBelowUm),
 		TimeBudgetS:     budgetS,
-		MaxSpacingM:     metres(o.MaxSpacingUm),
+		MaxSpacingM:     wire.Metres(o.MaxSpacingUm),
 	}
-	if o.Preference == planner.Shortest {
-		out.Preference = pb.Preference_PREFERENCE_SHORTEST
-	}
-	switch o.Roadmap {
-	case planner.Grid4:
-		out.Roadmap = pb.Roadmap_ROADMAP_GRID4
-	case planner.Grid8:
-		out.Roadmap = pb.Roadmap_ROADMAP_GRID8
-	case planner.Quadtree:
-		out.Roadmap = pb.Roadmap_ROADMAP_QUADTREE
-	}
-	return out
-}
-
-func routePointIn(p *pb.RoutePoint) geom.Point {
-	return geom.Point{X: geom.FromMetres(p.GetXM()), Y: geom.FromMetres(p.GetYM())}
 }
 
 // routePointsIn are a checked route's points in order, the joints of its legs
@@ -142,7 +116,7 @@ func routePointsIn(r *pb.Route) []geom.Point {
 	var out []geom.Point
 	for _, leg := range r.Legs {
 		for _, p := range leg.Points {
-			q := routePointIn(p)
+			q := wire.PointIn(p)
 			if n := len(out); n == 0 || out[n-1] != q {
 				out = append(out, q)
 			}
@@ -154,32 +128,20 @@ func routePointsIn(r *pb.Route) []geom.Point {
 	return out
 }
 
-func causeOut(c planner.SpeedCause) pb.SpeedCause {
-	switch c {
-	case planner.CauseBody:
-		return pb.SpeedCause_SPEED_CAUSE_BODY
-	case planner.CauseZone:
-		return pb.SpeedCause_SPEED_CAUSE_ZONE
-	case planner.CauseRoom:
-		return pb.SpeedCause_SPEED_CAUSE_ROOM
-	}
-	return pb.SpeedCause_SPEED_CAUSE_UNSPECIFIED
-}
-
 func legOut(l planner.Leg) *pb.Leg {
 	out := &pb.Leg{
 		Kind:               pb.LegKind_LEG_KIND_OPEN,
 		Points:             make([]*pb.RoutePoint, len(l.Points)),
 		LengthM:            geom.Metres(l.LengthUm),
 		DurationS:          l.DurationS,
-		SmallestClearanceM: metres(l.SmallestUm),
-		SmallestAt:         pointOut(l.SmallestAt),
+		SmallestClearanceM: wire.Metres(l.SmallestUm),
+		SmallestAt:         wire.PointOut(l.SmallestAt),
 		SmallestSM:         geom.Metres(l.SmallestS),
-		LeftRoomM:          metres(l.LeftUm),
-		RightRoomM:         metres(l.RightUm),
+		LeftRoomM:          wire.Metres(l.LeftUm),
+		RightRoomM:         wire.Metres(l.RightUm),
 		NearestFeature:     l.Nearest,
 		SpeedCeilingMps:    l.SpeedCeiling,
-		SpeedCause:         causeOut(l.SpeedCause),
+		SpeedCause:         speedCauses.out(l.SpeedCause),
 		BeyondSensing:      l.BeyondSensing,
 	}
 	if l.Tight {
@@ -188,7 +150,7 @@ func legOut(l planner.Leg) *pb.Leg {
 	for i, p := range l.Points {
 		out.Points[i] = &pb.RoutePoint{
 			XM: geom.Metres(p.At.X), YM: geom.Metres(p.At.Y), HeadingRad: p.Heading, SM: geom.Metres(p.S),
-			ClearanceM: metres(p.ClearanceUm), SpeedCeilingMps: p.SpeedCeiling, SpeedCause: causeOut(p.SpeedCause),
+			ClearanceM: wire.Metres(p.ClearanceUm), SpeedCeilingMps: p.SpeedCeiling, SpeedCause: speedCauses.out(p.SpeedCause),
 		}
 	}
 	return out
@@ -207,22 +169,15 @@ func routeOut(r *planner.Route, v mapstore.VersionInfo, b planner.Body, o *pb.Pl
 		LengthM:            geom.Metres(r.LengthUm),
 		DurationS:          r.DurationS,
 		CostM:              geom.Metres(r.CostUm),
-		SmallestClearanceM: metres(r.SmallestUm),
-		SmallestAt:         pointOut(r.SmallestAt),
+		SmallestClearanceM: wire.Metres(r.SmallestUm),
+		SmallestAt:         wire.PointOut(r.SmallestAt),
 		Bound: &pb.Bound{
+			Kind:            boundKinds.out(r.Bound.Kind),
 			LowerBoundM:     geom.Metres(r.Bound.LowerUm),
-			WidthBiasM:      metres(r.Bound.WidthBiasUm),
-			ClearanceShortM: metres(r.Bound.ClearanceShortUm),
+			WidthBiasM:      wire.Metres(r.Bound.WidthBiasUm),
+			ClearanceShortM: wire.Metres(r.Bound.ClearanceShortUm),
 		},
 		ValidForS: validForS,
-	}
-	switch r.Bound.Kind {
-	case planner.RoadmapOptimum:
-		out.Bound.Kind = pb.BoundKind_BOUND_KIND_ROADMAP_OPTIMUM
-	case planner.AtMostRoadmapOptimum:
-		out.Bound.Kind = pb.BoundKind_BOUND_KIND_AT_MOST_ROADMAP_OPTIMUM
-	case planner.Straight:
-		out.Bound.Kind = pb.BoundKind_BOUND_KIND_STRAIGHT
 	}
 	for i, l := range r.Legs {
 		out.Legs[i] = legOut(l)
@@ -237,39 +192,35 @@ func countersOut(c planner.Counters) *pb.SearchCounters {
 // refusalOut puts a refusal on the wire and into words. retryS is when asking
 // again may help.
 func refusalOut(r *planner.Refusal, retryS float64) *pb.Refusal {
-	out := &pb.Refusal{}
+	out := &pb.Refusal{Reason: refusalReasons.out(r.Reason)}
 	switch r.Reason {
 	case planner.StartBlocked:
-		out.Reason = pb.RefusalReason_REFUSAL_REASON_START_BLOCKED
 		out.Explanation = "start: " + blockedText(r.Blocked)
 	case planner.GoalBlocked:
-		out.Reason = pb.RefusalReason_REFUSAL_REASON_GOAL_BLOCKED
 		out.Explanation = "goal: " + blockedText(r.Blocked)
 	case planner.NoPassage:
-		out.Reason = pb.RefusalReason_REFUSAL_REASON_NO_PASSAGE
 		out.Explanation = bottleneckText(r.Bottleneck)
 	case planner.OutOfTime:
-		out.Reason = pb.RefusalReason_REFUSAL_REASON_OUT_OF_TIME
 		out.Explanation = "the time budget ran out before the search ended"
 		out.RetryAfterS = retryS
 	}
 	if b := r.Blocked; b != nil {
 		out.BlockedEnd = &pb.BlockedEnd{
-			At: pointOut(b.At), ClearanceM: metres(b.ClearanceUm), RequiredClearanceM: metres(b.RequiredUm),
+			At: wire.PointOut(b.At), ClearanceM: wire.Metres(b.ClearanceUm), RequiredClearanceM: wire.Metres(b.RequiredUm),
 			ClosedZone: b.ClosedZone, NearestFeature: b.Nearest,
 		}
 		if b.HasFree {
-			out.BlockedEnd.NearestFree = pointOut(b.NearestFree)
+			out.BlockedEnd.NearestFree = wire.PointOut(b.NearestFree)
 			out.BlockedEnd.DistanceM = geom.Metres(b.DistanceUm)
 			out.BlockedEnd.BearingRad = b.Bearing
 		}
 	}
 	if n := r.Bottleneck; n != nil {
-		out.Bottleneck = &pb.Bottleneck{Exists: n.Exists, WidthNeededM: metres(n.NeededUm), Features: n.Features, Zone: n.Zone}
+		out.Bottleneck = &pb.Bottleneck{Exists: n.Exists, WidthNeededM: wire.Metres(n.NeededUm), Features: n.Features, Zone: n.Zone}
 		if n.Exists {
-			out.Bottleneck.At = pointOut(n.At)
-			out.Bottleneck.WidthM = metres(n.WidthUm)
-			out.Bottleneck.WidthShortM = metres(n.WidthShortUm)
+			out.Bottleneck.At = wire.PointOut(n.At)
+			out.Bottleneck.WidthM = wire.Metres(n.WidthUm)
+			out.Bottleneck.WidthShortM = wire.Metres(n.WidthShortUm)
 		}
 	}
 	return out
@@ -282,9 +233,9 @@ func blockedText(b *planner.BlockedEnd) string {
 	case b.ClosedZone != "":
 		return fmt.Sprintf("in or too near closed zone %q", b.ClosedZone)
 	case b.Nearest != "":
-		return fmt.Sprintf("clearance %v m from %q, needed %v m", metres(b.ClearanceUm), b.Nearest, metres(b.RequiredUm))
+		return fmt.Sprintf("clearance %s m from %q, needed %s m", down(b.ClearanceUm), b.Nearest, up(b.RequiredUm))
 	}
-	return fmt.Sprintf("clearance %v m, needed %v m", metres(b.ClearanceUm), metres(b.RequiredUm))
+	return fmt.Sprintf("clearance %s m, needed %s m", down(b.ClearanceUm), up(b.RequiredUm))
 }
 
 func bottleneckText(n *planner.Bottleneck) string {
@@ -296,8 +247,19 @@ func bottleneckText(n *planner.Bottleneck) string {
 	case !n.Exists:
 		return "there is no way, however narrow"
 	}
-	return fmt.Sprintf("the widest way narrows to %v m, needed %v m", metres(n.WidthUm), metres(n.NeededUm))
+	return fmt.Sprintf("the widest way narrows to %s m, needed %s m", down(n.WidthUm), up(n.NeededUm))
 }
+
+// centimetre is the step of lengths in words.
+const centimetre = geom.UmPerMetre / 100
+
+// down writes what is there, in metres, rounded down to the centimetre.
+func down(um int64) string {
+	return fmt.Sprintf("%d.%02d", um/geom.UmPerMetre, um%geom.UmPerMetre/centimetre)
+}
+
+// up writes what is needed, in metres, rounded up to the centimetre.
+func up(um int64) string { return down(um + centimetre - 1) }
 
 // hintBelowUm is a checked setup's threshold with its default filled in.
 func hintBelowUm(s *pb.GuideSetup) int64 {
@@ -313,7 +275,7 @@ func guideSetupIn(s *pb.GuideSetup, set floor.Settings) planner.GuideSetup {
 		Route:        routePointsIn(s.Route),
 		HintBelowUm:  hintBelowUm(s),
 		QuietAboveUm: geom.RadiusFromMetres(s.QuietAboveM),
-		OffRouteUm:   um(s.OffRouteM),
+		OffRouteUm:   wire.Um(s.OffRouteM),
 	}
 	if out.HintBelowUm == 0 {
 		out.HintBelowUm = out.Body.PreferredUm
@@ -331,23 +293,15 @@ func guideSetupIn(s *pb.GuideSetup, set floor.Settings) planner.GuideSetup {
 func hintOut(h planner.Hint, r *pb.GuideReport, v mapstore.VersionInfo, validForS float64) *pb.Hint {
 	out := &pb.Hint{
 		Sequence: r.Sequence, StampS: r.StampS, Stamp: stampOut(v),
-		State:       pb.GuideState_GUIDE_STATE_HOLD,
-		Explanation: h.Explanation, ClearanceM: metres(h.ClearanceUm),
+		State:       guideStates.out(h.State),
+		Explanation: h.Explanation, ClearanceM: wire.Metres(h.ClearanceUm),
 		NearestBearingRad: h.Bearing, NearestFeature: h.Nearest,
-		FreeTravelM: metres(h.FreeTravelUm), SpeedCeilingMps: h.SpeedCeiling, SpeedCause: causeOut(h.SpeedCause),
+		FreeTravelM: wire.Metres(h.FreeTravelUm), SpeedCeilingMps: h.SpeedCeiling, SpeedCause: speedCauses.out(h.SpeedCause),
 		ValidForS: validForS,
-	}
-	switch h.State {
-	case planner.Clear:
-		out.State = pb.GuideState_GUIDE_STATE_CLEAR
-	case planner.Hinting:
-		out.State = pb.GuideState_GUIDE_STATE_HINTING
-	case planner.ReplanAdvised:
-		out.State = pb.GuideState_GUIDE_STATE_REPLAN_ADVISED
 	}
 	if j := h.Rejoin; j != nil {
 		out.Rejoin = &pb.Rejoin{
-			At: pointOut(j.At), SM: geom.Metres(j.S), OffRouteM: geom.Metres(j.OffRoute), BearingRad: j.Bearing, Clear: j.Clear,
+			At: wire.PointOut(j.At), SM: geom.Metres(j.S), OffRouteM: geom.Metres(j.OffRoute), BearingRad: j.Bearing, Clear: j.Clear,
 		}
 	}
 	return out

@@ -14,6 +14,7 @@ import (
 	"google.golang.org/protobuf/proto"
 
 	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 // What was acknowledged is there after a restart, digest and all.
@@ -169,7 +170,7 @@ func TestReadFloor(t *testing.T) {
 		t.Fatal(err)
 	}
 	// Cells that do not compress, from a plain generator.
-	noise := make([]byte, cellBytes(3000*2000))
+	noise := make([]byte, wire.CellBytes(3000*2000))
 	x := uint32(1)
 	for i := range noise {
 		x = x*1664525 + 1013904223
@@ -191,9 +192,11 @@ func TestReadFloor(t *testing.T) {
 			}
 			row += c.Rect.Rows
 			blocks++
-			if problem := scanCells(c, int64(c.Rect.Columns)*int64(c.Rect.Rows), &cells); problem != "" {
-				t.Fatal(problem)
+			got, err := wire.CellsIn(c)
+			if err != nil {
+				t.Fatal(err)
 			}
+			cells = append(cells, got...)
 		}
 		features += len(p.GetFeatures().GetFeatures())
 	}

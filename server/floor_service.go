@@ -11,6 +11,7 @@ import (
 	"example.com/wideberth/mapstore"
 	"example.com/wideberth/mapstore/floor"
 	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 // Bounds on answers, from the contract.
@@ -27,7 +28,7 @@ type floorService struct {
 }
 
 func (v floorService) CreateFloor(ctx context.Context, r *pb.CreateFloorRequest) (*pb.CreateFloorResponse, error) {
-	info, err := v.s.store.CreateFloor(ctx, r.Floor, settingsIn(r.Settings), r.Author, r.RequestId)
+	info, err := v.s.store.CreateFloor(ctx, r.Floor, wire.SettingsIn(r.Settings), r.Author, r.RequestId)
 	if err != nil {
 		return nil, statusOf(ctx, err, subject{floor: r.Floor})
 	}
@@ -164,12 +165,12 @@ func (v floorService) CompareVersions(ctx context.Context, r *pb.CompareVersions
 	set := to.Map.Settings()
 	rects := mergeRects(change.Cells)
 	for _, c := range rects[:min(len(rects), maxDifferences)] {
-		out.ChangedAreas = append(out.ChangedAreas, areaOut(set.CellBounds(c)))
+		out.ChangedAreas = append(out.ChangedAreas, wire.AreaOut(set.CellBounds(c)))
 	}
 	out.Truncated = len(rects) > maxDifferences
 	size := 0
 	for _, c := range change.Features {
-		d := &pb.FeatureDifference{Before: featureOut(c.Before), After: featureOut(c.After)}
+		d := &pb.FeatureDifference{Before: wire.FeatureOut(c.Before), After: wire.FeatureOut(c.After)}
 		if d.Name = d.After.GetName(); c.After == nil {
 			d.Name = d.Before.GetName()
 		}

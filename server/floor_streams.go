@@ -12,6 +12,7 @@ import (
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 // Bounds on ReadFloor's messages.
@@ -32,14 +33,14 @@ func (v floorService) ReadFloor(r *pb.ReadFloorRequest, stream grpc.ServerStream
 	note(ctx, r.Floor, snap.Info.Version)
 	set := snap.Map.Settings()
 	if err := stream.Send(&pb.ReadFloorResponse{Part: &pb.ReadFloorResponse_Header{
-		Header: &pb.ReadFloorHeader{Stamp: stampOut(snap.Info), Settings: settingsOut(set)}}}); err != nil {
+		Header: &pb.ReadFloorHeader{Stamp: stampOut(snap.Info), Settings: wire.SettingsOut(set)}}}); err != nil {
 		return err
 	}
 	end := &pb.ReadFloorEnd{}
 	if !r.SkipOccupancy {
 		rect := set.AllCells()
 		if r.Area != nil {
-			rect = set.CellRectOf(areaIn(r.Area))
+			rect = set.CellRectOf(wire.AreaIn(r.Area))
 		}
 		if end.CellCount, err = sendCells(ctx, snap.Map, rect, stream); err != nil {
 			return statusOf(ctx, err, about)
@@ -48,7 +49,7 @@ func (v floorService) ReadFloor(r *pb.ReadFloorRequest, stream grpc.ServerStream
 	if !r.SkipFeatures {
 		meets := func(*floor.Feature) bool { return true }
 		if r.Area != nil {
-			area := areaIn(r.Area)
+			area := wire.AreaIn(r.Area)
 			meets = func(t *floor.Feature) bool { return featureMeets(t, area) }
 		}
 		if end.FeatureCount, err = sendFeatures(ctx, snap.Map, meets, stream); err != nil {
@@ -73,8 +74,8 @@ func sendCells(ctx context.Context, m *floor.Map, all floor.CellRect, stream grp
 		}
 		part := floor.CellRect{X0: all.X0, X1: all.X1, Y0: y, Y1: min(y+rows, all.Y1)}
 		// Fresh bytes for each message: a sent message must not change.
-		cells := m.ReadCells(make([]byte, 0, cellBytes(part.Count())), part)
-		block, err := blockOut(part, cells)
+		cells := m.ReadCells(make([]byte, 0, wire.CellBytes(part.Count())), part)
+		block, err := wire.BlockOut(part, cells)
 		if err != nil {
 			return n, err
 		}
@@ -105,7 +106,7 @@ func sendFeatures(ctx context.Context, m *floor.Map, meets func(*floor.Feature) 
 		if !meets(t) {
 			continue
 		}
-		out := featureOut(t)
+		out := wire.FeatureOut(t)
 		s := proto.Size(out)
 		if size+s > featureBatch {
 			if err := flush(); err != nil {

@@ -9,6 +9,7 @@ import (
 
 	"example.com/wideberth/mapstore/floor"
 	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 // requests has one fresh message of every kind that a client may send.
@@ -51,7 +52,7 @@ func FuzzValidate(f *testing.F) {
 	add(10, toBench())
 	add(11, replan())
 	add(13, guideOnce())
-	set := settingsIn(&pb.FloorSettings{Columns: 200, Rows: 100})
+	set := wire.SettingsIn(&pb.FloorSettings{Columns: 200, Rows: 100})
 	f.Fuzz(func(t *testing.T, which byte, data []byte) {
 		m := requests()[int(which)%len(validators)]
 		if proto.Unmarshal(data, m) != nil {
@@ -80,7 +81,7 @@ func convertAny(m proto.Message, set floor.Settings) {
 	var f faults
 	switch q := m.(type) {
 	case *pb.CreateFloorRequest:
-		settingsIn(q.Settings)
+		wire.SettingsIn(q.Settings)
 	case *pb.PushPatchRequest:
 		for _, e := range editsIn(q.Patch.Edits, set, root, &f) {
 			if !f.any() {

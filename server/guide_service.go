@@ -13,6 +13,7 @@ import (
 	"example.com/wideberth/mapstore"
 	"example.com/wideberth/planner"
 	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 const (
@@ -58,7 +59,7 @@ func (v guideService) begin(ctx context.Context, setup *pb.GuideSetup, p *field)
 		f.underCap(p.at("hint_below_m"), g.plan.HintBelowUm, set)
 	}
 	if g.plan.QuietAboveUm < g.plan.HintBelowUm {
-		f.add(p.at("quiet_above_m"), "%v, wanted hint_below_m (%v) or more", setup.QuietAboveM, metres(g.plan.HintBelowUm))
+		f.add(p.at("quiet_above_m"), "%v, wanted hint_below_m (%v) or more", setup.QuietAboveM, wire.Metres(g.plan.HintBelowUm))
 	}
 	return g, f.err()
 }
@@ -97,7 +98,7 @@ func (v guideService) advise(ctx context.Context, g *guided, r *pb.GuideReport) 
 	}
 	note(ctx, g.stamp.Floor, snap.Info.Version)
 	report := planner.GuideReport{
-		Pose: poseIn(r.Pose), SpreadUm: um(r.PositionSpreadM), Speed: r.SpeedMps, Hinting: g.hinting,
+		Pose: poseIn(r.Pose), SpreadUm: wire.Um(r.PositionSpreadM), Speed: r.SpeedMps, Hinting: g.hinting,
 	}
 	if report.Stale, err = v.stale(ctx, g, snap, report.Pose); err != nil {
 		return nil, err

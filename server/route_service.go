@@ -105,7 +105,7 @@ func (v routeService) Replan(ctx context.Context, r *pb.ReplanRequest) (*pb.Repl
 		return nil, statusOf(ctx, err, about)
 	}
 	out := &pb.ReplanResponse{
-		Stamp: stampOut(snap.Info), Cause: replanCauseOut(answer.Cause), Counters: countersOut(answer.Counters),
+		Stamp: stampOut(snap.Info), Cause: replanCauses.out(answer.Cause), Counters: countersOut(answer.Counters),
 	}
 	if answer.Cause == planner.Cut {
 		out.CutSM = geom.Metres(answer.CutS)
@@ -159,22 +159,6 @@ func (v routeService) replanRequest(r *pb.ReplanRequest, snap *mapstore.Snapshot
 	}
 	out.Request = q.Request
 	return q, out, f.err()
-}
-
-func replanCauseOut(c planner.ReplanCause) pb.ReplanCause {
-	switch c {
-	case planner.Cut:
-		return pb.ReplanCause_REPLAN_CAUSE_CUT
-	case planner.Cheaper:
-		return pb.ReplanCause_REPLAN_CAUSE_CHEAPER
-	case planner.QuestionChanged:
-		return pb.ReplanCause_REPLAN_CAUSE_QUESTION_CHANGED
-	case planner.OffRoute:
-		return pb.ReplanCause_REPLAN_CAUSE_OFF_ROUTE
-	case planner.VersionGone:
-		return pb.ReplanCause_REPLAN_CAUSE_VERSION_GONE
-	}
-	return pb.ReplanCause_REPLAN_CAUSE_UNSPECIFIED
 }
 
 func isStation(t *floor.Feature) bool { return t.Kind == floor.Station }

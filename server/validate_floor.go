@@ -9,6 +9,7 @@ import (
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 func checkCreateFloor(r *pb.CreateFloorRequest, f *faults) {
@@ -37,7 +38,7 @@ func checkSettings(s *pb.FloorSettings, p *field, f *faults) {
 	}
 	ok = enum(f, p.at("initial_occupancy"), s.InitialOccupancy, pb.Occupancy_name, true) && ok
 	var wrong floor.SettingsError
-	if ok && errors.As(settingsIn(s).Validate(), &wrong) {
+	if ok && errors.As(wire.SettingsIn(s).Validate(), &wrong) {
 		for _, w := range wrong {
 			f.add(p.at(w.Field), "%s", w.Problem)
 		}
@@ -181,8 +182,8 @@ func checkCellBlock(b *pb.CellBlock, p *field, f *faults, cells *int64) {
 		f.add(p.at("rect"), "brings the patch's cell blocks to %d cells, wanted at most %d", *cells, floor.MaxCells)
 		return
 	}
-	if problem := scanCells(b, n, nil); problem != "" {
-		f.add(p.at("cells"), "%s", problem)
+	if err := wire.CheckCells(b); err != nil {
+		f.add(p.at("cells"), "%v", err)
 	}
 }
 
@@ -298,7 +299,7 @@ func checkPolygon(g *pb.Polygon, p *field, f *faults) {
 		return
 	}
 	var wrong *geom.PolygonError
-	if errors.As(geom.CheckPolygon(polygonChains(g)), &wrong) {
+	if errors.As(geom.CheckPolygon(wire.RingsIn(g)), &wrong) {
 		at := p.at("outer")
 		if wrong.Ring > 0 {
 			at = p.at("holes").item(wrong.Ring - 1)

@@ -7,6 +7,7 @@ import (
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner"
 	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 func checkPlan(r *pb.PlanRequest, f *faults) {
@@ -121,7 +122,7 @@ func checkRoute(r *pb.Route, p *field, f *faults) {
 				f.coordinate(at.item(j).at("y_m"), q.GetYM())
 			}
 		}
-		if last != nil && routePointIn(points[0]) != routePointIn(last) {
+		if last != nil && wire.PointIn(points[0]) != wire.PointIn(last) {
 			f.add(at.item(0), "(%v, %v), wanted the last point of the leg before, (%v, %v)",
 				points[0].GetXM(), points[0].GetYM(), last.GetXM(), last.GetYM())
 		}
@@ -171,7 +172,7 @@ func (f *faults) routeOnFloor(p *field, r *pb.Route, set floor.Settings) {
 	b := set.Bounds()
 	for i, leg := range r.Legs {
 		for j, q := range leg.Points {
-			if at := routePointIn(q); !b.Contains(at) {
+			if at := wire.PointIn(q); !b.Contains(at) {
 				f.poseOnFloor(p.at("legs").item(i).at("points").item(j), at, set)
 				return
 			}

@@ -12,6 +12,7 @@ import (
 	"google.golang.org/protobuf/reflect/protoreflect"
 
 	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 var nan, inf = math.NaN(), math.Inf(1)
@@ -258,7 +259,7 @@ func TestEveryRequestHasAValidator(t *testing.T) {
 
 // Many small compressed blocks may not unfold to more than one floor's cells.
 func TestPatchOfBombsIsBounded(t *testing.T) {
-	cells := deflated(make([]byte, cellBytes(65536*2048)))
+	cells := deflated(make([]byte, wire.CellBytes(65536*2048)))
 	var edits []*pb.Edit
 	for range 3 {
 		edits = append(edits, paintCells(&pb.CellBlock{Rect: &pb.CellRect{Columns: 65536, Rows: 2048}, Encoding: 2, Cells: cells}))

@@ -6,6 +6,7 @@ import (
 	"example.com/wideberth/client"
 	"example.com/wideberth/mapstore/geom"
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 // room tells how far the nearest solid of a floor is, for drawing bands. It looks
@@ -51,28 +52,17 @@ func um(b box) geom.Rect {
 	return geom.Rect{Min: umPoint(xy{b.minX, b.minY}), Max: umPoint(xy{b.maxX, b.maxY})}
 }
 
-func umChain(ps []*wideberthv1.Point) []geom.Point {
-	out := make([]geom.Point, len(ps))
-	for i, p := range ps {
-		out[i] = umPoint(pt(p))
-	}
-	return out
-}
-
 func outlineOf(s *wideberthv1.Solid) outline {
 	o := outline{grow: geom.FromMetres(s.GetSurveyToleranceM())}
 	switch {
 	case s.GetPolygon() != nil:
 		o.filled = true
-		o.chains = [][]geom.Point{umChain(s.GetPolygon().GetOuter().GetPoints())}
-		for _, h := range s.GetPolygon().GetHoles() {
-			o.chains = append(o.chains, umChain(h.GetPoints()))
-		}
+		o.chains = wire.RingsIn(s.GetPolygon())
 	case s.GetPolyline() != nil:
-		o.chains = [][]geom.Point{umChain(s.GetPolyline().GetPoints())}
+		o.chains = [][]geom.Point{wire.PointsIn(s.GetPolyline().GetPoints())}
 		o.grow += geom.FromMetres(s.GetPolyline().GetWidthM()) / 2
 	default:
-		o.chains = [][]geom.Point{{umPoint(pt(s.GetDisc().GetCenter()))}}
+		o.chains = [][]geom.Point{{wire.PointIn(s.GetDisc().GetCenter())}}
 		o.grow += geom.FromMetres(s.GetDisc().GetRadiusM())
 	}
 	o.box = geom.BoundsOf(o.chains[0]...).Grow(o.grow)
