@@ -51,7 +51,7 @@ func (t *task) forbidden(way []geom.Point) (*floor.Feature, geom.Point) {
 		a, b := way[i-1], way[i]
 		f := t.w.rules.Entered(a, b, float64(t.q.Body.RadiusUm))
 		if f == nil {
-			f = t.w.rules.Against(a, b)
+			f = t.w.rules.Against(a, b, rules.BackwardSlackUm)
 		}
 		if f != nil {
 			_, at := f.Shape.SegmentDist(a, b)

@@ -89,7 +89,7 @@ func (j *Judge) Dearest() float64 { return 1 + j.Weight }
 
 // Allowed says whether zones let the body drive straight from a to b.
 func (j *Judge) Allowed(a, b geom.Point) bool {
-	return j.Rules.Entered(a, b, float64(j.RadiusUm)) == nil && j.Rules.Against(a, b) == nil
+	return j.Rules.Entered(a, b, float64(j.RadiusUm)) == nil && j.Rules.Against(a, b, rules.BackwardSlackUm) == nil
 }
 
 // Weigh is what the straight piece ab costs, in micrometres, and the smallest

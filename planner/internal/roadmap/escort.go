@@ -1,6 +1,10 @@
 package roadmap
 
-import "context"
+import (
+	"context"
+
+	"example.com/wideberth/planner/internal/rules"
+)
 
 // A search that cannot succeed sees everything that its start can reach, which may be
 // a whole hall when the goal is in a shut cupboard. From escortAfter nodes on the
@@ -80,7 +84,7 @@ func (f *flood) step(n int) bool {
 				if f.backward {
 					a, b = b, a
 				}
-				if q.Rules.Against(a, b) != nil {
+				if q.Rules.Against(a, b, rules.StepSlackUm) != nil {
 					continue
 				}
 			}

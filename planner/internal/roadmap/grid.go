@@ -8,6 +8,7 @@ import (
 	"sync"
 
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/rules"
 )
 
 // The moves: four straight ones, then four diagonal ones, each of which needs the
@@ -207,7 +208,7 @@ func (g *grid) expand(e entry) bool {
 		if n.state[nk]&isClosed != 0 {
 			continue
 		}
-		if (t.oneWay || n.oneWay) && g.Rules.Against(g.Frame.Centre(c), g.Frame.Centre(to)) != nil {
+		if (t.oneWay || n.oneWay) && g.Rules.Against(g.Frame.Centre(c), g.Frame.Centre(to), rules.StepSlackUm) != nil {
 			continue
 		}
 		half := &g.costs.flat

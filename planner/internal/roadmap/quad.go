@@ -8,6 +8,7 @@ import (
 
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/internal/mask"
+	"example.com/wideberth/planner/internal/rules"
 )
 
 // Class is what all cells of a quadtree leaf are.
@@ -210,7 +211,7 @@ func (s *quad) expand(i int32) {
 	key := Cell{leaf.Col, leaf.Row}
 	for _, k := range s.goals[key] {
 		l := &s.To[k]
-		if s.Rules.Against(at, l.At) == nil {
+		if s.Rules.Against(at, l.At, rules.StepSlackUm) == nil {
 			cost := g + float64(factor*geom.Dist(at, l.At)) + l.CostUm
 			heap.Push(&s.open, quadEntry{f: cost, g: cost, node: int32(-1 - k), from: i})
 		}
@@ -227,7 +228,7 @@ func (s *quad) expand(i int32) {
 		}
 		to := s.point(t)
 		cost := g + float64(factor*geom.Dist(at, to))
-		if known && s.nodes[k].g <= cost || s.Rules.Against(at, to) != nil {
+		if known && s.nodes[k].g <= cost || s.Rules.Against(at, to, rules.StepSlackUm) != nil {
 			continue
 		}
 		if !known {

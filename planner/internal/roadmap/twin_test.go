@@ -127,7 +127,7 @@ func TestGridAgainstTwin(t *testing.T) {
 					if !q.Free.Free(n.Col, n.Row) || !q.Free.Free(c.Col, n.Row) || !q.Free.Free(n.Col, c.Row) {
 						continue
 					}
-					if a, b := q.Frame.Centre(c), q.Frame.Centre(n); q.Rules.Against(a, b) == nil {
+					if a, b := q.Frame.Centre(c), q.Frame.Centre(n); q.Rules.Against(a, b, rules.StepSlackUm) == nil {
 						to(n.Row*cols+n.Col, geom.Dist(a, b)*(q.factor(c)+q.factor(n))/2)
 					}
 				}
@@ -195,7 +195,7 @@ func TestQuadtreeAgainstTwin(t *testing.T) {
 				factor += q.Weight
 			}
 			step := func(k int, b geom.Point) {
-				if q.Rules.Against(at, b) == nil {
+				if q.Rules.Against(at, b, rules.StepSlackUm) == nil {
 					to(k, factor*geom.Dist(at, b))
 				}
 			}
@@ -239,7 +239,7 @@ func TestWidestAgainstFloods(t *testing.T) {
 		least := func(way []geom.Point) int64 {
 			v := need
 			for i := 1; i < len(way); i++ {
-				if q.Rules.Against(way[i-1], way[i]) != nil {
+				if q.Rules.Against(way[i-1], way[i], rules.BackwardSlackUm) != nil {
 					t.Fatal("the way goes backward in a one-way zone")
 				}
 				v = min(v, int64(f.Segment(way[i-1], way[i]).Um))
@@ -262,7 +262,7 @@ func TestWidestAgainstFloods(t *testing.T) {
 		// A flood that keeps one more.
 		cols := q.Frame.Cols
 		ok := func(a, b geom.Point) bool {
-			return q.Rules.Against(a, b) == nil && int64(f.Segment(a, b).Um) > got
+			return q.Rules.Against(a, b, rules.BackwardSlackUm) == nil && int64(f.Segment(a, b).Um) > got
 		}
 		n := cols * q.Frame.Rows
 		dist := dijkstra(n+2, n, func(i int, to func(int, float64)) {

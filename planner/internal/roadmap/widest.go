@@ -128,7 +128,7 @@ func (w *wide) value(a, b geom.Point, clear bool) int64 {
 	if w.Backward {
 		a, b = b, a
 	}
-	if w.Rules != nil && (w.Rules.Entered(a, b, float64(w.RadiusUm)) != nil || w.Rules.Against(a, b) != nil) {
+	if w.Rules != nil && (w.Rules.Entered(a, b, float64(w.RadiusUm)) != nil || w.Rules.Against(a, b, rules.BackwardSlackUm) != nil) {
 		return 0
 	}
 	if clear {

@@ -17,6 +17,11 @@ import (
 // the piece's two ends to whole micrometres (at most 0.71 each) and nothing else.
 const BackwardSlackUm = 2
 
+// StepSlackUm is the same for the steps of a roadmap, which are not rounded one by one:
+// float64's rounding alone, so that a run of ten thousand steps has not gone
+// backward by BackwardSlackUm either.
+const StepSlackUm = 1e-5
+
 // PointRadiusUm is the least distance kept from a closed zone's outline. It matters
 // to a body of radius 0 alone, for which a distance of 0 would be the inside.
 const PointRadiusUm = 1
@@ -76,9 +81,9 @@ func (r *Rules) Entered(a, b geom.Point, radius float64) *floor.Feature {
 }
 
 // Against is the first one-way zone, by name, inside which the segment from a to b
-// moves backward by more than BackwardSlackUm, nil when there is none. The border
+// moves backward by more than slack micrometres, nil when there is none. The border
 // counts as inside.
-func (r *Rules) Against(a, b geom.Point) *floor.Feature {
+func (r *Rules) Against(a, b geom.Point, slack float64) *floor.Feature {
 	box := geom.BoundsOf(a, b)
 	for i := range r.oneWay {
 		z := &r.oneWay[i]
@@ -86,11 +91,11 @@ func (r *Rules) Against(a, b geom.Point) *floor.Feature {
 			continue
 		}
 		ahead := float64((b.X-a.X)*z.hx) + float64((b.Y-a.Y)*z.hy)
-		if ahead >= -BackwardSlackUm {
+		if ahead >= -slack {
 			continue
 		}
 		for _, s := range geom.ClipSegment(z.f.Shape.Chains, a, b) {
-			if float64((s.To-s.From)*ahead) < -BackwardSlackUm {
+			if float64((s.To-s.From)*ahead) < -slack {
 				return z.f
 			}
 		}
