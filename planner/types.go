@@ -78,7 +78,8 @@ const (
 	CauseRoom
 )
 
-// RoutePoint is a point of a route.
+// RoutePoint is a point of a route. There is one wherever the route bends, a leg begins,
+// clearance is smallest in a leg, or a speed limit zone begins or ends.
 type RoutePoint struct {
 	At           geom.Point
 	Heading      float64 // of travel leaving this point; at the goal, the goal's own
@@ -159,7 +160,9 @@ type BlockedEnd struct {
 	Bearing     float64
 }
 
-// Bottleneck is the narrowest place on the widest way.
+// Bottleneck is the narrowest place on the widest way. WidthUm below NeededUm is
+// what is in the way, unless Zone is; on a named roadmap WidthUm may reach NeededUm:
+// the body fits, but cells taken as a whole miss the passage (Bound.WidthBiasUm).
 type Bottleneck struct {
 	Exists       bool
 	At           geom.Point
