@@ -21,6 +21,16 @@ type Config struct {
 	// goes with the process: for trials, tests and embedding. It is the default
 	// here; the daemon's own default is "wideberth.db" in its working directory.
 	Data string
+	// AcceptLostCommit serves a journal file whose newest commit may be missing. The
+	// file names its state on two pages that are written in turn; when one of them
+	// is damaged (which a crash cannot do, a failing disk or a wrong copy can), the
+	// other names the state one commit earlier. Whether the damaged page was the
+	// newer one cannot be told, so the file is refused: a version that was
+	// acknowledged may be gone, and controllers may hold routes that name it. Restore
+	// a backup if there is one. Set this for one start when there is none, compare
+	// the heads with what was last known, push again what is missing, and take it
+	// off. Default false.
+	AcceptLostCommit bool
 
 	// PlanTimeout is how long a search may take when the request names no
 	// time_budget_s. Default 5 s.

@@ -39,7 +39,7 @@ func TestDefaultConfigIsValid(t *testing.T) {
 // A flag wins over a variable, a variable over the file, the file over the default.
 func TestPrecedence(t *testing.T) {
 	file := "worlds: 2\nplanners: 3\nplan_queue: 4\n"
-	c, err := load(t, file, []string{"WIDEBERTH_WORLDS=5", "WIDEBERTH_PLANNERS=6", "HOME=/"}, "--worlds", "7")
+	c, err := load(t, file, []string{"WIDEBERTH_WORLDS=5", "WIDEBERTH_PLANNERS=6", "HOME=/", "WIDEBERTH_SERVER=hall:7443", "WIDEBERTH_AUTHOR=shift"}, "--worlds", "7")
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -33,6 +33,7 @@
 //	INVALID_FIELD       INVALID_ARGUMENT     a field is malformed or out of range; BadRequest names up to 20 fields and counts the rest
 //	FLOOR_NOT_FOUND     NOT_FOUND            there is no such floor
 //	FLOOR_EXISTS        ALREADY_EXISTS       the floor exists with other settings
+//	FLOOR_LIMIT         FAILED_PRECONDITION  there are as many floors as one server keeps; PreconditionFailure FLOORS
 //	VERSION_NOT_FOUND   NOT_FOUND            a version above the head was asked for; metadata head_version
 //	VERSION_NOT_REACHED UNAVAILABLE          at_least was not reached within max_wait_s; metadata head_version; RetryInfo
 //	VERSION_PREPARING   UNAVAILABLE          the version is still being made ready to plan on; RetryInfo
@@ -47,7 +48,27 @@
 //	CANCELLED           CANCELLED            the caller gave up
 //	SHUTTING_DOWN       UNAVAILABLE          the server is draining; RetryInfo
 //	JOURNAL_UNAVAILABLE UNAVAILABLE          the journal cannot be written; RetryInfo
-//	JOURNAL_DAMAGED     DATA_LOSS            the journal cannot be read
+//	JOURNAL_DAMAGED     DATA_LOSS            the floor's part of the journal is damaged, and the floor is not served; metadata damaged_version
 //	ROUTE_CHECK_FAILED  INTERNAL             a route failed the check that is apart from the search, and is withheld; the log says how
 //	INTERNAL            INTERNAL             a fault of the server's; its log has it under the call's x-request-id
+//
+// # The log
+//
+// One JSON object a line (or words, see Config.LogFormat), on these messages and
+// fields, which stay:
+//
+//	message               level  fields
+//	call                  info   grpc.service, grpc.method, grpc.code, grpc.time_ms, request_id, peer.address, floor, map_version, error; cause from warn on
+//	serving, draining     info   address; within
+//	store opened          info   floors, versions, replayed, refused
+//	recovery note         warn   note: what opening the store found wrong and did about it
+//	floor refused         error  floor, error: its records are damaged, its calls are DATA_LOSS, the others are served
+//	lost commit accepted  error  file, error: Config.AcceptLostCommit let a damaged file pass
+//	store trouble         warn   error: what failed no call, such as a journal snapshot that will be tried again
+//	head cannot be made ready to plan on, floor cannot be followed
+//	                      error  floor, error
+//	handler panicked      error  request_id, panic, stack
+//
+// A call that fails by the server's own fault is logged at error, one that was shed
+// or came too early at warn.
 package server

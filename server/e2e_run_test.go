@@ -17,6 +17,7 @@ import (
 	"google.golang.org/grpc/metadata"
 	reflectpb "google.golang.org/grpc/reflection/grpc_reflection_v1"
 	"google.golang.org/grpc/status"
+	"google.golang.org/grpc/test/bufconn"
 
 	pb "example.com/wideberth/proto/wideberth/v1"
 )
@@ -310,6 +311,21 @@ func TestPlainTextBeyondLoopbackWarns(t *testing.T) {
 		}
 		if warned := strings.Contains(log.String(), "without TLS"); warned != want {
 			t.Errorf("%s: warned %v, wanted %v", addr, warned, want)
+		}
+	}
+}
+
+// A server that is told to stop before it began to serve has drained cleanly.
+func TestStoppedBeforeItBegan(t *testing.T) {
+	for range 20 {
+		s, err := New(t.Context(), DefaultConfig(), zerolog.Nop())
+		if err != nil {
+			t.Fatal(err)
+		}
+		ctx, stop := context.WithCancel(t.Context())
+		stop()
+		if err := s.Serve(ctx, bufconn.Listen(1)); err != nil {
+			t.Fatal(err)
 		}
 	}
 }

@@ -157,9 +157,11 @@ func describe(ctx context.Context, err error, about subject) failure {
 		station *stationError
 		stale   *mapstore.StaleBaseError
 		edit    *floor.EditError
+		arg     *mapstore.ArgumentError
 		setting floor.SettingsError
 		request *planner.RequestError
 		checked *planner.CheckError
+		damage  *journal.CorruptError
 	)
 	switch {
 	case errors.As(err, &input):
@@ -168,6 +170,10 @@ func describe(ctx context.Context, err error, about subject) failure {
 		return f
 	case errors.As(err, &edit):
 		return editFailure(edit, about, fail, unmet)
+	case errors.As(err, &arg):
+		f := fail(codes.InvalidArgument, "INVALID_FIELD", arg.Error())
+		f.fields = []fault{{arg.Field, arg.Problem}}
+		return f
 	case errors.As(err, &setting):
 		f := fail(codes.InvalidArgument, "INVALID_FIELD", setting.Error())
 		for _, s := range setting {
@@ -195,6 +201,10 @@ func describe(ctx context.Context, err error, about subject) failure {
 		return fail(codes.NotFound, "FLOOR_NOT_FOUND", fmt.Sprintf("floor: there is no floor %s", quote(about.floor)))
 	case errors.Is(err, mapstore.ErrFloorExists):
 		return fail(codes.AlreadyExists, "FLOOR_EXISTS", fmt.Sprintf("floor: %s exists with other settings", quote(about.floor)))
+	case errors.Is(err, mapstore.ErrFloorLimit):
+		// Not RESOURCE_EXHAUSTED: floors are never taken away, so waiting does not help.
+		f := fail(codes.FailedPrecondition, "FLOOR_LIMIT", fmt.Sprintf("floor: there are %d floors already, as many as one server keeps", mapstore.MaxFloors))
+		return unmet(f, "FLOORS", "floors/"+about.floor)
 	case errors.Is(err, errNoVersion):
 		meta["head_version"] = strconv.FormatInt(about.head.Version, 10)
 		return fail(codes.NotFound, "VERSION_NOT_FOUND", fmt.Sprintf("there is no version %d, wanted at most the head %d", about.version, about.head.Version))
@@ -223,12 +233,25 @@ func describe(ctx context.Context, err error, about subject) failure {
 		return fail(codes.DeadlineExceeded, "DEADLINE", "the deadline passed first")
 	case errors.Is(err, context.Canceled):
 		return fail(codes.Canceled, "CANCELLED", "the call was cancelled")
+	case errors.As(err, &damage):
+		return damaged(damage, fail, meta)
 	case errors.Is(err, journal.ErrCorrupt), errors.Is(err, journal.ErrFormat):
 		return fail(codes.DataLoss, "JOURNAL_DAMAGED", "the journal cannot be read; see the server's log")
 	case errors.Is(err, mapstore.ErrJournal):
 		return later(fail(codes.Unavailable, "JOURNAL_UNAVAILABLE", "the journal cannot be written; nothing is lost that was acknowledged"), retryRestart)
 	}
 	return fail(codes.Internal, "INTERNAL", "internal error; the server's log has it under this request id")
+}
+
+// damaged says what of a floor is damaged and what to do; the file's name is the
+// server's own business.
+func damaged(e *journal.CorruptError, fail func(codes.Code, string, string) failure, meta map[string]string) failure {
+	told := *e
+	told.File = ""
+	if e.Version != 0 {
+		meta["damaged_version"] = strconv.FormatInt(e.Version, 10)
+	}
+	return fail(codes.DataLoss, "JOURNAL_DAMAGED", cut(told.Error(), maxMessageText-64)+"; the journal must be restored from a backup")
 }
 
 // editFailure tells edits that are wrong on any version from the one that depends

@@ -45,6 +45,8 @@ func TestFailures(t *testing.T) {
 		{err: mapstore.ErrNoFloor, code: codes.NotFound, reason: "FLOOR_NOT_FOUND"},
 		{err: mapstore.ErrFloorExists, code: codes.AlreadyExists, reason: "FLOOR_EXISTS"},
 		{err: mapstore.ErrFutureVersion, code: codes.FailedPrecondition, reason: "BASE_ABOVE_HEAD"},
+		{err: mapstore.ErrFloorLimit, code: codes.FailedPrecondition, reason: "FLOOR_LIMIT"},
+		{err: &mapstore.ArgumentError{Field: "patch.edits", Problem: "too long"}, code: codes.InvalidArgument, reason: "INVALID_FIELD"},
 		{err: errNoVersion, code: codes.NotFound, reason: "VERSION_NOT_FOUND"},
 		{err: errNotReached, code: codes.Unavailable, reason: "VERSION_NOT_REACHED", retry: true},
 		{err: errPreparing, code: codes.Unavailable, reason: "VERSION_PREPARING", retry: true},
@@ -89,6 +91,33 @@ func TestFailures(t *testing.T) {
 	}
 }
 
+// What the store finds wrong with an argument is named as a field of the request.
+func TestArgumentNamesItsField(t *testing.T) {
+	err := statusOf(t.Context(), fmt.Errorf("push: %w", &mapstore.ArgumentError{Field: "patch.edits", Problem: "70000000 bytes encoded, wanted at most 67108800"}), subject{floor: "hall"})
+	got := detail[*errdetails.BadRequest](err).GetFieldViolations()
+	if len(got) != 1 || got[0].Field != "patch.edits" || !strings.Contains(got[0].Description, "70000000 bytes") {
+		t.Errorf("violations %v", got)
+	}
+}
+
+// Damage is told with its place and without the server's own paths.
+func TestDamageNamesItsPlace(t *testing.T) {
+	err := statusOf(t.Context(), fmt.Errorf("floor is refused: %w", &journal.CorruptError{
+		File: "/srv/secret.db", Floor: "hall", Version: 12, Newest: 12, What: "record: checksum is wrong"}), subject{floor: "hall"})
+	message := status.Convert(err).Message()
+	for _, want := range []string{`floor "hall"`, "version 12, the newest", "checksum is wrong", "restored from a backup"} {
+		if !strings.Contains(message, want) {
+			t.Errorf("%q does not say %q", message, want)
+		}
+	}
+	if strings.Contains(message, "secret") {
+		t.Errorf("%q names the server's file", message)
+	}
+	if got := metaOf(err)["damaged_version"]; got != "12" {
+		t.Errorf("damaged_version %q, wanted 12", got)
+	}
+}
+
 // The worst failure of each kind fits 4 KiB and says how much it left out.
 func TestFailuresFit(t *testing.T) {
 	long := strings.Repeat("ö", 3000)
@@ -101,7 +130,8 @@ func TestFailuresFit(t *testing.T) {
 		stale.Conflicts = append(stale.Conflicts, long)
 	}
 	for _, err := range []error{in, stale, &stationError{station: long}, &floor.EditError{Path: "remove_feature." + long, Problem: long},
-		&floor.EditError{Path: long, Problem: long}, mapstore.ErrNoFloor} {
+		&floor.EditError{Path: long, Problem: long}, mapstore.ErrNoFloor, &mapstore.ArgumentError{Field: long, Problem: long},
+		&journal.CorruptError{Floor: long, What: long}} {
 		got := status.Convert(statusOf(context.Background(), err, subject{floor: long, editsAt: "patch.edits"}))
 		if n := proto.Size(got.Proto()); n > maxStatusBytes {
 			t.Errorf("%T: %d bytes, wanted at most %d", err, n, maxStatusBytes)

@@ -18,6 +18,7 @@ import (
 	"google.golang.org/grpc/status"
 	"google.golang.org/protobuf/proto"
 
+	"example.com/wideberth/mapstore"
 	pb "example.com/wideberth/proto/wideberth/v1"
 )
 
@@ -65,10 +66,10 @@ func newCall(ctx context.Context) (context.Context, *callRecord) {
 func (s *Server) finish(ctx context.Context, r *callRecord, method string, start time.Time, err error) {
 	code := status.Code(err)
 	level := zerolog.InfoLevel
-	switch code {
-	case codes.Internal, codes.DataLoss, codes.Unknown:
+	switch {
+	case code == codes.Internal, code == codes.DataLoss, code == codes.Unknown, errors.Is(err, mapstore.ErrJournal):
 		level = zerolog.ErrorLevel
-	case codes.Unavailable, codes.ResourceExhausted:
+	case code == codes.Unavailable, code == codes.ResourceExhausted:
 		level = zerolog.WarnLevel
 	}
 	if !strings.HasPrefix(method, ourServices) {
@@ -95,7 +96,7 @@ func (s *Server) finish(ctx context.Context, r *callRecord, method string, start
 	}
 	if err != nil {
 		line.Str("error", cut(err.Error(), maxMessageText))
-		if cause := errors.Unwrap(err); cause != nil && level == zerolog.ErrorLevel {
+		if cause := errors.Unwrap(err); cause != nil && level >= zerolog.WarnLevel {
 			line.AnErr("cause", cause)
 		}
 	}

@@ -26,7 +26,7 @@ const maxConfigFileBytes = 1 << 20
 
 // neighbourVariables start with envPrefix and belong to other programs of the
 // project: the operator's tool and the tests.
-var neighbourVariables = []string{"WIDEBERTH_SERVER", "WIDEBERTH_SLOW"}
+var neighbourVariables = []string{"WIDEBERTH_SERVER", "WIDEBERTH_AUTHOR", "WIDEBERTH_SLOW", "WIDEBERTH_GRID_BENCHMARK"}
 
 // knob is one thing that can be set. The flag is --key with dashes, the variable
 // WIDEBERTH_KEY in capitals, the file key the key itself.
@@ -44,6 +44,8 @@ var knobs = []knob{
 		func(c *Config) any { return &c.Listen }, wrongListen},
 	{"data", "The journal's file. Empty keeps everything in a temporary file that goes with the process.",
 		func(c *Config) any { return &c.Data }, nil},
+	{"accept_lost_commit", "Serve a journal whose newest commit may be missing, since one of its two leading pages is damaged; without a backup only, for one start.",
+		func(c *Config) any { return &c.AcceptLostCommit }, nil},
 	{"plan_timeout", "How long a search may take when the request names no time_budget_s, 10ms to 30s.",
 		func(c *Config) any { return &c.PlanTimeout }, within(func(c *Config) time.Duration { return c.PlanTimeout }, 10*time.Millisecond, 30*time.Second)},
 	{"call_timeout", "Bound on every other unary call, 100ms to 10m.",

@@ -5,8 +5,6 @@ import (
 	"errors"
 	"fmt"
 	"net"
-	"os"
-	"path/filepath"
 	"time"
 
 	"github.com/rs/zerolog"
@@ -18,8 +16,6 @@ import (
 	"google.golang.org/grpc/reflection"
 
 	"example.com/wideberth/mapstore"
-	"example.com/wideberth/mapstore/journal"
-	"example.com/wideberth/mapstore/journal/boltjournal"
 	pb "example.com/wideberth/proto/wideberth/v1"
 )
 
@@ -31,7 +27,6 @@ const (
 	keepaliveLeast   = 10 * time.Second // clients that probe more often are sent away
 	maxHeaderBytes   = 16 << 10
 	ageGrace         = 30 * time.Second // calls may go on after MaxConnectionAge
-	journalFileName  = "wideberth.db"   // of a temporary journal
 )
 
 // Server is a running service: its store, its planners, its gRPC server. Serve it
@@ -78,58 +73,6 @@ func New(ctx context.Context, cfg Config, log zerolog.Logger) (*Server, error) {
 		reflection.Register(s.grpc)
 	}
 	return s, nil
-}
-
-// open opens journal, store and worlds and makes the heads ready.
-func (s *Server) open(ctx context.Context) error {
-	j, err := s.openJournal()
-	if err != nil {
-		return err
-	}
-	s.closers = append(s.closers, j.Close)
-	store, recovery, err := mapstore.Open(ctx, j, mapstore.Options{
-		KeepVersions: s.cfg.KeepVersions, SnapshotEvery: s.cfg.SnapshotEvery,
-	})
-	if err != nil {
-		return fmt.Errorf("store: %w", err)
-	}
-	s.store = store
-	s.closers = append(s.closers, store.Close)
-	for _, n := range recovery.Notes {
-		s.log.Warn().Str("note", n).Msg("recovery")
-	}
-	s.log.Info().Int("floors", recovery.Floors).Int("versions", recovery.Versions).Int("replayed", recovery.Replayed).Msg("store opened")
-
-	s.worlds = newWorlds(store, s.cfg.Worlds, s.log)
-	s.closers = append(s.closers, func() error { s.worlds.close(); return nil })
-	floors := store.Floors()
-	for _, f := range floors {
-		s.worlds.follow(f.ID)
-	}
-	for _, f := range floors {
-		if err := s.worlds.prepare(ctx, f.ID); err != nil {
-			return fmt.Errorf("floor %q: %w", f.ID, err)
-		}
-	}
-	return nil
-}
-
-// openJournal opens the file named by the configuration, or a temporary one.
-func (s *Server) openJournal() (journal.Journal, error) {
-	path := s.cfg.Data
-	if path == "" {
-		dir, err := os.MkdirTemp("", "wideberth-")
-		if err != nil {
-			return nil, fmt.Errorf("data: %w", err)
-		}
-		s.closers = append(s.closers, func() error { return os.RemoveAll(dir) })
-		path = filepath.Join(dir, journalFileName)
-	}
-	j, err := boltjournal.Open(path, boltjournal.Options{})
-	if err != nil {
-		return nil, fmt.Errorf("data: %w", err)
-	}
-	return j, nil
 }
 
 // options are the gRPC server's; what is marked experimental there is used nowhere
@@ -182,7 +125,10 @@ func (s *Server) Serve(ctx context.Context, lis net.Listener) error {
 	}
 	cut := s.stop()
 	if err == nil {
-		err = <-ended
+		// Told to stop before it began, gRPC calls that an error.
+		if err = <-ended; errors.Is(err, grpc.ErrServerStopped) {
+			err = nil
+		}
 	}
 	if cut {
 		err = errors.Join(err, fmt.Errorf("calls under way were cut after %v", s.cfg.DrainTimeout))

@@ -24,6 +24,11 @@ var ErrLocked = errors.New("journal: file is held by another process")
 // ErrNotJournal says that the file is something else.
 var ErrNotJournal = errors.New("journal: file is not a wideberth journal")
 
+// ErrLostCommit says that one of the file's two leading pages is damaged, so that
+// its newest commit may be missing; see Options.AcceptLostCommit. It comes with a
+// *journal.CorruptError.
+var ErrLostCommit = errors.New("journal: the newest commit may be missing")
+
 // DefaultLockTimeout is how long Open waits for a file that another process holds.
 const DefaultLockTimeout = time.Second
 
@@ -37,8 +42,8 @@ type Options struct {
 	LockTimeout time.Duration
 	// AcceptLostCommit opens a file one of whose two leading pages is damaged, in the
 	// state that the other page names. When it was the newer one, the newest commit
-	// is missing: an acknowledged version, or a snapshot. Without it such a file is a
-	// *journal.CorruptError.
+	// is missing: an acknowledged version, or a snapshot. Without it such a file is
+	// ErrLostCommit. Journal.Accepted says whether it made a difference.
 	AcceptLostCommit bool
 }
 
@@ -48,6 +53,8 @@ type Journal struct {
 	path  string
 	turn  chan struct{}         // holds one token; whoever has it may write
 	block atomic.Pointer[error] // set after a failed sync: why no write is taken any more
+
+	accepted error // the damage that AcceptLostCommit let pass
 
 	refused map[string]error // floors that Open found damaged; not written after
 }
@@ -59,8 +66,9 @@ var _ journal.Journal = (*Journal)(nil)
 // proportional to their number; records are checked as they are read. A floor whose
 // request ids are damaged is refused from then on, the others are not.
 //
-// The error names path. It is ErrLocked, ErrNotJournal, a *journal.FormatError for
-// a file of a newer format, a *journal.CorruptError, or the system's.
+// The error names path. It is ErrLocked, ErrNotJournal, ErrLostCommit, a
+// *journal.FormatError for a file of a newer format, a *journal.CorruptError, or
+// the system's.
 func Open(path string, o Options) (*Journal, error) {
 	if o.LockTimeout <= 0 {
 		o.LockTimeout = DefaultLockTimeout
@@ -114,12 +122,14 @@ func (j *Journal) open(o Options) (err error) {
 	case err != nil:
 		return fmt.Errorf("journal %q cannot be opened: %w", j.path, err)
 	}
-	if !o.AcceptLostCommit {
-		if err := checkLead(file, j.db.Info().PageSize); err != nil {
-			j.db.Close()
-			file = nil
-			return j.named(err)
-		}
+	switch err := checkLead(file, j.path, j.db.Info().PageSize); {
+	case err == nil:
+	case o.AcceptLostCommit:
+		j.accepted = err
+	default:
+		j.db.Close()
+		file = nil
+		return err
 	}
 	return nil
 }
@@ -177,6 +187,10 @@ func publish(name, path string) error {
 	defer dir.Close()
 	return dir.Sync()
 }
+
+// Accepted is the damage that Options.AcceptLostCommit let pass when the file was
+// opened; nil when there was none.
+func (j *Journal) Accepted() error { return j.accepted }
 
 // Path is the file's.
 func (j *Journal) Path() string { return j.path }

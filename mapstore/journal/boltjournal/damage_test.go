@@ -340,7 +340,7 @@ func TestDamagedLeadingPage(t *testing.T) {
 		t.Fatal(err)
 	}
 	_, err = boltjournal.Open(path, boltjournal.Options{})
-	if !errors.Is(err, journal.ErrCorrupt) || !strings.Contains(err.Error(), path) {
+	if !errors.Is(err, boltjournal.ErrLostCommit) || !errors.Is(err, journal.ErrCorrupt) || !strings.Contains(err.Error(), path) {
 		t.Fatalf("open: %v", err)
 	}
 	j, err = boltjournal.Open(path, boltjournal.Options{AcceptLostCommit: true})
@@ -350,6 +350,9 @@ func TestDamagedLeadingPage(t *testing.T) {
 	defer j.Close()
 	if head, err := j.Head(t.Context(), "hall"); head != 4 || err != nil {
 		t.Errorf("opened as it is, the head is %d, %v; want 4, the newest but one", head, err)
+	}
+	if err := j.Accepted(); !errors.Is(err, boltjournal.ErrLostCommit) || !strings.Contains(err.Error(), path) {
+		t.Errorf("accepted %v, want the damage and the file", err)
 	}
 }
 

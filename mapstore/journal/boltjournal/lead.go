@@ -27,17 +27,16 @@ const (
 )
 
 // checkLead says whether both leading pages are valid.
-func checkLead(f io.ReaderAt, pageSize int) error {
+func checkLead(f io.ReaderAt, path string, pageSize int) error {
 	for i := range 2 {
 		var b [leadBytes]byte
 		if _, err := f.ReadAt(b[:], int64(i*pageSize)+leadHeader); err != nil {
-			return fmt.Errorf("leading page %d: %w", i, err)
+			return fmt.Errorf("journal %q: leading page %d: %w", path, i, err)
 		}
 		h := fnv.New64a()
 		h.Write(b[:leadBytes-8])
 		if binary.NativeEndian.Uint32(b[:]) != leadMagic || binary.NativeEndian.Uint64(b[leadBytes-8:]) != h.Sum64() {
-			return &journal.CorruptError{What: fmt.Sprintf("leading page %d is damaged, so the newest commit may be missing; "+
-				"restore the file from a backup, or open it as it is with AcceptLostCommit", i)}
+			return fmt.Errorf("%w: %w", ErrLostCommit, &journal.CorruptError{File: path, What: fmt.Sprintf("leading page %d is damaged", i)})
 		}
 	}
 	return nil
