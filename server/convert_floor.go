@@ -35,11 +35,14 @@ func versionOut(v mapstore.VersionInfo) *pb.Version {
 }
 
 func floorOut(i mapstore.FloorInfo) *pb.Floor {
-	return &pb.Floor{
+	out := &pb.Floor{
 		Id:            i.ID,
 		Settings:      wire.SettingsOut(i.Settings),
 		Head:          stampOut(i.Head),
 		OldestVersion: i.Oldest,
-		CreateTime:    timestamppb.New(i.Created),
 	}
+	if !i.Created.IsZero() {
+		out.CreateTime = timestamppb.New(i.Created)
+	}
+	return out
 }

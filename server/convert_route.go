@@ -246,6 +246,8 @@ func bottleneckText(n *planner.Bottleneck) string {
 		return fmt.Sprintf("zone %q closes the way", n.Zone)
 	case !n.Exists:
 		return "there is no way, however narrow"
+	case n.WidthUm >= n.NeededUm:
+		return fmt.Sprintf("the widest way narrows to %s m, enough for the %s m needed, but the roadmap asked for misses it; ask without roadmap and keep_roadmap_path", down(n.WidthUm), up(n.NeededUm))
 	}
 	return fmt.Sprintf("the widest way narrows to %s m, needed %s m", down(n.WidthUm), up(n.NeededUm))
 }
@@ -281,7 +283,7 @@ func guideSetupIn(s *pb.GuideSetup, set floor.Settings) planner.GuideSetup {
 		out.HintBelowUm = out.Body.PreferredUm
 	}
 	if out.QuietAboveUm == 0 {
-		out.QuietAboveUm = out.HintBelowUm + defaultQuietUm
+		out.QuietAboveUm = max(out.HintBelowUm, min(out.HintBelowUm+defaultQuietUm, set.CapUm))
 	}
 	if out.OffRouteUm == 0 {
 		out.OffRouteUm = defaultOffRouteUm

@@ -81,6 +81,7 @@ func TestBadRequestsChangeNothing(t *testing.T) {
 		{"station outside", base(push(put(station("x", 10.5, 1))), 2), codes.InvalidArgument, "INVALID_FIELD", "patch.edits[0].put_feature.feature.station.pose", ""},
 		{"cells outside", base(push(paintCells(&pb.CellBlock{Rect: &pb.CellRect{Column: 199, Columns: 4, Rows: 1}, Encoding: 1, Cells: []byte{0}})), 2), codes.InvalidArgument, "INVALID_FIELD", "patch.edits[0].paint_occupancy.cells.rect.columns", ""},
 		{"clear outside", base(push(clearRect(&pb.Area{MinXM: 20, MaxXM: 21, MaxYM: 1})), 2), codes.InvalidArgument, "INVALID_FIELD", "patch.edits[0].clear_rect.area", ""},
+		{"clear along a line between cells", base(push(clearRect(&pb.Area{MinXM: 1, MaxXM: 1, MaxYM: 1})), 2), codes.InvalidArgument, "INVALID_FIELD", "patch.edits[0].clear_rect.area", ""},
 		{"second edit bad", base(push(put(solidPolygon("x", triangle)), put(solidPolygon("y", polygon(9, 1, 11, 1, 11, 2)))), 2), codes.InvalidArgument, "INVALID_FIELD", "patch.edits[1].put_feature", ""},
 		{"remove what is not there", base(push(&pb.Edit{Action: &pb.Edit_RemoveFeature{RemoveFeature: &pb.RemoveFeature{Name: "ghost"}}}), 2), codes.FailedPrecondition, "FEATURE_NOT_FOUND", "patch.edits[0].remove_feature.name", ""},
 		{"stale base", base(push(put(solidPolygon("x", triangle))), 1), codes.Aborted, "STALE_BASE", "base_version: 1", "head_version=2"},
@@ -104,6 +105,7 @@ func TestBadRequestsChangeNothing(t *testing.T) {
 		{"old route off the floor", edited(replan(), func(q *pb.ReplanRequest) { q.Previous.Legs[1].Points[1].XM = 12 }), codes.InvalidArgument, "INVALID_FIELD", "previous.legs[1].points[1].x_m", ""},
 		{"replan on no floor", edited(replan(), func(q *pb.ReplanRequest) { q.Previous.CheckedAgainst.Floor = "yard" }), codes.NotFound, "FLOOR_NOT_FOUND", `"yard"`, ""},
 		{"hint above the cap", edited(guideOnce(), func(q *pb.GuideOnceRequest) { q.Setup.HintBelowM = 6 }), codes.InvalidArgument, "INVALID_FIELD", "setup.hint_below_m", ""},
+		{"quiet above the cap", edited(guideOnce(), func(q *pb.GuideOnceRequest) { q.Setup.QuietAboveM = 6 }), codes.InvalidArgument, "INVALID_FIELD", "setup.quiet_above_m", ""},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			err := r.call(c.m)

@@ -58,6 +58,9 @@ func (v guideService) begin(ctx context.Context, setup *pb.GuideSetup, p *field)
 	if setup.HintBelowM != 0 {
 		f.underCap(p.at("hint_below_m"), g.plan.HintBelowUm, set)
 	}
+	if setup.QuietAboveM != 0 {
+		f.underCap(p.at("quiet_above_m"), g.plan.QuietAboveUm, set)
+	}
 	if g.plan.QuietAboveUm < g.plan.HintBelowUm {
 		f.add(p.at("quiet_above_m"), "%v, wanted hint_below_m (%v) or more", setup.QuietAboveM, wire.Metres(g.plan.HintBelowUm))
 	}

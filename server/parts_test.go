@@ -3,11 +3,15 @@ package server
 import (
 	"context"
 	"errors"
+	"strings"
 	"testing"
 	"time"
 
 	"example.com/wideberth/mapstore"
 	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/planner"
+	pb "example.com/wideberth/proto/wideberth/v1"
+	"example.com/wideberth/proto/wire"
 )
 
 // A token is good for its own list alone, and not once it was changed.
@@ -89,6 +93,41 @@ func TestHolds(t *testing.T) {
 	}
 	if len(h.by) > maxHolds {
 		t.Errorf("%d held, wanted at most %d", len(h.by), maxHolds)
+	}
+}
+
+// Hints that come on just below the cap can go off again: the default threshold for
+// that is the cap, not beyond it where no clearance gets.
+func TestQuietStaysWithinTheCap(t *testing.T) {
+	set := wire.SettingsIn(&pb.FloorSettings{Columns: 200, Rows: 100}) // a cap of 5 m
+	for below, want := range map[float64]int64{1: 1_100_000, 4.95: 5_000_000, 5: 5_000_000} {
+		got := guideSetupIn(&pb.GuideSetup{Route: oldRoute(), HintBelowM: below}, set)
+		if got.QuietAboveUm != want {
+			t.Errorf("on below %v m, off above %d um, wanted %d", below, got.QuietAboveUm, want)
+		}
+	}
+	if got := guideSetupIn(&pb.GuideSetup{Route: oldRoute()}, set); got.HintBelowUm != 800_000 || got.QuietAboveUm != 900_000 {
+		t.Errorf("on below %d, off above %d um; wanted the preferred clearance, 800000, and 0.1 m more", got.HintBelowUm, got.QuietAboveUm)
+	}
+}
+
+// Words say no more room than there is and no less than is needed.
+func TestRefusalInWords(t *testing.T) {
+	narrow := refusalOut(&planner.Refusal{Reason: planner.NoPassage, Bottleneck: &planner.Bottleneck{Exists: true, WidthUm: 899_999, NeededUm: 1_300_001}}, 1)
+	if want := "the widest way narrows to 0.89 m, needed 1.31 m"; narrow.Explanation != want {
+		t.Errorf("%q, wanted %q", narrow.Explanation, want)
+	}
+	door := refusalOut(&planner.Refusal{Reason: planner.NoPassage, Bottleneck: &planner.Bottleneck{Exists: true, WidthUm: 900_000, NeededUm: 1_300_000}}, 1)
+	if want := "the widest way narrows to 0.90 m, needed 1.30 m"; door.Explanation != want {
+		t.Errorf("%q, wanted %q", door.Explanation, want)
+	}
+	missed := refusalOut(&planner.Refusal{Reason: planner.NoPassage, Bottleneck: &planner.Bottleneck{Exists: true, WidthUm: 1_300_000, NeededUm: 1_300_000}}, 1)
+	if want := "1.30 m, enough for the 1.30 m needed, but the roadmap asked for misses it"; !strings.Contains(missed.Explanation, want) {
+		t.Errorf("%q does not say %q", missed.Explanation, want)
+	}
+	end := refusalOut(&planner.Refusal{Reason: planner.GoalBlocked, Blocked: &planner.BlockedEnd{ClearanceUm: 59_999, RequiredUm: 60_001, Nearest: "rail"}}, 1)
+	if want := `goal: clearance 0.05 m from "rail", needed 0.07 m`; end.Explanation != want {
+		t.Errorf("%q, wanted %q", end.Explanation, want)
 	}
 }
 

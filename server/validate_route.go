@@ -102,7 +102,7 @@ func checkRoute(r *pb.Route, p *field, f *faults) {
 		return
 	}
 	var last *pb.RoutePoint
-	total := 0
+	total := 1 // the joints of legs count once
 	for i, leg := range r.Legs {
 		at := legs.item(i).at("points")
 		points := leg.GetPoints()
@@ -110,7 +110,7 @@ func checkRoute(r *pb.Route, p *field, f *faults) {
 			f.add(at, "%d points, wanted 2 or more", len(points))
 			return
 		}
-		if total += len(points); total > maxRoutePoints {
+		if total += len(points) - 1; total > maxRoutePoints {
 			f.add(at, "brings the route to %d points, wanted at most %d", total, maxRoutePoints)
 			return
 		}

@@ -78,6 +78,24 @@ func guideOnce() *pb.GuideOnceRequest {
 	return &pb.GuideOnceRequest{Setup: &pb.GuideSetup{Route: oldRoute()}, Report: &pb.GuideReport{Pose: &pb.Pose{XM: 2, YM: 1.5}}}
 }
 
+// longRoute has that many points, joints counted once, in that many legs.
+func longRoute(points, legs int) []*pb.Leg {
+	out := make([]*pb.Leg, legs)
+	last := &pb.RoutePoint{}
+	for i := range out {
+		n := points/legs + 1
+		if i == legs-1 {
+			n = points - (legs-1)*(n-1)
+		}
+		out[i] = &pb.Leg{Points: []*pb.RoutePoint{last}}
+		for len(out[i].Points) < n {
+			last = &pb.RoutePoint{XM: last.XM + 0.05}
+			out[i].Points = append(out[i].Points, last)
+		}
+	}
+	return out
+}
+
 // edited is m after f.
 func edited[T any](m T, f func(T)) T { f(m); return m }
 
@@ -170,6 +188,8 @@ func TestBadInputNamesTheField(t *testing.T) {
 		{"one point", edited(replan(), func(r *pb.ReplanRequest) { r.Previous.Legs[0].Points = r.Previous.Legs[0].Points[:1] }), "previous.legs[0].points", "1 points, wanted 2"},
 		{"legs apart", edited(replan(), func(r *pb.ReplanRequest) { r.Previous.Legs[1].Points[0].XM = 5 }), "previous.legs[1].points[0]", "wanted the last point of the leg before"},
 		{"point NaN", edited(replan(), func(r *pb.ReplanRequest) { r.Previous.Legs[1].Points[1].YM = nan }), "previous.legs[1].points[1].y_m", "NaN"},
+		{"too many points", edited(replan(), func(r *pb.ReplanRequest) { r.Previous.Legs = longRoute(maxRoutePoints+1, 3) }), "previous.legs[2].points", "100001 points, wanted at most 100000"},
+		{"too many legs", edited(replan(), func(r *pb.ReplanRequest) { r.Previous.Legs = make([]*pb.Leg, maxRouteLegs+1) }), "previous.legs", "10001 legs, wanted 1 to 10000"},
 		{"digest", edited(replan(), func(r *pb.ReplanRequest) { r.Previous.CheckedAgainst.Digest = "beef" }), "previous.checked_against.digest", "64 lower-case hex digits"},
 		{"switch share", edited(replan(), func(r *pb.ReplanRequest) { r.SwitchShare = 1.5 }), "switch_share", "1.5, wanted 0 to 1"},
 
@@ -199,16 +219,17 @@ func TestBadInputNamesTheField(t *testing.T) {
 // What the contract allows passes, the odd corners too.
 func TestGoodInputPasses(t *testing.T) {
 	for name, m := range map[string]proto.Message{
-		"create":       create(),
-		"plan":         plan(),
-		"replan":       replan(),
-		"guide":        guideOnce(),
-		"point body":   edited(plan(), func(r *pb.PlanRequest) { r.Body = &pb.Body{} }),
-		"float32 pi":   edited(plan(), func(r *pb.PlanRequest) { r.Goal.GetPose().HeadingRad = float64(float32(math.Pi)) }),
-		"atan2 -pi":    edited(plan(), func(r *pb.PlanRequest) { r.Goal.GetPose().HeadingRad = math.Atan2(math.Copysign(0, -1), -1) }),
-		"big page":     &pb.ListFloorsRequest{PageSize: math.MaxInt32},
-		"deflated":     push(paintCells(&pb.CellBlock{Rect: &pb.CellRect{Columns: 5, Rows: 1}, Encoding: 2, Cells: deflated([]byte{0x98, 0x02})})),
-		"author umlau": edited(create(), func(r *pb.CreateFloorRequest) { r.Author = strings.Repeat("ü", 100) }),
+		"create":        create(),
+		"plan":          plan(),
+		"replan":        replan(),
+		"guide":         guideOnce(),
+		"point body":    edited(plan(), func(r *pb.PlanRequest) { r.Body = &pb.Body{} }),
+		"longest route": edited(replan(), func(r *pb.ReplanRequest) { r.Previous.Legs = longRoute(maxRoutePoints, 3) }),
+		"float32 pi":    edited(plan(), func(r *pb.PlanRequest) { r.Goal.GetPose().HeadingRad = float64(float32(math.Pi)) }),
+		"atan2 -pi":     edited(plan(), func(r *pb.PlanRequest) { r.Goal.GetPose().HeadingRad = math.Atan2(math.Copysign(0, -1), -1) }),
+		"big page":      &pb.ListFloorsRequest{PageSize: math.MaxInt32},
+		"deflated":      push(paintCells(&pb.CellBlock{Rect: &pb.CellRect{Columns: 5, Rows: 1}, Encoding: 2, Cells: deflated([]byte{0x98, 0x02})})),
+		"author umlau":  edited(create(), func(r *pb.CreateFloorRequest) { r.Author = strings.Repeat("ü", 100) }),
 	} {
 		if err := validate(m); err != nil {
 			t.Errorf("%s: %v", name, err)

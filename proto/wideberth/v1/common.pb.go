@@ -3,7 +3,9 @@
 // One frame holds for every message: lengths in metres, x to the right, y up,
 // headings in radians counter-clockwise from +x within (-pi, pi], times in
 // seconds. Every coordinate is rounded to the nearest whole micrometre on entry.
-// Radii and margins are rounded up to whole micrometres, clearances down.
+// Radii, margins, widths, tolerances and clearances asked for are rounded up to
+// whole micrometres, clearances and widths answered down. A heading up to 1e-6
+// beyond +-pi, as rounding leaves it, and -pi itself are taken as pi.
 //
 // What the service answers is a planning figure. It is not a safety function:
 // personnel detection, stopping and speed supervision stay with the truck.
@@ -948,7 +950,10 @@ func (x *Station) GetPose() *Pose {
 	return nil
 }
 
-// A named vector shape of the floor's layout.
+// A named vector shape of the floor's layout. Its points lie within the floor's
+// bounds, border included. On the wire it has at most 1 MiB less 4 KiB (1,044,480
+// bytes), so that ReadFloor can send it whole. A floor holds at most 100,000
+// features with 2,000,000 points in all.
 type Feature struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// Unique on its floor: 1 to 63 of a-z, 0-9, '-', '_', '.', '/', first a letter or digit.
@@ -1070,7 +1075,8 @@ func (*Feature_Zone) isFeature_Kind() {}
 
 func (*Feature_Station) isFeature_Kind() {}
 
-// A rectangle of cells. Column 0, row 0 is the cell at the floor's lower left corner.
+// A rectangle of cells, within the floor. Column 0, row 0 is the cell at the floor's
+// lower left corner.
 type CellRect struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// The leftmost column.
@@ -1143,7 +1149,8 @@ func (x *CellRect) GetRows() int32 {
 	return 0
 }
 
-// Cells of a rectangle, one by one.
+// Cells of a rectangle, one by one. All blocks of one patch together hold at most
+// 268,435,456 cells.
 type CellBlock struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// Which cells.
@@ -1314,7 +1321,7 @@ func (*NewestVersion) Descriptor() ([]byte, []int) {
 // not there yet is waited for up to max_wait_s and then NOT_FOUND. at_least asks
 // for the head once it has reached that version; when it has not after
 // max_wait_s, the answer is UNAVAILABLE with RetryInfo. Nothing set means the
-// head at the time of asking.
+// head at the time of asking. This release lets no version go.
 type VersionSelector struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// Which one.

@@ -88,10 +88,11 @@ type FloorSettings struct {
 	Columns int32 `protobuf:"varint,2,opt,name=columns,proto3" json:"columns,omitempty"`
 	// Cells from bottom to top, from 1 to 65,536.
 	Rows int32 `protobuf:"varint,3,opt,name=rows,proto3" json:"rows,omitempty"`
-	// The floor frame's coordinates of the lower left corner of cell (0, 0).
+	// The floor frame's coordinates of the lower left corner of cell (0, 0), each at
+	// most 1e9 m from 0. Not set means (0, 0).
 	Origin *Point `protobuf:"bytes,4,opt,name=origin,proto3" json:"origin,omitempty"`
 	// The largest clearance the service tells apart, from one cell to 250 cells'
-	// length. 0 asks for 5 m or 250 cells, whichever is less.
+	// length. 0 asks for 5 m or 250 cells, whichever is less, but at least one cell.
 	ClearanceCapM float64 `protobuf:"fixed64,5,opt,name=clearance_cap_m,json=clearanceCapM,proto3" json:"clearance_cap_m,omitempty"`
 	// Whether unknown cells count as free. Default: they count as occupied.
 	UnknownIsFree bool `protobuf:"varint,6,opt,name=unknown_is_free,json=unknownIsFree,proto3" json:"unknown_is_free,omitempty"`
@@ -200,7 +201,7 @@ type Floor struct {
 	Head *VersionStamp `protobuf:"bytes,3,opt,name=head,proto3" json:"head,omitempty"`
 	// The oldest version that can still be read.
 	OldestVersion int64 `protobuf:"varint,4,opt,name=oldest_version,json=oldestVersion,proto3" json:"oldest_version,omitempty"`
-	// When it was created.
+	// When it was created. Not set when the journal cannot say any more.
 	CreateTime    *timestamppb.Timestamp `protobuf:"bytes,5,opt,name=create_time,json=createTime,proto3" json:"create_time,omitempty"`
 	unknownFields protoimpl.UnknownFields
 	sizeCache     protoimpl.SizeCache
@@ -317,7 +318,7 @@ func (x *PutFeature) GetFeature() *Feature {
 	return nil
 }
 
-// Takes a feature away. Refused when there is none of that name.
+// Takes a feature away. FAILED_PRECONDITION when there is none of that name.
 type RemoveFeature struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// Its name. REQUIRED.
@@ -447,7 +448,7 @@ type isPaintOccupancy_Paint interface {
 }
 
 type PaintOccupancy_Polygon struct {
-	// Every cell that the polygon's interior meets, to one occupancy.
+	// Every cell whose closed square meets the polygon, to one occupancy.
 	Polygon *PaintPolygon `protobuf:"bytes,1,opt,name=polygon,proto3,oneof"`
 }
 
@@ -467,10 +468,15 @@ func (*PaintOccupancy_Rect) isPaintOccupancy_Paint() {}
 
 func (*PaintOccupancy_Cells) isPaintOccupancy_Paint() {}
 
-// Every cell whose closed square meets the polygon, interior or border.
+// Every cell whose closed square meets the polygon, interior or border. A cell that
+// the polygon only touches is one of them.
+//
+// The work of painting is bounded: all PaintPolygon of one patch together take at
+// most 33,554,432 steps, where a polygon takes one for each row of cells that each
+// of its edges passes, and its rows of cells times its columns of 64 cells.
 type PaintPolygon struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
-	// Where. REQUIRED.
+	// Where, within the floor's bounds. REQUIRED.
 	Polygon *Polygon `protobuf:"bytes,1,opt,name=polygon,proto3" json:"polygon,omitempty"`
 	// To what. REQUIRED.
 	Occupancy     Occupancy `protobuf:"varint,2,opt,name=occupancy,proto3,enum=wideberth.v1.Occupancy" json:"occupancy,omitempty"`
@@ -577,8 +583,9 @@ func (x *PaintRect) GetOccupancy() Occupancy {
 	return Occupancy_OCCUPANCY_UNSPECIFIED
 }
 
-// Empties a rectangle: cells whose open square meets the area become free.
-// Features are left as they are; remove them by name.
+// Empties a rectangle: cells whose open square meets the area become free. An area
+// that only touches a cell leaves it as it is, and one that meets no cell at all
+// is INVALID_ARGUMENT. Features are left as they are; remove them by name.
 type ClearRect struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// Where, in metres. REQUIRED.
@@ -954,7 +961,8 @@ type CreateFloorRequest struct {
 	Settings *FloorSettings `protobuf:"bytes,2,opt,name=settings,proto3" json:"settings,omitempty"`
 	// Who, 1 to 100 characters. REQUIRED.
 	Author string `protobuf:"bytes,3,opt,name=author,proto3" json:"author,omitempty"`
-	// Up to 64 printable ASCII characters; the same id again gives the first answer.
+	// Up to 64 printable ASCII characters, kept in version 1's record. The call may be
+	// sent again with or without it.
 	RequestId     string `protobuf:"bytes,4,opt,name=request_id,json=requestId,proto3" json:"request_id,omitempty"`
 	unknownFields protoimpl.UnknownFields
 	sizeCache     protoimpl.SizeCache
@@ -1274,8 +1282,10 @@ type PushPatchRequest struct {
 	// The change. REQUIRED.
 	Patch *Patch `protobuf:"bytes,2,opt,name=patch,proto3" json:"patch,omitempty"`
 	// Up to 64 printable ASCII characters; the same id again gives the first answer.
+	// Without one, the same patch again is another patch.
 	RequestId string `protobuf:"bytes,3,opt,name=request_id,json=requestId,proto3" json:"request_id,omitempty"`
-	// Check everything, change nothing. Fails wherever the real call would.
+	// Check everything, change nothing. Fails wherever the real call would, but for
+	// a journal that cannot be written.
 	ValidateOnly bool `protobuf:"varint,4,opt,name=validate_only,json=validateOnly,proto3" json:"validate_only,omitempty"`
 	// Accept a base below the head where nothing touched overlaps.
 	AllowRebase   bool `protobuf:"varint,5,opt,name=allow_rebase,json=allowRebase,proto3" json:"allow_rebase,omitempty"`
@@ -1582,8 +1592,9 @@ type GetVersionResponse struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// The record.
 	Version *Version `protobuf:"bytes,1,opt,name=version,proto3" json:"version,omitempty"`
-	// What it was made of. Not set for a created or restored version, nor for a
-	// patch of more than 3 MiB.
+	// What it was made of, as it was taken: outlines in whole micrometres, areas in
+	// whole cells, blocks of cells in whichever encoding is shorter. Not set for a
+	// created or restored version, nor for a patch of more than 3 MiB.
 	Patch         *Patch `protobuf:"bytes,2,opt,name=patch,proto3" json:"patch,omitempty"`
 	unknownFields protoimpl.UnknownFields
 	sizeCache     protoimpl.SizeCache
@@ -1772,7 +1783,7 @@ type CompareVersionsResponse struct {
 	ChangedCells int64 `protobuf:"varint,3,opt,name=changed_cells,json=changedCells,proto3" json:"changed_cells,omitempty"`
 	// Rectangles that hold every changed cell, at most 1,000; neighbours are merged.
 	ChangedAreas []*Area `protobuf:"bytes,4,rep,name=changed_areas,json=changedAreas,proto3" json:"changed_areas,omitempty"`
-	// Features that differ, by name, at most 1,000.
+	// Features that differ, by name, at most 1,000 and at most 3 MiB of them.
 	Features []*FeatureDifference `protobuf:"bytes,5,rep,name=features,proto3" json:"features,omitempty"`
 	// Whether the lists were cut.
 	Truncated     bool `protobuf:"varint,6,opt,name=truncated,proto3" json:"truncated,omitempty"`
@@ -2005,7 +2016,8 @@ type ReadFloorRequest struct {
 	Floor string `protobuf:"bytes,1,opt,name=floor,proto3" json:"floor,omitempty"`
 	// Which version. Not set means the head.
 	Version *VersionSelector `protobuf:"bytes,2,opt,name=version,proto3" json:"version,omitempty"`
-	// Which part. Not set means all. Features that meet it are sent whole.
+	// Which part: the cells whose open square meets it, and the features that meet
+	// it, which are sent whole. Not set means all.
 	Area *Area `protobuf:"bytes,3,opt,name=area,proto3" json:"area,omitempty"`
 	// Leave the cells out.
 	SkipOccupancy bool `protobuf:"varint,4,opt,name=skip_occupancy,json=skipOccupancy,proto3" json:"skip_occupancy,omitempty"`

@@ -42,22 +42,27 @@ const (
 // changes, and history is never rewritten. When PushPatch, RestoreVersion or
 // CreateFloor has returned OK, the version is on disk; a call that failed with
 // UNAVAILABLE, CANCELLED or DEADLINE_EXCEEDED may or may not have been carried
-// out, and sending it again with the same request_id gives the first answer.
+// out. Sending it again with the same request_id gives the first answer; the id
+// of another request is FAILED_PRECONDITION.
 //
 // Reading a version that this server does not hold in memory rebuilds it from
-// the journal. A version older than the journal's oldest snapshot is
-// OUT_OF_RANGE with the oldest version in ErrorInfo. A version above the head is
-// NOT_FOUND (see VersionSelector for waiting).
+// the journal. A version older than Floor.oldest_version is OUT_OF_RANGE with the
+// oldest version in ErrorInfo. A version above the head is NOT_FOUND (see
+// VersionSelector for waiting).
+//
+// A floor whose part of the journal is damaged is not served: every call for it
+// is DATA_LOSS and says what is damaged. The other floors are served.
 //
 // Every failure carries ErrorInfo (domain "wideberth", a stable reason);
 // malformed input is INVALID_ARGUMENT with BadRequest naming the field.
 type FloorServiceClient interface {
 	// Makes a floor, at version 1. ALREADY_EXISTS when the id is taken by other
-	// settings; the same call again gives the first answer.
+	// settings; with the same settings the floor is given as it now stands.
+	// FAILED_PRECONDITION when the server keeps as many floors as it can, 1,000.
 	CreateFloor(ctx context.Context, in *CreateFloorRequest, opts ...grpc.CallOption) (*CreateFloorResponse, error)
 	// One floor and its head. NOT_FOUND when there is none of that id.
 	GetFloor(ctx context.Context, in *GetFloorRequest, opts ...grpc.CallOption) (*GetFloorResponse, error)
-	// All floors, by id.
+	// All floors that are served, by id.
 	ListFloors(ctx context.Context, in *ListFloorsRequest, opts ...grpc.CallOption) (*ListFloorsResponse, error)
 	// Makes a new version by carrying out a list of edits, all or none.
 	//
@@ -72,7 +77,8 @@ type FloorServiceClient interface {
 	GetVersion(ctx context.Context, in *GetVersionRequest, opts ...grpc.CallOption) (*GetVersionResponse, error)
 	// What differs between two versions of a floor.
 	CompareVersions(ctx context.Context, in *CompareVersionsRequest, opts ...grpc.CallOption) (*CompareVersionsResponse, error)
-	// Makes a new version whose content equals an old one.
+	// Makes a new version whose content equals an old one. NOT_FOUND when there is no
+	// such version yet; ABORTED and FAILED_PRECONDITION as for PushPatch.
 	RestoreVersion(ctx context.Context, in *RestoreVersionRequest, opts ...grpc.CallOption) (*RestoreVersionResponse, error)
 	// Occupancy and features of one version, in bounded messages: first a header,
 	// then cells and features, last an end mark with the counts sent. A stream
@@ -81,7 +87,7 @@ type FloorServiceClient interface {
 	// New versions as they appear, and a heartbeat naming the head at least every
 	// two seconds, so that quiet differs from dead. Resumes after any version. A
 	// reader that falls behind is not sent every version: the newest wins, and the
-	// event says how many it skipped.
+	// event says how many it skipped. NOT_FOUND when after_version is above the head.
 	WatchVersions(ctx context.Context, in *WatchVersionsRequest, opts ...grpc.CallOption) (grpc.ServerStreamingClient[WatchVersionsResponse], error)
 }
 
@@ -222,22 +228,27 @@ type FloorService_WatchVersionsClient = grpc.ServerStreamingClient[WatchVersions
 // changes, and history is never rewritten. When PushPatch, RestoreVersion or
 // CreateFloor has returned OK, the version is on disk; a call that failed with
 // UNAVAILABLE, CANCELLED or DEADLINE_EXCEEDED may or may not have been carried
-// out, and sending it again with the same request_id gives the first answer.
+// out. Sending it again with the same request_id gives the first answer; the id
+// of another request is FAILED_PRECONDITION.
 //
 // Reading a version that this server does not hold in memory rebuilds it from
-// the journal. A version older than the journal's oldest snapshot is
-// OUT_OF_RANGE with the oldest version in ErrorInfo. A version above the head is
-// NOT_FOUND (see VersionSelector for waiting).
+// the journal. A version older than Floor.oldest_version is OUT_OF_RANGE with the
+// oldest version in ErrorInfo. A version above the head is NOT_FOUND (see
+// VersionSelector for waiting).
+//
+// A floor whose part of the journal is damaged is not served: every call for it
+// is DATA_LOSS and says what is damaged. The other floors are served.
 //
 // Every failure carries ErrorInfo (domain "wideberth", a stable reason);
 // malformed input is INVALID_ARGUMENT with BadRequest naming the field.
 type FloorServiceServer interface {
 	// Makes a floor, at version 1. ALREADY_EXISTS when the id is taken by other
-	// settings; the same call again gives the first answer.
+	// settings; with the same settings the floor is given as it now stands.
+	// FAILED_PRECONDITION when the server keeps as many floors as it can, 1,000.
 	CreateFloor(context.Context, *CreateFloorRequest) (*CreateFloorResponse, error)
 	// One floor and its head. NOT_FOUND when there is none of that id.
 	GetFloor(context.Context, *GetFloorRequest) (*GetFloorResponse, error)
-	// All floors, by id.
+	// All floors that are served, by id.
 	ListFloors(context.Context, *ListFloorsRequest) (*ListFloorsResponse, error)
 	// Makes a new version by carrying out a list of edits, all or none.
 	//
@@ -252,7 +263,8 @@ type FloorServiceServer interface {
 	GetVersion(context.Context, *GetVersionRequest) (*GetVersionResponse, error)
 	// What differs between two versions of a floor.
 	CompareVersions(context.Context, *CompareVersionsRequest) (*CompareVersionsResponse, error)
-	// Makes a new version whose content equals an old one.
+	// Makes a new version whose content equals an old one. NOT_FOUND when there is no
+	// such version yet; ABORTED and FAILED_PRECONDITION as for PushPatch.
 	RestoreVersion(context.Context, *RestoreVersionRequest) (*RestoreVersionResponse, error)
 	// Occupancy and features of one version, in bounded messages: first a header,
 	// then cells and features, last an end mark with the counts sent. A stream
@@ -261,7 +273,7 @@ type FloorServiceServer interface {
 	// New versions as they appear, and a heartbeat naming the head at least every
 	// two seconds, so that quiet differs from dead. Resumes after any version. A
 	// reader that falls behind is not sent every version: the newest wins, and the
-	// event says how many it skipped.
+	// event says how many it skipped. NOT_FOUND when after_version is above the head.
 	WatchVersions(*WatchVersionsRequest, grpc.ServerStreamingServer[WatchVersionsResponse]) error
 	mustEmbedUnimplementedFloorServiceServer()
 }

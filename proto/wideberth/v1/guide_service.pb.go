@@ -31,7 +31,9 @@ const (
 	GuideState_GUIDE_STATE_CLEAR GuideState = 1
 	// Little room, or off the route: follow the hint.
 	GuideState_GUIDE_STATE_HINTING GuideState = 2
-	// The body does not fit where the robot says it is, or the way ahead is shut.
+	// The body, without its margin, does not fit where the robot says it is (a solid,
+	// a closed zone, off the floor), or the route is shut within its stopping
+	// distance.
 	GuideState_GUIDE_STATE_HOLD GuideState = 3
 	// A newer version touches the rest of the route, or there is no clear way back
 	// to it: ask for a replan. The hint still holds.
@@ -90,10 +92,10 @@ type GuideSetup struct {
 	// the body.
 	Route *Route `protobuf:"bytes,1,opt,name=route,proto3" json:"route,omitempty"`
 	// Hints come on below this clearance, up to the floor's cap. 0 asks for the
-	// route's tight_below_m.
+	// route's tight_below_m, or else its body's preferred clearance.
 	HintBelowM float64 `protobuf:"fixed64,2,opt,name=hint_below_m,json=hintBelowM,proto3" json:"hint_below_m,omitempty"`
-	// Hints go off at or above this clearance, at least hint_below_m. 0 asks for
-	// hint_below_m plus 0.1 m.
+	// Hints go off at or above this clearance, from hint_below_m up to the floor's
+	// cap. 0 asks for hint_below_m plus 0.1 m, or the cap.
 	QuietAboveM float64 `protobuf:"fixed64,3,opt,name=quiet_above_m,json=quietAboveM,proto3" json:"quiet_above_m,omitempty"`
 	// Farther from the route than this is off it, 0.01 to 10 m. 0 asks for 0.3.
 	OffRouteM     float64 `protobuf:"fixed64,4,opt,name=off_route_m,json=offRouteM,proto3" json:"off_route_m,omitempty"`
@@ -431,10 +433,10 @@ type Hint struct {
 	NearestBearingRad float64 `protobuf:"fixed64,7,opt,name=nearest_bearing_rad,json=nearestBearingRad,proto3" json:"nearest_bearing_rad,omitempty"`
 	// The nearest solid's feature; empty when it is a raster cell or the border.
 	NearestFeature string `protobuf:"bytes,8,opt,name=nearest_feature,json=nearestFeature,proto3" json:"nearest_feature,omitempty"`
-	// Free travel of the body's edge straight along the heading, at most the floor's
-	// cap.
+	// Free travel of the body's edge straight along the heading, less the pose's
+	// spread, at most the floor's cap.
 	FreeTravelM float64 `protobuf:"fixed64,9,opt,name=free_travel_m,json=freeTravelM,proto3" json:"free_travel_m,omitempty"`
-	// Advised speed ceiling, m/s.
+	// Advised speed ceiling, m/s; 0 with a hold.
 	SpeedCeilingMps float64 `protobuf:"fixed64,10,opt,name=speed_ceiling_mps,json=speedCeilingMps,proto3" json:"speed_ceiling_mps,omitempty"`
 	// Its cause.
 	SpeedCause SpeedCause `protobuf:"varint,11,opt,name=speed_cause,json=speedCause,proto3,enum=wideberth.v1.SpeedCause" json:"speed_cause,omitempty"`

@@ -29,16 +29,16 @@ const (
 //
 // GuideService gives local-avoidance hints to a robot on its route.
 //
-// Hints are advice from the map, at the newest version of the floor the server
-// has; a pinned version is not possible. The nearest solid is the nearest on the
+// Hints are advice from the map, at the newest version of the floor that is ready
+// (the hint's stamp says which); a pinned version is not possible. The nearest solid is the nearest on the
 // map: what the robot senses itself always comes first. A state that a client
 // does not know means hold. Hold is advice, not a stop command.
 type GuideServiceClient interface {
-	// A stream for one robot: a setup first, then reports at 2 to 20 Hz; each
-	// report answered once, the newest first, none queued: when reports come
-	// faster than they are answered, only the newest is, and its sequence tells
-	// which. A new setup may be sent at any time. INVALID_ARGUMENT when the first
-	// message is not a setup.
+	// A stream for one robot: a setup first, then reports at 2 to 20 Hz. Nothing is
+	// queued: the newest report is answered, once, and one that it overtook before
+	// its turn is not answered at all; the hint's sequence tells which it answers. A
+	// new setup may be sent at any time. INVALID_ARGUMENT when the first message is
+	// not a setup.
 	Guide(ctx context.Context, opts ...grpc.CallOption) (grpc.BidiStreamingClient[GuideRequest, GuideResponse], error)
 	// The same for one report, for gateways that cannot stream.
 	GuideOnce(ctx context.Context, in *GuideOnceRequest, opts ...grpc.CallOption) (*GuideOnceResponse, error)
@@ -81,16 +81,16 @@ func (c *guideServiceClient) GuideOnce(ctx context.Context, in *GuideOnceRequest
 //
 // GuideService gives local-avoidance hints to a robot on its route.
 //
-// Hints are advice from the map, at the newest version of the floor the server
-// has; a pinned version is not possible. The nearest solid is the nearest on the
+// Hints are advice from the map, at the newest version of the floor that is ready
+// (the hint's stamp says which); a pinned version is not possible. The nearest solid is the nearest on the
 // map: what the robot senses itself always comes first. A state that a client
 // does not know means hold. Hold is advice, not a stop command.
 type GuideServiceServer interface {
-	// A stream for one robot: a setup first, then reports at 2 to 20 Hz; each
-	// report answered once, the newest first, none queued: when reports come
-	// faster than they are answered, only the newest is, and its sequence tells
-	// which. A new setup may be sent at any time. INVALID_ARGUMENT when the first
-	// message is not a setup.
+	// A stream for one robot: a setup first, then reports at 2 to 20 Hz. Nothing is
+	// queued: the newest report is answered, once, and one that it overtook before
+	// its turn is not answered at all; the hint's sequence tells which it answers. A
+	// new setup may be sent at any time. INVALID_ARGUMENT when the first message is
+	// not a setup.
 	Guide(grpc.BidiStreamingServer[GuideRequest, GuideResponse]) error
 	// The same for one report, for gateways that cannot stream.
 	GuideOnce(context.Context, *GuideOnceRequest) (*GuideOnceResponse, error)

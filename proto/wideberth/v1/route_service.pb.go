@@ -305,9 +305,11 @@ type RefusalReason int32
 const (
 	// Not said.
 	RefusalReason_REFUSAL_REASON_UNSPECIFIED RefusalReason = 0
-	// The start has less than the required clearance, or lies in a closed zone.
+	// The start has less than the required clearance, or the body there reaches into
+	// a closed zone.
 	RefusalReason_REFUSAL_REASON_START_BLOCKED RefusalReason = 1
-	// The goal has less than the required clearance, or lies in a closed zone.
+	// The goal has less than the required clearance, or the body there reaches into a
+	// closed zone.
 	RefusalReason_REFUSAL_REASON_GOAL_BLOCKED RefusalReason = 2
 	// Every way is too narrow or closed.
 	RefusalReason_REFUSAL_REASON_NO_PASSAGE RefusalReason = 3
@@ -669,12 +671,12 @@ type isPlace_Where interface {
 }
 
 type Place_Pose struct {
-	// A pose in the floor frame.
+	// A pose in the floor frame, on the floor.
 	Pose *Pose `protobuf:"bytes,1,opt,name=pose,proto3,oneof"`
 }
 
 type Place_Station struct {
-	// A station of the planned version, by name.
+	// A station of the planned version, by name. NOT_FOUND when it has none.
 	Station string `protobuf:"bytes,2,opt,name=station,proto3,oneof"`
 }
 
@@ -701,7 +703,9 @@ type PlanOptions struct {
 	// own bound. When it runs out the answer is a refusal saying so.
 	TimeBudgetS float64 `protobuf:"fixed64,6,opt,name=time_budget_s,json=timeBudgetS,proto3" json:"time_budget_s,omitempty"`
 	// The most metres between two points of the route, 0.05 or more. 0 sends
-	// points only where the route bends, a leg begins or clearance is smallest.
+	// points only where the route bends, a leg begins, clearance is smallest or a
+	// speed limit begins or ends. INVALID_ARGUMENT when the route would have more
+	// than 100,000 points.
 	MaxSpacingM   float64 `protobuf:"fixed64,7,opt,name=max_spacing_m,json=maxSpacingM,proto3" json:"max_spacing_m,omitempty"`
 	unknownFields protoimpl.UnknownFields
 	sizeCache     protoimpl.SizeCache
@@ -1281,7 +1285,9 @@ func (x *Bound) GetClearanceShortM() float64 {
 	return 0
 }
 
-// A way for a body, checked against one version.
+// A way for a body, checked against one version. A route that is handed back (to
+// Replan, to GuideService) has at most 100,000 points in 10,000 legs, the joints
+// of its legs counted once.
 type Route struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// The same for the same question on the same version.
@@ -1556,7 +1562,10 @@ func (x *BlockedEnd) GetBearingRad() float64 {
 	return 0
 }
 
-// The narrowest place on the widest way.
+// The narrowest place on the widest way. It is what stops the body when width_m is
+// below width_needed_m, unless zone is set. With a roadmap asked for by name, or
+// keep_roadmap_path, it may be no narrower than needed: the body fits, but that
+// roadmap misses the passage (see Bound.width_bias_m).
 type Bottleneck struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// Whether there is any way at all, however narrow.
@@ -1962,7 +1971,7 @@ type ReplanResponse struct {
 	//	*ReplanResponse_Route
 	//	*ReplanResponse_Refusal
 	Outcome isReplanResponse_Outcome `protobuf_oneof:"outcome"`
-	// How much the search did; all zero when a certificate made it unnecessary.
+	// How much the search did; expanded is zero when none was needed.
 	Counters *SearchCounters `protobuf:"bytes,6,opt,name=counters,proto3" json:"counters,omitempty"`
 	// Where a change cuts the old route, metres along it. Only for REPLAN_CAUSE_CUT.
 	CutSM         float64 `protobuf:"fixed64,7,opt,name=cut_s_m,json=cutSM,proto3" json:"cut_s_m,omitempty"`

@@ -47,7 +47,8 @@ type RouteServiceClient interface {
 	Plan(ctx context.Context, in *PlanRequest, opts ...grpc.CallOption) (*PlanResponse, error)
 	// A route for a robot that has one: the old route is kept where it can be,
 	// trimmed to the pose; otherwise a new one is planned. Never dearer than a
-	// fresh plan on the same version.
+	// fresh plan on the same version, but for switch_share. An old route that is
+	// still clear is also kept when the time budget runs out.
 	Replan(ctx context.Context, in *ReplanRequest, opts ...grpc.CallOption) (*ReplanResponse, error)
 }
 
@@ -103,7 +104,8 @@ type RouteServiceServer interface {
 	Plan(context.Context, *PlanRequest) (*PlanResponse, error)
 	// A route for a robot that has one: the old route is kept where it can be,
 	// trimmed to the pose; otherwise a new one is planned. Never dearer than a
-	// fresh plan on the same version.
+	// fresh plan on the same version, but for switch_share. An old route that is
+	// still clear is also kept when the time budget runs out.
 	Replan(context.Context, *ReplanRequest) (*ReplanResponse, error)
 	mustEmbedUnimplementedRouteServiceServer()
 }
