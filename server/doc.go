@@ -59,7 +59,7 @@
 //
 //	message               level  fields
 //	call                  info   grpc.service, grpc.method, grpc.code, grpc.time_ms, request_id, peer.address, floor, map_version, error; cause from warn on
-//	serving, draining     info   address; within
+//	serving, draining     info   address; within_s
 //	store opened          info   floors, versions, replayed, refused
 //	recovery note         warn   note: what opening the store found wrong and did about it
 //	floor refused         error  floor, error: its records are damaged, its calls are DATA_LOSS, the others are served

@@ -95,7 +95,7 @@ func (s *Server) finish(ctx context.Context, r *callRecord, method string, start
 		line.Int64("map_version", version)
 	}
 	if err != nil {
-		line.Str("error", cut(err.Error(), maxMessageText))
+		line.Str("error", cut(status.Convert(err).Message(), maxMessageText))
 		if cause := errors.Unwrap(err); cause != nil && level >= zerolog.WarnLevel {
 			line.AnErr("cause", cause)
 		}

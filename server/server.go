@@ -121,7 +121,7 @@ func (s *Server) Serve(ctx context.Context, lis net.Listener) error {
 	select {
 	case err = <-ended: // the listener failed
 	case <-ctx.Done():
-		s.log.Info().Dur("within", s.cfg.DrainTimeout).Msg("draining")
+		s.log.Info().Float64("within_s", s.cfg.DrainTimeout.Seconds()).Msg("draining")
 	}
 	cut := s.stop()
 	if err == nil {

@@ -57,7 +57,10 @@ func NewCommand() *cobra.Command {
 		Long: `Play one night on a fictional cut-flower auction hall: start a server on a loopback
 port, push the hall's layout, plan a route, change the floor at 02:00, plan anew,
 be guided through the tight places, and be refused at a door that is too narrow.
-Everything is kept in temporary files. Pictures of it are written as SVG.`,
+Everything is kept in temporary files. Pictures of it are written as SVG.
+
+The floor and the night are made up. The figures are the service's: planning
+figures, checked against versions of that floor, and no safety function.`,
 		Args: cobra.NoArgs,
 		RunE: func(cmd *cobra.Command, _ []string) error { return Run(cmd.Context(), o, cmd.OutOrStdout()) },
 	}

@@ -73,7 +73,7 @@ func (s *story) tell(ctx context.Context) error {
 	s.say.line("A wideberth server listens on %s, its journal in a temporary file.", s.address)
 	for _, b := range []*wideberthv1.Body{s.tug, s.runner} {
 		s.say.line("  %-6s  radius %.2f m, margin %.2f m: needs %.2f m of width, prefers %.2f m of clearance",
-			b.Name, b.RadiusM, b.MarginM, 2*(b.RadiusM+b.MarginM), b.PreferredClearanceM)
+			b.Name, b.RadiusM, b.MarginM, up(2*(b.RadiusM+b.MarginM)), b.PreferredClearanceM)
 	}
 
 	head, err := s.commission(ctx)
@@ -277,7 +277,7 @@ func (s *story) coldRoom(ctx context.Context) error {
 	b := refusal.GetBottleneck()
 	s.say.line("  The tug is refused: %s", refusal.GetExplanation())
 	s.say.line("    narrowest place %.2f m at x %.2f, y %.2f between %s; it needs %.2f m.", down(b.GetWidthM()),
-		b.GetAt().GetXM(), b.GetAt().GetYM(), list(b.GetFeatures()), b.GetWidthNeededM())
+		b.GetAt().GetXM(), b.GetAt().GetYM(), list(b.GetFeatures()), up(b.GetWidthNeededM()))
 	return s.draw(ctx, "refused.svg", scene{
 		title: "The tug is refused at cold room 1", caption: "From the tribune, through a door of 0.90 m", version: resp.GetStamp().GetVersion(),
 		refusal: refusal, body: s.tug, start: s.station("tribune"), goal: s.station("cold-1"),

@@ -107,6 +107,9 @@ func length(d time.Duration) string {
 // down cuts a clearance to centimetres: printed, it is never more than it is.
 func down(m float64) float64 { return math.Floor(m*100+1e-6) / 100 }
 
+// up raises a width that is needed to centimetres: printed, it is never less than it is.
+func up(m float64) float64 { return math.Ceil(m*100-1e-6) / 100 }
+
 func degrees(rad float64) float64 { return rad * 180 / math.Pi }
 
 func list(names []string) string {

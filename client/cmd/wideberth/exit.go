@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"maps"
 	"slices"
+	"strings"
 
 	"google.golang.org/grpc/codes"
 	"google.golang.org/grpc/status"
@@ -70,6 +71,16 @@ func exitCode(err error) int {
 	return exitFailure
 }
 
+// words is what went wrong without gRPC's own preamble; the reason is told beside it.
+func words(err error) string {
+	var inner interface{ GRPCStatus() *status.Status }
+	if !errors.As(err, &inner) {
+		return err.Error()
+	}
+	st := inner.GRPCStatus()
+	return strings.Replace(err.Error(), st.Err().Error(), st.Message(), 1)
+}
+
 // report tells stderr what went wrong, with what the service said about it, and
 // gives the exit code.
 func (a *app) report(err error) int {
@@ -82,19 +93,31 @@ func (a *app) report(err error) int {
 		a.notef("Run wideberth help, or a command with --help.")
 		return code
 	}
-	a.notef("wideberth: %v", err)
-	for _, p := range client.FieldProblems(err) {
-		a.notef("  %s: %s", p.Field, p.Problem)
+	a.notef("wideberth: %s", words(err))
+	if all := client.FieldProblems(err); len(all) > 1 { // the message names the first
+		for _, p := range all {
+			a.notef("  %s: %s", p.Field, p.Problem)
+		}
 	}
-	if reason, md := client.ReasonOf(err); reason != "" {
+	reason, md := client.ReasonOf(err)
+	if reason != "" {
 		a.notef("  reason: %s", reason)
 		for _, k := range slices.Sorted(maps.Keys(md)) {
-			a.notef("  %s: %s", k, md[k])
+			values := strings.Split(md[k], "; ") // conflicts, one after the other
+			if len(values) == 1 {
+				a.notef("  %s: %s", k, md[k])
+				continue
+			}
+			a.notef("  %s:", k)
+			for _, v := range values {
+				a.notef("    %s", v)
+			}
 		}
 	}
 	switch code {
 	case exitConflict:
-		a.notef("The floor has changed since that base. Look at what changed, then push again on the new head.")
+		a.notef("The floor has changed since that base. See what changed, then push again on the new head:")
+		a.notef("  wideberth compare %s %s", md["floor"], md["base_version"])
 	case exitUnreachable:
 		if status.Code(err) == codes.Unavailable {
 			a.notef("Is the server running at %s? A refused TLS certificate looks the same from here.", a.server)

@@ -98,7 +98,7 @@ func (a *app) createFloor() *cobra.Command {
 		set                           wideberthv1.FloorSettings
 	)
 	cmd := &cobra.Command{
-		Use:   "create FLOOR",
+		Use:   "create [FLOOR]",
 		Short: "Create a floor, from a description or from flags",
 		Long: "Create a floor at version 1. With --from the settings come from a floor description\n" +
 			"(YAML), whose layout is then pushed; FLOOR may be left out and is then the\n" +

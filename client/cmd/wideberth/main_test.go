@@ -146,9 +146,12 @@ func TestPlanRefusedExits6AndSaysWhy(t *testing.T) {
 	t.Parallel()
 	x := hall(t)
 	// 0.65 m does not fit a door of 1.2 m.
-	code, out, _ := x.run("plan", "hall", "--from", "dock-1", "--to", "dock-2", "--radius", "0.65", "--picture", filepath.Join(x.dir, "no.svg"))
+	code, out, errs := x.run("plan", "hall", "--from", "dock-1", "--to", "dock-2", "--radius", "0.65", "--picture", filepath.Join(x.dir, "no.svg"))
 	if code != exitRefused {
 		t.Errorf("exit code %d, want %d", code, exitRefused)
+	}
+	if !strings.Contains(errs, "no safety function") {
+		t.Errorf("refusal without its caution on stderr: %q", errs)
 	}
 	for _, want := range []string{"no passage", "width needed", "1.300 m"} {
 		if !strings.Contains(out, want) {
@@ -238,17 +241,18 @@ func TestStaleBaseExits4(t *testing.T) {
 	}
 	by := []string{"--author", "night shift", "--reason", "cones"}
 	code, _, errs := x.run(append([]string{"push", "hall", patch("cone-1", 2)}, by...)...)
-	if code != exitOK || !strings.Contains(errs, "base: the head, version 2") {
-		t.Fatalf("exit code %d, %s; want the default base said", code, errs)
+	if code != exitOK || !strings.Contains(errs, "base: the head, version 2") || !strings.Contains(errs, "wideberth restore hall 2 ") {
+		t.Fatalf("exit code %d, %s; want the default base said, and the way back", code, errs)
 	}
 	stale := append([]string{"push", "hall", patch("cone-1", 2.1), "--base", "2"}, by...)
 	code, out, errs := x.run(stale...)
-	if code != exitConflict || out != "" || !strings.Contains(errs, "push again on the new head") {
+	if code != exitConflict || out != "" || !strings.Contains(errs, "push again on the new head") ||
+		!strings.Contains(errs, "wideberth compare hall 2\n") || strings.Contains(errs, "rpc error") {
 		t.Errorf("stale base: exit code %d, stdout %q, stderr %q", code, out, errs)
 	}
 	// Elsewhere it may be rebased, where it was touched it may not.
-	if code, _, errs = x.run(append([]string{"push", "hall", patch("cone-2", 6), "--base", "2", "--allow-rebase"}, by...)...); code != exitOK {
-		t.Errorf("rebase of what does not overlap: exit code %d, %s", code, errs)
+	if code, _, errs = x.run(append([]string{"push", "hall", patch("cone-2", 6), "--base", "2", "--allow-rebase"}, by...)...); code != exitOK || strings.Contains(errs, "restore") {
+		t.Errorf("rebase of what does not overlap: exit code %d, %s; want no way back that undoes cone-1 too", code, errs)
 	}
 	if code, _, _ = x.run(append(stale, "--allow-rebase")...); code != exitConflict {
 		t.Errorf("rebase of what overlaps: exit code %d, want %d", code, exitConflict)
@@ -459,6 +463,11 @@ func TestClearancesAreRoundedDown(t *testing.T) {
 	for in, want := range map[float64]string{0.45: "0.450", 0.449999: "0.449", 0.4499999999: "0.450", 1.2345: "1.234", 0: "0.000", 0.0009: "0.000", 0.29: "0.290"} {
 		if got := down(in); got != want {
 			t.Errorf("down(%v) = %s, want %s", in, got, want)
+		}
+	}
+	for in, want := range map[float64]string{0.45: "0.450", 0.450001: "0.451", 0.4500000001: "0.450", 1.2345: "1.235", 0: "0.000", 0.29: "0.290"} {
+		if got := up(in); got != want {
+			t.Errorf("up(%v) = %s, want %s", in, got, want)
 		}
 	}
 }

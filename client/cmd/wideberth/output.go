@@ -96,6 +96,12 @@ func down(m float64) string {
 	return strconv.FormatFloat(mm/1e3, 'f', 3, 64)
 }
 
+// up writes a length that is needed to the millimetre, rounded up.
+func up(m float64) string {
+	mm := math.Ceil(math.Round(m*1e6) / 1e3)
+	return strconv.FormatFloat(mm/1e3, 'f', 3, 64)
+}
+
 func at(p *wideberthv1.Point) string {
 	return metres(p.GetXM()) + "," + metres(p.GetYM())
 }

@@ -28,7 +28,12 @@ func (a *app) plan() *cobra.Command {
 		Short: "Ask for a route",
 		Long: "Ask for a route and print its legs: how long, how tight and where. Ends are stations,\n" +
 			"or x,y or x,y,heading in metres and radians. The body comes from flags, or from a\n" +
-			"file with a Body message in JSON, which flags go before.",
+			"file with a Body message in JSON, which flags go before.\n\n" +
+			"What it prints is a planning figure, checked against a version of the map, and no\n" +
+			"safety function: people and loose loads are not on the map.",
+		Example: "  wideberth plan hall --from dock-3 --to cold-3 --radius 0.58 --margin 0.07\n" +
+			"  wideberth plan hall --from 12,8 --to cold-3 --body tug.json --picture route.svg\n" +
+			"  wideberth plan hall --from dock-3 --to cold-3 --radius 0.58 --version 41   # as it was then",
 		Args: cobra.ExactArgs(1),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			req, err := p.request(cmd, args[0])
@@ -48,6 +53,7 @@ func (a *app) plan() *cobra.Command {
 				if err != nil {
 					return err
 				}
+				a.caution(resp.GetStamp().GetVersion())
 				if p.picture != "" {
 					if err := a.drawPlan(cmd, c, p, req, resp); err != nil {
 						return fmt.Errorf("picture: %w", err)
@@ -56,9 +62,6 @@ func (a *app) plan() *cobra.Command {
 				if resp.GetRoute() == nil {
 					return errRefused
 				}
-				a.notef("A planning figure, checked against version %d of the map and no safety function: people and\n"+
-					"loose loads are not on the map; detecting people, stopping and supervising speed stay with the truck.",
-					resp.GetStamp().GetVersion())
 				return nil
 			})
 		},
@@ -82,6 +85,12 @@ func (a *app) plan() *cobra.Command {
 	f.StringVar(&p.picture, "picture", "", "draw the answer as SVG into this `file`")
 	cmd.MarkFlagsMutuallyExclusive("shortest", "balanced", "preference")
 	return cmd
+}
+
+// caution says beside every answer what it is not.
+func (a *app) caution(version int64) {
+	a.notef("A planning figure, checked against version %d of the map and no safety function: people and\n"+
+		"loose loads are not on the map; detecting people, stopping and supervising speed stay with the truck.", version)
 }
 
 // request makes the request that the flags ask for.
@@ -147,14 +156,18 @@ func (a *app) printPlan(resp *wideberthv1.PlanResponse) error {
 		return a.table(append([][]string{on}, refusalRows(r)...)...)
 	}
 	r := resp.GetRoute()
-	if err := a.table(on,
-		[]string{"route", r.GetRouteId()},
-		[]string{"length", metres(r.GetLengthM()) + " m"},
-		[]string{"time", fmt.Sprintf("%.1f s at the advised speed ceilings", r.GetDurationS())},
-		[]string{"smallest clearance", fmt.Sprintf("%s m at %s", down(r.GetSmallestClearanceM()), at(r.GetSmallestAt()))},
-		[]string{"no route is below", down(r.GetBound().GetLowerBoundM()) + " m"},
-		[]string{"expanded", number(resp.GetCounters().GetExpanded())},
-	); err != nil {
+	about := [][]string{on,
+		{"route", r.GetRouteId()},
+		{"length", metres(r.GetLengthM()) + " m"},
+		{"time", fmt.Sprintf("%.1f s at the advised speed ceilings", r.GetDurationS())},
+		{"smallest clearance", fmt.Sprintf("%s m at %s", down(r.GetSmallestClearanceM()), at(r.GetSmallestAt()))},
+		{"none is shorter than", down(r.GetBound().GetLowerBoundM()) + " m"},
+	}
+	if bias := r.GetBound().GetWidthBiasM(); bias > 0 {
+		about = append(about, []string{"may have missed", fmt.Sprintf("passages up to %s m wider than needed", up(bias))})
+	}
+	about = append(about, []string{"nodes opened", number(resp.GetCounters().GetExpanded())})
+	if err := a.table(about...); err != nil {
 		return err
 	}
 	rows := [][]string{{"LEG", "KIND", "LENGTH", "SMALLEST", "AT", "LEFT", "RIGHT", "CEILING", "CAUSE", "NEAREST"}}
@@ -183,7 +196,7 @@ func refusalRows(r *wideberthv1.Refusal) [][]string {
 		rows = append(rows,
 			[]string{"at", at(e.GetAt())},
 			[]string{"clearance there", down(e.GetClearanceM()) + " m"},
-			[]string{"clearance needed", metres(e.GetRequiredClearanceM()) + " m"})
+			[]string{"clearance needed", up(e.GetRequiredClearanceM()) + " m"})
 		if e.GetClosedZone() != "" {
 			rows = append(rows, []string{"closed zone", e.GetClosedZone()})
 		}
@@ -202,7 +215,7 @@ func refusalRows(r *wideberthv1.Refusal) [][]string {
 			rows = append(rows,
 				[]string{"bottleneck", at(b.GetAt())},
 				[]string{"width there", down(b.GetWidthM()) + " m"},
-				[]string{"width needed", metres(b.GetWidthNeededM()) + " m"})
+				[]string{"width needed", up(b.GetWidthNeededM()) + " m"})
 		}
 		if len(b.GetFeatures()) > 0 {
 			rows = append(rows, []string{"between", strings.Join(b.GetFeatures(), " and ")})

@@ -24,6 +24,9 @@ func (a *app) push() *cobra.Command {
 			"\"frame\": \"floor-metres\". With --change FILE is a floor description (YAML) and the\n" +
 			"named change in it is pushed. Flags go before what the file says. A change that does\n" +
 			"not fit one message becomes several versions, printed one after the other.",
+		Example: "  wideberth push hall spill.geojson --author shift --reason \"spill by dock 3\" --dry-run\n" +
+			"  wideberth push hall spill.geojson --author shift --reason \"spill by dock 3\"\n" +
+			"  wideberth push hall hall.yaml --change two-o-clock --author shift",
 		Args: cobra.ExactArgs(2),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			patches, err := readPatches(args[1], change)
@@ -61,7 +64,7 @@ func (a *app) push() *cobra.Command {
 					first.BaseVersion = f.GetHead().GetVersion()
 					a.notef("base: the head, version %d", first.BaseVersion)
 				}
-				base := first.BaseVersion
+				base, repeated := first.BaseVersion, false
 				for _, p := range patches {
 					p.BaseVersion = base
 					resp, err := c.PushPatch(cmd.Context(), &wideberthv1.PushPatchRequest{
@@ -70,10 +73,14 @@ func (a *app) push() *cobra.Command {
 					if err != nil {
 						return fmt.Errorf("push to floor %q: %w", args[0], err)
 					}
-					base = resp.GetVersion().GetStamp().GetVersion()
+					base, repeated = resp.GetVersion().GetStamp().GetVersion(), repeated || resp.GetRepeatedRequest()
 					if err := a.printPushed(resp, dryRun); err != nil {
 						return err
 					}
+				}
+				// Versions that came between would be taken back too: no hint then.
+				if !dryRun && !repeated && base == first.BaseVersion+int64(len(patches)) {
+					a.notef("To take it back, while nothing newer is there: wideberth restore %s %d --author WHO --reason WHY", args[0], first.BaseVersion)
 				}
 				return nil
 			})

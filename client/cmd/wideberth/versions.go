@@ -31,6 +31,9 @@ func (a *app) versions() *cobra.Command {
 						break
 					}
 				}
+				if n := len(all.Versions); n > 0 && all.Versions[n-1].GetStamp().GetVersion() > 1 {
+					a.notef("There are older versions; --limit 0 lists all.")
+				}
 				if a.json() {
 					return a.message(all)
 				}
@@ -125,7 +128,12 @@ func (a *app) restore() *cobra.Command {
 	cmd := &cobra.Command{
 		Use:   "restore FLOOR VERSION",
 		Short: "Make a new version equal to an old one",
-		Args:  cobra.ExactArgs(2),
+		Long: "Make a new version whose content equals an old one. Nothing is rewritten: the versions\n" +
+			"between stay on record, but whatever they changed is taken back.",
+		Example: "  wideberth versions hall\n" +
+			"  wideberth compare hall 41\n" +
+			"  wideberth restore hall 41 --author shift --reason \"spill is dry\"",
+		Args: cobra.ExactArgs(2),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			version, err := versionArg("VERSION", args[1])
 			if err != nil {

@@ -31,6 +31,9 @@ func (a *app) watch() *cobra.Command {
 				if _, err := c.GetFloor(cmd.Context(), args[0]); err != nil {
 					return err
 				}
+				if !a.json() {
+					a.notef("%s", strings.Join(versionHead, "  "))
+				}
 				seen, down := 0, false
 				for ev, err := range c.Watch(cmd.Context(), args[0], after) {
 					switch {

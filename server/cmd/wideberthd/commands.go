@@ -47,6 +47,15 @@ func newRoot(environ []string) *cobra.Command {
 		Short:         "Plans paths for mobile robots on versioned floor maps",
 		SilenceUsage:  true,
 		SilenceErrors: true,
+		Args: func(_ *cobra.Command, args []string) error {
+			if len(args) > 0 {
+				return &usageError{fmt.Errorf("unknown command %q; wideberthd --help lists them", args[0])}
+			}
+			return nil
+		},
+		RunE: func(*cobra.Command, []string) error {
+			return &usageError{errors.New("no command; wideberthd --help lists them")}
+		},
 	}
 	root.SetFlagErrorFunc(func(_ *cobra.Command, err error) error { return &usageError{err} })
 	root.AddCommand(newServe(environ), newHealthcheck(), demo.NewCommand(), newVersion())

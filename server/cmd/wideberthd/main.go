@@ -41,7 +41,7 @@ func run() int {
 	if err == nil {
 		return 0
 	}
-	fmt.Fprintln(os.Stderr, err)
+	fmt.Fprintf(os.Stderr, "wideberthd: %v\n", err)
 	return exitCode(err)
 }
 

@@ -104,6 +104,8 @@ func TestUsage(t *testing.T) {
 		args []string
 		says string
 	}{
+		{nil, "wideberthd: no command"},
+		{[]string{"fly"}, `unknown command "fly"`},
 		{[]string{"serve", "--no-such"}, "no-such"},
 		{[]string{"serve", "extra"}, `"extra"`},
 		{[]string{"serve", "--planners", "many"}, "planners"},
