@@ -86,10 +86,18 @@ func (noSnapshots) Latest(_ ctx, _ string, _ int64) (s journal.Snapshot, ok bool
 func TestLaw2OrderDecides(t *testing.T) {
 	r := seeded(t)
 	disk := new(memjournal.Storage)
-	s := openStore(t, disk.Open(), mapstore.Options{SnapshotEvery: 9})
+	j := disk.Open()
+	s := openStore(t, j, mapstore.Options{SnapshotEvery: 9})
 	for _, id := range []string{"hall", "dock"} {
 		create(t, s, id)
 		grow(t, s, id, r, 150)
+		// Snapshots are written in the background, and Close gives up what is not
+		// written yet.
+		for ok := false; !ok; time.Sleep(time.Millisecond) {
+			var err error
+			_, ok, err = j.Latest(t.Context(), id, 151)
+			must(t, err)
+		}
 	}
 	must(t, s.Close())
 
