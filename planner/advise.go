@@ -32,6 +32,7 @@ func (w *World) Advise(s GuideSetup, r GuideReport) Hint {
 		return Hint{Explanation: why, SpeedCause: CauseRoom}
 	}
 	g := guide{w: w, s: &s, r: &r, j: judge.New(w.field, w.rules, s.Body.Required(), s.Body.RadiusUm)}
+	g.j.Ends = [2]geom.Point{r.Pose.At, s.Route[len(s.Route)-1]}
 	return g.hint()
 }
 
@@ -130,14 +131,25 @@ func (g *guide) shutAhead(on spot) (bool, float64) {
 	v := math.Abs(g.r.Speed)
 	reach := float64(b.RadiusUm) + geom.UmPerMetre*(float64(v*b.Reaction)+float64(v*v)/(2*b.Braking))
 	end, last := ahead(g.s.Route, on.s+reach)
-	pts := []geom.Point{on.at}
-	for i := on.piece + 1; i <= last; i++ {
-		pts = append(pts, g.s.Route[i])
-	}
 	j := *g.j
-	j.NeedUm = max(b.RadiusUm, judge.LeastNeedUm)
-	s, all := clearFor(&j, append(pts, end))
-	return !all, on.s + s
+	j.NeedUm = b.RadiusUm
+	r := g.s.Route
+	j.Ends = [2]geom.Point{r[0], r[len(r)-1]}
+	at, s := on.at, on.s
+	for i := on.piece; i <= last; i++ {
+		to := r[i+1]
+		if i == last {
+			to = end
+		}
+		if !j.Sight(r[i], r[i+1]) { // else any part of it is clear, too
+			if n, all := clearFor(&j, []geom.Point{at, to}); !all {
+				return true, s + n
+			}
+		}
+		s += geom.Dist(at, to)
+		at = to
+	}
+	return false, s
 }
 
 // rejoin is where to go back to the route: the farthest place ahead within reach that a

@@ -71,8 +71,15 @@ type gate struct {
 // widest finds the widest way and widens it; nil when there is none.
 func (t *task) widest(ctx context.Context, r *rules.Rules) (*gate, error) {
 	q := &roadmap.WideQuery{
-		Frame: t.w.frame, Field: t.w.field, Rules: r, RadiusUm: t.q.Body.RadiusUm, NeedUm: t.j.NeedUm,
+		Frame: t.w.frame, Field: t.w.field, Rules: r, RadiusUm: t.q.Body.RadiusUm, NeedUm: max(1, t.j.NeedUm),
 		From: t.q.Start.At, To: t.q.Goal.At, Count: &t.search, Exact: &t.j.Exacts,
+	}
+	if t.j.NeedUm == 0 { // for a point nothing is narrow
+		j := *t.j
+		if r == nil {
+			j.Rules = new(rules.Rules)
+		}
+		q.Passes = j.Sight
 	}
 	if t.shut == roadmap.ToShut { // from the end that has less about it
 		q.From, q.To, q.Backward = q.To, q.From, true

@@ -29,8 +29,8 @@
 // enough; a named roadmap keeps its bias, and its refusal then shows a Bottleneck
 // no narrower than needed.
 //
-// A required clearance of 0 means a point that keeps 1 µm off solids: it does not slip
-// between two that touch.
+// A required clearance of 0 means a point: it may touch solids, slide along them and turn at
+// their corners, but not pass between two that touch (package touch).
 //
 // Before it is given, every route is gone over by package check, which shares
 // nothing with any of this. Should they disagree, the answer is a *CheckError.

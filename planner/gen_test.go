@@ -92,9 +92,9 @@ func drawEdits(t *rapid.T, s floor.Settings, b geom.Rect, zones bool) []floor.Ed
 }
 
 func drawBody(t *rapid.T, s floor.Settings) planner.Body {
-	b := planner.Body{
-		RadiusUm: rapid.Int64Range(0, 6*s.ResolutionUm).Draw(t, "radius"),
-		MarginUm: rapid.Int64Range(0, 2*s.ResolutionUm).Draw(t, "margin"),
+	b := planner.Body{ // now and then a point
+		RadiusUm: max(0, rapid.Int64Range(-s.ResolutionUm, 6*s.ResolutionUm).Draw(t, "radius")),
+		MarginUm: max(0, rapid.Int64Range(-s.ResolutionUm, 2*s.ResolutionUm).Draw(t, "margin")),
 		MaxSpeed: 1.5, Braking: 0.5, Reaction: 0.3,
 		SensingUm: rapid.SampledFrom([]int64{0, 700_000, 4_000_000}).Draw(t, "sensing"),
 	}
@@ -130,7 +130,7 @@ func drawScene(t *rapid.T, zones bool) scene {
 	stand := func(label string) geom.Point {
 		p := drawPoint(t, b, label)
 		for range 6 { // mostly somewhere free
-			if bruteDist(f, p) >= float64(max(1, bd.Required())) {
+			if bruteDist(f, p) >= float64(bd.Required()) {
 				break
 			}
 			p = drawPoint(t, b, label)

@@ -48,7 +48,7 @@ func TestLaw5ClearanceNeverOverstated(t *testing.T) {
 		if a.Route == nil {
 			return
 		}
-		need := float64(max(1, sc.q.Body.Required()))
+		need := float64(sc.q.Body.Required())
 		for _, l := range a.Route.Legs {
 			for i, p := range l.Points {
 				d := bruteDist(sc.m, p.At)

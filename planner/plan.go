@@ -48,6 +48,7 @@ func (w *World) task(q Request) (*task, error) {
 	}
 	b := q.Body
 	t := &task{w: w, q: q, j: judge.New(w.field, w.rules, b.Required(), b.RadiusUm)}
+	t.j.Ends = [2]geom.Point{q.Start.At, q.Goal.At}
 	t.free = w.masks.Mask(mask.Key{Um: b.Required(), RadiusUm: b.RadiusUm, Zones: true})
 	if q.Options.Preference == Balanced && q.Options.TightWeight > 0 {
 		t.j.Weight, t.j.WideUm = q.Options.TightWeight, float64(b.PreferredUm)

@@ -140,13 +140,13 @@ func TestLaw9RobotAlwaysLearns(t *testing.T) {
 		if a.Route != nil {
 			return
 		}
-		need := float64(max(1, sc.q.Body.Required()))
+		need := float64(sc.q.Body.Required())
 		switch r := a.Refusal; r.Reason {
 		case planner.StartBlocked, planner.GoalBlocked:
 			if r.Blocked == nil {
 				t.Fatal("blocked end is not described")
 			}
-			if r.Blocked.ClosedZone == "" && bruteDist(sc.m, r.Blocked.At) >= need && sc.m.Bounds().Contains(r.Blocked.At) {
+			if r.Blocked.ClosedZone == "" && bruteDist(sc.m, r.Blocked.At) >= max(1, need) && sc.m.Bounds().Contains(r.Blocked.At) {
 				t.Fatalf("%v is said to be blocked", r.Blocked.At)
 			}
 			if r.Blocked.HasFree && bruteDist(sc.m, r.Blocked.NearestFree) < need-slackUm {

@@ -30,8 +30,10 @@ type Finding struct {
 }
 
 // Way checks a polyline of two or more points: every point of it is on the floor, keeps
-// needUm from every solid, and radiusUm (at least 1 µm) from every closed zone,
-// and none of its pieces goes backward in a one-way zone. Time is proportional to
+// needUm from every solid, and radiusUm from every closed zone, and none of its pieces
+// goes backward in a one-way zone. Where needUm is 0 solids, and where radiusUm is 0
+// closed zones, may be touched, but neither entered nor passed between where two
+// touch. Time is proportional to
 // the cells within the smallest distance found, 64 at a time, plus the features.
 func Way(m *floor.Map, pts []geom.Point, needUm, radiusUm int64) Finding {
 	if len(pts) == 1 {
@@ -53,7 +55,7 @@ func Way(m *floor.Map, pts []geom.Point, needUm, radiusUm int64) Finding {
 			f.Problem = fmt.Sprintf("piece %d comes within %.3f µm of %s; %d µm are needed", i-1, d, what, needUm)
 			return f
 		}
-		if z := w.enters(a, b, float64(max(radiusUm, 1))); z != "" {
+		if z := w.enters(a, b, float64(radiusUm)); z != "" {
 			f.Problem = fmt.Sprintf("piece %d comes too near to the closed zone %s", i-1, z)
 			return f
 		}
@@ -61,6 +63,9 @@ func Way(m *floor.Map, pts []geom.Point, needUm, radiusUm int64) Finding {
 			f.Problem = fmt.Sprintf("piece %d goes backward in the one-way zone %s", i-1, z)
 			return f
 		}
+	}
+	if needUm == 0 || radiusUm == 0 {
+		f.Problem = w.point(pts, needUm == 0, radiusUm == 0)
 	}
 	return f
 }

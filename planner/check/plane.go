@@ -99,8 +99,8 @@ func shapeDistance(s floor.Shape, a, b geom.Point) float64 {
 	return max(0, d-s.Grow)
 }
 
-// insideShares gives the shares of ab that lie in a polygon, one for each stretch.
-func insideShares(s floor.Shape, a, b geom.Point) []float64 {
+// cutsOf are the shares of ab, in order, where it crosses a polygon's edges, with 0 and 1.
+func cutsOf(s floor.Shape, a, b geom.Point) []float64 {
 	cuts := []float64{0, 1}
 	for _, c := range s.Chains {
 		for i, q := range c {
@@ -114,6 +114,12 @@ func insideShares(s floor.Shape, a, b geom.Point) []float64 {
 		}
 	}
 	slices.Sort(cuts)
+	return cuts
+}
+
+// insideShares gives the shares of ab that lie in a polygon, one for each stretch.
+func insideShares(s floor.Shape, a, b geom.Point) []float64 {
+	cuts := cutsOf(s, a, b)
 	var shares []float64
 	run := 0.0
 	for i := 1; i < len(cuts); i++ {

@@ -9,27 +9,28 @@ import (
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/rules"
+	"example.com/wideberth/planner/internal/touch"
 )
-
-// LeastNeedUm is the clearance that a body of required clearance 0 keeps: with it, a
-// point is out of solids and does not slip between two that touch.
-const LeastNeedUm = 1
 
 // Judge is one body on one version. It counts what it does, and is for one goroutine.
 type Judge struct {
 	Field    *clearance.Field
 	Rules    *rules.Rules
-	NeedUm   int64   // required clearance, at least LeastNeedUm
-	RadiusUm int64   // kept from closed zones
+	NeedUm   int64   // required clearance; at 0 the body is a point (package touch)
+	RadiusUm int64   // kept from closed zones; at 0 they are touched, not entered
 	WideUm   float64 // the preferred clearance, below which metres cost more
 	Weight   float64 // by how much more; 0: all metres are alike
+
+	// Ends are where the route asked for begins and ends. They alone may be places
+	// where solids touch one another, which only matters to a point.
+	Ends [2]geom.Point
 
 	Sights, Exacts int64 // lines of sight tried, distances evaluated
 }
 
 // New makes a judge for a body's required clearance and radius.
 func New(f *clearance.Field, r *rules.Rules, requiredUm, radiusUm int64) *Judge {
-	return &Judge{Field: f, Rules: r, NeedUm: max(requiredUm, LeastNeedUm), RadiusUm: radiusUm}
+	return &Judge{Field: f, Rules: r, NeedUm: requiredUm, RadiusUm: radiusUm}
 }
 
 // At is the field's answer, counted. Where nothing is nearer than the cap, the nearest
@@ -59,8 +60,14 @@ func (j *Judge) Stands(p geom.Point) (ok bool, zone *floor.Feature) {
 	if !j.Field.Bounds().Contains(p) || j.At(p).Um < float64(j.NeedUm) {
 		return false, nil
 	}
-	zone = j.Rules.Entered(p, p, float64(j.RadiusUm))
-	return zone == nil, zone
+	if zone = j.Rules.Entered(p, p, float64(j.RadiusUm)); zone != nil {
+		return false, zone
+	}
+	if j.NeedUm > 0 && j.RadiusUm > 0 {
+		return true, nil
+	}
+	ok, _ = j.solids(p, p).Stands(p)
+	return ok, nil
 }
 
 // Sight says whether the body may drive straight from a to b.
@@ -73,7 +80,47 @@ func (j *Judge) Keeps(a, b geom.Point, least float64) bool {
 	j.Sights++
 	r := j.Field.Bounds()
 	need := max(j.NeedUm, int64(math.Floor(min(least, float64(j.Field.Cap())))))
-	return r.Contains(a) && r.Contains(b) && j.Field.SegmentClear(a, b, need) && j.Allowed(a, b)
+	return r.Contains(a) && r.Contains(b) && (need == 0 || j.Field.SegmentClear(a, b, need)) &&
+		(need > 0 && j.RadiusUm > 0 || j.keepsPoint(a, b)) && j.Allowed(a, b)
+}
+
+// keepsPoint says whether solids, where NeedUm is 0, and closed zones, where RadiusUm
+// is 0, let a point go from a to b, and on from there unless it is one of Ends.
+func (j *Judge) keepsPoint(a, b geom.Point) bool {
+	if (j.NeedUm > 0 || j.Field.SegmentClear(a, b, 1)) && (j.RadiusUm > 0 || !j.Rules.HasClosed()) {
+		return true
+	}
+	s := j.solids(a, b)
+	if !s.Clear(a, b) {
+		return false
+	}
+	for _, p := range [2]geom.Point{a, b} {
+		if p == j.Ends[0] || p == j.Ends[1] {
+			continue
+		}
+		if _, pinch := s.Stands(p); pinch {
+			return false
+		}
+	}
+	return true
+}
+
+// solids are the things along ab that matter to a point: solids where NeedUm is 0, and
+// closed zones where RadiusUm is.
+func (j *Judge) solids(a, b geom.Point) *touch.Solids {
+	s := &touch.Solids{Bounds: j.Field.Bounds()}
+	if j.NeedUm == 0 {
+		s.Shut = !j.Field.Map().Settings().OpenBorder
+		cells, features := j.Field.Touching(a, b)
+		s.Cells = cells
+		for _, f := range features {
+			s.Shapes = append(s.Shapes, &f.Shape)
+		}
+	}
+	if j.RadiusUm == 0 {
+		s.Shapes = j.Rules.AppendClosed(s.Shapes, a, b)
+	}
+	return s
 }
 
 // Open is the clearance from which on a piece costs its length.

@@ -10,6 +10,7 @@ import (
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/rules"
+	"example.com/wideberth/planner/internal/touch"
 )
 
 // Key says what free means: every point of the closed cell has at least Um of
@@ -120,7 +121,7 @@ func share(b *Block) *Block {
 
 // close takes away the cells that closed zones keep the body's outline off.
 func (m *Mask) close(bx, by int, b *Block) {
-	radius := float64(max(m.key.RadiusUm, rules.PointRadiusUm))
+	radius := float64(m.key.RadiusUm)
 	res := float64(m.set.ResolutionUm)
 	side := res * floor.BlockSize
 	lo := geom.Point{
@@ -162,7 +163,7 @@ func (z *shutter) square(x, y, size int) {
 	switch {
 	case d-diag >= z.radius+settle:
 		return
-	case d+diag < z.radius-settle, size == 1 && z.cellDist(x, y) < z.radius:
+	case d+diag < z.radius-settle, size == 1 && z.near(x, y):
 		for k := y; k < y+size; k++ {
 			z.b[k] &^= row
 		}
@@ -178,13 +179,18 @@ func (z *shutter) square(x, y, size int) {
 // settle, in micrometres, keeps rounding out of decisions about whole squares.
 const settle = 1e-3
 
-// cellDist is the distance from the cell's closed square to the zone. For a point
-// body the square is taken without its border, on which it may touch the zone.
-func (z *shutter) cellDist(x, y int) float64 {
+// near says whether the cell's closed square is nearer to the zone than radius. For a
+// point body it is the open square that must not meet the zone's inside.
+func (z *shutter) near(x, y int) bool {
 	c := geom.Rect{Min: geom.Point{X: z.lo.X + float64(float64(x)*z.res), Y: z.lo.Y + float64(float64(y)*z.res)}}
 	c.Max = geom.Point{X: c.Min.X + z.res, Y: c.Min.Y + z.res}
-	if z.radius <= rules.PointRadiusUm {
-		c = c.Grow(-rules.PointRadiusUm)
+	if z.radius > 0 {
+		return z.shape.RectDist(c) < z.radius
 	}
-	return z.shape.RectDist(c)
+	for a, b := range z.shape.Edges {
+		if touch.EntersRect(c, a, b) {
+			return true
+		}
+	}
+	return geom.InPolygon(z.shape.Chains, geom.Point{X: c.Min.X + z.res/2, Y: c.Min.Y + z.res/2})
 }

@@ -97,7 +97,7 @@ func (m *Mask) carry(f *clearance.Field, r *rules.Rules, same []bool, changed []
 	n := newMask(k, f, r)
 	n.used.Store(m.used.Load())
 	side := float64(m.set.ResolutionUm) * floor.BlockSize
-	reach := float64(max(k.RadiusUm, rules.PointRadiusUm))
+	reach := float64(k.RadiusUm)
 	for i := range m.blocks {
 		b := m.blocks[i].Load()
 		if b == nil || !same[i] {

@@ -19,8 +19,10 @@ type WideQuery struct {
 	NeedUm   int64        // clearance from which on a place is as good as any, 1 or more
 	From, To geom.Point
 	Backward bool // the way asked for leads from To to From
-	Count    *Counters
-	Exact    *int64 // counts exact distance evaluations
+	// Passes, when set, says which pieces may be driven; all those are as good then.
+	Passes func(a, b geom.Point) bool
+	Count  *Counters
+	Exact  *int64 // counts exact distance evaluations
 }
 
 // WidestShort is by how much, in cells, the least clearance along the way that Widest
@@ -128,10 +130,13 @@ func (w *wide) value(a, b geom.Point, clear bool) int64 {
 	if w.Backward {
 		a, b = b, a
 	}
+	if w.Passes != nil && !w.Passes(a, b) {
+		return 0
+	}
 	if w.Rules != nil && (w.Rules.Entered(a, b, float64(w.RadiusUm)) != nil || w.Rules.Against(a, b, rules.BackwardSlackUm) != nil) {
 		return 0
 	}
-	if clear {
+	if clear || w.Passes != nil {
 		return w.NeedUm
 	}
 	*w.Exact++

@@ -10,6 +10,7 @@ import (
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/touch"
 )
 
 // BackwardSlackUm is how far, in micrometres, one straight piece may move against a
@@ -21,10 +22,6 @@ const BackwardSlackUm = 2
 // float64's rounding alone, so that a run of ten thousand steps has not gone
 // backward by BackwardSlackUm either.
 const StepSlackUm = 1e-5
-
-// PointRadiusUm is the least distance kept from a closed zone's outline. It matters
-// to a body of radius 0 alone, for which a distance of 0 would be the inside.
-const PointRadiusUm = 1
 
 type zone struct {
 	f      *floor.Feature
@@ -65,19 +62,38 @@ func (r *Rules) HasClosed() bool { return len(r.closed) > 0 }
 func (r *Rules) HasOneWay() bool { return len(r.oneWay) > 0 }
 
 // Entered is the first closed zone, by name, that the segment ab comes nearer to
-// than radius (at least PointRadiusUm), nil when there is none. a may equal b.
+// than radius, or, with radius 0, into the inside of; nil when there is none. a may
+// equal b.
 func (r *Rules) Entered(a, b geom.Point, radius float64) *floor.Feature {
-	radius = max(radius, PointRadiusUm)
 	box := geom.BoundsOf(a, b).Grow(radius)
 	for i := range r.closed {
 		z := &r.closed[i]
-		if z.bounds.Intersects(box) {
+		if !z.bounds.Intersects(box) {
+			continue
+		}
+		if radius > 0 {
 			if d, _ := z.f.Shape.SegmentDist(a, b); d < radius {
 				return z.f
 			}
+			continue
+		}
+		s := touch.Solids{Bounds: box, Shapes: []*floor.Shape{&z.f.Shape}}
+		if !s.Clear(a, b) {
+			return z.f
 		}
 	}
 	return nil
+}
+
+// AppendClosed appends the outlines of the closed zones that the segment ab may touch.
+func (r *Rules) AppendClosed(dst []*floor.Shape, a, b geom.Point) []*floor.Shape {
+	box := geom.BoundsOf(a, b)
+	for i := range r.closed {
+		if z := &r.closed[i]; z.bounds.Intersects(box) {
+			dst = append(dst, &z.f.Shape)
+		}
+	}
+	return dst
 }
 
 // Against is the first one-way zone, by name, inside which the segment from a to b

@@ -64,7 +64,8 @@ func TestEnteredAndShut(t *testing.T) {
 	}{
 		{"touching", pt(5.7, 5), 0.3 * m, false, false},
 		{"a micrometre in", geom.Point{X: 5.7*m + 1, Y: 5 * m}, 0.3 * m, true, false},
-		{"a point on the border", pt(6, 5), 0, true, false},
+		{"a point on the border", pt(6, 5), 0, false, false},
+		{"a point a micrometre in", geom.Point{X: 6*m + 1, Y: 5 * m}, 0, true, false},
 		{"inside, near the border", pt(6.4, 5), 0, true, false},
 		{"deep inside", pt(7, 5), 0, true, true},
 		{"near the border, wide body", pt(6.1, 5), 0.5 * m, true, true},
