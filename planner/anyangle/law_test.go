@@ -1,0 +1,335 @@
+package anyangle
+
+import (
+	"context"
+	"errors"
+	"math"
+	"math/rand/v2"
+	"reflect"
+	"testing"
+
+	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+)
+
+func build(t testing.TB, f *floor.Map, r int64) *Mesh {
+	t.Helper()
+	g, err := Build(context.Background(), f, Need{ClearanceUm: r})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return g
+}
+
+// corners yields the corners and middles of all cells of a mesh.
+func (g *Mesh) corners(yield func(p geom.Point) bool) {
+	for i, b := range g.blocks {
+		o := g.corner(i)
+		at := func(x, y float64) geom.Point {
+			if b.turned {
+				x, y = y, x
+			}
+			return geom.Point{X: g.o.X + float64(o.x) + x, Y: g.o.Y + float64(o.y) + y}
+		}
+		for c := range b.cells {
+			var mx, my, n float64
+			for _, r := range b.rowsOf(int32(c)) {
+				l, rr, y := float64(r.l), float64(r.r), float64(r.y)
+				if !yield(at(l, y)) || !yield(at(rr, y)) || !yield(at((l+rr)/2, y)) {
+					return
+				}
+				mx, my, n = mx+(l+rr)/2, my+y, n+1
+			}
+			if !yield(at(mx/n, my/n)) {
+				return
+			}
+		}
+	}
+}
+
+// TestLaw5ClearanceIsNeverOverstated checks that every place of a mesh has the
+// clearance, and that every place with the clearance and DeltaUm is in it.
+func TestLaw5ClearanceIsNeverOverstated(t *testing.T) {
+	const seed = 21
+	t.Logf("seed %d", seed)
+	cases := 60
+	if slow() {
+		cases = 1000
+	}
+	for k := range cases {
+		rng := rand.New(rand.NewPCG(seed, uint64(k)))
+		f := randomFloor(t, rng, 20+rng.IntN(90), 20+rng.IntN(90))
+		r := []int64{1, 40, 3_000, 50_000, 150_000, 217_345, 333_333, 800_000}[rng.IntN(8)]
+		if k%5 == 4 { // lone cells and cells that touch in a corner
+			f = randomMask(rng, 20+rng.IntN(90), 20+rng.IntN(90), 0.01+0.02*rng.Float64()).floor(t, rng.IntN(2) == 0)
+			r = int64(1+rng.IntN(8)) * 25_000
+		}
+		g, cores := build(t, f, r), coresOf(f)
+		for p := range g.corners {
+			// 1e-6 µm: rounding of a distance.
+			if d := trueClearance(f, cores, p); d < float64(r)-1e-6 {
+				t.Fatalf("case %d: %v of the mesh has clearance %v, wanted %d µm", k, p, d, r)
+			}
+		}
+		for range 300 {
+			p := randomPoint(rng, f.Bounds())
+			d, in := trueClearance(f, cores, p), g.Contains(p)
+			if in && d < float64(r)-1e-6 || !in && d >= float64(r)+DeltaUm {
+				t.Fatalf("case %d: clearance %v at %v, in the mesh for %d µm: %v", k, d, p, r, in)
+			}
+		}
+	}
+}
+
+// TestLaw6NoPassageIsLostAxisAligned checks walls with a door or a corridor of
+// exactly twice the clearance: passable, and not at 1 µm more.
+func TestLaw6NoPassageIsLostAxisAligned(t *testing.T) {
+	const seed = 6
+	t.Logf("seed %d", seed)
+	tried := 0
+	for k := range 300 {
+		rng := rand.New(rand.NewPCG(seed, uint64(k)))
+		const n = 150
+		h := int64(benchCell)
+		side := n * h
+		r := int64(1 + rng.IntN(700_000))
+		var x, y0, y1 int64 // the passage's middle, and the wall's two sides
+		raster := rng.IntN(2) == 0
+		x = side/4 + rng.Int64N(side/2)
+		y0 = side/4 + rng.Int64N(side/4)
+		y1 = y0 + 1 + rng.Int64N(side/4)
+		if raster {
+			r = r/h*h + h
+			x, y0, y1 = x/h*h, y0/h*h, (y1/h+1)*h
+		}
+		switch rng.IntN(3) {
+		case 0: // on a border between blocks
+			x = 64 * h * (1 + rng.Int64N(2))
+		case 1: // touching one
+			x = 64*h*(1+rng.Int64N(2)) + r*(2*rng.Int64N(2)-1)
+		}
+		if x-r < h || x+r > side-h || y0 < 2*r+2 || side-y1 < 2*r+2 {
+			continue // no room for the walls, or to stand beyond them
+		}
+		tried++
+		rects := [][4]int64{{0, y0, x - r, y1}, {x + r, y0, side, y1}}
+		if rng.IntN(2) == 0 { // along the other axis
+			for i, q := range rects {
+				rects[i] = [4]int64{q[1], q[0], q[3], q[2]}
+			}
+		}
+		f := newMask(n, n).floor(t, false)
+		var edits []floor.Edit
+		for i, q := range rects {
+			if raster {
+				edits = append(edits, floor.Edit{Kind: floor.PaintRect, Fill: floor.Occupied,
+					Rect: floor.CellRect{X0: int(q[0] / h), Y0: int(q[1] / h), X1: int(q[2] / h), Y1: int(q[3] / h)}})
+				continue
+			}
+			x0, y0, x1, y1 := float64(q[0]), float64(q[1]), float64(q[2]), float64(q[3])
+			edits = append(edits, floor.Edit{Kind: floor.PutFeature, Feature: &floor.Feature{
+				Name: string(rune('a' + i)), Kind: floor.Solid,
+				Shape: floor.NewPolygon([][]geom.Point{{{X: x0, Y: y0}, {X: x1, Y: y0}, {X: x1, Y: y1}, {X: x0, Y: y1}}}, 0)}})
+		}
+		f, err := f.Apply(edits)
+		if err != nil {
+			t.Fatal(err)
+		}
+		d := float64(r) + 1
+		s, e := geom.Point{X: d, Y: d}, geom.Point{X: float64(side) - d, Y: float64(side) - d}
+		if _, ok, err := build(t, f, r).Shortest(context.Background(), s, e); !ok || err != nil {
+			t.Fatalf("case %d: %v: no way through %d µm at clearance %d µm (%v)", k, rects, 2*r, r, err)
+		}
+		if _, ok, _ := build(t, f, r+1).Shortest(context.Background(), s, e); ok {
+			t.Fatalf("case %d: %v: a way through %d µm at clearance %d µm", k, rects, 2*r, r+1)
+		}
+	}
+	if tried < 100 {
+		t.Errorf("%d passages tried", tried)
+	}
+}
+
+// TestLaw6NoPassageIsLostOblique checks doors between the round ends of two walls
+// at any angle.
+func TestLaw6NoPassageIsLostOblique(t *testing.T) {
+	const seed = 66
+	t.Logf("seed %d", seed)
+	tried := 0
+	for k := range 400 {
+		rng := rand.New(rand.NewPCG(seed, uint64(k)))
+		const side = 8_000_000
+		a, b := randomPoint(rng, geom.Rect{Min: geom.Point{Y: side / 4}, Max: geom.Point{Y: 3 * side / 4}}), geom.Point{}
+		b = geom.Point{X: side, Y: side - a.Y}
+		at := func(t float64) geom.Point {
+			return geom.Point{X: math.Round(a.X + t*(b.X-a.X)), Y: math.Round(a.Y + t*(b.Y-a.Y))}
+		}
+		t0 := 0.3 + 0.3*rng.Float64()
+		p, q := at(t0), at(t0+0.05+0.1*rng.Float64())
+		width := int64(1 + rng.IntN(100_000))
+		gap := geom.Dist(p, q) - float64(width)
+		beta := gap / 2
+		if beta < DeltaUm+10 {
+			continue
+		}
+		tried++
+		f, err := newMask(160, 160).floor(t, false).Apply([]floor.Edit{
+			{Kind: floor.PutFeature, Feature: &floor.Feature{Name: "a", Kind: floor.Solid, WidthUm: width, Shape: floor.NewPolyline([]geom.Point{a, p}, width, 0)}},
+			{Kind: floor.PutFeature, Feature: &floor.Feature{Name: "b", Kind: floor.Solid, WidthUm: width, Shape: floor.NewPolyline([]geom.Point{q, b}, width, 0)}},
+		})
+		if err != nil {
+			t.Fatal(err)
+		}
+		s, e := geom.Point{X: side / 2, Y: 700_000}, geom.Point{X: side / 2, Y: side - 700_000}
+		r := int64(beta - DeltaUm)
+		if _, ok, err := build(t, f, r).Shortest(context.Background(), s, e); !ok || err != nil {
+			t.Fatalf("case %d: no way through %v µm at clearance %d µm (%v)", k, gap, r, err)
+		}
+		r = int64(math.Ceil(beta)) + 1
+		if _, ok, _ := build(t, f, r).Shortest(context.Background(), s, e); ok {
+			t.Fatalf("case %d: a way through %v µm at clearance %d µm", k, gap, r)
+		}
+	}
+	if tried < 200 {
+		t.Errorf("%d doors tried", tried)
+	}
+}
+
+// TestLaw4PatchedEqualsRebuilt applies random patches one after another.
+func TestLaw4PatchedEqualsRebuilt(t *testing.T) {
+	const seed = 44
+	t.Logf("seed %d", seed)
+	sequences, shared := 6, 0
+	if slow() {
+		sequences = 200
+	}
+	for k := range sequences {
+		rng := rand.New(rand.NewPCG(seed, uint64(k)))
+		f := randomFloor(t, rng, 100+rng.IntN(200), 100+rng.IntN(200))
+		if k%2 == 1 {
+			f = stairFloor(t, rng, 100+rng.IntN(200), 100+rng.IntN(200))
+		}
+		n := Need{ClearanceUm: []int64{0, 1, 100_000, 450_000, 3_300_000}[k%5], Zones: k%2 == 0, ZoneUm: 200_000}
+		g, err := Build(context.Background(), f, n)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for step := range 12 {
+			next, err := f.Apply(randomEdits(rng, f))
+			if err != nil {
+				t.Fatal(err)
+			}
+			a, err := g.Advance(context.Background(), next, floor.Diff(f, next))
+			if err != nil {
+				t.Fatal(err)
+			}
+			b, err := Build(context.Background(), next, n)
+			if err != nil {
+				t.Fatal(err)
+			}
+			for i := range b.blocks {
+				if !reflect.DeepEqual(a.blocks[i], b.blocks[i]) || !reflect.DeepEqual(a.lean.blocks[i], b.lean.blocks[i]) {
+					t.Fatalf("sequence %d, step %d: block %d differs", k, step, i)
+				}
+				if a.blocks[i] == g.blocks[i] {
+					shared++
+				}
+			}
+			if !reflect.DeepEqual(a.comp, b.comp) || !reflect.DeepEqual(a.base, b.base) || !reflect.DeepEqual(a.lean.comp, b.lean.comp) {
+				t.Fatalf("sequence %d, step %d: components differ", k, step)
+			}
+			f, g = next, a
+		}
+	}
+	if shared == 0 {
+		t.Error("no block was shared")
+	}
+}
+
+func randomEdits(rng *rand.Rand, f *floor.Map) []floor.Edit {
+	s := f.Settings()
+	var out []floor.Edit
+	for range 1 + rng.IntN(3) {
+		switch rng.IntN(4) {
+		case 0, 1:
+			x, y := rng.IntN(s.Columns), rng.IntN(s.Rows)
+			out = append(out, floor.Edit{Kind: floor.PaintRect, Fill: floor.Occupancy(rng.IntN(3)),
+				Rect: floor.CellRect{X0: x, Y0: y, X1: min(s.Columns, x+1+rng.IntN(8)), Y1: min(s.Rows, y+1+rng.IntN(8))}})
+		default:
+			ft := randomSolid(rng, string(rune('a'+rng.IntN(5))), f.Bounds())
+			if rng.IntN(3) == 0 && ft.Shape.Kind == floor.Polygon {
+				ft.Kind, ft.ToleranceUm, ft.Shape.Grow = floor.ClosedZone, 0, 0
+			}
+			out = append(out, floor.Edit{Kind: floor.PutFeature, Feature: ft})
+		}
+	}
+	return out
+}
+
+// TestClosedZoneIsKeptAtItsOwnDistance checks that zones are grown by ZoneUm, not by the clearance.
+func TestClosedZoneIsKeptAtItsOwnDistance(t *testing.T) {
+	f, err := newMask(100, 100).floor(t, false).Apply([]floor.Edit{{Kind: floor.PutFeature, Feature: &floor.Feature{
+		Name: "z", Kind: floor.ClosedZone,
+		Shape: floor.NewPolygon([][]geom.Point{{{X: 2e6, Y: 0}, {X: 3e6, Y: 0}, {X: 3e6, Y: 4e6}, {X: 2e6, Y: 4e6}}}, 0)}}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	g, err := Build(context.Background(), f, Need{ClearanceUm: 300_000, Zones: true, ZoneUm: 100_000})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for x, want := range map[float64]bool{1_900_000: true, 1_900_001: false, 2.5e6: false, 3_100_000: true, 300_000: true, 299_999: false} {
+		if got := g.Contains(geom.Point{X: x, Y: 2e6}); got != want {
+			t.Errorf("x = %v in the mesh: %v, wanted %v", x, got, want)
+		}
+	}
+}
+
+func TestBadNeedIsRefused(t *testing.T) {
+	f := newMask(10, 10).floor(t, false)
+	for _, n := range []Need{{ClearanceUm: -1}, {ClearanceUm: MaxClearanceUm + 1}, {Zones: true, ZoneUm: -1}} {
+		var ne *NeedError
+		if _, err := Build(context.Background(), f, n); !errors.As(err, &ne) {
+			t.Errorf("%+v: error %v, wanted a *NeedError", n, err)
+		}
+	}
+}
+
+func TestCancelledSearchStops(t *testing.T) {
+	ctx, cancel := context.WithCancel(context.Background())
+	cancel()
+	g := build(t, newMask(10, 10).floor(t, false), 0)
+	if _, _, err := g.Shortest(ctx, at50(1, 1), at50(9, 9)); !errors.Is(err, context.Canceled) {
+		t.Errorf("error %v, wanted %v", err, context.Canceled)
+	}
+	if _, err := Build(ctx, g.Map(), Need{}); !errors.Is(err, context.Canceled) {
+		t.Errorf("error %v, wanted %v", err, context.Canceled)
+	}
+}
+
+// TestLargestFloorKeepsItsClearance plans on the largest cells, far from the frame's
+// origin, among solids as long as the floor.
+func TestLargestFloorKeepsItsClearance(t *testing.T) {
+	f, err := floor.New(floor.Settings{ResolutionUm: floor.MaxResolutionUm, Columns: 65_536, Rows: 130,
+		OriginX: -floor.MaxOriginUm, OriginY: floor.MaxOriginUm - 2e9, CapUm: floor.MaxResolutionUm})
+	if err != nil {
+		t.Fatal(err)
+	}
+	b := f.Bounds()
+	at := func(x, y float64) geom.Point { return geom.Point{X: b.Min.X + x, Y: b.Min.Y + y} }
+	line := floor.NewPolyline([]geom.Point{at(0, 6e8), at(6.5e11, 6e8+1)}, 1_000_000, 0)
+	f, err = f.Apply([]floor.Edit{{Kind: floor.PutFeature, Feature: &floor.Feature{Name: "a", Kind: floor.Solid, WidthUm: 1_000_000, Shape: line}}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	const r = 5_000_000
+	way, ok, err := build(t, f, r).Shortest(context.Background(), at(1e7, 1e7), at(1e7, 1.2e9))
+	if err != nil || !ok || len(way.Points) < 4 {
+		t.Fatalf("%v, %v, %v", way, ok, err)
+	}
+	for i := 1; i < len(way.Points); i++ {
+		// 1 µm: coordinates of 1e15 µm are whole multiples of an eighth.
+		if d, _ := line.SegmentDist(way.Points[i-1], way.Points[i]); d < r-1 {
+			t.Errorf("clearance %v between %v and %v", d, way.Points[i-1], way.Points[i])
+		}
+	}
+}
