@@ -34,12 +34,13 @@ func (w *World) Plan(ctx context.Context, q Request) (Answer, error) {
 
 // task is one request being worked on.
 type task struct {
-	w          *World
-	q          Request
-	j          *judge.Judge
-	free, open *mask.Mask // open: nil where every metre costs the same
-	search     roadmap.Counters
-	shut       roadmap.Outcome // which end is shut in, once no path was found
+	w      *World
+	q      Request
+	j      *judge.Judge
+	free   *mask.Mask
+	levels []*mask.Mask // none where every metre costs the same
+	search roadmap.Counters
+	shut   roadmap.Outcome // which end is shut in, once no path was found
 }
 
 func (w *World) task(q Request) (*task, error) {
@@ -51,8 +52,10 @@ func (w *World) task(q Request) (*task, error) {
 	t.j.Ends = [2]geom.Point{q.Start.At, q.Goal.At}
 	t.free = w.masks.Mask(mask.Key{Um: b.Required(), RadiusUm: b.RadiusUm, Zones: true})
 	if q.Options.Preference == Balanced && q.Options.TightWeight > 0 {
-		t.j.Weight, t.j.WideUm = q.Options.TightWeight, float64(b.PreferredUm)
-		t.open = w.masks.Mask(mask.Key{Um: b.PreferredUm})
+		t.j.Grade(q.Options.TightWeight, b.PreferredUm)
+		for _, um := range t.j.Levels {
+			t.levels = append(t.levels, w.masks.Mask(mask.Key{Um: um}))
+		}
 	}
 	return t, nil
 }
@@ -93,6 +96,11 @@ func (t *task) plan(ctx context.Context) (Answer, error) {
 	if r, err := t.refused(ctx); r != nil || err != nil {
 		return Answer{Refusal: r}, err
 	}
+	return t.between(ctx)
+}
+
+// between plans between ends that can both be stood on.
+func (t *task) between(ctx context.Context) (Answer, error) {
 	c, err := t.course(ctx)
 	if err != nil {
 		return Answer{}, err
@@ -138,7 +146,7 @@ func (t *task) course(ctx context.Context) (*course, error) {
 	}
 	o := t.q.Options
 	q := &roadmap.Query{
-		Frame: t.w.frame, Free: t.free, Open: t.open, Weight: t.j.Weight, Rules: t.w.rules,
+		Frame: t.w.frame, Free: t.free, Levels: t.levels, Weight: t.j.Weight, Rules: t.w.rules,
 		From: t.connect(t.q.Start.At, false), To: t.connect(t.q.Goal.At, true), Count: &t.search,
 	}
 	var p roadmap.Path
@@ -152,9 +160,9 @@ func (t *task) course(ctx context.Context) (*course, error) {
 	}
 	if err == nil && out != roadmap.Found {
 		if t.shut = out; o.Roadmap == Quadtree {
-			t.shut, err = roadmap.Smaller(ctx, q)
+			t.shut = roadmap.Connected(q)
 		}
-		return nil, err
+		return nil, nil
 	}
 	if err != nil {
 		return nil, err
