@@ -73,10 +73,15 @@ func Open(path string, o Options) (*Journal, error) {
 	if o.LockTimeout <= 0 {
 		o.LockTimeout = DefaultLockTimeout
 	}
-	if _, err := os.Stat(path); errors.Is(err, fs.ErrNotExist) {
+	switch info, err := os.Stat(path); {
+	case errors.Is(err, fs.ErrNotExist):
 		if err := create(path); err != nil {
 			return nil, fmt.Errorf("journal %q cannot be made: %w", path, err)
 		}
+	case err == nil && info.Mode().IsRegular() && info.Size() == 0:
+		// bbolt would write an empty database of its own into it. create never leaves
+		// such a file behind, so what was here is either lost or another's.
+		return nil, fmt.Errorf("%w: %q: it is empty; take it away to begin a new journal", ErrNotJournal, path)
 	}
 	j := &Journal{path: path, turn: make(chan struct{}, 1), refused: map[string]error{}}
 	if err := j.open(o); err != nil {

@@ -42,6 +42,7 @@ func TestWrongFiles(t *testing.T) {
 	}{
 		"text":                  {write("notes.txt", []byte("buckets of tulips\n")), boltjournal.ErrNotJournal},
 		"large text":            {write("large.txt", bytes.Repeat([]byte("buckets of tulips\n"), 4000)), boltjournal.ErrNotJournal},
+		"empty":                 {write("empty", nil), boltjournal.ErrNotJournal},
 		"zeros":                 {write("zeros", make([]byte, 1<<16)), boltjournal.ErrNotJournal},
 		"another bbolt file":    {other, boltjournal.ErrNotJournal},
 		"a folder":              {dir, nil},
