@@ -9,10 +9,11 @@ import (
 
 // Validity says until when a controller may act on a route. It starts at the
 // route's receipt, for the route's valid_for_s, and starts anew at the receipt of
-// every watch event or heartbeat that names the very version the route was
-// checked against as the head. Once a newer head, or the same version with
-// another digest, has been seen it is never renewed again: the time left is for
-// asking for a replan.
+// every heartbeat that names the very version the route was checked against as the
+// head. A version event never renews it: after a break the events are history, and
+// a newer version may be the next of them. Once a newer version, or the same version
+// with another digest, has been seen it is never renewed again: the time left is
+// for asking for a replan.
 //
 // It is a rule about the map's age and no safety function. Validity is safe for
 // concurrent use.
@@ -56,7 +57,7 @@ func (v *Validity) Observe(ev WatchEvent) {
 		v.superseded = v.superseded || head.GetVersion() >= v.stamp.GetVersion()
 		return
 	}
-	if until := ev.Received.Add(v.lasts); !v.superseded && until.After(v.until) {
+	if until := ev.Received.Add(v.lasts); ev.Version == nil && !v.superseded && until.After(v.until) {
 		v.until = until
 	}
 }

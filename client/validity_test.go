@@ -15,6 +15,11 @@ func TestValidity(t *testing.T) {
 	head := func(version int64, digest string, s float64) WatchEvent {
 		return WatchEvent{Head: &wideberthv1.VersionStamp{Floor: "hall", Version: version, Digest: digest}, Received: at(s)}
 	}
+	event := func(version int64, digest string, s float64) WatchEvent {
+		ev := head(version, digest, s)
+		ev.Version = &wideberthv1.Version{Stamp: ev.Head}
+		return ev
+	}
 	other := head(7, "d", 8)
 	other.Head.Floor = "dock"
 	for _, tc := range []struct {
@@ -29,6 +34,8 @@ func TestValidity(t *testing.T) {
 		{"renewed again and again", 10, []WatchEvent{head(7, "d", 2), head(7, "d", 4), head(7, "d", 6)}, 16, false},
 		{"a newer head lets the time run out", 10, []WatchEvent{head(7, "d", 4), head(8, "e", 6)}, 14, true},
 		{"never renewed after a newer head", 10, []WatchEvent{head(8, "e", 3), head(7, "d", 4)}, 10, true},
+		{"a version event is history, not the head", 10, []WatchEvent{event(7, "d", 9), event(8, "e", 9)}, 10, true},
+		{"a version event of its own version", 10, []WatchEvent{event(7, "d", 4), head(7, "d", 5)}, 15, false},
 		{"another digest is another map", 10, []WatchEvent{head(7, "other", 4)}, 10, true},
 		{"an older head was on its way", 10, []WatchEvent{head(6, "c", 1), head(7, "d", 2)}, 12, false},
 		{"another floor says nothing", 10, []WatchEvent{other}, 10, false},

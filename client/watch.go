@@ -30,7 +30,8 @@ type WatchEvent struct {
 	// Skipped is how many versions between Version and the one before it were not
 	// given. When it is not 0 and they matter, read them with ListVersions.
 	Skipped int64
-	// Head is the newest version the server named. Nil for a break.
+	// Head is the head for a heartbeat, and Version's stamp for a version, which newer
+	// ones may already follow. Nil for a break.
 	Head *wideberthv1.VersionStamp
 	// Broken is why the stream broke. The watch goes on by itself; until the next
 	// event nothing is known of the head.

@@ -1317,8 +1317,8 @@ type Route struct {
 	// How good it is.
 	Bound *Bound `protobuf:"bytes,13,opt,name=bound,proto3" json:"bound,omitempty"`
 	// How long after its receipt a controller may act on it without word from the
-	// server. A WatchVersions event or heartbeat that names checked_against as the
-	// head starts the time anew.
+	// server. A WatchVersions heartbeat that names checked_against as the head starts
+	// the time anew; a version event does not, since newer ones may follow it.
 	ValidForS     float64 `protobuf:"fixed64,14,opt,name=valid_for_s,json=validForS,proto3" json:"valid_for_s,omitempty"`
 	unknownFields protoimpl.UnknownFields
 	sizeCache     protoimpl.SizeCache
