@@ -169,15 +169,6 @@ func (f *faults) number(p *field, v, lo, hi float64) bool {
 	return false
 }
 
-// positive faults v when it is not finite, not above 0, or above hi.
-func (f *faults) positive(p *field, v, hi float64) bool {
-	if v > 0 && v <= hi {
-		return true
-	}
-	f.add(p, "%v, wanted above 0, at most %v", v, hi)
-	return false
-}
-
 // finite faults NaN and infinities.
 func (f *faults) finite(p *field, v float64) bool {
 	if !math.IsNaN(v) && !math.IsInf(v, 0) {

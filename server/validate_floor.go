@@ -23,15 +23,18 @@ func checkCreateFloor(r *pb.CreateFloorRequest, f *faults) {
 	f.requestID(root.at("request_id"), r.RequestId)
 }
 
-// checkSettings checks that the lengths can be rounded to whole micrometres; the
-// ranges are floor.Settings.Validate's business.
+// checkSettings checks that the lengths can be rounded to whole micrometres; what
+// depends on another field is floor.Settings.Validate's business.
 func checkSettings(s *pb.FloorSettings, p *field, f *faults) {
-	ok := f.number(p.at("resolution_m"), s.ResolutionM, 0, maxCoordinateM)
+	ok := true
+	if s.ResolutionM != 0 {
+		ok = f.number(p.at("resolution_m"), s.ResolutionM, geom.Metres(floor.MinResolutionUm), geom.Metres(floor.MaxResolutionUm))
+	}
 	if um := s.ResolutionM * geom.UmPerMetre; ok && math.Abs(um-math.Round(um)) > 1e-3 {
 		f.add(p.at("resolution_m"), "%v, wanted a whole number of micrometres", s.ResolutionM)
 		ok = false
 	}
-	ok = f.number(p.at("clearance_cap_m"), s.ClearanceCapM, 0, maxCoordinateM) && ok
+	ok = f.number(p.at("clearance_cap_m"), s.ClearanceCapM, 0, maxCapM) && ok
 	if s.Origin != nil {
 		ok = f.coordinate(p.at("origin").at("x_m"), s.Origin.XM) && ok
 		ok = f.coordinate(p.at("origin").at("y_m"), s.Origin.YM) && ok
@@ -242,7 +245,7 @@ func checkZone(z *pb.Zone, p *field, f *faults) {
 	switch r := z.GetRule().(type) {
 	case *pb.Zone_Closed:
 	case *pb.Zone_SpeedLimit:
-		f.positive(p.at("speed_limit").at("max_speed_mps"), r.SpeedLimit.GetMaxSpeedMps(), 20)
+		f.number(p.at("speed_limit").at("max_speed_mps"), r.SpeedLimit.GetMaxSpeedMps(), floor.MinSpeedMps, floor.MaxSpeedMps)
 	case *pb.Zone_OneWay:
 		f.heading(p.at("one_way").at("heading_rad"), r.OneWay.GetHeadingRad())
 	default:

@@ -46,8 +46,13 @@ func checkBody(b *pb.Body, p *field, f *faults) {
 			f.add(p.at("preferred_clearance_m"), "%v, wanted the required clearance %v or more", b.PreferredClearanceM, geom.Metres(float64(r)))
 		}
 	}
-	f.number(p.at("max_speed_mps"), b.MaxSpeedMps, 0, 20)
-	f.number(p.at("braking_mps2"), b.BrakingMps2, 0, 10)
+	if b.MaxSpeedMps != 0 {
+		f.number(p.at("max_speed_mps"), b.MaxSpeedMps, floor.MinSpeedMps, floor.MaxSpeedMps)
+	}
+	if b.BrakingMps2 != 0 {
+		// Below it the advised speed ceiling would be lost in rounding.
+		f.number(p.at("braking_mps2"), b.BrakingMps2, 0.001, 10)
+	}
 	if b.ReactionS != 0 {
 		f.number(p.at("reaction_s"), b.ReactionS, 0.01, 10)
 	}

@@ -76,8 +76,8 @@ func (c checker) feature(path string, f *Feature) (*Feature, *EditError) {
 		switch f.Kind {
 		case SpeedLimitZone:
 			g.SpeedMps = f.SpeedMps
-			if !(f.SpeedMps > 0 && f.SpeedMps <= MaxSpeedMps) {
-				err = fault(path+".zone.speed_limit.max_speed_mps", "%v m/s, wanted above 0, at most %d m/s", f.SpeedMps, MaxSpeedMps)
+			if !(f.SpeedMps >= MinSpeedMps && f.SpeedMps <= MaxSpeedMps) {
+				err = fault(path+".zone.speed_limit.max_speed_mps", "%v m/s, wanted %v m/s to %v m/s", f.SpeedMps, MinSpeedMps, MaxSpeedMps)
 			}
 		case OneWayZone:
 			g.Heading = f.Heading

@@ -24,6 +24,7 @@ const (
 	MaxWidthUm     = 100 * geom.UmPerMetre   // of a polyline; the least is 1 µm
 	MaxRadiusUm    = 1_000 * geom.UmPerMetre // of a disc; the least is 1 µm
 	MaxToleranceUm = 1 * geom.UmPerMetre     // of a survey
+	MinSpeedMps    = 0.001                   // of a speed limit; below it a route would take no finite time
 	MaxSpeedMps    = 20                      // of a speed limit
 	MaxEdits       = 10_000                  // in a patch
 	MaxPatchCells  = MaxCells                // written one by one in a patch, all PaintCells together

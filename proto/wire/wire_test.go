@@ -72,7 +72,7 @@ func feature(t *rapid.T) *floor.Feature {
 			return f
 		}
 	case floor.SpeedLimitZone:
-		f.SpeedMps = rapid.Float64Range(1e-9, floor.MaxSpeedMps).Draw(t, "speed")
+		f.SpeedMps = rapid.Float64Range(floor.MinSpeedMps, floor.MaxSpeedMps).Draw(t, "speed")
 	case floor.OneWayZone:
 		f.Heading = heading(t)
 	}

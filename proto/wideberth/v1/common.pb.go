@@ -701,7 +701,7 @@ func (*ClosedRule) Descriptor() ([]byte, []int) {
 // Robots go no faster than this inside. It changes times, never the route.
 type SpeedLimitRule struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
-	// Metres per second, above 0, at most 20. Judged by the body's centre.
+	// Metres per second, from 0.001 to 20. Judged by the body's centre.
 	MaxSpeedMps   float64 `protobuf:"fixed64,1,opt,name=max_speed_mps,json=maxSpeedMps,proto3" json:"max_speed_mps,omitempty"`
 	unknownFields protoimpl.UnknownFields
 	sizeCache     protoimpl.SizeCache

@@ -499,9 +499,9 @@ type Body struct {
 	// required clearance up to the floor's cap. 0 asks for the required clearance
 	// plus 0.5 m, or the cap.
 	PreferredClearanceM float64 `protobuf:"fixed64,4,opt,name=preferred_clearance_m,json=preferredClearanceM,proto3" json:"preferred_clearance_m,omitempty"`
-	// Metres per second on an open floor, above 0, at most 20. 0 asks for 1.0.
+	// Metres per second on an open floor, from 0.001 to 20. 0 asks for 1.0.
 	MaxSpeedMps float64 `protobuf:"fixed64,5,opt,name=max_speed_mps,json=maxSpeedMps,proto3" json:"max_speed_mps,omitempty"`
-	// Service braking, m/s^2, above 0, at most 10. 0 asks for 0.5.
+	// Service braking, m/s^2, from 0.001 to 10. 0 asks for 0.5.
 	BrakingMps2 float64 `protobuf:"fixed64,6,opt,name=braking_mps2,json=brakingMps2,proto3" json:"braking_mps2,omitempty"`
 	// From perception to the first braking, 0.01 to 10 s. 0 asks for 0.5.
 	ReactionS float64 `protobuf:"fixed64,7,opt,name=reaction_s,json=reactionS,proto3" json:"reaction_s,omitempty"`
