@@ -48,6 +48,23 @@ func TestPrecedence(t *testing.T) {
 	}
 }
 
+// A container platform that runs a service named "wideberth" puts its address and
+// ports into every environment beside it. They are no settings, and no mistakes.
+func TestServiceLinksAreNoSettings(t *testing.T) {
+	if _, err := load(t, "", []string{
+		"WIDEBERTH_SERVICE_HOST=10.0.0.7", "WIDEBERTH_SERVICE_PORT=7443", "WIDEBERTH_SERVICE_PORT_GRPC=7443",
+		"WIDEBERTH_PORT=tcp://10.0.0.7:7443", "WIDEBERTH_PORT_7443_TCP=tcp://10.0.0.7:7443", "WIDEBERTH_PORT_7443_TCP_PROTO=tcp",
+		"WIDEBERTH_PORT_7443_TCP_PORT=7443", "WIDEBERTH_PORT_7443_TCP_ADDR=10.0.0.7",
+	}); err != nil {
+		t.Error(err)
+	}
+	for _, wrong := range []string{"WIDEBERTH_SERVICE=1", "WIDEBERTH_PORT_7443=1", "WIDEBERTH_PORTS=1"} {
+		if _, err := load(t, "", []string{wrong}); err == nil {
+			t.Errorf("%s was taken", wrong)
+		}
+	}
+}
+
 // All faults are told at once, each with its key and where it came from.
 func TestAllConfigFaultsTogether(t *testing.T) {
 	_, err := load(t, "nosuch: 1\nheartbeat: 5s\nworlds: [1]\ndata: a\ndata: b\n",

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"net"
 	"os"
+	"regexp"
 	"slices"
 	"strconv"
 	"strings"
@@ -27,6 +28,11 @@ const maxConfigFileBytes = 1 << 20
 // neighbourVariables start with envPrefix and belong to other programs of the
 // project: the operator's tool and the tests.
 var neighbourVariables = []string{"WIDEBERTH_SERVER", "WIDEBERTH_AUTHOR", "WIDEBERTH_SLOW", "WIDEBERTH_GRID_BENCHMARK"}
+
+// serviceLink matches the variables that container platforms put into every
+// neighbour of a service named "wideberth": its address and ports, nothing to do
+// with the configuration.
+var serviceLink = regexp.MustCompile(`^WIDEBERTH_(SERVICE_HOST|SERVICE_PORT(_.+)?|PORT|PORT_\d+_(TCP|UDP|SCTP)(_(PROTO|PORT|ADDR))?)$`)
 
 // knob is one thing that can be set. The flag is --key with dashes, the variable
 // WIDEBERTH_KEY in capitals, the file key the key itself.
@@ -271,7 +277,7 @@ func wideberthVariables(environ []string) (env map[string]string, faults []strin
 	for _, e := range environ {
 		name, value, _ := strings.Cut(e, "=")
 		switch {
-		case !strings.HasPrefix(name, envPrefix) || slices.Contains(neighbourVariables, name):
+		case !strings.HasPrefix(name, envPrefix) || slices.Contains(neighbourVariables, name) || serviceLink.MatchString(name):
 		case slices.Contains(known, name):
 			env[name] = value
 		default:
