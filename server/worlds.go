@@ -6,12 +6,19 @@ import (
 	"errors"
 	"runtime"
 	"sync"
+	"time"
 
 	"github.com/rs/zerolog"
 
 	"example.com/wideberth/mapstore"
 	"example.com/wideberth/planner"
 )
+
+// comeBackWithin is how long a build goes on for a caller that ran out of time
+// (prepareGrace, or its own) and will ask again. It is longer than any client's wait
+// between tries; were the build given up at once, a version that takes longer than
+// that time to make ready could never be planned on.
+const comeBackWithin = 30 * time.Second
 
 // worldKey names a version's content: a restored version shares the world of the
 // one it brought back.
@@ -26,12 +33,15 @@ func keyOf(s *mapstore.Snapshot) worldKey { return worldKey{s.Info.Floor, s.Info
 // it follows the store and makes each new head ready in the background, from the
 // head before. Other versions are made ready when somebody plans on them, and the
 // least recently used of those are let go. Two callers never build the same world
-// twice, and a build that nobody waits for any more is given up.
+// twice. A build that nobody waits for any more is given up: at once when its callers
+// have gone, after comeBackWithin when one of them ran out of time.
 type worlds struct {
 	store *mapstore.Store
 	log   zerolog.Logger
 	spare int           // how many worlds beside the heads are kept
 	turns chan struct{} // bounds builds of versions other than heads
+
+	comeBack time.Duration // comeBackWithin, but in tests
 
 	ctx    context.Context // ends the followers
 	cancel context.CancelFunc
@@ -61,6 +71,7 @@ type readyWorld struct {
 type build struct {
 	cancel  context.CancelFunc
 	waiters int
+	promise *time.Timer   // runs while a caller that ran out of time may come back
 	done    chan struct{} // closed when world and err are set
 	world   *planner.World
 	err     error
@@ -72,7 +83,7 @@ func newWorlds(store *mapstore.Store, spare int, log zerolog.Logger) *worlds {
 		store: store, log: log, spare: spare,
 		turns:  make(chan struct{}, max(1, runtime.GOMAXPROCS(0)/2)),
 		floors: map[string]*following{}, ready: map[worldKey]*list.Element{},
-		recent: list.New(), pending: map[worldKey]*build{},
+		recent: list.New(), pending: map[worldKey]*build{}, comeBack: comeBackWithin,
 	}
 	w.ctx, w.cancel = context.WithCancel(context.Background())
 	return w
@@ -183,14 +194,42 @@ func (w *worlds) get(ctx context.Context, snap *mapstore.Snapshot) (*planner.Wor
 	case <-ctx.Done():
 		w.mu.Lock()
 		defer w.mu.Unlock()
-		if b.waiters--; b.waiters == 0 {
-			// Nobody waits: give it up, and let the next caller start anew.
-			b.cancel()
-			if w.pending[key] == b {
-				delete(w.pending, key)
-			}
+		b.waiters--
+		if errors.Is(ctx.Err(), context.DeadlineExceeded) {
+			w.promise(key, b)
+		} else {
+			w.giveUp(key, b)
 		}
 		return nil, ctx.Err()
+	}
+}
+
+// promise lets a build go on for comeBackWithin from now; w.mu is held.
+func (w *worlds) promise(key worldKey, b *build) {
+	if b.promise != nil {
+		b.promise.Stop()
+	}
+	var t *time.Timer
+	t = time.AfterFunc(w.comeBack, func() {
+		w.mu.Lock()
+		defer w.mu.Unlock()
+		if b.promise == t { // not renewed meanwhile
+			b.promise = nil
+			w.giveUp(key, b)
+		}
+	})
+	b.promise = t
+}
+
+// giveUp ends a build that nobody waits for or may come back for, and lets the next
+// caller start anew; w.mu is held.
+func (w *worlds) giveUp(key worldKey, b *build) {
+	if b.waiters > 0 || b.promise != nil {
+		return
+	}
+	b.cancel()
+	if w.pending[key] == b {
+		delete(w.pending, key)
 	}
 }
 
@@ -219,6 +258,9 @@ func (w *worlds) start(key worldKey, snap *mapstore.Snapshot) *build {
 			}
 		}
 		b.world, b.err = world, err
+		if b.promise != nil {
+			b.promise.Stop()
+		}
 		close(b.done)
 	}()
 	return b

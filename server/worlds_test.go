@@ -135,6 +135,61 @@ func TestAbandonedBuild(t *testing.T) {
 	}
 }
 
+// A build goes on for a caller that ran out of time, which finds it when it comes
+// back; when it never does, the build is given up all the same.
+func TestBuildWaitsForWhoComesBack(t *testing.T) {
+	r := start(t, func(c *Config) { c.Worlds = 1 })
+	r.hall()
+	r.push(put(station("s", 2, 2)))
+	r.push(put(station("s", 2, 3)))
+	for v := int64(4); v >= 2; v-- { // the head, and then others, so that 1 is let go
+		if _, err := r.s.worlds.get(r.ctx(), r.snap(v)); err != nil {
+			t.Fatal(err)
+		}
+	}
+	old := r.snap(1)
+	pending := func() *build {
+		r.s.worlds.mu.Lock()
+		defer r.s.worlds.mu.Unlock()
+		return r.s.worlds.pending[keyOf(old)]
+	}
+	runOut := func() {
+		t.Helper()
+		ctx, cancel := context.WithTimeout(r.ctx(), time.Millisecond)
+		defer cancel()
+		if _, err := r.s.worlds.get(ctx, old); !errors.Is(err, context.DeadlineExceeded) {
+			t.Fatalf("got %v, wanted the caller's own deadline", err)
+		}
+	}
+	for range cap(r.s.worlds.turns) {
+		r.s.worlds.turns <- struct{}{} // every turn is taken
+	}
+	runOut()
+	first := pending()
+	if first == nil {
+		t.Fatal("the build was given up at once")
+	}
+	runOut()
+	if pending() != first {
+		t.Fatal("who came back got another build")
+	}
+	r.s.worlds.comeBack = time.Millisecond
+	runOut()
+	for pending() != nil {
+		time.Sleep(time.Millisecond) // given up in the end
+	}
+	<-first.done
+	if !errors.Is(first.err, context.Canceled) {
+		t.Errorf("the build ended with %v", first.err)
+	}
+	for range cap(r.s.worlds.turns) {
+		<-r.s.worlds.turns
+	}
+	if _, err := r.s.worlds.get(r.ctx(), old); err != nil {
+		t.Errorf("the next caller: %v", err)
+	}
+}
+
 // A version never changes (law 1): plans pinned to a version give the same answer
 // while others push.
 func TestAVersionNeverChanges(t *testing.T) {
