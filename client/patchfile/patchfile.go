@@ -96,6 +96,9 @@ func Read(r io.Reader, name string) (*wideberthv1.Patch, error) {
 		return nil, fault("", "larger than %d bytes", MaxBytes)
 	}
 	data = bytes.TrimPrefix(data, []byte("\xef\xbb\xbf")) // RFC 8259 §8.1 lets a reader ignore it
+	if text := bytes.TrimLeft(data, " \t\r\n"); len(text) > 0 && text[0] != '{' && text[0] != '[' {
+		return nil, fault("", "not JSON, want a Patch message or a GeoJSON FeatureCollection")
+	}
 	// Only GeoJSON objects have a member type; a Patch has none.
 	var form struct {
 		Type json.RawMessage `json:"type"`

@@ -93,6 +93,8 @@ func TestFaultsNameFileAndPath(t *testing.T) {
 		{"two actions", `{"edits": [{"clear_rect": {}, "remove_feature": {"name": "x"}}]}`, "edits[0].remove_feature", "already set"},
 		{"not JSON", `{"edits": [}`, "edits", "line 1, column 12"},
 		{"cut off", `{"edits": [{"clear_rect": {`, "edits[0].clear_rect", "unexpected"},
+		{"a floor description", "format: 1\nfloor: hall\n", "", "not JSON, want a Patch message"},
+		{"a journal", "\x00\x00\x00\x00\xed\xda\x0c\xed", "", "not JSON, want a Patch message"},
 		{"empty", ``, "", "unexpected"},
 		{"an array", `[]`, "", "unexpected"},
 		{"nothing to do", `{"author": "me"}`, "edits", "want at least one"},

@@ -173,16 +173,28 @@ func settingsFromFlags(set *wideberthv1.FloorSettings, origin, initial string) e
 	return nil
 }
 
-// pushLayout pushes a description's layout onto a floor that holds nothing yet.
+// pushLayout pushes a description's layout onto a floor that holds what it was created
+// with: nothing was pushed to it yet, or version 1 was restored.
 func (a *app) pushLayout(cmd *cobra.Command, c *client.Client, f *wideberthv1.Floor, l *layout.Layout, author string) (*wideberthv1.Floor, error) {
-	if head := f.GetHead().GetVersion(); head != 1 {
-		a.notef("The floor was there already, at version %d; its layout is left as it is.", head)
-		return f, nil
+	head := f.GetHead()
+	if head.GetVersion() != 1 {
+		first, err := c.GetVersion(cmd.Context(), f.GetId(), client.Pinned(1))
+		if err != nil {
+			return nil, err
+		}
+		if first.GetVersion().GetStamp().GetDigest() != head.GetDigest() {
+			a.notef("The floor was there already, at version %d; its layout is left as it is.", head.GetVersion())
+			return f, nil
+		}
 	}
-	patches := l.Patches(1, author, "layout from its description")
+	patches := l.Patches(head.GetVersion(), author, "layout from its description")
 	for i, p := range patches {
 		resp, err := c.PushPatch(cmd.Context(), &wideberthv1.PushPatchRequest{Floor: f.GetId(), Patch: p})
 		if err != nil {
+			a.notef("The floor is made, but without its whole layout. Mend the description and run this again.")
+			if i > 0 {
+				a.notef("First take back what was pushed of it: wideberth restore %s 1 --author WHO --reason WHY", f.GetId())
+			}
 			return nil, fmt.Errorf("layout, patch %d of %d: %w", i+1, len(patches), err)
 		}
 		a.notef("layout, patch %d of %d: version %d", i+1, len(patches), resp.GetVersion().GetStamp().GetVersion())

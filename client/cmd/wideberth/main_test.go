@@ -306,6 +306,7 @@ func TestUsageExits2(t *testing.T) {
 		{"floors", "create", "hall", "--author", "x", "--initial", "full"},
 		{"floors", "create", "--from", "x.yaml", "--columns", "3", "--author", "x"},
 		{"push", "hall"},
+		{"push", "hall", "hall.yaml", "--author", "y", "--reason", "z"},
 		{"push", "hall", patch, "--reason", "y"},
 		{"push", "hall", patch, "--author", "y"},
 		{"push", "hall", patch, "--author", "y", "--reason", "z", "--base", "0"},
@@ -442,6 +443,28 @@ changes:
 	// Again: the floor is there, its layout is not pushed twice.
 	if again := message(x, &wideberthv1.Floor{}, "floors", "create", "--from", description, "--author", "engineer"); again.GetHead().GetVersion() != 3 {
 		t.Errorf("created again: %v, want it left at version 3", again)
+	}
+}
+
+// A layout that the service refuses leaves a floor that the mended description can
+// still be put on; so does one that was taken back.
+func TestARefusedLayoutCanBeMended(t *testing.T) {
+	t.Parallel()
+	x := newTool(t)
+	describe := func(name, corner string) string {
+		return x.file(name, "format: 1\nfloor: yard\nwidth_m: 6\nheight_m: 4\nitems:\n  - block: crate\n    polygon: [[1, 1], ["+corner+"], [2, 1], [1, 2]]\n")
+	}
+	code, _, errs := x.run("floors", "create", "--from", describe("bow.yaml", "2, 2"), "--author", "engineer")
+	if code != exitRejected || !strings.Contains(errs, "solid.polygon.outer.points") || !strings.Contains(errs, "run this again") {
+		t.Fatalf("a polygon that crosses itself: exit code %d, %q", code, errs)
+	}
+	mended := describe("mended.yaml", "1.5, 0.5")
+	if f := message(x, &wideberthv1.Floor{}, "floors", "create", "--from", mended, "--author", "engineer"); f.GetHead().GetVersion() != 2 {
+		t.Errorf("mended: %v, want the layout as version 2", f)
+	}
+	x.ok("restore", "yard", "1", "--author", "engineer", "--reason", "begin anew")
+	if f := message(x, &wideberthv1.Floor{}, "floors", "create", "--from", mended, "--author", "engineer"); f.GetHead().GetVersion() != 4 {
+		t.Errorf("after a restore of version 1: %v, want the layout as version 4", f)
 	}
 }
 

@@ -2,6 +2,8 @@ package main
 
 import (
 	"fmt"
+	"path/filepath"
+	"strings"
 
 	"github.com/spf13/cobra"
 
@@ -100,6 +102,9 @@ func (a *app) push() *cobra.Command {
 // readPatches reads what is to be pushed, at least one patch.
 func readPatches(path, change string) ([]*wideberthv1.Patch, error) {
 	if change == "" {
+		if ext := strings.ToLower(filepath.Ext(path)); ext == ".yaml" || ext == ".yml" {
+			return nil, usagef("%s is a floor description by its name: --change says which change in it", path)
+		}
 		p, err := patchfile.ReadFile(path)
 		return []*wideberthv1.Patch{p}, err
 	}
