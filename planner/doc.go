@@ -19,9 +19,9 @@
 // path found is straightened by exact lines of sight (package pull): bends are
 // pulled to corners, and a corner is cut as often as that saves a fiftieth of a cell.
 //
-// Balanced counts a metre below the preferred clearance 1 + TightWeight times. The search
-// judges a cell by whether it is wholly clear at the preferred clearance; CostUm counts
-// what is truly below it, and is never more.
+// Balanced counts a metre the more, up to 1 + TightWeight times, the less clearance there is
+// below the preferred one (Route.CostUm). The search judges a cell by the least clearance
+// in it; CostUm counts what is true of the route itself, and is never more.
 //
 // Whole cells miss passages up to 2·sqrt 2 cells wider than the body needs
 // (Bound.WidthBiasUm). With Auto and straightening, a search that finds nothing goes on to

@@ -52,10 +52,12 @@ const (
 type Options struct {
 	Preference      Preference
 	Roadmap         Roadmap
-	KeepRoadmapPath bool    // no straightening
-	TightWeight     float64 // balanced: extra cost of a metre below PreferredUm
-	TightBelowUm    int64   // a leg is tight where clearance is below this
-	MaxSpacingUm    int64   // most distance between two route points; 0: no bound
+	KeepRoadmapPath bool // no straightening
+	// TightWeight is what a metre of a balanced route costs more where clearance is
+	// hardly what is required; see CostUm.
+	TightWeight  float64
+	TightBelowUm int64 // a leg is tight where clearance is below this
+	MaxSpacingUm int64 // most distance between two route points; 0: no bound
 }
 
 // Request asks for a route for Body from Start to Goal.
@@ -130,10 +132,13 @@ type Route struct {
 	Legs        []Leg
 	LengthUm    float64
 	DurationS   float64
-	CostUm      float64 // what the preference minimises
-	SmallestUm  int64
-	SmallestAt  geom.Point
-	Bound       Bound
+	// CostUm is what the preference minimises. Shortest: the length. Balanced: a metre costs
+	// 1 + TightWeight·k/4 where clearance is below k of the four steps PreferredUm,
+	// and down from there to, not including, Required by quarters of the way.
+	CostUm     float64
+	SmallestUm int64
+	SmallestAt geom.Point
+	Bound      Bound
 }
 
 // RefusalReason says why there is no route.

@@ -16,21 +16,52 @@ import (
 type Judge struct {
 	Field    *clearance.Field
 	Rules    *rules.Rules
-	NeedUm   int64   // required clearance; at 0 the body is a point (package touch)
-	RadiusUm int64   // kept from closed zones; at 0 they are touched, not entered
-	WideUm   float64 // the preferred clearance, below which metres cost more
-	Weight   float64 // by how much more; 0: all metres are alike
+	NeedUm   int64 // required clearance; at 0 the body is a point (package touch)
+	RadiusUm int64 // kept from closed zones; at 0 they are touched, not entered
+	// Levels are clearances, falling: a metre costs Weight/len(Levels) more for each that
+	// clearance is below there. None: all metres are alike.
+	Levels []int64
+	Weight float64
 
 	// Ends are where the route asked for begins and ends. They alone may be places
 	// where solids touch one another, which only matters to a point.
 	Ends [2]geom.Point
 
 	Sights, Exacts int64 // lines of sight tried, distances evaluated
+
+	ends [4]clearance.Nearest // of places asked about last; see end
+	next int
 }
 
 // New makes a judge for a body's required clearance and radius.
 func New(f *clearance.Field, r *rules.Rules, requiredUm, radiusUm int64) *Judge {
 	return &Judge{Field: f, Rules: r, NeedUm: requiredUm, RadiusUm: radiusUm}
+}
+
+// levels is how many steps the cost of a metre rises by as clearance falls from the
+// preferred one to the required one.
+const levels = 4
+
+// Grade makes metres cost more where clearance is below wideUm: in equal steps of
+// clearance and cost, by weight where it is nearly the required clearance.
+func (j *Judge) Grade(weight float64, wideUm int64) {
+	j.Weight, j.Levels = weight, nil
+	for k := int64(levels); k > 0; k-- {
+		j.Levels = append(j.Levels, j.NeedUm+((wideUm-j.NeedUm)*k+levels-1)/levels)
+	}
+}
+
+// end is At for the ends of pieces, of which one after another is often the same.
+func (j *Judge) end(p geom.Point) clearance.Nearest {
+	for i := range j.ends {
+		if j.ends[i].On == p && j.ends[i].Um > 0 {
+			return j.ends[i]
+		}
+	}
+	n := j.At(p)
+	j.ends[j.next%len(j.ends)] = n
+	j.next++
+	return n
 }
 
 // At is the field's answer, counted. Where nothing is nearer than the cap, the nearest
@@ -128,7 +159,7 @@ func (j *Judge) Open() float64 {
 	if j.Weight == 0 {
 		return 0
 	}
-	return j.WideUm
+	return float64(j.Levels[0])
 }
 
 // Dearest is what a micrometre costs at most.
@@ -146,15 +177,12 @@ func (j *Judge) Weigh(a, b geom.Point) (cost, least float64) {
 	if j.Weight == 0 {
 		return long, 0
 	}
-	if j.Field.SegmentClear(a, b, int64(j.WideUm)) {
-		return long, j.WideUm
+	if j.Field.SegmentClear(a, b, j.Levels[0]) {
+		return long, float64(j.Levels[0])
 	}
-	least = j.Segment(a, b).Um
-	share := 0.0
-	for _, s := range j.Tight(a, b, j.WideUm) {
-		share += s.To - s.From
-	}
-	return long + float64(j.Weight*float64(share*long)), least
+	g := grader{j: j, a: a, b: b, long: long}
+	g.halve(0, 1, j.end(a), j.end(b))
+	return long + float64(j.Weight/float64(len(j.Levels))*g.sum), j.Segment(a, b).Um
 }
 
 // TightResolution is the length, in micrometres, down to which Tight tells
@@ -191,12 +219,14 @@ type tightener struct {
 
 func (t *tightener) halve(from, to float64, na, nb clearance.Nearest) {
 	a, b := na.On, nb.On
-	if t.j.Segment(a, b).Um >= t.um {
+	// Clearance changes no faster than one goes.
+	part := float64((to - from) * t.long)
+	sum := na.Um + nb.Um
+	if sum-part >= 2*t.um || min(na.Um, nb.Um) >= t.um && t.j.keeps(a, b, t.um) {
 		return
 	}
-	settled := float64((to-from)*t.long) <= TightResolution ||
-		na.Um < t.um && t.j.ceiling(a, b, na) < t.um ||
-		nb.Um < t.um && t.j.ceiling(a, b, nb) < t.um
+	settled := part <= TightResolution || sum+part < 2*t.um ||
+		max(na.Um, nb.Um) < t.um && (t.j.ceiling(a, b, na) < t.um || t.j.ceiling(a, b, nb) < t.um)
 	if settled {
 		if n := len(t.out); n > 0 && t.out[n-1].To == from {
 			t.out[n-1].To = to
@@ -209,6 +239,14 @@ func (t *tightener) halve(from, to float64, na, nb clearance.Nearest) {
 	nm := t.j.At(Along(t.a, t.b, mid))
 	t.halve(from, mid, na, nm)
 	t.halve(mid, to, nm, nb)
+}
+
+// keeps says whether the clearance along ab is um or more.
+func (j *Judge) keeps(a, b geom.Point, um float64) bool {
+	if um == math.Floor(um) {
+		return j.Field.SegmentClear(a, b, int64(um))
+	}
+	return j.Segment(a, b).Um >= um
 }
 
 // Along is the point at a share of the way from a to b.

@@ -84,3 +84,49 @@ func TestTightAgainstSamples(t *testing.T) {
 		}
 	})
 }
+
+// What a piece costs against sampling: the levels that clearance is below, at the middle of
+// many equal parts.
+func TestWeighAgainstSamples(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := drawFloor(t)
+		f, err := clearance.Build(context.Background(), m)
+		if err != nil {
+			t.Fatal(err)
+		}
+		j := judge.New(f, rules.Of(m), rapid.Int64Range(0, 300_000).Draw(t, "need"), 0)
+		j.Grade(rapid.Float64Range(0.5, 4).Draw(t, "weight"), rapid.Int64Range(300_000, 2_500_000).Draw(t, "wide"))
+		in := func(label string) geom.Point {
+			return geom.Point{X: float64(rapid.Int64Range(0, 5_000_000).Draw(t, label)), Y: float64(rapid.Int64Range(0, 4_000_000).Draw(t, label))}
+		}
+		a, b := in("a"), in("b")
+		if f.Segment(a, b).Um < float64(j.NeedUm) {
+			return
+		}
+		got, least := j.Weigh(a, b)
+		long := geom.Dist(a, b)
+		const samples = 2000
+		want, changes, last := long, 0, -1
+		for k := range samples {
+			below := 0
+			for _, um := range j.Levels {
+				if f.At(judge.Along(a, b, (float64(k)+0.5)/samples)).Um < float64(um) {
+					below++
+				}
+			}
+			want += j.Weight / float64(len(j.Levels)) * float64(below) * long / samples
+			if below != last {
+				changes, last = changes+max(below-last, last-below), below
+			}
+		}
+		// Each change of level is off by half a sample and by the resolution; two changes
+		// may hide between two samples.
+		each := j.Weight / float64(len(j.Levels)) * (long/samples + judge.TightResolution)
+		if got < want-float64(changes+4)*each || got > want+float64(changes+4)*each {
+			t.Fatalf("costs %f, sampled %f, %d changes", got, want, changes)
+		}
+		if low := min(f.Segment(a, b).Um, float64(j.Levels[0])); least < low-1e-3 || least > f.Segment(a, b).Um+1e-3 {
+			t.Fatalf("smallest clearance %f, is %f", least, low)
+		}
+	})
+}

@@ -46,7 +46,10 @@ type Mask struct {
 	set    floor.Settings
 	nx, ny int
 	blocks []atomic.Pointer[Block]
+	parts  []atomic.Pointer[parts]
 	used   atomic.Int64 // by Set, for eviction
+
+	regions regions
 }
 
 func newMask(k Key, f *clearance.Field, r *rules.Rules) *Mask {
@@ -55,6 +58,7 @@ func newMask(k Key, f *clearance.Field, r *rules.Rules) *Mask {
 		nx: (s.Columns + floor.BlockSize - 1) / floor.BlockSize,
 		ny: (s.Rows + floor.BlockSize - 1) / floor.BlockSize}
 	m.blocks = make([]atomic.Pointer[Block], m.nx*m.ny)
+	m.parts = make([]atomic.Pointer[parts], m.nx*m.ny)
 	return m
 }
 

@@ -11,10 +11,10 @@ import (
 	"example.com/wideberth/planner/internal/rules"
 )
 
-// Limit is how many masks a Set keeps: three for each of a dozen kinds of body.
+// Limit is how many masks a Set keeps: five for each of a dozen kinds of body.
 // One more than that drops the one used longest ago, which costs time when it is
 // asked for again and changes no answer.
-const Limit = 36
+const Limit = 60
 
 // Set is the masks of one version, one for each Key asked for.
 type Set struct {
@@ -114,6 +114,7 @@ func (m *Mask) carry(f *clearance.Field, r *rules.Rules, same []bool, changed []
 			}
 		}
 		n.blocks[i].Store(b)
+		n.parts[i].Store(m.parts[i].Load())
 	}
 	return n
 }

@@ -19,6 +19,20 @@ var (
 	sides = [8]uint8{4: 1 | 2, 5: 2 | 4, 6: 4 | 8, 7: 8 | 1}
 )
 
+// moves are the possible moves, a bit each, for every pattern of free cells about one:
+// three bits each for the row below, its own and the row above, from left to right.
+var moves = func() (t [512]uint8) {
+	for i := range t {
+		for d := range 8 {
+			at := 3*(moveY[d]+1) + moveX[d] + 1
+			if i>>at&1 == 1 && (d < 4 || t[i]&sides[d] == sides[d]) {
+				t[i] |= 1 << d
+			}
+		}
+	}
+	return t
+}()
+
 // Costs are whole numbers: a straight step is 2^scale, a diagonal one sqrt 2 times that,
 // rounded. Sums do not depend on their order, so that ties are ties. scale is 32,
 // less where the floor is so large or the weight so heavy that the dearest simple
@@ -28,73 +42,86 @@ var (
 const maxScale = 32
 
 type gridCosts struct {
-	unit         float64 // micrometres in one whole-number unit
-	flat, across [2]int64
+	unit  float64 // micrometres in one whole-number unit
+	scale int
+	// Half a step by the number of levels (Query.Levels) that a cell is below.
+	flat, across [MaxLevels + 1]int64
 }
 
 func newGridCosts(q *Query) gridCosts {
 	cells := bits.Len(uint(q.Frame.Cols * q.Frame.Rows))
 	weight := bits.Len(uint(math.Ceil(1.5 * (1 + q.Weight))))
-	scale := min(maxScale, 61-cells-weight)
-	// Half a step in an open cell and in any other.
-	one := math.Ldexp(1, scale-1)
-	heavy := 1 + q.Weight
-	return gridCosts{
-		unit:   q.Frame.Res / math.Ldexp(1, scale),
-		flat:   [2]int64{int64(one), int64(math.Round(one * heavy))},
-		across: [2]int64{int64(math.Round(one * math.Sqrt2)), int64(math.Round(one * math.Sqrt2 * heavy))},
+	c := gridCosts{scale: min(maxScale, 61-cells-weight)}
+	c.unit = q.Frame.Res / math.Ldexp(1, c.scale)
+	half := math.Ldexp(1, c.scale-1)
+	for k := range c.flat {
+		f := q.factor(k)
+		c.flat[k] = int64(math.Round(half * f))
+		c.across[k] = int64(math.Round(half * math.Sqrt2 * f))
 	}
+	return c
 }
 
 func (c *gridCosts) fromUm(um float64) int64 { return int64(math.Round(um / c.unit)) }
 
 // octile is the least cost between cells dx columns and dy rows apart.
 func (c *gridCosts) octile(dx, dy int64, diagonal bool) int64 {
-	dx, dy = max(dx, -dx), max(dy, -dy)
 	if !diagonal {
 		return 2 * c.flat[0] * (dx + dy)
 	}
 	return 2*c.across[0]*min(dx, dy) + 2*c.flat[0]*max(dx-dy, dy-dx)
 }
 
-// grid is one A* search over the free cells.
+// grid is one A* search over the free cells. A node's number is its block's times the
+// cells in a block plus its place in there.
 type grid struct {
 	*Query
 	costs    gridCosts
 	diagonal bool
+	can      uint8 // the moves there are
 	tiles    *tiles
-	open     queue
-	moves    int
-	goal     map[int64]int // cell number to index in To
-	lo, hi   Cell          // rectangle of To's cells
-	least    int64         // least cost of To's links
-	escort   *flood
-	met      bool // the escort has met the search
+	open     *buckets
+	goal     map[uint32]int // node's number to index in To
+	lo, hi   Cell           // rectangle of To's cells
+	least    int64          // least cost of To's links
 }
 
-var queuePool = sync.Pool{New: func() any { return new(queue) }}
+var bucketPool = sync.Pool{New: func() any { return new(buckets) }}
 
-// goalID is the node that stands for the far end of every link of To.
-const goalID = 1 << 40
+// Numbers from goalID on stand for the far ends of the links of To.
+const goalID = math.MaxUint32 - 1<<16
+
+// connectAfter is how many nodes a search opens before it asks whether the goal is
+// connected at all: what that costs is known to be worth it then.
+const connectAfter = 4096
+
+// bucketsPerStep is how many lists of the queue a straight step spans, as a power of 2.
+const bucketsPerStep = 8
 
 // Grid searches the grid: 8-connected with the octile distance as heuristic, or
 // 4-connected with the Manhattan distance.
 func Grid(ctx context.Context, q *Query, diagonal bool) (Path, Outcome, error) {
-	g := &grid{Query: q, costs: newGridCosts(q), diagonal: diagonal, tiles: newTiles(q), moves: 4, goal: map[int64]int{}}
+	g := &grid{Query: q, costs: newGridCosts(q), diagonal: diagonal, tiles: newTiles(q), can: 0x0f, goal: map[uint32]int{}}
 	if diagonal {
-		g.moves = 8
+		g.can = 0xff
 	}
-	heap := queuePool.Get().(*queue)
-	g.open = (*heap)[:0]
+	g.open = bucketPool.Get().(*buckets)
+	g.open.reset(g.costs.scale - bucketsPerStep)
 	defer func() {
 		g.tiles.release()
-		*heap = g.open[:0]
-		queuePool.Put(heap)
+		bucketPool.Put(g.open)
 	}()
 	return g.run(ctx)
 }
 
-func (g *grid) number(c Cell) int64 { return int64(c.Row)*int64(g.Frame.Cols) + int64(c.Col) }
+func (g *grid) number(c Cell) uint32 {
+	return uint32(c.Row/side*g.tiles.nx+c.Col/side)*cellsIn + uint32(c.Row%side*side+c.Col%side)
+}
+
+func (g *grid) cell(id uint32) Cell {
+	block, k := int(id/cellsIn), int(id%cellsIn)
+	return Cell{block%g.tiles.nx*side + k%side, block/g.tiles.nx*side + k/side}
+}
 
 func (g *grid) run(ctx context.Context) (Path, Outcome, error) {
 	if len(g.From) == 0 {
@@ -107,40 +134,53 @@ func (g *grid) run(ctx context.Context) (Path, Outcome, error) {
 	g.least = math.MaxInt64
 	for i, l := range g.To {
 		g.goal[g.number(l.Cell)] = i
+		g.tiles.at(l.Cell.Col/side, l.Cell.Row/side).goal = true
 		g.lo = Cell{min(g.lo.Col, l.Cell.Col), min(g.lo.Row, l.Cell.Row)}
 		g.hi = Cell{max(g.hi.Col, l.Cell.Col), max(g.hi.Row, l.Cell.Row)}
 		g.least = min(g.least, g.costs.fromUm(l.CostUm))
 	}
-	for _, l := range g.From {
-		g.queue(l.Cell, g.costs.fromUm(l.CostUm), isSource)
+	// The cheapest first, so that keys do not fall below the queue's front.
+	order := make([]int, len(g.From))
+	for i := range order {
+		order[i] = i
+	}
+	cost := func(i int) int64 { return g.costs.fromUm(g.From[i].CostUm) }
+	slices.SortFunc(order, func(i, k int) int {
+		a, b := cost(i)+g.heuristic(g.From[i].Cell), cost(k)+g.heuristic(g.From[k].Cell)
+		switch {
+		case a < b:
+			return -1
+		case a > b:
+			return 1
+		}
+		return i - k
+	})
+	for _, i := range order {
+		c := g.From[i].Cell
+		t := g.tiles.at(c.Col/side, c.Row/side)
+		k := c.Row%side*side + c.Col%side
+		t.state[k], t.cost[k] = isSource, cost(i)
+		g.push(c, cost(i), g.number(c))
 	}
 	p := poll{ctx: ctx}
-	for len(g.open) > 0 {
-		e := g.open.pop()
-		if e.id() == goalID {
-			return g.path(e.key, int(e.dir())), Found, nil
+	for !g.open.empty() {
+		f, id := g.open.pop()
+		if id >= goalID {
+			return g.path(f, int(id-goalID)), Found, nil
 		}
-		if !g.expand(e) {
+		if !g.expand(id) {
 			continue
 		}
 		if err := p.err(); err != nil {
 			return Path{}, Found, err
 		}
-		if g.Count.Expanded++; p.n == escortAfter {
-			g.escort = newFlood(g.Query, g.To, true, g.meet)
-		}
-		if g.escort != nil && !g.met && g.escort.step(escortSteps) && !g.met {
-			return Path{}, ToShut, nil
+		if g.Count.Expanded++; p.n == connectAfter {
+			if out := Connected(g.Query); out != Found {
+				return Path{}, out, nil
+			}
 		}
 	}
 	return Path{}, FromShut, nil
-}
-
-// meet is told of the cells that the escort comes to.
-func (g *grid) meet(c Cell) {
-	if t := g.tiles.all[c.Row/side*g.tiles.nx+c.Col/side]; t != nil && t.state[(c.Row%side)*side+c.Col%side]&isClosed != 0 {
-		g.met = true
-	}
 }
 
 // heuristic is the least that the way from c to the goal can cost.
@@ -150,82 +190,98 @@ func (g *grid) heuristic(c Cell) int64 {
 	return g.costs.octile(int64(dx), int64(dy), g.diagonal) + g.least
 }
 
-// queue puts a free cell into the queue unless it is there as cheaply already.
-func (g *grid) queue(c Cell, cost int64, dir uint8) {
-	t := g.tiles.at(c.Col/side, c.Row/side)
-	g.queueIn(t, (c.Row%side)*side+c.Col%side, c, cost, dir)
-}
-
-func (g *grid) queueIn(t *tile, k int, c Cell, cost int64, dir uint8) {
-	s := t.state[k]
-	if s&isClosed != 0 || s != unseen && t.cost[k] <= cost {
-		return
-	}
-	t.state[k], t.cost[k] = dir, cost
-	g.open.push(newEntry(cost+g.heuristic(c), cost, g.number(c), dir))
+func (g *grid) push(c Cell, cost int64, id uint32) {
+	g.open.push(cost+g.heuristic(c), id)
 	g.Count.Queued++
 }
 
-// expand closes a node and queues its neighbours; false for a stale entry.
-func (g *grid) expand(e entry) bool {
-	c := Cell{int(e.id() % int64(g.Frame.Cols)), int(e.id() / int64(g.Frame.Cols))}
-	t := g.tiles.at(c.Col/side, c.Row/side)
-	x, y := c.Col%side, c.Row%side
-	k := y*side + x
+// expand closes a node and queues its neighbours; false for a node closed before.
+func (g *grid) expand(id uint32) bool {
+	block, k := int(id/cellsIn), int(id%cellsIn)
+	t := g.tiles.all[block]
 	if t.state[k]&isClosed != 0 {
 		return false
 	}
-	t.close(k, e.dir())
-	g0, heavy := e.tie, tight(t, x, y)
-	if i, ok := g.goal[e.id()]; ok {
-		cost := g0 + g.costs.fromUm(g.To[i].CostUm)
-		g.open.push(newEntry(cost, cost, goalID, uint8(i)))
+	here := t.cost[k]
+	t.close(k)
+	if t.goal {
+		if i, ok := g.goal[id]; ok {
+			g.open.push(here+g.costs.fromUm(g.To[i].CostUm), goalID+uint32(i))
+		}
 	}
-	var can uint8 // straight moves that are possible
-	inner := x > 0 && x < side-1 && y > 0 && y < side-1
-	for d := range g.moves {
-		if d >= 4 && can&sides[d] != sides[d] {
+	x, y := k%side, k/side
+	c := Cell{t.col + x, t.row + y}
+	flat, across := here+g.costs.flat[t.class[k]], here+g.costs.across[t.class[k]]
+	if x == 0 || x == side-1 || y == 0 || y == side-1 {
+		g.expandRim(t, c, k, flat, across)
+		return true
+	}
+	around := t.free[y-1]>>(x-1)&7 | t.free[y]>>(x-1)&7<<3 | t.free[y+1]>>(x-1)&7<<6
+	for m := moves[around] & g.can; m != 0; m &= m - 1 {
+		d := bits.TrailingZeros8(m)
+		n := k + moveY[d]*side + moveX[d]
+		s := t.state[n]
+		if s&isClosed != 0 {
 			continue
 		}
-		nx, ny := x+moveX[d], y+moveY[d]
-		n, to := t, Cell{c.Col + moveX[d], c.Row + moveY[d]}
-		if !inner {
-			if uint(to.Col) >= uint(g.Frame.Cols) || uint(to.Row) >= uint(g.Frame.Rows) {
-				continue
-			}
-			if uint(nx) >= side || uint(ny) >= side {
-				n = g.tiles.at(to.Col/side, to.Row/side)
-				nx, ny = nx&(side-1), ny&(side-1)
-			}
+		cost := flat + g.costs.flat[t.class[n]]
+		if d >= 4 {
+			cost = across + g.costs.across[t.class[n]]
 		}
-		if n.free[ny]>>nx&1 == 0 {
+		if s != unseen && t.cost[n] <= cost {
+			continue
+		}
+		to := Cell{c.Col + moveX[d], c.Row + moveY[d]}
+		if t.oneWay && g.against(c, to) {
+			continue
+		}
+		t.state[n], t.cost[n] = uint8(d+1), cost
+		g.push(to, cost, id-uint32(k)+uint32(n))
+	}
+	return true
+}
+
+// expandRim queues the neighbours of a cell along its block's rim.
+func (g *grid) expandRim(t *tile, c Cell, k int, flat, across int64) {
+	var can uint8 // straight moves that are possible
+	for d := range 8 {
+		if g.can>>d&1 == 0 || d >= 4 && can&sides[d] != sides[d] {
+			continue
+		}
+		to := Cell{c.Col + moveX[d], c.Row + moveY[d]}
+		if uint(to.Col) >= uint(g.Frame.Cols) || uint(to.Row) >= uint(g.Frame.Rows) {
+			continue
+		}
+		u := t
+		if to.Col/side != c.Col/side || to.Row/side != c.Row/side {
+			u = g.tiles.at(to.Col/side, to.Row/side)
+		}
+		x, y := to.Col%side, to.Row%side
+		if u.free[y]>>x&1 == 0 {
 			continue
 		}
 		if d < 4 {
 			can |= 1 << d
 		}
-		nk := ny*side + nx
-		if n.state[nk]&isClosed != 0 {
+		n := y*side + x
+		s := u.state[n]
+		if s&isClosed != 0 {
 			continue
 		}
-		if (t.oneWay || n.oneWay) && g.Rules.Against(g.Frame.Centre(c), g.Frame.Centre(to), rules.StepSlackUm) != nil {
-			continue
-		}
-		half := &g.costs.flat
+		cost := flat + g.costs.flat[u.class[n]]
 		if d >= 4 {
-			half = &g.costs.across
+			cost = across + g.costs.across[u.class[n]]
 		}
-		g.queueIn(n, nk, to, g0+half[heavy]+half[tight(n, nx, ny)], uint8(d+1))
+		if s != unseen && u.cost[n] <= cost || (t.oneWay || u.oneWay) && g.against(c, to) {
+			continue
+		}
+		u.state[n], u.cost[n] = uint8(d+1), cost
+		g.push(to, cost, g.number(to))
 	}
-	return true
 }
 
-// tight is 1 where a metre costs more.
-func tight(t *tile, x, y int) int {
-	if t.open == nil || t.open[y]>>x&1 == 1 {
-		return 0
-	}
-	return 1
+func (g *grid) against(a, b Cell) bool {
+	return g.Rules.Against(g.Frame.Centre(a), g.Frame.Centre(b), rules.StepSlackUm) != nil
 }
 
 func (g *grid) path(cost int64, to int) Path {

@@ -14,12 +14,11 @@ import (
 // Class is what all cells of a quadtree leaf are.
 type Class uint8
 
-// The classes.
+// The classes. A free leaf's is ClassOpen plus the number of levels that it is not in.
 const (
 	ClassBlocked Class = iota // not free
 	ClassOpen                 // free, a metre costs one
-	ClassTight                // free, a metre costs more
-	classMixed
+	classMixed   = ClassOpen + MaxLevels + 1
 )
 
 // Leaf is a square of 1, 2, 4 .. 64 cells a side, aligned to its side, all of one class.
@@ -31,18 +30,20 @@ type Leaf struct {
 }
 
 // LeafAt is the leaf that holds a cell of the floor, or of the block beyond its edge
-// that a cell of the floor is in. open may be nil: every free cell is open.
-func LeafAt(free, open *mask.Mask, c Cell) Leaf {
-	f := free.Block(c.Col/side, c.Row/side)
-	var o *mask.Block
-	if open != nil {
-		o = open.Block(c.Col/side, c.Row/side)
+// that a cell of the floor is in. levels are as in Query.
+func LeafAt(free *mask.Mask, levels []*mask.Mask, c Cell) Leaf {
+	var blocks [1 + MaxLevels]*mask.Block
+	bx, by := c.Col/side, c.Row/side
+	blocks[0] = free.Block(bx, by)
+	for i, m := range levels {
+		blocks[1+i] = m.Block(bx, by)
 	}
+	b := blocks[:1+len(levels)]
 	x, y := c.Col%side, c.Row%side
-	leaf := Leaf{c.Col, c.Row, 1, classOf(f, o, x, y, 1)}
+	leaf := Leaf{c.Col, c.Row, 1, classOf(b, x, y, 1)}
 	for size := 2; size <= side; size *= 2 {
 		lx, ly := x&^(size-1), y&^(size-1)
-		if classOf(f, o, lx, ly, size) == classMixed {
+		if classOf(b, lx, ly, size) == classMixed {
 			break
 		}
 		leaf.Col, leaf.Row, leaf.Size = c.Col-x+lx, c.Row-y+ly, size
@@ -50,29 +51,26 @@ func LeafAt(free, open *mask.Mask, c Cell) Leaf {
 	return leaf
 }
 
-func classOf(free, open *mask.Block, x, y, size int) Class {
+// classOf is a square's class, by the free cells and then the levels.
+func classOf(blocks []*mask.Block, x, y, size int) Class {
 	row := (uint64(math.MaxUint64) >> (64 - size)) << x
-	var orF, orO uint64
-	andF, andO := row, row
-	for k := y; k < y+size; k++ {
-		orF |= free[k] & row
-		andF &= free[k]
-		if open != nil {
-			orO |= free[k] & open[k] & row
-			andO &= open[k]
+	class := ClassOpen
+	for i, b := range blocks {
+		or, and := uint64(0), row
+		for k := y; k < y+size; k++ {
+			or |= b[k] & row
+			and &= b[k]
+		}
+		switch {
+		case or != 0 && and != row:
+			return classMixed
+		case or == 0 && i == 0:
+			return ClassBlocked
+		case or == 0:
+			class++
 		}
 	}
-	switch {
-	case orF == 0:
-		return ClassBlocked
-	case andF != row:
-		return classMixed
-	case open == nil || andO == row:
-		return ClassOpen
-	case orO == 0:
-		return ClassTight
-	}
-	return classMixed
+	return class
 }
 
 // portal is the shared stretch of two leaves' borders, and the way it is crossed. The
@@ -162,7 +160,7 @@ func Quadtree(ctx context.Context, q *Query) (Path, Outcome, error) {
 	return s.run(ctx)
 }
 
-func (s *quad) leaf(c Cell) Leaf { return LeafAt(s.Free, s.Open, c) }
+func (s *quad) leaf(c Cell) Leaf { return LeafAt(s.Free, s.Levels, c) }
 
 // push queues a node. The heuristic is the straight distance to the nearest link.
 func (s *quad) push(i int32) {
@@ -204,10 +202,7 @@ func (s *quad) expand(i int32) {
 	} else {
 		leaf = s.leaf(p.into())
 	}
-	factor := 1.0
-	if leaf.Class == ClassTight {
-		factor += s.Weight
-	}
+	factor := s.factor(int(leaf.Class - ClassOpen))
 	key := Cell{leaf.Col, leaf.Row}
 	for _, k := range s.goals[key] {
 		l := &s.To[k]

@@ -3,8 +3,8 @@
 // Raphael, "A Formal Basis for the Heuristic Determination of Minimum Cost
 // Paths", IEEE TSSC 4(2), 1968); and, when there is no way, the widest one.
 //
-// A search owns its state. Given the same query it does the same: ties go by f, then
-// larger g, then the lower number of the node.
+// A search owns its state. Given the same query it does the same: ties on grids go to the
+// node queued last, in the quadtree to larger g and then to the node found first.
 package roadmap
 
 import (
@@ -35,16 +35,30 @@ type Link struct {
 // Counters say how much a search did.
 type Counters struct{ Expanded, Queued int64 }
 
+// MaxLevels is how many levels a Query has at most.
+const MaxLevels = 8
+
 // Query is a question to a roadmap.
 type Query struct {
-	Frame  Frame
-	Free   *mask.Mask // cells that are nodes
-	Open   *mask.Mask // cells in which a metre costs one; nil: all are
-	Weight float64    // what a metre costs on top elsewhere
+	Frame Frame
+	Free  *mask.Mask // cells that are nodes
+	// Levels are masks that narrow the free cells, each holding all cells of the one before
+	// it. A metre in a cell of the first costs one; in cells of none of them it costs
+	// Weight on top; between, in equal steps.
+	Levels []*mask.Mask
+	Weight float64
 	Rules  *rules.Rules
 	From   []Link // each in a free cell, no two in one cell
 	To     []Link
 	Count  *Counters
+}
+
+// factor is what a metre costs in a cell that is in all but k of the levels.
+func (q *Query) factor(k int) float64 {
+	if len(q.Levels) == 0 {
+		return 1
+	}
+	return 1 + float64(q.Weight*float64(k))/float64(len(q.Levels))
 }
 
 // Path is the cheapest way over the roadmap from one of Query.From to one of

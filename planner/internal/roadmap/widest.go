@@ -4,6 +4,7 @@ import (
 	"context"
 	"math"
 	"slices"
+	"sync"
 
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/clearance"
@@ -44,8 +45,14 @@ type wide struct {
 	open queue
 }
 
-// The moves into a cell that are not from a neighbour.
-const fromStart = 9
+// fromStart is the move into a cell that is not from a neighbour, and wideGoal the number
+// of the far end.
+const (
+	fromStart = 9
+	wideGoal  = 1 << 40
+)
+
+var queuePool = sync.Pool{New: func() any { return new(queue) }}
 
 // Widest gives a way from From to To (from To to From when Backward) over middles of cells, joined where the straight
 // piece keeps more than 0 clearance, such that the smallest clearance along it, as
@@ -74,7 +81,7 @@ func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, er
 	p := poll{ctx: ctx}
 	for w.next < len(w.sure) || len(w.open) > 0 {
 		e := w.take()
-		if e.id() == goalID {
+		if e.id() == wideGoal {
 			return w.way(e.tie), true, nil
 		}
 		c := Cell{int(e.id() % int64(q.Frame.Cols)), int(e.id() / int64(q.Frame.Cols))}
@@ -91,7 +98,7 @@ func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, er
 		if last[e.id()] {
 			if v := min(-e.key, w.value(here, q.To, false)); v > 0 {
 				// tie carries the cell; the goal comes before any other node of its key.
-				w.put(newEntry(-v, e.id(), goalID, 0))
+				w.put(newEntry(-v, e.id(), wideGoal, 0))
 			}
 		}
 		clear := int64(q.Field.CellLower(c.Col, c.Row)) >= q.NeedUm

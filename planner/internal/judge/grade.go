@@ -1,0 +1,58 @@
+package judge
+
+import (
+	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/clearance"
+)
+
+// grader adds up, over the segment ab, how many levels clearance is below, in
+// micrometres times levels. Where it cannot tell within TightResolution it counts the more.
+type grader struct {
+	j    *Judge
+	a, b geom.Point
+	long float64
+	sum  float64
+}
+
+// below is how many levels a clearance is below.
+func (j *Judge) below(um float64) int {
+	k := 0
+	for k < len(j.Levels) && um < float64(j.Levels[k]) {
+		k++
+	}
+	return k
+}
+
+func (g *grader) halve(from, to float64, na, nb clearance.Nearest) {
+	j := g.j
+	part := float64((to - from) * g.long)
+	// Clearance changes no faster than one goes.
+	sum := na.Um + nb.Um
+	most, least := j.below((sum-part)/2), j.below((sum+part)/2)
+	if most != least && part > TightResolution {
+		k := j.below(na.Um)
+		if k != j.below(nb.Um) || !g.all(k, na, nb) {
+			mid := from + (to-from)/2
+			nm := j.At(Along(g.a, g.b, mid))
+			g.halve(from, mid, na, nm)
+			g.halve(mid, to, nm, nb)
+			return
+		}
+		most = k
+	}
+	g.sum += float64(part * float64(most))
+}
+
+// all says whether clearance is below k levels, no more and no fewer, all the way
+// between two places, as it is at both. See Tight for the ceiling.
+func (g *grader) all(k int, na, nb clearance.Nearest) bool {
+	j, a, b := g.j, na.On, nb.On
+	if k < len(j.Levels) && !j.Field.SegmentClear(a, b, j.Levels[k]) {
+		return false
+	}
+	if k == 0 {
+		return true
+	}
+	um := float64(j.Levels[k-1])
+	return j.ceiling(a, b, na) < um || j.ceiling(a, b, nb) < um
+}
