@@ -484,6 +484,59 @@ func (ReplanCause) EnumDescriptor() ([]byte, []int) {
 	return file_wideberth_v1_route_service_proto_rawDescGZIP(), []int{7}
 }
 
+// What PlanMany sends of the routes it finds.
+type PairDetail int32
+
+const (
+	// Not said: summaries.
+	PairDetail_PAIR_DETAIL_UNSPECIFIED PairDetail = 0
+	// What a route comes to, without its legs.
+	PairDetail_PAIR_DETAIL_SUMMARY PairDetail = 1
+	// The whole route.
+	PairDetail_PAIR_DETAIL_ROUTE PairDetail = 2
+)
+
+// Enum value maps for PairDetail.
+var (
+	PairDetail_name = map[int32]string{
+		0: "PAIR_DETAIL_UNSPECIFIED",
+		1: "PAIR_DETAIL_SUMMARY",
+		2: "PAIR_DETAIL_ROUTE",
+	}
+	PairDetail_value = map[string]int32{
+		"PAIR_DETAIL_UNSPECIFIED": 0,
+		"PAIR_DETAIL_SUMMARY":     1,
+		"PAIR_DETAIL_ROUTE":       2,
+	}
+)
+
+func (x PairDetail) Enum() *PairDetail {
+	p := new(PairDetail)
+	*p = x
+	return p
+}
+
+func (x PairDetail) String() string {
+	return protoimpl.X.EnumStringOf(x.Descriptor(), protoreflect.EnumNumber(x))
+}
+
+func (PairDetail) Descriptor() protoreflect.EnumDescriptor {
+	return file_wideberth_v1_route_service_proto_enumTypes[8].Descriptor()
+}
+
+func (PairDetail) Type() protoreflect.EnumType {
+	return &file_wideberth_v1_route_service_proto_enumTypes[8]
+}
+
+func (x PairDetail) Number() protoreflect.EnumNumber {
+	return protoreflect.EnumNumber(x)
+}
+
+// Deprecated: Use PairDetail.Descriptor instead.
+func (PairDetail) EnumDescriptor() ([]byte, []int) {
+	return file_wideberth_v1_route_service_proto_rawDescGZIP(), []int{8}
+}
+
 // What moves: a disc about its reference point.
 type Body struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
@@ -2087,6 +2140,590 @@ func (*ReplanResponse_Route) isReplanResponse_Outcome() {}
 
 func (*ReplanResponse_Refusal) isReplanResponse_Outcome() {}
 
+// See RouteService.PlanMany.
+type PlanManyRequest struct {
+	state protoimpl.MessageState `protogen:"open.v1"`
+	// The floor's id. REQUIRED.
+	Floor string `protobuf:"bytes,1,opt,name=floor,proto3" json:"floor,omitempty"`
+	// Which version to plan on, all pairs on the same. Not set means the head.
+	Version *VersionSelector `protobuf:"bytes,2,opt,name=version,proto3" json:"version,omitempty"`
+	// What moves. REQUIRED.
+	Body *Body `protobuf:"bytes,3,opt,name=body,proto3" json:"body,omitempty"`
+	// From where, 1 or more.
+	Starts []*Place `protobuf:"bytes,4,rep,name=starts,proto3" json:"starts,omitempty"`
+	// To where, 1 or more. Every start is paired with every goal, 1,000 pairs at most.
+	Goals []*Place `protobuf:"bytes,5,rep,name=goals,proto3" json:"goals,omitempty"`
+	// How, for every pair. Its time_budget_s is for the search of one pair.
+	Options *PlanOptions `protobuf:"bytes,6,opt,name=options,proto3" json:"options,omitempty"`
+	// What to send of each route.
+	Detail PairDetail `protobuf:"varint,7,opt,name=detail,proto3,enum=wideberth.v1.PairDetail" json:"detail,omitempty"`
+	// How long all pairs together may take, from 0.001 to 600 s, waiting for planners
+	// included. 0 asks for 60 s. A deadline of the call that comes earlier counts
+	// instead, less a tenth for the answers.
+	TimeBudgetS   float64 `protobuf:"fixed64,8,opt,name=time_budget_s,json=timeBudgetS,proto3" json:"time_budget_s,omitempty"`
+	unknownFields protoimpl.UnknownFields
+	sizeCache     protoimpl.SizeCache
+}
+
+func (x *PlanManyRequest) Reset() {
+	*x = PlanManyRequest{}
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[15]
+	ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+	ms.StoreMessageInfo(mi)
+}
+
+func (x *PlanManyRequest) String() string {
+	return protoimpl.X.MessageStringOf(x)
+}
+
+func (*PlanManyRequest) ProtoMessage() {}
+
+func (x *PlanManyRequest) ProtoReflect() protoreflect.Message {
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[15]
+	if x != nil {
+		ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+		if ms.LoadMessageInfo() == nil {
+			ms.StoreMessageInfo(mi)
+		}
+		return ms
+	}
+	return mi.MessageOf(x)
+}
+
+// Deprecated: Use PlanManyRequest.ProtoReflect.Descriptor instead.
+func (*PlanManyRequest) Descriptor() ([]byte, []int) {
+	return file_wideberth_v1_route_service_proto_rawDescGZIP(), []int{15}
+}
+
+func (x *PlanManyRequest) GetFloor() string {
+	if x != nil {
+		return x.Floor
+	}
+	return ""
+}
+
+func (x *PlanManyRequest) GetVersion() *VersionSelector {
+	if x != nil {
+		return x.Version
+	}
+	return nil
+}
+
+func (x *PlanManyRequest) GetBody() *Body {
+	if x != nil {
+		return x.Body
+	}
+	return nil
+}
+
+func (x *PlanManyRequest) GetStarts() []*Place {
+	if x != nil {
+		return x.Starts
+	}
+	return nil
+}
+
+func (x *PlanManyRequest) GetGoals() []*Place {
+	if x != nil {
+		return x.Goals
+	}
+	return nil
+}
+
+func (x *PlanManyRequest) GetOptions() *PlanOptions {
+	if x != nil {
+		return x.Options
+	}
+	return nil
+}
+
+func (x *PlanManyRequest) GetDetail() PairDetail {
+	if x != nil {
+		return x.Detail
+	}
+	return PairDetail_PAIR_DETAIL_UNSPECIFIED
+}
+
+func (x *PlanManyRequest) GetTimeBudgetS() float64 {
+	if x != nil {
+		return x.TimeBudgetS
+	}
+	return 0
+}
+
+// What all answers of a PlanMany have in common. The first message.
+type PlanManyHeader struct {
+	state protoimpl.MessageState `protogen:"open.v1"`
+	// The version that every answer speaks of.
+	Stamp *VersionStamp `protobuf:"bytes,1,opt,name=stamp,proto3" json:"stamp,omitempty"`
+	// How many answers follow: the number of starts times the number of goals.
+	PairCount int64 `protobuf:"varint,2,opt,name=pair_count,json=pairCount,proto3" json:"pair_count,omitempty"`
+	// The body, with defaults filled in.
+	Body *Body `protobuf:"bytes,3,opt,name=body,proto3" json:"body,omitempty"`
+	// The options, with defaults filled in.
+	Options       *PlanOptions `protobuf:"bytes,4,opt,name=options,proto3" json:"options,omitempty"`
+	unknownFields protoimpl.UnknownFields
+	sizeCache     protoimpl.SizeCache
+}
+
+func (x *PlanManyHeader) Reset() {
+	*x = PlanManyHeader{}
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[16]
+	ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+	ms.StoreMessageInfo(mi)
+}
+
+func (x *PlanManyHeader) String() string {
+	return protoimpl.X.MessageStringOf(x)
+}
+
+func (*PlanManyHeader) ProtoMessage() {}
+
+func (x *PlanManyHeader) ProtoReflect() protoreflect.Message {
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[16]
+	if x != nil {
+		ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+		if ms.LoadMessageInfo() == nil {
+			ms.StoreMessageInfo(mi)
+		}
+		return ms
+	}
+	return mi.MessageOf(x)
+}
+
+// Deprecated: Use PlanManyHeader.ProtoReflect.Descriptor instead.
+func (*PlanManyHeader) Descriptor() ([]byte, []int) {
+	return file_wideberth_v1_route_service_proto_rawDescGZIP(), []int{16}
+}
+
+func (x *PlanManyHeader) GetStamp() *VersionStamp {
+	if x != nil {
+		return x.Stamp
+	}
+	return nil
+}
+
+func (x *PlanManyHeader) GetPairCount() int64 {
+	if x != nil {
+		return x.PairCount
+	}
+	return 0
+}
+
+func (x *PlanManyHeader) GetBody() *Body {
+	if x != nil {
+		return x.Body
+	}
+	return nil
+}
+
+func (x *PlanManyHeader) GetOptions() *PlanOptions {
+	if x != nil {
+		return x.Options
+	}
+	return nil
+}
+
+// What a route comes to. Its fields are the route's own.
+type RouteSummary struct {
+	state protoimpl.MessageState `protogen:"open.v1"`
+	// The id of the route that Plan answers with to the same question.
+	RouteId string `protobuf:"bytes,1,opt,name=route_id,json=routeId,proto3" json:"route_id,omitempty"`
+	// Metres in all.
+	LengthM float64 `protobuf:"fixed64,2,opt,name=length_m,json=lengthM,proto3" json:"length_m,omitempty"`
+	// Seconds in all at the advised speed ceilings, without ramps.
+	DurationS float64 `protobuf:"fixed64,3,opt,name=duration_s,json=durationS,proto3" json:"duration_s,omitempty"`
+	// What the preference minimises: metres, tight ones weighted.
+	CostM float64 `protobuf:"fixed64,4,opt,name=cost_m,json=costM,proto3" json:"cost_m,omitempty"`
+	// The smallest clearance along it, rounded down; at most the floor's cap.
+	SmallestClearanceM float64 `protobuf:"fixed64,5,opt,name=smallest_clearance_m,json=smallestClearanceM,proto3" json:"smallest_clearance_m,omitempty"`
+	// Where that is.
+	SmallestAt *Point `protobuf:"bytes,6,opt,name=smallest_at,json=smallestAt,proto3" json:"smallest_at,omitempty"`
+	// How good it is.
+	Bound         *Bound `protobuf:"bytes,7,opt,name=bound,proto3" json:"bound,omitempty"`
+	unknownFields protoimpl.UnknownFields
+	sizeCache     protoimpl.SizeCache
+}
+
+func (x *RouteSummary) Reset() {
+	*x = RouteSummary{}
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[17]
+	ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+	ms.StoreMessageInfo(mi)
+}
+
+func (x *RouteSummary) String() string {
+	return protoimpl.X.MessageStringOf(x)
+}
+
+func (*RouteSummary) ProtoMessage() {}
+
+func (x *RouteSummary) ProtoReflect() protoreflect.Message {
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[17]
+	if x != nil {
+		ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+		if ms.LoadMessageInfo() == nil {
+			ms.StoreMessageInfo(mi)
+		}
+		return ms
+	}
+	return mi.MessageOf(x)
+}
+
+// Deprecated: Use RouteSummary.ProtoReflect.Descriptor instead.
+func (*RouteSummary) Descriptor() ([]byte, []int) {
+	return file_wideberth_v1_route_service_proto_rawDescGZIP(), []int{17}
+}
+
+func (x *RouteSummary) GetRouteId() string {
+	if x != nil {
+		return x.RouteId
+	}
+	return ""
+}
+
+func (x *RouteSummary) GetLengthM() float64 {
+	if x != nil {
+		return x.LengthM
+	}
+	return 0
+}
+
+func (x *RouteSummary) GetDurationS() float64 {
+	if x != nil {
+		return x.DurationS
+	}
+	return 0
+}
+
+func (x *RouteSummary) GetCostM() float64 {
+	if x != nil {
+		return x.CostM
+	}
+	return 0
+}
+
+func (x *RouteSummary) GetSmallestClearanceM() float64 {
+	if x != nil {
+		return x.SmallestClearanceM
+	}
+	return 0
+}
+
+func (x *RouteSummary) GetSmallestAt() *Point {
+	if x != nil {
+		return x.SmallestAt
+	}
+	return nil
+}
+
+func (x *RouteSummary) GetBound() *Bound {
+	if x != nil {
+		return x.Bound
+	}
+	return nil
+}
+
+// The answer for one pair.
+type PairAnswer struct {
+	state protoimpl.MessageState `protogen:"open.v1"`
+	// Which start: its place in PlanManyRequest.starts, from 0.
+	StartIndex int32 `protobuf:"varint,1,opt,name=start_index,json=startIndex,proto3" json:"start_index,omitempty"`
+	// Which goal: its place in PlanManyRequest.goals, from 0.
+	GoalIndex int32 `protobuf:"varint,2,opt,name=goal_index,json=goalIndex,proto3" json:"goal_index,omitempty"`
+	// What came out.
+	//
+	// Types that are valid to be assigned to Outcome:
+	//
+	//	*PairAnswer_Summary
+	//	*PairAnswer_Route
+	//	*PairAnswer_Refusal
+	Outcome isPairAnswer_Outcome `protobuf_oneof:"outcome"`
+	// How much the search did for this pair. An end is looked at once for all pairs it
+	// is in; what explaining a blocked one took is counted with one of them.
+	Counters      *SearchCounters `protobuf:"bytes,6,opt,name=counters,proto3" json:"counters,omitempty"`
+	unknownFields protoimpl.UnknownFields
+	sizeCache     protoimpl.SizeCache
+}
+
+func (x *PairAnswer) Reset() {
+	*x = PairAnswer{}
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[18]
+	ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+	ms.StoreMessageInfo(mi)
+}
+
+func (x *PairAnswer) String() string {
+	return protoimpl.X.MessageStringOf(x)
+}
+
+func (*PairAnswer) ProtoMessage() {}
+
+func (x *PairAnswer) ProtoReflect() protoreflect.Message {
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[18]
+	if x != nil {
+		ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+		if ms.LoadMessageInfo() == nil {
+			ms.StoreMessageInfo(mi)
+		}
+		return ms
+	}
+	return mi.MessageOf(x)
+}
+
+// Deprecated: Use PairAnswer.ProtoReflect.Descriptor instead.
+func (*PairAnswer) Descriptor() ([]byte, []int) {
+	return file_wideberth_v1_route_service_proto_rawDescGZIP(), []int{18}
+}
+
+func (x *PairAnswer) GetStartIndex() int32 {
+	if x != nil {
+		return x.StartIndex
+	}
+	return 0
+}
+
+func (x *PairAnswer) GetGoalIndex() int32 {
+	if x != nil {
+		return x.GoalIndex
+	}
+	return 0
+}
+
+func (x *PairAnswer) GetOutcome() isPairAnswer_Outcome {
+	if x != nil {
+		return x.Outcome
+	}
+	return nil
+}
+
+func (x *PairAnswer) GetSummary() *RouteSummary {
+	if x != nil {
+		if x, ok := x.Outcome.(*PairAnswer_Summary); ok {
+			return x.Summary
+		}
+	}
+	return nil
+}
+
+func (x *PairAnswer) GetRoute() *Route {
+	if x != nil {
+		if x, ok := x.Outcome.(*PairAnswer_Route); ok {
+			return x.Route
+		}
+	}
+	return nil
+}
+
+func (x *PairAnswer) GetRefusal() *Refusal {
+	if x != nil {
+		if x, ok := x.Outcome.(*PairAnswer_Refusal); ok {
+			return x.Refusal
+		}
+	}
+	return nil
+}
+
+func (x *PairAnswer) GetCounters() *SearchCounters {
+	if x != nil {
+		return x.Counters
+	}
+	return nil
+}
+
+type isPairAnswer_Outcome interface {
+	isPairAnswer_Outcome()
+}
+
+type PairAnswer_Summary struct {
+	// A route, with PAIR_DETAIL_SUMMARY.
+	Summary *RouteSummary `protobuf:"bytes,3,opt,name=summary,proto3,oneof"`
+}
+
+type PairAnswer_Route struct {
+	// A route, with PAIR_DETAIL_ROUTE.
+	Route *Route `protobuf:"bytes,4,opt,name=route,proto3,oneof"`
+}
+
+type PairAnswer_Refusal struct {
+	// No route.
+	Refusal *Refusal `protobuf:"bytes,5,opt,name=refusal,proto3,oneof"`
+}
+
+func (*PairAnswer_Summary) isPairAnswer_Outcome() {}
+
+func (*PairAnswer_Route) isPairAnswer_Outcome() {}
+
+func (*PairAnswer_Refusal) isPairAnswer_Outcome() {}
+
+// The end mark, with what was sent. The last message.
+type PlanManyEnd struct {
+	state protoimpl.MessageState `protogen:"open.v1"`
+	// How many pairs were answered with a route.
+	RouteCount int64 `protobuf:"varint,1,opt,name=route_count,json=routeCount,proto3" json:"route_count,omitempty"`
+	// How many were refused, those below included.
+	RefusalCount int64 `protobuf:"varint,2,opt,name=refusal_count,json=refusalCount,proto3" json:"refusal_count,omitempty"`
+	// How many were refused because time ran out: asking for them again may help.
+	OutOfTimeCount int64 `protobuf:"varint,3,opt,name=out_of_time_count,json=outOfTimeCount,proto3" json:"out_of_time_count,omitempty"`
+	unknownFields  protoimpl.UnknownFields
+	sizeCache      protoimpl.SizeCache
+}
+
+func (x *PlanManyEnd) Reset() {
+	*x = PlanManyEnd{}
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[19]
+	ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+	ms.StoreMessageInfo(mi)
+}
+
+func (x *PlanManyEnd) String() string {
+	return protoimpl.X.MessageStringOf(x)
+}
+
+func (*PlanManyEnd) ProtoMessage() {}
+
+func (x *PlanManyEnd) ProtoReflect() protoreflect.Message {
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[19]
+	if x != nil {
+		ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+		if ms.LoadMessageInfo() == nil {
+			ms.StoreMessageInfo(mi)
+		}
+		return ms
+	}
+	return mi.MessageOf(x)
+}
+
+// Deprecated: Use PlanManyEnd.ProtoReflect.Descriptor instead.
+func (*PlanManyEnd) Descriptor() ([]byte, []int) {
+	return file_wideberth_v1_route_service_proto_rawDescGZIP(), []int{19}
+}
+
+func (x *PlanManyEnd) GetRouteCount() int64 {
+	if x != nil {
+		return x.RouteCount
+	}
+	return 0
+}
+
+func (x *PlanManyEnd) GetRefusalCount() int64 {
+	if x != nil {
+		return x.RefusalCount
+	}
+	return 0
+}
+
+func (x *PlanManyEnd) GetOutOfTimeCount() int64 {
+	if x != nil {
+		return x.OutOfTimeCount
+	}
+	return 0
+}
+
+// See RouteService.PlanMany.
+type PlanManyResponse struct {
+	state protoimpl.MessageState `protogen:"open.v1"`
+	// What it carries. A part that a client does not know of may be passed over.
+	//
+	// Types that are valid to be assigned to Part:
+	//
+	//	*PlanManyResponse_Header
+	//	*PlanManyResponse_Answer
+	//	*PlanManyResponse_End
+	Part          isPlanManyResponse_Part `protobuf_oneof:"part"`
+	unknownFields protoimpl.UnknownFields
+	sizeCache     protoimpl.SizeCache
+}
+
+func (x *PlanManyResponse) Reset() {
+	*x = PlanManyResponse{}
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[20]
+	ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+	ms.StoreMessageInfo(mi)
+}
+
+func (x *PlanManyResponse) String() string {
+	return protoimpl.X.MessageStringOf(x)
+}
+
+func (*PlanManyResponse) ProtoMessage() {}
+
+func (x *PlanManyResponse) ProtoReflect() protoreflect.Message {
+	mi := &file_wideberth_v1_route_service_proto_msgTypes[20]
+	if x != nil {
+		ms := protoimpl.X.MessageStateOf(protoimpl.Pointer(x))
+		if ms.LoadMessageInfo() == nil {
+			ms.StoreMessageInfo(mi)
+		}
+		return ms
+	}
+	return mi.MessageOf(x)
+}
+
+// Deprecated: Use PlanManyResponse.ProtoReflect.Descriptor instead.
+func (*PlanManyResponse) Descriptor() ([]byte, []int) {
+	return file_wideberth_v1_route_service_proto_rawDescGZIP(), []int{20}
+}
+
+func (x *PlanManyResponse) GetPart() isPlanManyResponse_Part {
+	if x != nil {
+		return x.Part
+	}
+	return nil
+}
+
+func (x *PlanManyResponse) GetHeader() *PlanManyHeader {
+	if x != nil {
+		if x, ok := x.Part.(*PlanManyResponse_Header); ok {
+			return x.Header
+		}
+	}
+	return nil
+}
+
+func (x *PlanManyResponse) GetAnswer() *PairAnswer {
+	if x != nil {
+		if x, ok := x.Part.(*PlanManyResponse_Answer); ok {
+			return x.Answer
+		}
+	}
+	return nil
+}
+
+func (x *PlanManyResponse) GetEnd() *PlanManyEnd {
+	if x != nil {
+		if x, ok := x.Part.(*PlanManyResponse_End); ok {
+			return x.End
+		}
+	}
+	return nil
+}
+
+type isPlanManyResponse_Part interface {
+	isPlanManyResponse_Part()
+}
+
+type PlanManyResponse_Header struct {
+	// The first message.
+	Header *PlanManyHeader `protobuf:"bytes,1,opt,name=header,proto3,oneof"`
+}
+
+type PlanManyResponse_Answer struct {
+	// One pair's answer.
+	Answer *PairAnswer `protobuf:"bytes,2,opt,name=answer,proto3,oneof"`
+}
+
+type PlanManyResponse_End struct {
+	// The last message.
+	End *PlanManyEnd `protobuf:"bytes,3,opt,name=end,proto3,oneof"`
+}
+
+func (*PlanManyResponse_Header) isPlanManyResponse_Part() {}
+
+func (*PlanManyResponse_Answer) isPlanManyResponse_Part() {}
+
+func (*PlanManyResponse_End) isPlanManyResponse_Part() {}
+
 var File_wideberth_v1_route_service_proto protoreflect.FileDescriptor
 
 const file_wideberth_v1_route_service_proto_rawDesc = "" +
@@ -2238,7 +2875,53 @@ const file_wideberth_v1_route_service_proto_rawDesc = "" +
 	"\arefusal\x18\x05 \x01(\v2\x15.wideberth.v1.RefusalH\x00R\arefusal\x128\n" +
 	"\bcounters\x18\x06 \x01(\v2\x1c.wideberth.v1.SearchCountersR\bcounters\x12\x16\n" +
 	"\acut_s_m\x18\a \x01(\x01R\x05cutSMB\t\n" +
-	"\aoutcome*Z\n" +
+	"\aoutcome\"\xeb\x02\n" +
+	"\x0fPlanManyRequest\x12\x14\n" +
+	"\x05floor\x18\x01 \x01(\tR\x05floor\x127\n" +
+	"\aversion\x18\x02 \x01(\v2\x1d.wideberth.v1.VersionSelectorR\aversion\x12&\n" +
+	"\x04body\x18\x03 \x01(\v2\x12.wideberth.v1.BodyR\x04body\x12+\n" +
+	"\x06starts\x18\x04 \x03(\v2\x13.wideberth.v1.PlaceR\x06starts\x12)\n" +
+	"\x05goals\x18\x05 \x03(\v2\x13.wideberth.v1.PlaceR\x05goals\x123\n" +
+	"\aoptions\x18\x06 \x01(\v2\x19.wideberth.v1.PlanOptionsR\aoptions\x120\n" +
+	"\x06detail\x18\a \x01(\x0e2\x18.wideberth.v1.PairDetailR\x06detail\x12\"\n" +
+	"\rtime_budget_s\x18\b \x01(\x01R\vtimeBudgetS\"\xbe\x01\n" +
+	"\x0ePlanManyHeader\x120\n" +
+	"\x05stamp\x18\x01 \x01(\v2\x1a.wideberth.v1.VersionStampR\x05stamp\x12\x1d\n" +
+	"\n" +
+	"pair_count\x18\x02 \x01(\x03R\tpairCount\x12&\n" +
+	"\x04body\x18\x03 \x01(\v2\x12.wideberth.v1.BodyR\x04body\x123\n" +
+	"\aoptions\x18\x04 \x01(\v2\x19.wideberth.v1.PlanOptionsR\aoptions\"\x8d\x02\n" +
+	"\fRouteSummary\x12\x19\n" +
+	"\broute_id\x18\x01 \x01(\tR\arouteId\x12\x19\n" +
+	"\blength_m\x18\x02 \x01(\x01R\alengthM\x12\x1d\n" +
+	"\n" +
+	"duration_s\x18\x03 \x01(\x01R\tdurationS\x12\x15\n" +
+	"\x06cost_m\x18\x04 \x01(\x01R\x05costM\x120\n" +
+	"\x14smallest_clearance_m\x18\x05 \x01(\x01R\x12smallestClearanceM\x124\n" +
+	"\vsmallest_at\x18\x06 \x01(\v2\x13.wideberth.v1.PointR\n" +
+	"smallestAt\x12)\n" +
+	"\x05bound\x18\a \x01(\v2\x13.wideberth.v1.BoundR\x05bound\"\xa9\x02\n" +
+	"\n" +
+	"PairAnswer\x12\x1f\n" +
+	"\vstart_index\x18\x01 \x01(\x05R\n" +
+	"startIndex\x12\x1d\n" +
+	"\n" +
+	"goal_index\x18\x02 \x01(\x05R\tgoalIndex\x126\n" +
+	"\asummary\x18\x03 \x01(\v2\x1a.wideberth.v1.RouteSummaryH\x00R\asummary\x12+\n" +
+	"\x05route\x18\x04 \x01(\v2\x13.wideberth.v1.RouteH\x00R\x05route\x121\n" +
+	"\arefusal\x18\x05 \x01(\v2\x15.wideberth.v1.RefusalH\x00R\arefusal\x128\n" +
+	"\bcounters\x18\x06 \x01(\v2\x1c.wideberth.v1.SearchCountersR\bcountersB\t\n" +
+	"\aoutcome\"~\n" +
+	"\vPlanManyEnd\x12\x1f\n" +
+	"\vroute_count\x18\x01 \x01(\x03R\n" +
+	"routeCount\x12#\n" +
+	"\rrefusal_count\x18\x02 \x01(\x03R\frefusalCount\x12)\n" +
+	"\x11out_of_time_count\x18\x03 \x01(\x03R\x0eoutOfTimeCount\"\xb5\x01\n" +
+	"\x10PlanManyResponse\x126\n" +
+	"\x06header\x18\x01 \x01(\v2\x1c.wideberth.v1.PlanManyHeaderH\x00R\x06header\x122\n" +
+	"\x06answer\x18\x02 \x01(\v2\x18.wideberth.v1.PairAnswerH\x00R\x06answer\x12-\n" +
+	"\x03end\x18\x03 \x01(\v2\x19.wideberth.v1.PlanManyEndH\x00R\x03endB\x06\n" +
+	"\x04part*Z\n" +
 	"\n" +
 	"Preference\x12\x1a\n" +
 	"\x16PREFERENCE_UNSPECIFIED\x10\x00\x12\x17\n" +
@@ -2281,10 +2964,16 @@ const file_wideberth_v1_route_service_proto_rawDesc = "" +
 	"\x14REPLAN_CAUSE_CHEAPER\x10\x02\x12!\n" +
 	"\x1dREPLAN_CAUSE_QUESTION_CHANGED\x10\x03\x12\x1a\n" +
 	"\x16REPLAN_CAUSE_OFF_ROUTE\x10\x04\x12\x1d\n" +
-	"\x19REPLAN_CAUSE_VERSION_GONE\x10\x052\x92\x01\n" +
+	"\x19REPLAN_CAUSE_VERSION_GONE\x10\x05*Y\n" +
+	"\n" +
+	"PairDetail\x12\x1b\n" +
+	"\x17PAIR_DETAIL_UNSPECIFIED\x10\x00\x12\x17\n" +
+	"\x13PAIR_DETAIL_SUMMARY\x10\x01\x12\x15\n" +
+	"\x11PAIR_DETAIL_ROUTE\x10\x022\xdf\x01\n" +
 	"\fRouteService\x12=\n" +
 	"\x04Plan\x12\x19.wideberth.v1.PlanRequest\x1a\x1a.wideberth.v1.PlanResponse\x12C\n" +
-	"\x06Replan\x12\x1b.wideberth.v1.ReplanRequest\x1a\x1c.wideberth.v1.ReplanResponseBa\n" +
+	"\x06Replan\x12\x1b.wideberth.v1.ReplanRequest\x1a\x1c.wideberth.v1.ReplanResponse\x12K\n" +
+	"\bPlanMany\x12\x1d.wideberth.v1.PlanManyRequest\x1a\x1e.wideberth.v1.PlanManyResponse0\x01Ba\n" +
 	"\x18com.example.wideberth.v1P\x01Z4example.com/wideberth/proto/wideberth/v1;wideberthv1\xaa\x02\fWideberth.V1b\x06proto3"
 
 var (
@@ -2299,91 +2988,118 @@ func file_wideberth_v1_route_service_proto_rawDescGZIP() []byte {
 	return file_wideberth_v1_route_service_proto_rawDescData
 }
 
-var file_wideberth_v1_route_service_proto_enumTypes = make([]protoimpl.EnumInfo, 8)
-var file_wideberth_v1_route_service_proto_msgTypes = make([]protoimpl.MessageInfo, 15)
+var file_wideberth_v1_route_service_proto_enumTypes = make([]protoimpl.EnumInfo, 9)
+var file_wideberth_v1_route_service_proto_msgTypes = make([]protoimpl.MessageInfo, 21)
 var file_wideberth_v1_route_service_proto_goTypes = []any{
-	(Preference)(0),         // 0: wideberth.v1.Preference
-	(Roadmap)(0),            // 1: wideberth.v1.Roadmap
-	(SpeedCause)(0),         // 2: wideberth.v1.SpeedCause
-	(LegKind)(0),            // 3: wideberth.v1.LegKind
-	(BoundKind)(0),          // 4: wideberth.v1.BoundKind
-	(RefusalReason)(0),      // 5: wideberth.v1.RefusalReason
-	(ReplanResult)(0),       // 6: wideberth.v1.ReplanResult
-	(ReplanCause)(0),        // 7: wideberth.v1.ReplanCause
-	(*Body)(nil),            // 8: wideberth.v1.Body
-	(*Place)(nil),           // 9: wideberth.v1.Place
-	(*PlanOptions)(nil),     // 10: wideberth.v1.PlanOptions
-	(*PlanRequest)(nil),     // 11: wideberth.v1.PlanRequest
-	(*SearchCounters)(nil),  // 12: wideberth.v1.SearchCounters
-	(*RoutePoint)(nil),      // 13: wideberth.v1.RoutePoint
-	(*Leg)(nil),             // 14: wideberth.v1.Leg
-	(*Bound)(nil),           // 15: wideberth.v1.Bound
-	(*Route)(nil),           // 16: wideberth.v1.Route
-	(*BlockedEnd)(nil),      // 17: wideberth.v1.BlockedEnd
-	(*Bottleneck)(nil),      // 18: wideberth.v1.Bottleneck
-	(*Refusal)(nil),         // 19: wideberth.v1.Refusal
-	(*PlanResponse)(nil),    // 20: wideberth.v1.PlanResponse
-	(*ReplanRequest)(nil),   // 21: wideberth.v1.ReplanRequest
-	(*ReplanResponse)(nil),  // 22: wideberth.v1.ReplanResponse
-	(*Pose)(nil),            // 23: wideberth.v1.Pose
-	(*VersionSelector)(nil), // 24: wideberth.v1.VersionSelector
-	(*Point)(nil),           // 25: wideberth.v1.Point
-	(*VersionStamp)(nil),    // 26: wideberth.v1.VersionStamp
+	(Preference)(0),          // 0: wideberth.v1.Preference
+	(Roadmap)(0),             // 1: wideberth.v1.Roadmap
+	(SpeedCause)(0),          // 2: wideberth.v1.SpeedCause
+	(LegKind)(0),             // 3: wideberth.v1.LegKind
+	(BoundKind)(0),           // 4: wideberth.v1.BoundKind
+	(RefusalReason)(0),       // 5: wideberth.v1.RefusalReason
+	(ReplanResult)(0),        // 6: wideberth.v1.ReplanResult
+	(ReplanCause)(0),         // 7: wideberth.v1.ReplanCause
+	(PairDetail)(0),          // 8: wideberth.v1.PairDetail
+	(*Body)(nil),             // 9: wideberth.v1.Body
+	(*Place)(nil),            // 10: wideberth.v1.Place
+	(*PlanOptions)(nil),      // 11: wideberth.v1.PlanOptions
+	(*PlanRequest)(nil),      // 12: wideberth.v1.PlanRequest
+	(*SearchCounters)(nil),   // 13: wideberth.v1.SearchCounters
+	(*RoutePoint)(nil),       // 14: wideberth.v1.RoutePoint
+	(*Leg)(nil),              // 15: wideberth.v1.Leg
+	(*Bound)(nil),            // 16: wideberth.v1.Bound
+	(*Route)(nil),            // 17: wideberth.v1.Route
+	(*BlockedEnd)(nil),       // 18: wideberth.v1.BlockedEnd
+	(*Bottleneck)(nil),       // 19: wideberth.v1.Bottleneck
+	(*Refusal)(nil),          // 20: wideberth.v1.Refusal
+	(*PlanResponse)(nil),     // 21: wideberth.v1.PlanResponse
+	(*ReplanRequest)(nil),    // 22: wideberth.v1.ReplanRequest
+	(*ReplanResponse)(nil),   // 23: wideberth.v1.ReplanResponse
+	(*PlanManyRequest)(nil),  // 24: wideberth.v1.PlanManyRequest
+	(*PlanManyHeader)(nil),   // 25: wideberth.v1.PlanManyHeader
+	(*RouteSummary)(nil),     // 26: wideberth.v1.RouteSummary
+	(*PairAnswer)(nil),       // 27: wideberth.v1.PairAnswer
+	(*PlanManyEnd)(nil),      // 28: wideberth.v1.PlanManyEnd
+	(*PlanManyResponse)(nil), // 29: wideberth.v1.PlanManyResponse
+	(*Pose)(nil),             // 30: wideberth.v1.Pose
+	(*VersionSelector)(nil),  // 31: wideberth.v1.VersionSelector
+	(*Point)(nil),            // 32: wideberth.v1.Point
+	(*VersionStamp)(nil),     // 33: wideberth.v1.VersionStamp
 }
 var file_wideberth_v1_route_service_proto_depIdxs = []int32{
-	23, // 0: wideberth.v1.Place.pose:type_name -> wideberth.v1.Pose
+	30, // 0: wideberth.v1.Place.pose:type_name -> wideberth.v1.Pose
 	0,  // 1: wideberth.v1.PlanOptions.preference:type_name -> wideberth.v1.Preference
 	1,  // 2: wideberth.v1.PlanOptions.roadmap:type_name -> wideberth.v1.Roadmap
-	24, // 3: wideberth.v1.PlanRequest.version:type_name -> wideberth.v1.VersionSelector
-	8,  // 4: wideberth.v1.PlanRequest.body:type_name -> wideberth.v1.Body
-	9,  // 5: wideberth.v1.PlanRequest.start:type_name -> wideberth.v1.Place
-	9,  // 6: wideberth.v1.PlanRequest.goal:type_name -> wideberth.v1.Place
-	10, // 7: wideberth.v1.PlanRequest.options:type_name -> wideberth.v1.PlanOptions
+	31, // 3: wideberth.v1.PlanRequest.version:type_name -> wideberth.v1.VersionSelector
+	9,  // 4: wideberth.v1.PlanRequest.body:type_name -> wideberth.v1.Body
+	10, // 5: wideberth.v1.PlanRequest.start:type_name -> wideberth.v1.Place
+	10, // 6: wideberth.v1.PlanRequest.goal:type_name -> wideberth.v1.Place
+	11, // 7: wideberth.v1.PlanRequest.options:type_name -> wideberth.v1.PlanOptions
 	2,  // 8: wideberth.v1.RoutePoint.speed_cause:type_name -> wideberth.v1.SpeedCause
 	3,  // 9: wideberth.v1.Leg.kind:type_name -> wideberth.v1.LegKind
-	13, // 10: wideberth.v1.Leg.points:type_name -> wideberth.v1.RoutePoint
-	25, // 11: wideberth.v1.Leg.smallest_at:type_name -> wideberth.v1.Point
+	14, // 10: wideberth.v1.Leg.points:type_name -> wideberth.v1.RoutePoint
+	32, // 11: wideberth.v1.Leg.smallest_at:type_name -> wideberth.v1.Point
 	2,  // 12: wideberth.v1.Leg.speed_cause:type_name -> wideberth.v1.SpeedCause
 	4,  // 13: wideberth.v1.Bound.kind:type_name -> wideberth.v1.BoundKind
-	26, // 14: wideberth.v1.Route.checked_against:type_name -> wideberth.v1.VersionStamp
-	8,  // 15: wideberth.v1.Route.body:type_name -> wideberth.v1.Body
-	10, // 16: wideberth.v1.Route.options:type_name -> wideberth.v1.PlanOptions
-	23, // 17: wideberth.v1.Route.start:type_name -> wideberth.v1.Pose
-	23, // 18: wideberth.v1.Route.goal:type_name -> wideberth.v1.Pose
-	14, // 19: wideberth.v1.Route.legs:type_name -> wideberth.v1.Leg
-	25, // 20: wideberth.v1.Route.smallest_at:type_name -> wideberth.v1.Point
-	15, // 21: wideberth.v1.Route.bound:type_name -> wideberth.v1.Bound
-	25, // 22: wideberth.v1.BlockedEnd.at:type_name -> wideberth.v1.Point
-	25, // 23: wideberth.v1.BlockedEnd.nearest_free:type_name -> wideberth.v1.Point
-	25, // 24: wideberth.v1.Bottleneck.at:type_name -> wideberth.v1.Point
+	33, // 14: wideberth.v1.Route.checked_against:type_name -> wideberth.v1.VersionStamp
+	9,  // 15: wideberth.v1.Route.body:type_name -> wideberth.v1.Body
+	11, // 16: wideberth.v1.Route.options:type_name -> wideberth.v1.PlanOptions
+	30, // 17: wideberth.v1.Route.start:type_name -> wideberth.v1.Pose
+	30, // 18: wideberth.v1.Route.goal:type_name -> wideberth.v1.Pose
+	15, // 19: wideberth.v1.Route.legs:type_name -> wideberth.v1.Leg
+	32, // 20: wideberth.v1.Route.smallest_at:type_name -> wideberth.v1.Point
+	16, // 21: wideberth.v1.Route.bound:type_name -> wideberth.v1.Bound
+	32, // 22: wideberth.v1.BlockedEnd.at:type_name -> wideberth.v1.Point
+	32, // 23: wideberth.v1.BlockedEnd.nearest_free:type_name -> wideberth.v1.Point
+	32, // 24: wideberth.v1.Bottleneck.at:type_name -> wideberth.v1.Point
 	5,  // 25: wideberth.v1.Refusal.reason:type_name -> wideberth.v1.RefusalReason
-	17, // 26: wideberth.v1.Refusal.blocked_end:type_name -> wideberth.v1.BlockedEnd
-	18, // 27: wideberth.v1.Refusal.bottleneck:type_name -> wideberth.v1.Bottleneck
-	26, // 28: wideberth.v1.PlanResponse.stamp:type_name -> wideberth.v1.VersionStamp
-	16, // 29: wideberth.v1.PlanResponse.route:type_name -> wideberth.v1.Route
-	19, // 30: wideberth.v1.PlanResponse.refusal:type_name -> wideberth.v1.Refusal
-	12, // 31: wideberth.v1.PlanResponse.counters:type_name -> wideberth.v1.SearchCounters
-	24, // 32: wideberth.v1.ReplanRequest.version:type_name -> wideberth.v1.VersionSelector
-	16, // 33: wideberth.v1.ReplanRequest.previous:type_name -> wideberth.v1.Route
-	23, // 34: wideberth.v1.ReplanRequest.pose:type_name -> wideberth.v1.Pose
-	9,  // 35: wideberth.v1.ReplanRequest.goal:type_name -> wideberth.v1.Place
-	8,  // 36: wideberth.v1.ReplanRequest.body:type_name -> wideberth.v1.Body
-	10, // 37: wideberth.v1.ReplanRequest.options:type_name -> wideberth.v1.PlanOptions
-	26, // 38: wideberth.v1.ReplanResponse.stamp:type_name -> wideberth.v1.VersionStamp
+	18, // 26: wideberth.v1.Refusal.blocked_end:type_name -> wideberth.v1.BlockedEnd
+	19, // 27: wideberth.v1.Refusal.bottleneck:type_name -> wideberth.v1.Bottleneck
+	33, // 28: wideberth.v1.PlanResponse.stamp:type_name -> wideberth.v1.VersionStamp
+	17, // 29: wideberth.v1.PlanResponse.route:type_name -> wideberth.v1.Route
+	20, // 30: wideberth.v1.PlanResponse.refusal:type_name -> wideberth.v1.Refusal
+	13, // 31: wideberth.v1.PlanResponse.counters:type_name -> wideberth.v1.SearchCounters
+	31, // 32: wideberth.v1.ReplanRequest.version:type_name -> wideberth.v1.VersionSelector
+	17, // 33: wideberth.v1.ReplanRequest.previous:type_name -> wideberth.v1.Route
+	30, // 34: wideberth.v1.ReplanRequest.pose:type_name -> wideberth.v1.Pose
+	10, // 35: wideberth.v1.ReplanRequest.goal:type_name -> wideberth.v1.Place
+	9,  // 36: wideberth.v1.ReplanRequest.body:type_name -> wideberth.v1.Body
+	11, // 37: wideberth.v1.ReplanRequest.options:type_name -> wideberth.v1.PlanOptions
+	33, // 38: wideberth.v1.ReplanResponse.stamp:type_name -> wideberth.v1.VersionStamp
 	6,  // 39: wideberth.v1.ReplanResponse.result:type_name -> wideberth.v1.ReplanResult
 	7,  // 40: wideberth.v1.ReplanResponse.cause:type_name -> wideberth.v1.ReplanCause
-	16, // 41: wideberth.v1.ReplanResponse.route:type_name -> wideberth.v1.Route
-	19, // 42: wideberth.v1.ReplanResponse.refusal:type_name -> wideberth.v1.Refusal
-	12, // 43: wideberth.v1.ReplanResponse.counters:type_name -> wideberth.v1.SearchCounters
-	11, // 44: wideberth.v1.RouteService.Plan:input_type -> wideberth.v1.PlanRequest
-	21, // 45: wideberth.v1.RouteService.Replan:input_type -> wideberth.v1.ReplanRequest
-	20, // 46: wideberth.v1.RouteService.Plan:output_type -> wideberth.v1.PlanResponse
-	22, // 47: wideberth.v1.RouteService.Replan:output_type -> wideberth.v1.ReplanResponse
-	46, // [46:48] is the sub-list for method output_type
-	44, // [44:46] is the sub-list for method input_type
-	44, // [44:44] is the sub-list for extension type_name
-	44, // [44:44] is the sub-list for extension extendee
-	0,  // [0:44] is the sub-list for field type_name
+	17, // 41: wideberth.v1.ReplanResponse.route:type_name -> wideberth.v1.Route
+	20, // 42: wideberth.v1.ReplanResponse.refusal:type_name -> wideberth.v1.Refusal
+	13, // 43: wideberth.v1.ReplanResponse.counters:type_name -> wideberth.v1.SearchCounters
+	31, // 44: wideberth.v1.PlanManyRequest.version:type_name -> wideberth.v1.VersionSelector
+	9,  // 45: wideberth.v1.PlanManyRequest.body:type_name -> wideberth.v1.Body
+	10, // 46: wideberth.v1.PlanManyRequest.starts:type_name -> wideberth.v1.Place
+	10, // 47: wideberth.v1.PlanManyRequest.goals:type_name -> wideberth.v1.Place
+	11, // 48: wideberth.v1.PlanManyRequest.options:type_name -> wideberth.v1.PlanOptions
+	8,  // 49: wideberth.v1.PlanManyRequest.detail:type_name -> wideberth.v1.PairDetail
+	33, // 50: wideberth.v1.PlanManyHeader.stamp:type_name -> wideberth.v1.VersionStamp
+	9,  // 51: wideberth.v1.PlanManyHeader.body:type_name -> wideberth.v1.Body
+	11, // 52: wideberth.v1.PlanManyHeader.options:type_name -> wideberth.v1.PlanOptions
+	32, // 53: wideberth.v1.RouteSummary.smallest_at:type_name -> wideberth.v1.Point
+	16, // 54: wideberth.v1.RouteSummary.bound:type_name -> wideberth.v1.Bound
+	26, // 55: wideberth.v1.PairAnswer.summary:type_name -> wideberth.v1.RouteSummary
+	17, // 56: wideberth.v1.PairAnswer.route:type_name -> wideberth.v1.Route
+	20, // 57: wideberth.v1.PairAnswer.refusal:type_name -> wideberth.v1.Refusal
+	13, // 58: wideberth.v1.PairAnswer.counters:type_name -> wideberth.v1.SearchCounters
+	25, // 59: wideberth.v1.PlanManyResponse.header:type_name -> wideberth.v1.PlanManyHeader
+	27, // 60: wideberth.v1.PlanManyResponse.answer:type_name -> wideberth.v1.PairAnswer
+	28, // 61: wideberth.v1.PlanManyResponse.end:type_name -> wideberth.v1.PlanManyEnd
+	12, // 62: wideberth.v1.RouteService.Plan:input_type -> wideberth.v1.PlanRequest
+	22, // 63: wideberth.v1.RouteService.Replan:input_type -> wideberth.v1.ReplanRequest
+	24, // 64: wideberth.v1.RouteService.PlanMany:input_type -> wideberth.v1.PlanManyRequest
+	21, // 65: wideberth.v1.RouteService.Plan:output_type -> wideberth.v1.PlanResponse
+	23, // 66: wideberth.v1.RouteService.Replan:output_type -> wideberth.v1.ReplanResponse
+	29, // 67: wideberth.v1.RouteService.PlanMany:output_type -> wideberth.v1.PlanManyResponse
+	65, // [65:68] is the sub-list for method output_type
+	62, // [62:65] is the sub-list for method input_type
+	62, // [62:62] is the sub-list for extension type_name
+	62, // [62:62] is the sub-list for extension extendee
+	0,  // [0:62] is the sub-list for field type_name
 }
 
 func init() { file_wideberth_v1_route_service_proto_init() }
@@ -2404,13 +3120,23 @@ func file_wideberth_v1_route_service_proto_init() {
 		(*ReplanResponse_Route)(nil),
 		(*ReplanResponse_Refusal)(nil),
 	}
+	file_wideberth_v1_route_service_proto_msgTypes[18].OneofWrappers = []any{
+		(*PairAnswer_Summary)(nil),
+		(*PairAnswer_Route)(nil),
+		(*PairAnswer_Refusal)(nil),
+	}
+	file_wideberth_v1_route_service_proto_msgTypes[20].OneofWrappers = []any{
+		(*PlanManyResponse_Header)(nil),
+		(*PlanManyResponse_Answer)(nil),
+		(*PlanManyResponse_End)(nil),
+	}
 	type x struct{}
 	out := protoimpl.TypeBuilder{
 		File: protoimpl.DescBuilder{
 			GoPackagePath: reflect.TypeOf(x{}).PkgPath(),
 			RawDescriptor: unsafe.Slice(unsafe.StringData(file_wideberth_v1_route_service_proto_rawDesc), len(file_wideberth_v1_route_service_proto_rawDesc)),
-			NumEnums:      8,
-			NumMessages:   15,
+			NumEnums:      9,
+			NumMessages:   21,
 			NumExtensions: 0,
 			NumServices:   1,
 		},

@@ -19,8 +19,9 @@ import (
 const _ = grpc.SupportPackageIsVersion9
 
 const (
-	RouteService_Plan_FullMethodName   = "/wideberth.v1.RouteService/Plan"
-	RouteService_Replan_FullMethodName = "/wideberth.v1.RouteService/Replan"
+	RouteService_Plan_FullMethodName     = "/wideberth.v1.RouteService/Plan"
+	RouteService_Replan_FullMethodName   = "/wideberth.v1.RouteService/Replan"
+	RouteService_PlanMany_FullMethodName = "/wideberth.v1.RouteService/PlanMany"
 )
 
 // RouteServiceClient is the client API for RouteService service.
@@ -50,6 +51,18 @@ type RouteServiceClient interface {
 	// fresh plan on the same version, but for switch_share. An old route that is
 	// still clear is also kept when the time budget runs out.
 	Replan(ctx context.Context, in *ReplanRequest, opts ...grpc.CallOption) (*ReplanResponse, error)
+	// Routes for a body from each of some starts to each of some goals, all on one
+	// version: for ranking jobs by what it takes to get there. The first message is
+	// the header, the last the end mark; a stream without it is incomplete. Between
+	// them each pair has one answer, the same that Plan gives for it on that version:
+	// a route or a refusal. Pairs are taken up nearest first by straight distance, and
+	// answers are sent as found: with several under way at once their order may vary,
+	// what they say does not. Pairs that the time budget leaves no time for are
+	// answered with REFUSAL_REASON_OUT_OF_TIME before the end mark. A route that the
+	// options cannot be met for (see PlanOptions.max_spacing_m) ends the stream with
+	// that error. RESOURCE_EXHAUSTED when too many of these calls are under way; once
+	// the header is sent, busy planners only make the answers come later.
+	PlanMany(ctx context.Context, in *PlanManyRequest, opts ...grpc.CallOption) (grpc.ServerStreamingClient[PlanManyResponse], error)
 }
 
 type routeServiceClient struct {
@@ -80,6 +93,25 @@ func (c *routeServiceClient) Replan(ctx context.Context, in *ReplanRequest, opts
 	return out, nil
 }
 
+func (c *routeServiceClient) PlanMany(ctx context.Context, in *PlanManyRequest, opts ...grpc.CallOption) (grpc.ServerStreamingClient[PlanManyResponse], error) {
+	cOpts := append([]grpc.CallOption{grpc.StaticMethod()}, opts...)
+	stream, err := c.cc.NewStream(ctx, &RouteService_ServiceDesc.Streams[0], RouteService_PlanMany_FullMethodName, cOpts...)
+	if err != nil {
+		return nil, err
+	}
+	x := &grpc.GenericClientStream[PlanManyRequest, PlanManyResponse]{ClientStream: stream}
+	if err := x.ClientStream.SendMsg(in); err != nil {
+		return nil, err
+	}
+	if err := x.ClientStream.CloseSend(); err != nil {
+		return nil, err
+	}
+	return x, nil
+}
+
+// This type alias is provided for backwards compatibility with existing code that references the prior non-generic stream type by name.
+type RouteService_PlanManyClient = grpc.ServerStreamingClient[PlanManyResponse]
+
 // RouteServiceServer is the server API for RouteService service.
 // All implementations must embed UnimplementedRouteServiceServer
 // for forward compatibility.
@@ -107,6 +139,18 @@ type RouteServiceServer interface {
 	// fresh plan on the same version, but for switch_share. An old route that is
 	// still clear is also kept when the time budget runs out.
 	Replan(context.Context, *ReplanRequest) (*ReplanResponse, error)
+	// Routes for a body from each of some starts to each of some goals, all on one
+	// version: for ranking jobs by what it takes to get there. The first message is
+	// the header, the last the end mark; a stream without it is incomplete. Between
+	// them each pair has one answer, the same that Plan gives for it on that version:
+	// a route or a refusal. Pairs are taken up nearest first by straight distance, and
+	// answers are sent as found: with several under way at once their order may vary,
+	// what they say does not. Pairs that the time budget leaves no time for are
+	// answered with REFUSAL_REASON_OUT_OF_TIME before the end mark. A route that the
+	// options cannot be met for (see PlanOptions.max_spacing_m) ends the stream with
+	// that error. RESOURCE_EXHAUSTED when too many of these calls are under way; once
+	// the header is sent, busy planners only make the answers come later.
+	PlanMany(*PlanManyRequest, grpc.ServerStreamingServer[PlanManyResponse]) error
 	mustEmbedUnimplementedRouteServiceServer()
 }
 
@@ -122,6 +166,9 @@ func (UnimplementedRouteServiceServer) Plan(context.Context, *PlanRequest) (*Pla
 }
 func (UnimplementedRouteServiceServer) Replan(context.Context, *ReplanRequest) (*ReplanResponse, error) {
 	return nil, status.Error(codes.Unimplemented, "method Replan not implemented")
+}
+func (UnimplementedRouteServiceServer) PlanMany(*PlanManyRequest, grpc.ServerStreamingServer[PlanManyResponse]) error {
+	return status.Error(codes.Unimplemented, "method PlanMany not implemented")
 }
 func (UnimplementedRouteServiceServer) mustEmbedUnimplementedRouteServiceServer() {}
 func (UnimplementedRouteServiceServer) testEmbeddedByValue()                      {}
@@ -180,6 +227,17 @@ func _RouteService_Replan_Handler(srv interface{}, ctx context.Context, dec func
 	return interceptor(ctx, in, info, handler)
 }
 
+func _RouteService_PlanMany_Handler(srv interface{}, stream grpc.ServerStream) error {
+	m := new(PlanManyRequest)
+	if err := stream.RecvMsg(m); err != nil {
+		return err
+	}
+	return srv.(RouteServiceServer).PlanMany(m, &grpc.GenericServerStream[PlanManyRequest, PlanManyResponse]{ServerStream: stream})
+}
+
+// This type alias is provided for backwards compatibility with existing code that references the prior non-generic stream type by name.
+type RouteService_PlanManyServer = grpc.ServerStreamingServer[PlanManyResponse]
+
 // RouteService_ServiceDesc is the grpc.ServiceDesc for RouteService service.
 // It's only intended for direct use with grpc.RegisterService,
 // and not to be introspected or modified (even as a copy)
@@ -196,6 +254,12 @@ var RouteService_ServiceDesc = grpc.ServiceDesc{
 			Handler:    _RouteService_Replan_Handler,
 		},
 	},
-	Streams:  []grpc.StreamDesc{},
+	Streams: []grpc.StreamDesc{
+		{
+			StreamName:    "PlanMany",
+			Handler:       _RouteService_PlanMany_Handler,
+			ServerStreams: true,
+		},
+	},
 	Metadata: "wideberth/v1/route_service.proto",
 }
