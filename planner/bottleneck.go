@@ -100,6 +100,10 @@ func (t *task) widest(ctx context.Context, r *rules.Rules) (*gate, error) {
 func (t *task) narrowest(way []geom.Point) (int, float64) {
 	at, least := 1, math.Inf(1)
 	for i := 1; i < len(way); i++ {
+		// Most pieces are known not to be narrower without being measured.
+		if least <= float64(t.w.field.Cap()) && t.w.field.SegmentClear(way[i-1], way[i], int64(math.Ceil(least))) {
+			continue
+		}
 		if d := t.j.Segment(way[i-1], way[i]).Um; d < least {
 			at, least = i, d
 		}
@@ -122,7 +126,7 @@ func (t *task) widen(way []geom.Point, r *rules.Rules) []geom.Point {
 	// First every bend for itself, keeping what it had.
 	way = slices.Clone(way)
 	for i := 1; i+1 < len(way); i++ {
-		if t.j.At(way[i]).Um >= float64(t.j.NeedUm) {
+		if t.w.field.SegmentClear(way[i], way[i], t.j.NeedUm) {
 			continue
 		}
 		p := t.middle(way[i])

@@ -266,7 +266,18 @@ func (f *Field) bar(s *scratch, bx, by int) *cellBits {
 // cellAt is the cell that holds the offset d from the floor's corner, kept within
 // [lo, hi-1].
 func (f *Field) cellAt(d float64, lo, hi int) int {
-	return int(max(float64(lo), min(math.Floor(d/f.h), float64(hi-1))))
+	v := d / f.h
+	switch {
+	case v >= float64(hi-1):
+		return max(lo, hi-1)
+	case !(v > float64(lo)):
+		return lo
+	}
+	c := int(v)
+	if float64(c) > v { // below 0
+		c--
+	}
+	return c
 }
 
 // reachesInto says, exactly but for rounding of oblique distances, whether the piece

@@ -118,11 +118,6 @@ func (g *grid) number(c Cell) uint32 {
 	return uint32(c.Row/side*g.tiles.nx+c.Col/side)*cellsIn + uint32(c.Row%side*side+c.Col%side)
 }
 
-func (g *grid) cell(id uint32) Cell {
-	block, k := int(id/cellsIn), int(id%cellsIn)
-	return Cell{block%g.tiles.nx*side + k%side, block/g.tiles.nx*side + k/side}
-}
-
 func (g *grid) run(ctx context.Context) (Path, Outcome, error) {
 	if len(g.From) == 0 {
 		return Path{}, FromShut, nil

@@ -37,7 +37,7 @@ const WidestShort = math.Sqrt2 / 2
 // NeedUm the node nearest to the other end.
 type wide struct {
 	*WideQuery
-	from map[int32]*[cellsIn]uint8
+	from []*[cellsIn]uint8
 	nx   int
 	// sure holds entered nodes as wide as can be, in order of coming; open the rest.
 	sure []entry
@@ -52,13 +52,18 @@ const (
 	wideGoal  = 1 << 40
 )
 
+// guessed marks a queued node whose value is a bound from above, known cheaply; most such
+// nodes are never come to.
+const guessed = 0x40
+
 var queuePool = sync.Pool{New: func() any { return new(queue) }}
 
 // Widest gives a way from From to To (from To to From when Backward) over middles of cells, joined where the straight
 // piece keeps more than 0 clearance, such that the smallest clearance along it, as
 // far as it is below NeedUm, is the largest. found is false when there is none.
 func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, err error) {
-	w := &wide{WideQuery: q, from: map[int32]*[cellsIn]uint8{}, nx: (q.Frame.Cols + side - 1) / side}
+	w := &wide{WideQuery: q, nx: (q.Frame.Cols + side - 1) / side}
+	w.from = make([]*[cellsIn]uint8, w.nx*((q.Frame.Rows+side-1)/side))
 	heap := queuePool.Get().(*queue)
 	w.open = (*heap)[:0]
 	defer func() {
@@ -89,6 +94,13 @@ func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, er
 		if *s&isClosed != 0 {
 			continue
 		}
+		if d := e.dir(); d&guessed != 0 { // now it matters
+			d &^= guessed
+			from := Cell{c.Col - moveX[d-1], c.Row - moveY[d-1]}
+			clear := int64(min(q.Field.CellLower(from.Col, from.Row), q.Field.CellLower(c.Col, c.Row))) >= -e.key
+			w.queue(c, min(-e.key, w.value(q.Frame.Centre(from), q.Frame.Centre(c), clear)), d)
+			continue
+		}
 		*s = e.dir() | isClosed
 		if err := p.err(); err != nil {
 			return nil, false, err
@@ -107,8 +119,11 @@ func Widest(ctx context.Context, q *WideQuery) (way []geom.Point, found bool, er
 			if uint(n.Col) >= uint(q.Frame.Cols) || uint(n.Row) >= uint(q.Frame.Rows) || *w.state(n)&isClosed != 0 {
 				continue
 			}
-			both := clear && int64(q.Field.CellLower(n.Col, n.Row)) >= q.NeedUm
-			w.queue(n, min(-e.key, w.value(here, q.Frame.Centre(n), both)), uint8(d+1))
+			if clear && int64(q.Field.CellLower(n.Col, n.Row)) >= q.NeedUm {
+				w.queue(n, min(-e.key, w.value(here, q.Frame.Centre(n), true)), uint8(d+1))
+				continue
+			}
+			w.queue(n, min(-e.key, w.ceiling(c), w.ceiling(n)), uint8(d+1)|guessed)
 		}
 	}
 	return nil, false, nil
@@ -150,8 +165,18 @@ func (w *wide) value(a, b geom.Point, clear bool) int64 {
 	return min(w.NeedUm, int64(w.Field.Segment(a, b).Um))
 }
 
+// ceiling is at least the clearance at the middle of a cell, and at least 1.
+func (w *wide) ceiling(c Cell) int64 {
+	if w.Passes != nil {
+		return w.NeedUm
+	}
+	f := w.Field
+	v := min(f.Vertex(c.Col, c.Row), f.Vertex(c.Col+1, c.Row), f.Vertex(c.Col, c.Row+1), f.Vertex(c.Col+1, c.Row+1))
+	return min(w.NeedUm, int64(v)+2+int64(w.Frame.Res))
+}
+
 func (w *wide) state(c Cell) *uint8 {
-	i := int32(c.Row/side*w.nx + c.Col/side)
+	i := c.Row/side*w.nx + c.Col/side
 	t := w.from[i]
 	if t == nil {
 		t = new([cellsIn]uint8)
@@ -165,7 +190,7 @@ func (w *wide) queue(c Cell, value int64, dir uint8) {
 	if value <= 0 || *s != unseen { // closed, or waiting and as wide as can be
 		return
 	}
-	if value == w.NeedUm {
+	if value == w.NeedUm && dir&guessed == 0 {
 		*s = dir
 	}
 	far := geom.Dist(w.Frame.Centre(c), w.To)
@@ -176,7 +201,7 @@ func (w *wide) queue(c Cell, value int64, dir uint8) {
 // put queues a node. Among those as wide as can be the first to come goes first, which
 // costs less than a heap and keeps the way short.
 func (w *wide) put(e entry) {
-	if e.key <= -w.NeedUm {
+	if e.key <= -w.NeedUm && e.dir()&guessed == 0 {
 		w.sure = append(w.sure, e)
 		return
 	}
