@@ -123,10 +123,13 @@ func (v guideService) stale(ctx context.Context, g *guided, snap *mapstore.Snaps
 		if err != nil {
 			return false, err
 		}
-		g.touchedBy, g.touchedTo = digest, math.Inf(1)
+		touchedTo := math.Inf(1)
 		if old != nil {
-			g.touchedTo = lastTouched(old.Map, snap.Map, g.plan.Route, float64(g.plan.Body.Required()))
+			if touchedTo, err = lastTouched(ctx, old.Map, snap.Map, g.plan.Route, float64(g.plan.Body.Required())); err != nil {
+				return false, err
+			}
 		}
+		g.touchedBy, g.touchedTo = digest, touchedTo
 	}
 	return g.touchedTo >= 0 && along(g.plan.Route, at.At) <= g.touchedTo, nil
 }
