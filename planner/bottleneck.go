@@ -22,7 +22,7 @@ func (t *task) noPassage(ctx context.Context) (*course, *Refusal, error) {
 	o := t.q.Options
 	if g != nil && g.least >= float64(t.j.NeedUm) && o.Roadmap == Auto && !o.KeepRoadmapPath {
 		c := &course{kind: AtMostRoadmapOptimum, roadmap: math.Inf(1)}
-		c.pts, err = t.straighten(ctx, g.way)
+		c.pts, err = t.straighten(ctx, g.way, math.Inf(1))
 		return c, nil, err
 	}
 	refusal := func(b *Bottleneck) *Refusal { return &Refusal{Reason: NoPassage, Bottleneck: b} }

@@ -170,7 +170,7 @@ func (t *task) course(ctx context.Context) (*course, error) {
 	pts := joined(t.q.Start.At, p.Points, t.q.Goal.At)
 	c := &course{pts: pts, kind: RoadmapOptimum, roadmap: p.CostUm}
 	if !o.KeepRoadmapPath {
-		c.pts, err = t.straighten(ctx, pts)
+		c.pts, err = t.straighten(ctx, pts, p.CostUm)
 		c.kind = AtMostRoadmapOptimum
 	}
 	return c, err
@@ -193,8 +193,15 @@ func joined(start geom.Point, path []geom.Point, goal geom.Point) []geom.Point {
 // leastGain is what a change of the straightened path must save, in cells.
 const leastGain = 1.0 / 50
 
-func (t *task) straighten(ctx context.Context, pts []geom.Point) ([]geom.Point, error) {
-	return pull.Straighten(ctx, t.j, pts, float64(leastGain*t.w.frame.Res))
+// straighten makes a driven path of a roadmap's. Where metres differ in cost its tight
+// stretches then go to the middle, for as long as the whole costs no more than most.
+func (t *task) straighten(ctx context.Context, pts []geom.Point, most float64) ([]geom.Point, error) {
+	gain := float64(leastGain * t.w.frame.Res)
+	pts, err := pull.Straighten(ctx, t.j, pts, gain)
+	if err != nil || t.j.Weight == 0 {
+		return pts, err
+	}
+	return pull.Relax(ctx, t.j, pts, gain, most-t.costOf(pts))
 }
 
 // route describes a course and has it checked.

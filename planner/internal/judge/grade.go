@@ -1,6 +1,8 @@
 package judge
 
 import (
+	"math"
+
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/clearance"
 )
@@ -55,4 +57,37 @@ func (g *grader) all(k int, na, nb clearance.Nearest) bool {
 	}
 	um := float64(j.Levels[k-1])
 	return j.ceiling(a, b, na) < um || j.ceiling(a, b, nb) < um
+}
+
+// Narrowest is the place of smallest clearance on ab.
+func (j *Judge) Narrowest(a, b geom.Point) geom.Point { return j.Segment(a, b).On }
+
+// Clearance is the clearance at p.
+func (j *Judge) Clearance(p geom.Point) float64 { return j.At(p).Um }
+
+// Middle is the place reached from p straight away from the nearest solid, where something
+// else becomes as near or clearance is Open, to a micrometre or so. It is p where
+// there is no way to tell.
+func (j *Judge) Middle(p geom.Point) geom.Point {
+	n := j.At(p)
+	if n.Um == 0 || n.Um >= j.Open() {
+		return p
+	}
+	ux, uy := (p.X-n.At.X)/n.Um, (p.Y-n.At.Y)/n.Um
+	step := func(s float64) geom.Point {
+		return geom.Point{X: math.Round(p.X + float64(s*ux)), Y: math.Round(p.Y + float64(s*uy))}
+	}
+	lo, hi := 0.0, j.Open()-n.Um
+	if j.At(step(hi)).Um >= j.Open()-1 {
+		return step(hi)
+	}
+	for hi-lo > 1 {
+		// Rounding puts a place off by less than 1 µm, and its clearance no more.
+		if m := (lo + hi) / 2; j.At(step(m)).Um >= n.Um+m-2 {
+			lo = m
+		} else {
+			hi = m
+		}
+	}
+	return step(lo)
 }
