@@ -11,13 +11,15 @@
 // immutable worlds, one for each version in use; a new version's world is made in
 // the background from the one before as soon as the version lands. At most
 // Config.Planners plans run at once, and what cannot start soon is refused rather
-// than queued.
+// than queued; the pairs of PlanMany calls wait their turn, with half of the planners
+// between them.
 //
 // # Reading the source
 //
 // A call goes through interceptors.go (request id, access line, panic, deadline) to
 // validate*.go, where every message is checked whole, then to the handler in
-// floor_service.go, floor_streams.go, route_service.go or guide_service.go.
+// floor_service.go, floor_streams.go, route_service.go, route_many.go or
+// guide_service.go.
 // resolve.go finds the version meant, worlds.go its world, planning.go a lane for
 // the search. convert*.go turns metres into micrometres and back. errors.go is the
 // only place where failures become statuses. knobs.go is the one table of settings.
@@ -43,7 +45,7 @@
 //	STALE_BASE          ABORTED              the base is below the head; metadata base_version, head_version, head_digest, conflicts
 //	BASE_ABOVE_HEAD     FAILED_PRECONDITION  the base is above the head; metadata head_version; PreconditionFailure HEAD
 //	REQUEST_ID_REUSED   FAILED_PRECONDITION  the request id was used for another request; PreconditionFailure REQUEST_ID
-//	OVERLOADED          RESOURCE_EXHAUSTED   all planners are busy; RetryInfo
+//	OVERLOADED          RESOURCE_EXHAUSTED   all planners are busy, or PlanMany calls are as many as may be; RetryInfo
 //	DEADLINE            DEADLINE_EXCEEDED    the caller's or the server's deadline passed first
 //	CANCELLED           CANCELLED            the caller gave up
 //	SHUTTING_DOWN       UNAVAILABLE          the server is draining; RetryInfo

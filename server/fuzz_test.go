@@ -18,7 +18,7 @@ func requests() []proto.Message {
 		&pb.CreateFloorRequest{}, &pb.GetFloorRequest{}, &pb.ListFloorsRequest{}, &pb.PushPatchRequest{},
 		&pb.ListVersionsRequest{}, &pb.GetVersionRequest{}, &pb.CompareVersionsRequest{}, &pb.RestoreVersionRequest{},
 		&pb.ReadFloorRequest{}, &pb.WatchVersionsRequest{}, &pb.PlanRequest{}, &pb.ReplanRequest{},
-		&pb.GuideRequest{}, &pb.GuideOnceRequest{},
+		&pb.GuideRequest{}, &pb.GuideOnceRequest{}, &pb.PlanManyRequest{},
 	}
 }
 
@@ -52,6 +52,7 @@ func FuzzValidate(f *testing.F) {
 	add(10, toBench())
 	add(11, replan())
 	add(13, guideOnce())
+	add(14, planMany())
 	set := wire.SettingsIn(&pb.FloorSettings{Columns: 200, Rows: 100})
 	f.Fuzz(func(t *testing.T, which byte, data []byte) {
 		m := requests()[int(which)%len(validators)]
@@ -93,6 +94,13 @@ func convertAny(m proto.Message, set floor.Settings) {
 	case *pb.PlanRequest:
 		f.bodyOnFloor(root, bodyIn(q.Body, set), set)
 		optionsIn(q.Options, bodyIn(q.Body, set))
+	case *pb.PlanManyRequest:
+		manyBudget(q)
+		for _, places := range [][]*pb.Place{q.Starts, q.Goals} {
+			for _, pl := range places {
+				poseIn(pl.GetPose())
+			}
+		}
 	case *pb.ReplanRequest:
 		routePointsIn(q.Previous)
 		poseIn(q.Pose)

@@ -68,6 +68,7 @@ func init() {
 	register(checkWatchVersions)
 	register(checkPlan)
 	register(checkReplan)
+	register(checkPlanMany)
 	register(checkGuide)
 	register(checkGuideOnce)
 }

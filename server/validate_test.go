@@ -5,6 +5,7 @@ import (
 	"compress/flate"
 	"errors"
 	"math"
+	"slices"
 	"strings"
 	"testing"
 
@@ -72,6 +73,13 @@ func oldRoute() *pb.Route {
 
 func replan() *pb.ReplanRequest {
 	return &pb.ReplanRequest{Previous: oldRoute(), Pose: &pb.Pose{XM: 2, YM: 1.5}}
+}
+
+func planMany() *pb.PlanManyRequest {
+	return &pb.PlanManyRequest{
+		Floor: "hall", Body: &pb.Body{RadiusM: 0.3},
+		Starts: []*pb.Place{atPose(1, 1), atPose(2, 1)}, Goals: []*pb.Place{atPose(8, 4), atStation("bench")},
+	}
 }
 
 func guideOnce() *pb.GuideOnceRequest {
@@ -196,6 +204,16 @@ func TestBadInputNamesTheField(t *testing.T) {
 		{"digest", edited(replan(), func(r *pb.ReplanRequest) { r.Previous.CheckedAgainst.Digest = "beef" }), "previous.checked_against.digest", "64 lower-case hex digits"},
 		{"switch share", edited(replan(), func(r *pb.ReplanRequest) { r.SwitchShare = 1.5 }), "switch_share", "1.5, wanted 0 to 1"},
 
+		{"many without goals", edited(planMany(), func(r *pb.PlanManyRequest) { r.Goals = nil }), "goals", "0 places, wanted 1 to 1000"},
+		{"too many starts", edited(planMany(), func(r *pb.PlanManyRequest) { r.Starts = make([]*pb.Place, maxPairs+1) }), "starts", "1001 places, wanted 1 to 1000"},
+		{"too many pairs", edited(planMany(), func(r *pb.PlanManyRequest) { r.Goals = slices.Repeat(r.Goals, 251) }), "goals", "502 goals for 2 starts are 1004 pairs, wanted at most 1000"},
+		{"many goal", edited(planMany(), func(r *pb.PlanManyRequest) { r.Goals[1] = atStation("Bench") }), "goals[1].station", "\"Bench\""},
+		{"many start", edited(planMany(), func(r *pb.PlanManyRequest) { r.Starts[1] = nil }), "starts[1]", "wanted a pose or a station"},
+		{"many body", edited(planMany(), func(r *pb.PlanManyRequest) { r.Body = nil }), "body", "not set"},
+		{"many options", edited(planMany(), func(r *pb.PlanManyRequest) { r.Options = &pb.PlanOptions{TimeBudgetS: 31} }), "options.time_budget_s", "31"},
+		{"many detail", edited(planMany(), func(r *pb.PlanManyRequest) { r.Detail = 3 }), "detail", "wanted one of the values 0 to 2"},
+		{"many budget", edited(planMany(), func(r *pb.PlanManyRequest) { r.TimeBudgetS = 601 }), "time_budget_s", "601, wanted 0.001 to 600"},
+
 		{"guide nothing", &pb.GuideRequest{}, "message", "wanted a setup or a report"},
 		{"guide spread", edited(guideOnce(), func(r *pb.GuideOnceRequest) { r.Report.PositionSpreadM = 11 }), "report.position_spread_m", "11, wanted 0 to 10"},
 		{"guide speed", edited(guideOnce(), func(r *pb.GuideOnceRequest) { r.Report.SpeedMps = -21 }), "report.speed_mps", "-21, wanted -20 to 20"},
@@ -225,6 +243,8 @@ func TestGoodInputPasses(t *testing.T) {
 		"create":        create(),
 		"plan":          plan(),
 		"replan":        replan(),
+		"many":          planMany(),
+		"most pairs":    edited(planMany(), func(r *pb.PlanManyRequest) { r.Goals = slices.Repeat(r.Goals, 250) }),
 		"guide":         guideOnce(),
 		"point body":    edited(plan(), func(r *pb.PlanRequest) { r.Body = &pb.Body{} }),
 		"longest route": edited(replan(), func(r *pb.ReplanRequest) { r.Previous.Legs = longRoute(maxRoutePoints, 3) }),
