@@ -49,6 +49,14 @@ func (f *Field) bracket(p geom.Point) (least, most float64) {
 	return v - d - roundSlack, v + 1 + d + roundSlack
 }
 
+// Bracket bounds the clearance at p, which must be on the floor, from below and above: by
+// that of the nearest lattice vertex, within half a cell's diagonal either way, at
+// the cost of a look-up.
+func (f *Field) Bracket(p geom.Point) (least, most float64) {
+	least, most = f.bracket(p)
+	return max(0, least), min(most, float64(f.cap))
+}
+
 // nearestFeature searches rings of buckets about p outwards.
 func (f *Field) nearestFeature(p geom.Point, n *Nearest) {
 	bx, by, _, _ := f.bucketRange(geom.Rect{Min: p, Max: p})

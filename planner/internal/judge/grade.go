@@ -14,6 +14,7 @@ type grader struct {
 	a, b geom.Point
 	long float64
 	sum  float64
+	most float64 // beyond which the sum need not be known
 }
 
 // below is how many levels a clearance is below.
@@ -25,22 +26,60 @@ func (j *Judge) below(um float64) int {
 	return k
 }
 
-func (g *grader) halve(from, to float64, na, nb clearance.Nearest) {
+// probe is a place on the segment and bounds of the clearance there, exact once that was
+// needed.
+type probe struct {
+	clearance.Nearest
+	lo, hi float64
+	exact  bool
+}
+
+func (g *grader) at(p geom.Point) probe {
+	q := probe{}
+	q.On = p
+	q.lo, q.hi = g.j.Field.Bracket(p)
+	return q
+}
+
+func (g *grader) measure(q *probe, known func(geom.Point) clearance.Nearest) {
+	if !q.exact {
+		q.Nearest, q.exact = known(q.On), true
+		q.lo, q.hi = q.Um, q.Um
+	}
+}
+
+// levels bounds how many levels clearance is below, anywhere between two places that are
+// part apart: it changes no faster than one goes.
+func (g *grader) levels(a, b *probe, part float64) (least, most int) {
+	return g.j.below((a.hi + b.hi + part) / 2), g.j.below((a.lo + b.lo - part) / 2)
+}
+
+func (g *grader) halve(from, to float64, a, b *probe) {
+	if g.sum > g.most {
+		return
+	}
 	j := g.j
 	part := float64((to - from) * g.long)
-	// Clearance changes no faster than one goes.
-	sum := na.Um + nb.Um
-	most, least := j.below((sum-part)/2), j.below((sum+part)/2)
-	if most != least && part > TightResolution {
-		k := j.below(na.Um)
-		if k != j.below(nb.Um) || !g.all(k, na, nb) {
+	least, most := g.levels(a, b, part)
+	if least != most && !(a.exact && b.exact) {
+		end := j.At
+		if from == 0 || to == 1 {
+			end = j.end
+		}
+		g.measure(a, end)
+		g.measure(b, end)
+		least, most = g.levels(a, b, part)
+	}
+	if least != most && part > TightResolution {
+		if k := j.below(a.Um); k == j.below(b.Um) && g.all(k, a.Nearest, b.Nearest) {
+			most = k
+		} else {
 			mid := from + (to-from)/2
-			nm := j.At(Along(g.a, g.b, mid))
-			g.halve(from, mid, na, nm)
-			g.halve(mid, to, nm, nb)
+			m := g.at(Along(g.a, g.b, mid))
+			g.halve(from, mid, a, &m)
+			g.halve(mid, to, &m, b)
 			return
 		}
-		most = k
 	}
 	g.sum += float64(part * float64(most))
 }

@@ -173,16 +173,30 @@ func (j *Judge) Allowed(a, b geom.Point) bool {
 // Weigh is what the straight piece ab costs, in micrometres, and the smallest
 // clearance along it, at most Open. With no weight, clearance is not looked at.
 func (j *Judge) Weigh(a, b geom.Point) (cost, least float64) {
+	return j.Cost(a, b, math.Inf(1)), j.Least(a, b)
+}
+
+// Cost is what the straight piece ab costs, in micrometres; when that is more than most, it
+// may be something less, but still more than most.
+func (j *Judge) Cost(a, b geom.Point, most float64) float64 {
 	long := geom.Dist(a, b)
-	if j.Weight == 0 {
-		return long, 0
-	}
-	if j.Field.SegmentClear(a, b, j.Levels[0]) {
-		return long, float64(j.Levels[0])
+	if j.Weight == 0 || long > most || j.Field.SegmentClear(a, b, j.Levels[0]) {
+		return long
 	}
 	g := grader{j: j, a: a, b: b, long: long}
-	g.halve(0, 1, j.end(a), j.end(b))
-	return long + float64(j.Weight/float64(len(j.Levels))*g.sum), j.Segment(a, b).Um
+	each := j.Weight / float64(len(j.Levels))
+	g.most = (most - long) / each
+	pa, pb := g.at(a), g.at(b)
+	g.halve(0, 1, &pa, &pb)
+	return long + float64(each*g.sum)
+}
+
+// Least is the smallest clearance along the straight piece ab, at most Open.
+func (j *Judge) Least(a, b geom.Point) float64 {
+	if j.Weight == 0 || j.Field.SegmentClear(a, b, j.Levels[0]) {
+		return j.Open()
+	}
+	return j.Segment(a, b).Um
 }
 
 // TightResolution is the length, in micrometres, down to which Tight tells

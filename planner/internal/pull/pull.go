@@ -16,8 +16,11 @@ type Judge interface {
 	// Keeps says whether the piece may be driven and keeps least micrometres of
 	// clearance, rounded down to whole ones.
 	Keeps(a, b geom.Point, least float64) bool
-	// Weigh is the piece's cost and its smallest clearance, at most Open.
-	Weigh(a, b geom.Point) (cost, least float64)
+	// Cost is what the piece costs, or, when that is more than most, something more than
+	// most.
+	Cost(a, b geom.Point, most float64) float64
+	// Least is the smallest clearance along the piece, at most Open.
+	Least(a, b geom.Point) float64
 	// Open is the clearance from which on a piece costs its length, and Dearest what
 	// a micrometre costs at most.
 	Open() float64
@@ -31,7 +34,8 @@ const (
 	MaxChecks = 6000
 	// maxRounds is how often all bends are gone through.
 	maxRounds = 5
-	// halvings is how finely a bend's move is found: to 1/4096 of the piece it moves along.
+	// halvings is how finely a bend's move is found: to 1/4096 of the piece it moves along, or
+	// to the gain.
 	halvings = 12
 	// roundGain is the share of the cost below which another round is not worth it.
 	roundGain = 1e-4
@@ -45,9 +49,10 @@ type line struct {
 	checks int
 	pts    []geom.Point
 	pieces []worth // of the piece from pts[i] to pts[i+1]
+	stuck  map[[3]geom.Point]bool
 }
 
-// worth is what a piece costs and keeps; not known yet when cost is below 0.
+// worth is what a piece costs and keeps; what is below 0 is not known yet.
 type worth struct{ cost, least float64 }
 
 // Straighten gives a path with the same ends. Moves of bends that gain less than gain
@@ -56,7 +61,7 @@ type worth struct{ cost, least float64 }
 // the micrometre, rounded down, where that is below the judge's Open. The error is
 // ctx's cause.
 func Straighten(ctx context.Context, j Judge, pts []geom.Point, gain float64) ([]geom.Point, error) {
-	l := &line{ctx: ctx, j: j, gain: gain, pts: append([]geom.Point(nil), pts...)}
+	l := &line{ctx: ctx, j: j, gain: gain, pts: append([]geom.Point(nil), pts...), stuck: map[[3]geom.Point]bool{}}
 	l.pieces = unknown(len(pts) - 1)
 	l.shortcut()
 	for range maxRounds {
@@ -76,7 +81,7 @@ func Straighten(ctx context.Context, j Judge, pts []geom.Point, gain float64) ([
 func unknown(n int) []worth {
 	w := make([]worth, n)
 	for i := range w {
-		w[i].cost = -1
+		w[i] = worth{-1, -1}
 	}
 	return w
 }
@@ -87,7 +92,10 @@ func (l *line) stretch(i, k int) worth {
 	for ; i < k; i++ {
 		w := &l.pieces[i]
 		if w.cost < 0 {
-			w.cost, w.least = l.j.Weigh(l.pts[i], l.pts[i+1])
+			w.cost = l.j.Cost(l.pts[i], l.pts[i+1], math.Inf(1))
+		}
+		if w.least < 0 {
+			w.least = l.j.Least(l.pts[i], l.pts[i+1])
 		}
 		sum.cost += w.cost
 		sum.least = min(sum.least, w.least)
@@ -149,7 +157,7 @@ func (l *line) try(i, k int, via ...geom.Point) (way, verdict) {
 	sum := 0.0
 	for n := range w.pieces {
 		v := &w.pieces[n]
-		if v.cost, v.least = l.j.Weigh(w.pts[n], w.pts[n+1]); sum+v.cost > was.cost {
+		if v.cost = l.j.Cost(w.pts[n], w.pts[n+1], was.cost-sum); sum+v.cost > was.cost {
 			return w, barred
 		}
 		sum += v.cost
@@ -217,6 +225,10 @@ func (l *line) shortcut() {
 // bends goes through the bends and moves each to where the path is shorter.
 func (l *line) bends() {
 	for i := 1; i+1 < len(l.pts); i++ {
+		at := [3]geom.Point(l.pts[i-1 : i+2])
+		if l.stuck[at] { // as it was when nothing could be done
+			continue
+		}
 		if w, ok := l.better(i-1, i+1); ok {
 			l.replace(i-1, i+1, w)
 			i--
@@ -228,6 +240,8 @@ func (l *line) bends() {
 		l.slide(i, l.pts[i+1])
 		if l.cut(i) {
 			i++
+		} else if i+1 < len(l.pts) && at == [3]geom.Point(l.pts[i-1:i+2]) {
+			l.stuck[at] = true
 		}
 	}
 }
@@ -238,7 +252,7 @@ func (l *line) slide(i int, to geom.Point) {
 	if a, c := l.pts[i-1], l.pts[i+1]; geom.Dist(a, from)+geom.Dist(from, c)-geom.Dist(a, c) < l.gain {
 		return
 	}
-	w, ok := l.farthest(func(t float64) (way, verdict) {
+	w, ok := l.farthest(geom.Dist(from, to), func(t float64) (way, verdict) {
 		return l.try(i-1, i+1, between(from, to, t))
 	})
 	if ok {
@@ -255,7 +269,7 @@ func (l *line) cut(i int) bool {
 	if 2*reach-geom.Dist(between(b, a, reach/da), between(b, c, reach/dc)) < l.gain {
 		return false
 	}
-	w, ok := l.farthest(func(t float64) (way, verdict) {
+	w, ok := l.farthest(reach, func(t float64) (way, verdict) {
 		return l.try(i-1, i+1, between(b, a, float64(t*reach)/da), between(b, c, float64(t*reach)/dc))
 	})
 	if !ok {
@@ -265,8 +279,8 @@ func (l *line) cut(i int) bool {
 	return len(w.pts) == 4
 }
 
-// farthest looks for the largest share t up to 1 for which a move is good.
-func (l *line) farthest(move func(t float64) (way, verdict)) (way, bool) {
+// farthest looks for the largest share t up to 1 of a reach for which a move is good.
+func (l *line) farthest(reach float64, move func(t float64) (way, verdict)) (way, bool) {
 	if w, v := move(1); v == good {
 		return w, true
 	}
@@ -284,7 +298,7 @@ func (l *line) farthest(move func(t float64) (way, verdict)) (way, bool) {
 		case barred:
 			hi = mid
 		}
-		if l.checks > MaxChecks {
+		if l.checks > MaxChecks || float64((hi-lo)*reach) < l.gain/2 {
 			break
 		}
 	}

@@ -93,7 +93,7 @@ func (l *relaxed) move(i, k int, p geom.Point, more func(least float64) float64)
 			return false
 		}
 		v := &w.pieces[n]
-		v.cost, v.least = l.j.Weigh(w.pts[n], w.pts[n+1])
+		v.cost, v.least = l.j.Cost(w.pts[n], w.pts[n+1], math.Inf(1)), l.j.Least(w.pts[n], w.pts[n+1])
 		sum += v.cost
 		least = min(least, v.least)
 	}
