@@ -52,6 +52,7 @@ const ServiceConfig = `{
       {"service": "wideberth.v1.FloorService", "method": "ReadFloor"},
       {"service": "wideberth.v1.RouteService", "method": "Plan"},
       {"service": "wideberth.v1.RouteService", "method": "Replan"},
+      {"service": "wideberth.v1.RouteService", "method": "PlanMany"},
       {"service": "wideberth.v1.GuideService", "method": "GuideOnce"}
     ],
     "retryPolicy": {

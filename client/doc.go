@@ -13,6 +13,7 @@
 //     is the same call and not a second one,
 //   - streams that are taken up again where they broke: Watch and Guide,
 //   - whole floors put together and checked: ReadFloor,
+//   - many routes at once, each pair answered: PlanMany,
 //   - how long a route may still be acted on: Validity.
 //
 // Errors are gRPC statuses, wrapped: status.Code and ReasonOf read them. What a

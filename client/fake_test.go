@@ -30,6 +30,7 @@ type fakeService struct {
 	push     func(context.Context, *wideberthv1.PushPatchRequest) (*wideberthv1.PushPatchResponse, error)
 	list     func(context.Context, *wideberthv1.ListFloorsRequest) (*wideberthv1.ListFloorsResponse, error)
 	plan     func(context.Context, *wideberthv1.PlanRequest) (*wideberthv1.PlanResponse, error)
+	planMany func(*wideberthv1.PlanManyRequest, grpc.ServerStreamingServer[wideberthv1.PlanManyResponse]) error
 	read     func(*wideberthv1.ReadFloorRequest, grpc.ServerStreamingServer[wideberthv1.ReadFloorResponse]) error
 	watch    func(*wideberthv1.WatchVersionsRequest, grpc.ServerStreamingServer[wideberthv1.WatchVersionsResponse]) error
 	guide    func(grpc.BidiStreamingServer[wideberthv1.GuideRequest, wideberthv1.GuideResponse]) error
@@ -49,6 +50,10 @@ func (f *fakeService) ListFloors(ctx context.Context, r *wideberthv1.ListFloorsR
 
 func (f *fakeService) Plan(ctx context.Context, r *wideberthv1.PlanRequest) (*wideberthv1.PlanResponse, error) {
 	return f.plan(ctx, r)
+}
+
+func (f *fakeService) PlanMany(r *wideberthv1.PlanManyRequest, s grpc.ServerStreamingServer[wideberthv1.PlanManyResponse]) error {
+	return f.planMany(r, s)
 }
 
 func (f *fakeService) ReadFloor(r *wideberthv1.ReadFloorRequest, s grpc.ServerStreamingServer[wideberthv1.ReadFloorResponse]) error {
