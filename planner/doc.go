@@ -18,6 +18,8 @@
 // whole; ends join it by straight pieces that are clear. Auto is the 8-connected grid. The
 // path found is straightened by exact lines of sight (package pull): bends are
 // pulled to corners, and a corner is cut as often as that saves a fiftieth of a cell.
+// Tight stretches of balanced routes then go to the middle between what is on their sides
+// (path relaxation; pull.Relax), as long as the whole costs no more than the roadmap's path.
 //
 // Balanced counts a metre the more, up to 1 + TightWeight times, the less clearance there is
 // below the preferred one (Route.CostUm). The search judges a cell by the least clearance
@@ -35,11 +37,39 @@
 // Before it is given, every route is gone over by package check, which shares
 // nothing with any of this. Should they disagree, the answer is a *CheckError.
 //
+// # Which structure answers what
+//
+//	question                          structure                         cost
+//	how much room is here             clearance.Field: vertices,        about 1 µs at 1 m from
+//	                                  features in blocks                what is nearest
+//	may it drive straight here        the same, walked (SegmentClear)   under 1 µs a metre in the open
+//	which cells are free              mask.Mask: a bit a cell           once a version and body;
+//	                                  by block of 64x64                 unchanged blocks carried over
+//	is the goal connected at all      mask regions: parts of blocks,    once a version and body, all
+//	                                  joined across borders             blocks; then a look-up
+//	the cheapest way over cells       A* over cells, a queue of         about 0.1 µs a cell opened
+//	                                  stacks by key
+//	the same where halls are wide     A* over quadtree leaves           about 1 µs a node opened
+//	how wide the widest way is        best first by clearance           about 1 µs a cell opened
+//	is the route right                check.Way: cells and features     cells along the route
+//
+// One-way zones are no part of the regions: a goal they shut off is found out by searching
+// all that can be reached. A refusal's time goes into the widest way: it looks at what
+// is shut in with the end that has fewer cells about it.
+//
+// Measured, CPU time of one plan in milliseconds, one run on a shared machine; the hall has 2400 by
+// 1600 cells, the route 79 m and 270,000 to 320,000 cells opened:
+//
+//	balanced                          63, of which searching 33
+//	shortest, 8-connected grid        31, of which searching 29
+//	shortest, quadtree                58
+//	no passage, with its bottleneck   190
+//
 // # Reading the source
 //
 // plan.go is the way through; ends.go joins ends to roadmaps, bottleneck.go explains
 // refusals, describe.go makes legs and points, replan.go keeps or replaces old routes,
-// advise.go guides. Beneath: internal/judge decides exactly, internal/mask holds free
-// cells, internal/roadmap searches, internal/pull straightens, internal/rules knows the
-// zones.
+// advise.go guides. Beneath: internal/judge decides exactly and says what a metre costs,
+// internal/touch knows points, internal/mask holds free cells, internal/roadmap searches,
+// internal/pull straightens, internal/rules knows the zones.
 package planner

@@ -29,8 +29,9 @@ const (
 	Preference_PREFERENCE_UNSPECIFIED Preference = 0
 	// As short as the required clearance allows.
 	Preference_PREFERENCE_SHORTEST Preference = 1
-	// The wide berth where the floor allows it: metres below the preferred
-	// clearance cost more (see PlanOptions.tight_weight).
+	// The wide berth where the floor allows it, the middle of the passage where it
+	// does not: metres below the preferred clearance cost more, the more the less
+	// clearance they have (see PlanOptions.tight_weight).
 	Preference_PREFERENCE_BALANCED Preference = 2
 )
 
@@ -746,8 +747,10 @@ type PlanOptions struct {
 	Roadmap Roadmap `protobuf:"varint,2,opt,name=roadmap,proto3,enum=wideberth.v1.Roadmap" json:"roadmap,omitempty"`
 	// Send the roadmap's own path, from cell to cell, without straightening.
 	KeepRoadmapPath bool `protobuf:"varint,3,opt,name=keep_roadmap_path,json=keepRoadmapPath,proto3" json:"keep_roadmap_path,omitempty"`
-	// Balanced: how much more a metre below the preferred clearance costs than an
-	// open one, from 0 to 100. 0 asks for 1 (a tight metre costs two).
+	// Balanced: how much more a metre costs where clearance is hardly the required
+	// one than an open metre does, from 0 to 100. Between the required and the
+	// preferred clearance this falls in four equal steps: in the lowest quarter a
+	// metre costs 1 + tight_weight, in the highest 1 + tight_weight / 4. 0 asks for 1.
 	TightWeight float64 `protobuf:"fixed64,4,opt,name=tight_weight,json=tightWeight,proto3" json:"tight_weight,omitempty"`
 	// A leg is tight where clearance is below this, up to the floor's cap. 0 asks
 	// for the body's preferred clearance.
@@ -1361,7 +1364,7 @@ type Route struct {
 	LengthM float64 `protobuf:"fixed64,8,opt,name=length_m,json=lengthM,proto3" json:"length_m,omitempty"`
 	// Seconds in all at the advised speed ceilings, without ramps.
 	DurationS float64 `protobuf:"fixed64,9,opt,name=duration_s,json=durationS,proto3" json:"duration_s,omitempty"`
-	// What the preference minimises: metres, tight ones weighted.
+	// What the preference minimises: metres, tight ones weighted as tight_weight says.
 	CostM float64 `protobuf:"fixed64,10,opt,name=cost_m,json=costM,proto3" json:"cost_m,omitempty"`
 	// The smallest clearance along it, rounded down; at most the floor's cap.
 	SmallestClearanceM float64 `protobuf:"fixed64,11,opt,name=smallest_clearance_m,json=smallestClearanceM,proto3" json:"smallest_clearance_m,omitempty"`
@@ -2333,7 +2336,7 @@ type RouteSummary struct {
 	LengthM float64 `protobuf:"fixed64,2,opt,name=length_m,json=lengthM,proto3" json:"length_m,omitempty"`
 	// Seconds in all at the advised speed ceilings, without ramps.
 	DurationS float64 `protobuf:"fixed64,3,opt,name=duration_s,json=durationS,proto3" json:"duration_s,omitempty"`
-	// What the preference minimises: metres, tight ones weighted.
+	// What the preference minimises: metres, tight ones weighted as tight_weight says.
 	CostM float64 `protobuf:"fixed64,4,opt,name=cost_m,json=costM,proto3" json:"cost_m,omitempty"`
 	// The smallest clearance along it, rounded down; at most the floor's cap.
 	SmallestClearanceM float64 `protobuf:"fixed64,5,opt,name=smallest_clearance_m,json=smallestClearanceM,proto3" json:"smallest_clearance_m,omitempty"`
