@@ -14,11 +14,17 @@ import (
 
 // planFlags are what plan was asked.
 type planFlags struct {
-	from, to, body, preference, roadmap, picture string
-	radius, margin, preferred, tightWeight       float64
-	budget, spacing                              float64
-	shortest, balanced, keep                     bool
-	version                                      int64
+	questionFlags
+	from, to, picture string
+}
+
+// questionFlags are for what body a route is, what it should be, and on which version.
+type questionFlags struct {
+	body, preference, roadmap              string
+	radius, margin, preferred, tightWeight float64
+	budget, spacing                        float64
+	shortest, balanced, keep               bool
+	version                                int64
 }
 
 func (a *app) plan() *cobra.Command {
@@ -69,6 +75,14 @@ func (a *app) plan() *cobra.Command {
 	f := cmd.Flags()
 	f.StringVar(&p.from, "from", "", "where to start: a `place` (required)")
 	f.StringVar(&p.to, "to", "", "where to go: a `place` (required)")
+	p.add(cmd)
+	f.StringVar(&p.picture, "picture", "", "draw the answer as SVG into this `file`")
+	return cmd
+}
+
+// add gives a command the flags.
+func (p *questionFlags) add(cmd *cobra.Command) {
+	f := cmd.Flags()
 	f.StringVar(&p.body, "body", "", "read the body from this `file`")
 	f.Float64Var(&p.radius, "radius", 0, "half the body's width, load included, in `metres`")
 	f.Float64Var(&p.margin, "margin", 0, "kept free beyond the radius, in `metres`")
@@ -82,9 +96,7 @@ func (a *app) plan() *cobra.Command {
 	f.Float64Var(&p.spacing, "max-spacing", 0, "the most `metres` between two points; 0 sends points where they matter")
 	f.Float64Var(&p.budget, "time-budget", 0, "how many `seconds` the search may take; 0 asks for the server's own")
 	f.Int64Var(&p.version, "version", 0, "plan on this `version`; default the head")
-	f.StringVar(&p.picture, "picture", "", "draw the answer as SVG into this `file`")
 	cmd.MarkFlagsMutuallyExclusive("shortest", "balanced", "preference")
-	return cmd
 }
 
 // caution says beside every answer what it is not.
@@ -103,6 +115,16 @@ func (p *planFlags) request(cmd *cobra.Command, floor string) (*wideberthv1.Plan
 	if err != nil {
 		return nil, err
 	}
+	req, err := p.question(cmd, floor)
+	if err != nil {
+		return nil, err
+	}
+	req.Start, req.Goal = start, goal
+	return req, nil
+}
+
+// question makes a request without its ends.
+func (p *questionFlags) question(cmd *cobra.Command, floor string) (*wideberthv1.PlanRequest, error) {
 	preference := p.preference
 	if p.shortest {
 		preference = "shortest"
@@ -141,7 +163,7 @@ func (p *planFlags) request(cmd *cobra.Command, floor string) (*wideberthv1.Plan
 		version = client.Pinned(p.version)
 	}
 	return &wideberthv1.PlanRequest{
-		Floor: floor, Version: version, Body: body, Start: start, Goal: goal,
+		Floor: floor, Version: version, Body: body,
 		Options: &wideberthv1.PlanOptions{
 			Preference: wideberthv1.Preference(pref), Roadmap: road, KeepRoadmapPath: p.keep,
 			TightWeight: p.tightWeight, TimeBudgetS: p.budget, MaxSpacingM: p.spacing,

@@ -44,7 +44,7 @@ func (a *app) root() *cobra.Command {
 		Long: "wideberth is the operator's tool of a wideberth service.\n\n" +
 			"Data goes to stdout, everything else to stderr. Exit codes: 0 done, 1 failed,\n" +
 			"2 wrong command line, 3 rejected by validation, 4 version conflict, 5 server\n" +
-			"unreachable or too late, 6 refused: no route.",
+			"unreachable or too late, 6 refused: no route (reach: not to every place).",
 		Args:          cobra.NoArgs,
 		SilenceErrors: true,
 		SilenceUsage:  true,
@@ -76,7 +76,7 @@ func (a *app) root() *cobra.Command {
 	f.BoolVar(&a.plaintext, "plaintext", false, "speak without TLS to a server that is not on this machine")
 	f.StringVar(&a.ca, "ca", "", "speak TLS and trust the certificates in this PEM `file`")
 	root.MarkFlagsMutuallyExclusive("plaintext", "ca")
-	root.AddCommand(a.floors(), a.push(), a.versions(), a.compare(), a.restore(), a.watch(), a.plan(), a.trial(), a.version())
+	root.AddCommand(a.floors(), a.push(), a.versions(), a.compare(), a.restore(), a.watch(), a.plan(), a.reach(), a.trial(), a.version())
 	return root
 }
 
