@@ -6,6 +6,7 @@ import (
 	"slices"
 
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/anyangle"
 	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/judge"
 )
@@ -273,7 +274,11 @@ func (t *task) bound(c *course, r *Route) Bound {
 		// The search judged cells as a whole; the path itself is tight less often.
 		b.Kind = AtMostRoadmapOptimum
 	}
-	if b.Kind != Straight {
+	switch b.Kind {
+	case Straight:
+	case AnyAngleOptimum:
+		b.WidthBiasUm, b.OptimumWithinUm = 2*anyangle.DeltaUm, anyangle.DeltaUm
+	default:
 		b.WidthBiasUm = widthBias(t.w.frame.Res)
 	}
 	return b

@@ -59,7 +59,11 @@ func TestStraightenedAgainstTrueOptimum(t *testing.T) {
 			if got < c.want*(1-1e-9) || got > c.want*1.003 {
 				t.Errorf("%s, roadmap %d: %.6f m, the optimum is %.6f", c.name, rm, got, c.want)
 			}
-			if r.Bound.Kind != planner.AtMostRoadmapOptimum || r.Bound.LowerUm > r.LengthUm {
+			kind := planner.AtMostRoadmapOptimum
+			if rm == planner.Auto {
+				kind = planner.AnyAngleOptimum
+			}
+			if r.Bound.Kind != kind || r.Bound.LowerUm > r.LengthUm {
 				t.Errorf("%s: bound %+v", c.name, r.Bound)
 			}
 			q.Options.KeepRoadmapPath = true

@@ -145,9 +145,22 @@ func (t *task) course(ctx context.Context) (*course, error) {
 		return c, nil
 	}
 	o := t.q.Options
+	apart := false
+	if o.anyAngle() {
+		c, no, err := t.optimum(ctx)
+		if c != nil || err != nil {
+			return c, err
+		}
+		apart = no
+	}
 	q := &roadmap.Query{
 		Frame: t.w.frame, Free: t.free, Levels: t.levels, Weight: t.j.Weight, Rules: t.w.rules,
 		From: t.connect(t.q.Start.At, false), To: t.connect(t.q.Goal.At, true), Count: &t.search,
+	}
+	if apart {
+		if t.shut = roadmap.Connected(q); t.shut != roadmap.Found {
+			return nil, nil
+		}
 	}
 	var p roadmap.Path
 	var out roadmap.Outcome

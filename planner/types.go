@@ -45,6 +45,7 @@ const (
 	Grid4
 	Grid8
 	Quadtree
+	ConvexCells // any-angle optima over convex cells; for Shortest alone
 )
 
 // Options say how to plan. The zero value is a balanced plan on the default roadmap
@@ -116,6 +117,7 @@ const (
 	RoadmapOptimum       BoundKind = iota + 1 // its cost is the least over the searched roadmap
 	AtMostRoadmapOptimum                      // straightened: at most that
 	Straight                                  // the straight line: nothing is shorter
+	AnyAngleOptimum                           // no way that keeps OptimumWithinUm more from solids and closed zones is shorter
 )
 
 // Bound says how good a route is and what the roadmap may have missed.
@@ -124,6 +126,7 @@ type Bound struct {
 	LowerUm          float64 // no route whatever is shorter
 	WidthBiasUm      int64   // a passage up to this much wider than 2·Required may be missed
 	ClearanceShortUm int64   // reported clearances are at most this much below the truth
+	OptimumWithinUm  int64   // AnyAngleOptimum; else 0
 }
 
 // Route is a checked way from Start to Goal.
