@@ -167,7 +167,7 @@ func TestPointAgainstDirections(t *testing.T) {
 			t.Fatal(err)
 		}
 		j := judge.New(f, rules.Of(m), 0, 0)
-		for range 6 {
+		for range 3 {
 			a, b, c := drawVertex(t), drawVertex(t), drawVertex(t)
 			if a == b || b == c {
 				continue
