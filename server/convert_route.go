@@ -176,6 +176,7 @@ func routeOut(r *planner.Route, v mapstore.VersionInfo, b planner.Body, o *pb.Pl
 			LowerBoundM:     geom.Metres(r.Bound.LowerUm),
 			WidthBiasM:      wire.Metres(r.Bound.WidthBiasUm),
 			ClearanceShortM: wire.Metres(r.Bound.ClearanceShortUm),
+			OptimumWithinM:  wire.Metres(r.Bound.OptimumWithinUm),
 		},
 		ValidForS: validForS,
 	}

@@ -46,6 +46,7 @@ var (
 		{planner.Grid4, pb.Roadmap_ROADMAP_GRID4},
 		{planner.Grid8, pb.Roadmap_ROADMAP_GRID8},
 		{planner.Quadtree, pb.Roadmap_ROADMAP_QUADTREE},
+		{planner.ConvexCells, pb.Roadmap_ROADMAP_CONVEX_CELLS},
 	}
 	speedCauses = twins[planner.SpeedCause, pb.SpeedCause]{
 		{planner.CauseBody, pb.SpeedCause_SPEED_CAUSE_BODY},
@@ -56,6 +57,7 @@ var (
 		{planner.RoadmapOptimum, pb.BoundKind_BOUND_KIND_ROADMAP_OPTIMUM},
 		{planner.AtMostRoadmapOptimum, pb.BoundKind_BOUND_KIND_AT_MOST_ROADMAP_OPTIMUM},
 		{planner.Straight, pb.BoundKind_BOUND_KIND_STRAIGHT},
+		{planner.AnyAngleOptimum, pb.BoundKind_BOUND_KIND_ANY_ANGLE_OPTIMUM},
 	}
 	refusalReasons = twins[planner.RefusalReason, pb.RefusalReason]{
 		{planner.StartBlocked, pb.RefusalReason_REFUSAL_REASON_START_BLOCKED},

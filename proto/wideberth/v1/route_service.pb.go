@@ -88,6 +88,12 @@ const (
 	Roadmap_ROADMAP_GRID8 Roadmap = 2
 	// Leaves of the clearance quadtree.
 	Roadmap_ROADMAP_QUADTREE Roadmap = 3
+	// Convex cells of the space that is clear, crossed in any direction: the optimum
+	// over all directions (BOUND_KIND_ANY_ANGLE_OPTIMUM). For PREFERENCE_SHORTEST
+	// alone, and what the server chooses for it; there is no path of the roadmap's
+	// own to keep. Where that optimum goes against a one-way zone, ROADMAP_GRID8 is
+	// searched instead and the bound says so.
+	Roadmap_ROADMAP_CONVEX_CELLS Roadmap = 4
 )
 
 // Enum value maps for Roadmap.
@@ -97,12 +103,14 @@ var (
 		1: "ROADMAP_GRID4",
 		2: "ROADMAP_GRID8",
 		3: "ROADMAP_QUADTREE",
+		4: "ROADMAP_CONVEX_CELLS",
 	}
 	Roadmap_value = map[string]int32{
-		"ROADMAP_UNSPECIFIED": 0,
-		"ROADMAP_GRID4":       1,
-		"ROADMAP_GRID8":       2,
-		"ROADMAP_QUADTREE":    3,
+		"ROADMAP_UNSPECIFIED":  0,
+		"ROADMAP_GRID4":        1,
+		"ROADMAP_GRID8":        2,
+		"ROADMAP_QUADTREE":     3,
+		"ROADMAP_CONVEX_CELLS": 4,
 	}
 )
 
@@ -255,6 +263,9 @@ const (
 	BoundKind_BOUND_KIND_AT_MOST_ROADMAP_OPTIMUM BoundKind = 2
 	// It is the straight line: nothing is shorter.
 	BoundKind_BOUND_KIND_STRAIGHT BoundKind = 3
+	// No route that keeps optimum_within_m more than the required clearance, and as
+	// much more from closed zones, is shorter, but for rounding (1e-9 of its length).
+	BoundKind_BOUND_KIND_ANY_ANGLE_OPTIMUM BoundKind = 4
 )
 
 // Enum value maps for BoundKind.
@@ -264,12 +275,14 @@ var (
 		1: "BOUND_KIND_ROADMAP_OPTIMUM",
 		2: "BOUND_KIND_AT_MOST_ROADMAP_OPTIMUM",
 		3: "BOUND_KIND_STRAIGHT",
+		4: "BOUND_KIND_ANY_ANGLE_OPTIMUM",
 	}
 	BoundKind_value = map[string]int32{
 		"BOUND_KIND_UNSPECIFIED":             0,
 		"BOUND_KIND_ROADMAP_OPTIMUM":         1,
 		"BOUND_KIND_AT_MOST_ROADMAP_OPTIMUM": 2,
 		"BOUND_KIND_STRAIGHT":                3,
+		"BOUND_KIND_ANY_ANGLE_OPTIMUM":       4,
 	}
 )
 
@@ -1279,8 +1292,11 @@ type Bound struct {
 	WidthBiasM float64 `protobuf:"fixed64,3,opt,name=width_bias_m,json=widthBiasM,proto3" json:"width_bias_m,omitempty"`
 	// Clearances in the answer are at most this much below the true distance.
 	ClearanceShortM float64 `protobuf:"fixed64,4,opt,name=clearance_short_m,json=clearanceShortM,proto3" json:"clearance_short_m,omitempty"`
-	unknownFields   protoimpl.UnknownFields
-	sizeCache       protoimpl.SizeCache
+	// With BOUND_KIND_ANY_ANGLE_OPTIMUM, the clearance beyond the required one from
+	// which on no route is shorter; else 0.
+	OptimumWithinM float64 `protobuf:"fixed64,5,opt,name=optimum_within_m,json=optimumWithinM,proto3" json:"optimum_within_m,omitempty"`
+	unknownFields  protoimpl.UnknownFields
+	sizeCache      protoimpl.SizeCache
 }
 
 func (x *Bound) Reset() {
@@ -1337,6 +1353,13 @@ func (x *Bound) GetWidthBiasM() float64 {
 func (x *Bound) GetClearanceShortM() float64 {
 	if x != nil {
 		return x.ClearanceShortM
+	}
+	return 0
+}
+
+func (x *Bound) GetOptimumWithinM() float64 {
+	if x != nil {
+		return x.OptimumWithinM
 	}
 	return 0
 }
@@ -2799,13 +2822,14 @@ const file_wideberth_v1_route_service_proto_rawDesc = "" +
 	"\x11speed_ceiling_mps\x18\v \x01(\x01R\x0fspeedCeilingMps\x129\n" +
 	"\vspeed_cause\x18\f \x01(\x0e2\x18.wideberth.v1.SpeedCauseR\n" +
 	"speedCause\x12%\n" +
-	"\x0ebeyond_sensing\x18\r \x01(\bR\rbeyondSensing\"\xa6\x01\n" +
+	"\x0ebeyond_sensing\x18\r \x01(\bR\rbeyondSensing\"\xd0\x01\n" +
 	"\x05Bound\x12+\n" +
 	"\x04kind\x18\x01 \x01(\x0e2\x17.wideberth.v1.BoundKindR\x04kind\x12\"\n" +
 	"\rlower_bound_m\x18\x02 \x01(\x01R\vlowerBoundM\x12 \n" +
 	"\fwidth_bias_m\x18\x03 \x01(\x01R\n" +
 	"widthBiasM\x12*\n" +
-	"\x11clearance_short_m\x18\x04 \x01(\x01R\x0fclearanceShortM\"\xc1\x04\n" +
+	"\x11clearance_short_m\x18\x04 \x01(\x01R\x0fclearanceShortM\x12(\n" +
+	"\x10optimum_within_m\x18\x05 \x01(\x01R\x0eoptimumWithinM\"\xc1\x04\n" +
 	"\x05Route\x12\x19\n" +
 	"\broute_id\x18\x01 \x01(\tR\arouteId\x12C\n" +
 	"\x0fchecked_against\x18\x02 \x01(\v2\x1a.wideberth.v1.VersionStampR\x0echeckedAgainst\x12&\n" +
@@ -2929,12 +2953,13 @@ const file_wideberth_v1_route_service_proto_rawDesc = "" +
 	"Preference\x12\x1a\n" +
 	"\x16PREFERENCE_UNSPECIFIED\x10\x00\x12\x17\n" +
 	"\x13PREFERENCE_SHORTEST\x10\x01\x12\x17\n" +
-	"\x13PREFERENCE_BALANCED\x10\x02*^\n" +
+	"\x13PREFERENCE_BALANCED\x10\x02*x\n" +
 	"\aRoadmap\x12\x17\n" +
 	"\x13ROADMAP_UNSPECIFIED\x10\x00\x12\x11\n" +
 	"\rROADMAP_GRID4\x10\x01\x12\x11\n" +
 	"\rROADMAP_GRID8\x10\x02\x12\x14\n" +
-	"\x10ROADMAP_QUADTREE\x10\x03*k\n" +
+	"\x10ROADMAP_QUADTREE\x10\x03\x12\x18\n" +
+	"\x14ROADMAP_CONVEX_CELLS\x10\x04*k\n" +
 	"\n" +
 	"SpeedCause\x12\x1b\n" +
 	"\x17SPEED_CAUSE_UNSPECIFIED\x10\x00\x12\x14\n" +
@@ -2944,12 +2969,13 @@ const file_wideberth_v1_route_service_proto_rawDesc = "" +
 	"\aLegKind\x12\x18\n" +
 	"\x14LEG_KIND_UNSPECIFIED\x10\x00\x12\x11\n" +
 	"\rLEG_KIND_OPEN\x10\x01\x12\x12\n" +
-	"\x0eLEG_KIND_TIGHT\x10\x02*\x88\x01\n" +
+	"\x0eLEG_KIND_TIGHT\x10\x02*\xaa\x01\n" +
 	"\tBoundKind\x12\x1a\n" +
 	"\x16BOUND_KIND_UNSPECIFIED\x10\x00\x12\x1e\n" +
 	"\x1aBOUND_KIND_ROADMAP_OPTIMUM\x10\x01\x12&\n" +
 	"\"BOUND_KIND_AT_MOST_ROADMAP_OPTIMUM\x10\x02\x12\x17\n" +
-	"\x13BOUND_KIND_STRAIGHT\x10\x03*\xb1\x01\n" +
+	"\x13BOUND_KIND_STRAIGHT\x10\x03\x12 \n" +
+	"\x1cBOUND_KIND_ANY_ANGLE_OPTIMUM\x10\x04*\xb1\x01\n" +
 	"\rRefusalReason\x12\x1e\n" +
 	"\x1aREFUSAL_REASON_UNSPECIFIED\x10\x00\x12 \n" +
 	"\x1cREFUSAL_REASON_START_BLOCKED\x10\x01\x12\x1f\n" +
