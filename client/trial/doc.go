@@ -9,4 +9,7 @@
 // middle of one cell to the middle of another, for a body without extent; on
 // the roadmap grid8 the service's rules are the benchmark's: straight moves cost 1,
 // diagonal ones the root of 2, and a diagonal needs both its straight neighbours.
+//
+// Any-angle optima are published for the same problems from corner to corner (option
+// Vertices; ReadOptima), for a point that may touch solids, as a body without extent may.
 package trial

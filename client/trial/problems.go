@@ -14,6 +14,7 @@ type Problem struct {
 	StartX, StartY int
 	GoalX, GoalY   int
 	Length         float64 // the listed optimum, in cells
+	AtMost         bool    // Length is an upper bound on the optimum: only more is an error
 }
 
 // ReadProblemsFile reads the scenario in a file.

@@ -23,11 +23,21 @@ const author = "wideberth trial"
 // Options say how to plan. The zero value asks the service for its own choice.
 type Options struct {
 	Roadmap wideberthv1.Roadmap
+	Points  Points
 	// Straighten asks for straightened routes instead of the roadmap's own path.
 	Straighten bool
 	// TimeBudgetS bounds each search; 0 asks for the server's own bound.
 	TimeBudgetS float64
 }
+
+// Points say which places a problem's cells stand for.
+type Points uint8
+
+// The places.
+const (
+	Centres  Points = iota // the cells' middles
+	Vertices               // the cells' top left corners
+)
 
 // Answer is what came of one problem.
 type Answer struct {
@@ -44,6 +54,9 @@ type Summary struct {
 	// MaxAbsError is the largest difference between a length and the listed
 	// optimum, in cells. Null when nothing was solved.
 	MaxAbsError *float64 `json:"max_abs_error"`
+	// MaxRelError is the largest difference by the listed optimum, problems whose
+	// optimum is 0 left out. Null when there is none.
+	MaxRelError *float64 `json:"max_rel_error"`
 	// MeanRatio is the mean of length by listed optimum, problems whose optimum is 0
 	// left out. Null when there is none.
 	MeanRatio *float64 `json:"mean_ratio"`
@@ -83,8 +96,8 @@ func plan(ctx context.Context, c *client.Client, g *Grid, stamp *wideberthv1.Ver
 		Floor:   stamp.GetFloor(),
 		Version: client.Pinned(stamp.GetVersion()),
 		Body:    &wideberthv1.Body{Name: "point"},
-		Start:   place(g.Centre(p.StartX, p.StartY)),
-		Goal:    place(g.Centre(p.GoalX, p.GoalY)),
+		Start:   place(g.at(o.Points, p.StartX, p.StartY)),
+		Goal:    place(g.at(o.Points, p.GoalX, p.GoalY)),
 		Options: &wideberthv1.PlanOptions{
 			Preference:      wideberthv1.Preference_PREFERENCE_SHORTEST,
 			Roadmap:         o.Roadmap,
@@ -110,6 +123,18 @@ func plan(ctx context.Context, c *client.Client, g *Grid, stamp *wideberthv1.Ver
 // right, y up from the lower left corner.
 func (g *Grid) Centre(x, y int) *wideberthv1.Point {
 	return &wideberthv1.Point{XM: float64(x) + 0.5, YM: float64(g.Height-1-y) + 0.5}
+}
+
+// Vertex is the top left corner of a cell of the grid's frame, in metres of the floor's.
+func (g *Grid) Vertex(x, y int) *wideberthv1.Point {
+	return &wideberthv1.Point{XM: float64(x), YM: float64(g.Height - y)}
+}
+
+func (g *Grid) at(p Points, x, y int) *wideberthv1.Point {
+	if p == Vertices {
+		return g.Vertex(x, y)
+	}
+	return g.Centre(x, y)
 }
 
 func place(p *wideberthv1.Point) *wideberthv1.Place {
@@ -170,7 +195,7 @@ func load(ctx context.Context, c *client.Client, g *Grid) (*wideberthv1.VersionS
 // Summarize compares answers with their problems' optimum.
 func Summarize(problems []Problem, answers []Answer) Summary {
 	s := Summary{Queries: len(answers)}
-	var worst, ratios float64
+	var worst, relative, ratios float64
 	compared := 0
 	us := make([]float64, 0, len(answers))
 	expanded := make([]int64, 0, len(answers))
@@ -182,8 +207,13 @@ func Summarize(problems []Problem, answers []Answer) Summary {
 		}
 		s.Solved++
 		best := problems[i].Length
-		worst = max(worst, math.Abs(a.Length-best))
+		wrong := math.Abs(a.Length - best)
+		if problems[i].AtMost {
+			wrong = max(0, a.Length-best)
+		}
+		worst = max(worst, wrong)
 		if best > 0 {
+			relative = max(relative, wrong/best)
 			ratios += a.Length / best
 			compared++
 		}
@@ -193,7 +223,7 @@ func Summarize(problems []Problem, answers []Answer) Summary {
 	}
 	if compared > 0 {
 		mean := ratios / float64(compared)
-		s.MeanRatio = &mean
+		s.MeanRatio, s.MaxRelError = &mean, &relative
 	}
 	s.P50Us, s.P95Us = rank(us, 50), rank(us, 95)
 	s.ExpandedP50 = rank(expanded, 50)

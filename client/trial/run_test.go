@@ -1,6 +1,7 @@
 package trial
 
 import (
+	"errors"
 	"math"
 	"path/filepath"
 	"strings"
@@ -122,5 +123,72 @@ func TestSummarize(t *testing.T) {
 	const want = "index,length,us,expanded\n0,10.5,40.0,9\n1,4,10.0,1\n2,0,20.0,5\n3,,30.1,7\n"
 	if b.String() != want {
 		t.Errorf("wrote %q, want %q", b.String(), want)
+	}
+}
+
+// The yard's any-angle optima, from corner to corner, were worked out by hand: straight
+// down, straight across, along a wall, round walls (no way leads between a wall and
+// the map's edge that touch), and none at all. yard.csv has the published ones' form.
+func TestTrialReachesTheAnyAngleOptima(t *testing.T) {
+	t.Parallel()
+	g, err := ReadGridFile(filepath.Join("testdata", "yard.map"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	scen, err := ReadProblemsFile(filepath.Join("testdata", "yard.scen"), g)
+	if err != nil {
+		t.Fatal(err)
+	}
+	problems, err := ReadOptimaFile(filepath.Join("testdata", "yard.csv"), scen)
+	if err != nil {
+		t.Fatal(err)
+	}
+	c := embedded(t)
+	answers, err := Run(t.Context(), c, g, problems, Options{Points: Vertices, Straighten: true})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for i, a := range answers {
+		// Sums of a few square roots in float64.
+		if !a.Solved || math.Abs(a.Length-problems[i].Length) > 1e-12 {
+			t.Errorf("problem %d: solved %v, length %v, want %v", i, a.Solved, a.Length, problems[i].Length)
+		}
+	}
+	if s := Summarize(problems, answers); *s.MaxRelError > 1e-12 {
+		t.Errorf("relative error %v", *s.MaxRelError)
+	}
+	// To octile lengths they are shorter, which is no error where those are upper bounds.
+	if s := Summarize(scen, answers); *s.MaxRelError < 0.01 {
+		t.Errorf("relative error to octile lengths %v, want more", *s.MaxRelError)
+	}
+	// The scenario rounds to eight decimals.
+	if s := Summarize(UpperBounds(scen), answers); *s.MaxRelError > 1e-8 || *s.MeanRatio > 0.99 {
+		t.Errorf("relative excess %v, mean ratio %v", *s.MaxRelError, *s.MeanRatio)
+	}
+}
+
+func TestFaultsOfOptimaNameTheLine(t *testing.T) {
+	t.Parallel()
+	const head = "index,start_x,start_y,goal_x,goal_y,octile_length,any_angle_length\n"
+	problems := []Problem{{GoalX: 2, GoalY: 1, Length: 2.5}}
+	for _, tc := range []struct{ name, text, want string }{
+		{"empty", "", "f:1: the file ends too soon"},
+		{"other columns", "index,length\n", `f:1: "index,length", want`},
+		{"too few", head, "f:2: the file ends too soon"},
+		{"too many", head + "0,0,0,2,1,2.5,2.4\n1,0,0,2,1,2.5,2.4\n", `f:3: "1,0,0,2,1,2.5,2.4" after`},
+		{"six fields", head + "0,0,0,2,1,2.5\n", "f:2: 6 fields, want 7"},
+		{"another problem", head + "0,0,0,2,2,2.5,2.4\n", `f:2: goal_y "2", the scenario's is 1`},
+		{"no length", head + "0,0,0,2,1,2.5,far\n", `f:2: any_angle_length "far"`},
+		{"negative", head + "0,0,0,2,1,2.5,-1\n", `f:2: any_angle_length "-1"`},
+	} {
+		_, err := ReadOptima(strings.NewReader(tc.text), "f", problems)
+		var fe *FileError
+		if !errors.As(err, &fe) || !strings.HasPrefix(err.Error(), tc.want) {
+			t.Errorf("%s: %v, want %q", tc.name, err, tc.want)
+		}
+	}
+	got, err := ReadOptima(strings.NewReader(head+"0,0,0,2,1,2.5,2.25\n"), "f", problems)
+	if err != nil || got[0].Length != 2.25 || problems[0].Length != 2.5 {
+		t.Errorf("%v, %v: want a copy with 2.25", got, err)
 	}
 }

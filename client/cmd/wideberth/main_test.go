@@ -395,18 +395,30 @@ func TestTrialPrintsOneObject(t *testing.T) {
 	if err := json.Unmarshal([]byte(out), &got); err != nil {
 		t.Fatalf("%v in %q", err, out)
 	}
-	for _, k := range []string{"queries", "solved", "max_abs_error", "mean_ratio", "p50_us", "p95_us", "expanded_p50"} {
+	for _, k := range []string{"queries", "solved", "max_abs_error", "max_rel_error", "mean_ratio", "p50_us", "p95_us", "expanded_p50"} {
 		if _, ok := got[k]; !ok {
 			t.Errorf("no %q in %s", k, out)
 		}
 	}
 	// The scenario gives eight decimals.
-	if len(got) != 7 || got["queries"] != 4 || got["solved"] != 4 || got["max_abs_error"] > 1e-8 {
-		t.Errorf("printed %s, want seven members and four of four solved exactly", out)
+	if len(got) != 8 || got["queries"] != 4 || got["solved"] != 4 || got["max_abs_error"] > 1e-8 {
+		t.Errorf("printed %s, want eight members and four of four solved exactly", out)
 	}
 	rows, err := os.ReadFile(csv)
 	if lines := strings.Split(string(rows), "\n"); err != nil || lines[0] != "index,length,us,expanded" || len(lines) != 6 || !strings.HasPrefix(lines[1], "0,2,") {
 		t.Errorf("per query: %v\n%s", err, rows)
+	}
+	out = x.ok("trial", "--map", filepath.Join(data, "yard.map"), "--scen", filepath.Join(data, "yard.scen"),
+		"--roadmap", "shortest", "--points", "vertex", "--optimum", filepath.Join(data, "yard.csv"), "--output", "json")
+	clear(got)
+	if err := json.Unmarshal([]byte(out), &got); err != nil || got["solved"] != 5 || got["max_rel_error"] > 1e-9 {
+		t.Errorf("any-angle: %v, printed %s, want five of five within 1e-9", err, out)
+	}
+	for _, args := range [][]string{{"--points", "middle"}, {"--roadmap", "longest"}} {
+		code, _, errs := x.run(append([]string{"trial", "--map", filepath.Join(data, "yard.map"), "--scen", filepath.Join(data, "yard.scen")}, args...)...)
+		if code != exitUsage || !strings.Contains(errs, args[0]) {
+			t.Errorf("%v: exit code %d, stderr %q; want a usage error naming the flag", args, code, errs)
+		}
 	}
 }
 

@@ -68,12 +68,15 @@ func choice(flag, text, prefix string, values map[string]int32, want string) (in
 	return v, nil
 }
 
+// roadmapNames are what --roadmap takes.
+const roadmapNames = "auto, grid4, grid8, quadtree or convex-cells"
+
 // roadmap reads --roadmap; auto leaves it to the service.
 func roadmap(text string) (wideberthv1.Roadmap, error) {
 	if text == "auto" {
 		return wideberthv1.Roadmap_ROADMAP_UNSPECIFIED, nil
 	}
-	v, err := choice("roadmap", text, "ROADMAP_", wideberthv1.Roadmap_value, "auto, grid4, grid8 or quadtree")
+	v, err := choice("roadmap", strings.ReplaceAll(text, "-", "_"), "ROADMAP_", wideberthv1.Roadmap_value, roadmapNames)
 	return wideberthv1.Roadmap(v), err
 }
 

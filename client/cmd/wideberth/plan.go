@@ -91,7 +91,7 @@ func (p *questionFlags) add(cmd *cobra.Command) {
 	f.BoolVar(&p.shortest, "shortest", false, "the same as --preference shortest")
 	f.BoolVar(&p.balanced, "balanced", false, "the same as --preference balanced")
 	f.Float64Var(&p.tightWeight, "tight-weight", 0, "balanced: how much more a tight metre costs; 0 asks for 1")
-	f.StringVar(&p.roadmap, "roadmap", "auto", "which roadmap to search: auto, grid4, grid8 or quadtree")
+	f.StringVar(&p.roadmap, "roadmap", "auto", "which roadmap to search: "+roadmapNames+"; convex-cells for --shortest alone")
 	f.BoolVar(&p.keep, "keep-roadmap-path", false, "the roadmap's own path, without straightening")
 	f.Float64Var(&p.spacing, "max-spacing", 0, "the most `metres` between two points; 0 sends points where they matter")
 	f.Float64Var(&p.budget, "time-budget", 0, "how many `seconds` the search may take; 0 asks for the server's own")
@@ -184,6 +184,9 @@ func (a *app) printPlan(resp *wideberthv1.PlanResponse) error {
 		{"time", fmt.Sprintf("%.1f s at the advised speed ceilings", r.GetDurationS())},
 		{"smallest clearance", fmt.Sprintf("%s m at %s", down(r.GetSmallestClearanceM()), at(r.GetSmallestAt()))},
 		{"none is shorter than", down(r.GetBound().GetLowerBoundM()) + " m"},
+	}
+	if more := r.GetBound().GetOptimumWithinM(); more > 0 {
+		about = append(about, []string{"any-angle optimum", fmt.Sprintf("none that keeps %s m more is shorter", up(more))})
 	}
 	if bias := r.GetBound().GetWidthBiasM(); bias > 0 {
 		about = append(about, []string{"may have missed", fmt.Sprintf("passages up to %s m wider than needed", up(bias))})

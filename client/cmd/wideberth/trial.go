@@ -14,15 +14,16 @@ import (
 
 func (a *app) trial() *cobra.Command {
 	var (
-		mapPath, scenPath, road, perQuery string
-		limit                             int
-		straighten                        bool
+		mapPath, scenPath, optPath, road, points, perQuery string
+		limit                                              int
+		straighten                                         bool
 	)
 	cmd := &cobra.Command{
 		Use:   "trial",
 		Short: "Run the open grid benchmark and compare with its optima",
 		Long: "Run the scenario of an open grid benchmark (N. Sturtevant, IEEE TCIAIG 4(2), 2012)\n" +
-			"through the service and compare every length with the listed optimum. Without\n" +
+			"through the service and compare every length with the listed optimum, or with the\n" +
+			"any-angle optimum (--roadmap shortest --points vertex --optimum FILE). Without\n" +
 			"--server it starts a server of its own inside this process, with a store that\n" +
 			"goes with it. Times are of the Plan call at the client.",
 		Args: cobra.NoArgs,
@@ -33,16 +34,24 @@ func (a *app) trial() *cobra.Command {
 			if limit < 0 {
 				return usagef("--limit is %d, want 0 or more", limit)
 			}
-			searched, err := roadmap(road)
+			o, err := trialOptions(road, points)
 			if err != nil {
 				return err
 			}
-			o := trial.Options{Roadmap: searched, Straighten: straighten}
+			o.Straighten = o.Straighten || straighten
 			grid, err := trial.ReadGridFile(mapPath)
 			if err != nil {
 				return err
 			}
 			problems, err := trial.ReadProblemsFile(scenPath, grid)
+			if err != nil {
+				return err
+			}
+			if optPath != "" {
+				problems, err = trial.ReadOptimaFile(optPath, problems)
+			} else if road == roadShortest {
+				problems = trial.UpperBounds(problems)
+			}
 			if err != nil {
 				return err
 			}
@@ -79,11 +88,32 @@ func (a *app) trial() *cobra.Command {
 	f := cmd.Flags()
 	f.StringVar(&mapPath, "map", "", "the benchmark's map `file` (required)")
 	f.StringVar(&scenPath, "scen", "", "its scenario `file` (required)")
-	f.StringVar(&road, "roadmap", "grid8", "which roadmap to search: auto, grid4, grid8 or quadtree; the optima are grid8's")
+	f.StringVar(&optPath, "optimum", "", "compare with the any-angle optima in this CSV `file`, not with the scenario's lengths")
+	f.StringVar(&road, "roadmap", "grid8", "which roadmap to search: "+roadmapNames+", or shortest for the any-angle optimum; the scenario's lengths are grid8's, and no more than upper bounds to shortest")
+	f.StringVar(&points, "points", "centre", "which `place` of a cell a problem means: its centre, or its top left vertex as any-angle optima have it")
 	f.BoolVar(&straighten, "straighten", false, "straightened routes instead of the roadmap's own path")
 	f.IntVar(&limit, "limit", 0, "only the first so many problems; 0 for all")
 	f.StringVar(&perQuery, "per-query", "", "write index, length, us and expanded of every query into this CSV `file`")
 	return cmd
+}
+
+// roadShortest asks for what the service answers as shortest, on no roadmap by name.
+const roadShortest = "shortest"
+
+func trialOptions(road, points string) (o trial.Options, err error) {
+	switch points {
+	case "centre":
+	case "vertex":
+		o.Points = trial.Vertices
+	default:
+		return o, usagef("--points is %q, want centre or vertex", points)
+	}
+	if road == roadShortest {
+		o.Straighten = true // keep_roadmap_path would ask for a grid's path
+		return o, nil
+	}
+	o.Roadmap, err = roadmap(road)
+	return o, err
 }
 
 func (a *app) runTrial(ctx context.Context, addr string, g *trial.Grid, problems []trial.Problem, o trial.Options) (answers []trial.Answer, err error) {
@@ -106,6 +136,7 @@ func (a *app) printTrial(s trial.Summary) error {
 		[]string{"queries", number(int64(s.Queries))},
 		[]string{"solved", number(int64(s.Solved))},
 		[]string{"largest error", maybe(s.MaxAbsError, 3) + " cells"},
+		[]string{"largest relative error", maybe(s.MaxRelError, 3)},
 		[]string{"mean ratio", maybe(s.MeanRatio, 9)},
 		[]string{"median call", fmt.Sprintf("%.1f us", s.P50Us)},
 		[]string{"95th percentile", fmt.Sprintf("%.1f us", s.P95Us)},
