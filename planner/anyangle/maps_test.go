@@ -5,6 +5,7 @@ import (
 	"testing"
 
 	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/planner/internal/plainfloor"
 )
 
 // mask is a raster for tests, row 0 at the bottom.
@@ -52,9 +53,6 @@ func (m *mask) floor(t testing.TB, open bool) *floor.Map {
 
 // randomMask has single cells solid with probability p.
 func randomMask(rng *rand.Rand, w, h int, p float64) *mask {
-	m := newMask(w, h)
-	for i := range m.solid {
-		m.solid[i] = rng.Float64() < p
-	}
-	return m
+	c := plainfloor.Random(rng, w, h, p)
+	return &mask{c.W, c.H, c.Solid}
 }
