@@ -52,7 +52,7 @@ type ManyRun struct {
 //
 // The ends are shared: each is tested once, and a blocked one is explained once, its
 // pairs answered together as the nearest of them. So is what a World keeps for a body
-// (free cells and what is known of them). The searches are not: the one path that
+// (free cells, their regions and meshes). The searches are not: the one path that
 // Plan takes among those that cost the same depends on its goal.
 //
 // When ctx ends for ErrTimeBudget, the rest of the pairs is emitted with OutOfTime and

@@ -251,6 +251,7 @@ func BenchmarkPlanMany(b *testing.B) {
 	const n, count = 1024, 40
 	w := newWorld(b, rackHall(b, n))
 	one := hallRequest(n, planner.Auto, planner.Balanced)
+	short := hallRequest(n, planner.Auto, planner.Shortest)
 	var spread []planner.Pose
 	for i := range count {
 		spread = append(spread, pose(1+float64(i%8)*6, 1+float64(i/8)*4.2))
@@ -258,18 +259,20 @@ func BenchmarkPlanMany(b *testing.B) {
 	for _, c := range []struct {
 		name    string
 		q       planner.ManyRequest
+		like    planner.Request
 		workers int
 	}{
-		{"routes, 1 worker", planner.ManyRequest{Starts: []planner.Pose{one.Start}, Goals: spread}, 1},
-		{"routes, 2 workers", planner.ManyRequest{Starts: []planner.Pose{one.Start}, Goals: spread}, 2},
-		{"blocked goal, 1 worker", planner.ManyRequest{Starts: spread, Goals: []planner.Pose{pose(20, 3.5)}}, 1},
+		{"balanced, 1 worker", planner.ManyRequest{Starts: []planner.Pose{one.Start}, Goals: spread}, one, 1},
+		{"balanced, 2 workers", planner.ManyRequest{Starts: []planner.Pose{one.Start}, Goals: spread}, one, 2},
+		{"shortest, 2 workers", planner.ManyRequest{Starts: []planner.Pose{one.Start}, Goals: spread}, short, 2},
+		{"blocked goal, 1 worker", planner.ManyRequest{Starts: spread, Goals: []planner.Pose{pose(20, 3.5)}}, one, 1},
 	} {
 		b.Run(c.name, func(b *testing.B) {
-			c.q.Body, c.q.Options = one.Body, one.Options
+			c.q.Body, c.q.Options = c.like.Body, c.like.Options
 			single := func() {
 				for _, s := range c.q.Starts {
 					for _, g := range c.q.Goals {
-						if _, err := w.Plan(b.Context(), planner.Request{Body: one.Body, Start: s, Goal: g, Options: one.Options}); err != nil {
+						if _, err := w.Plan(b.Context(), planner.Request{Body: c.q.Body, Start: s, Goal: g, Options: c.q.Options}); err != nil {
 							b.Fatal(err)
 						}
 					}
