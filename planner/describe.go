@@ -274,10 +274,12 @@ func (t *task) bound(c *course, r *Route) Bound {
 		// The search judged cells as a whole; the path itself is tight less often.
 		b.Kind = AtMostRoadmapOptimum
 	}
-	switch b.Kind {
-	case Straight:
-	case AnyAngleOptimum:
-		b.WidthBiasUm, b.OptimumWithinUm = 2*anyangle.DeltaUm, anyangle.DeltaUm
+	switch {
+	case b.Kind == Straight:
+	case b.Kind == AnyAngleOptimum:
+		b.WidthBiasUm, b.OptimumWithinUm = meshBias, anyangle.DeltaUm
+	case c.bias > 0:
+		b.WidthBiasUm = c.bias
 	default:
 		b.WidthBiasUm = widthBias(t.w.frame.Res)
 	}

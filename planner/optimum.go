@@ -15,6 +15,10 @@ import (
 // in a wedge between two walls several times as far.
 const joinReach = 8 * anyangle.DeltaUm
 
+// meshBias is by how much, in micrometres, a passage may be wider than a body needs and
+// still be missed by a mesh.
+const meshBias = 2 * anyangle.DeltaUm
+
 // anyAngle says whether the shortest way over all directions is what is asked for.
 func (o *Options) anyAngle() bool {
 	return o.Roadmap == ConvexCells || o.Roadmap == Auto && o.Preference == Shortest && !o.KeepRoadmapPath
@@ -46,7 +50,11 @@ func (t *task) optimum(ctx context.Context) (c *course, apart bool, err error) {
 	if err != nil || !ok {
 		return nil, false, unlessUnfit(err)
 	}
-	pts := joined(start, way.Points, goal)
+	c = &course{pts: joined(start, way.Points, goal), kind: AnyAngleOptimum, roadmap: math.Inf(1)}
+	if from != start || to != goal {
+		c.kind, c.bias = AtMostRoadmapOptimum, meshBias
+	}
+	pts := c.pts
 	if n := len(pts); n > 2 && to != goal && t.j.Sight(pts[n-3], goal) {
 		pts = slices.Delete(pts, n-2, n-1)
 	}
@@ -58,7 +66,8 @@ func (t *task) optimum(ctx context.Context) (c *course, apart bool, err error) {
 			return nil, false, nil
 		}
 	}
-	return &course{pts: pts, kind: AnyAngleOptimum, roadmap: math.Inf(1)}, false, nil
+	c.pts = pts
+	return c, false, nil
 }
 
 // unlessUnfit is nil for what says that there can be no mesh, or no search over it.

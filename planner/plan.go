@@ -125,6 +125,7 @@ type course struct {
 	// roadmap is the cost of the best path over the roadmap, each cell judged as a
 	// whole; +Inf when none was found.
 	roadmap float64
+	bias    int64 // by how much wider than needed a passage may be that was missed; 0: as on grids
 }
 
 // direct is the straight way, when it can be driven and nothing can be cheaper.

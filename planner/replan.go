@@ -68,7 +68,11 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 		old, r.Cause, r.CutS = t.trim(q)
 	}
 	if old != nil {
-		if c := t.direct(); c != nil && len(old) == 2 {
+		c := t.direct()
+		if c == nil {
+			c = t.kept(ctx, q, old)
+		}
+		if c != nil && (c.kind != Straight || len(old) == 2) {
 			route, err := t.route(ctx, c)
 			r.Answer.Route, r.Kept = route, err == nil
 			return r, err

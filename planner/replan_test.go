@@ -25,7 +25,7 @@ func replan(t testingT, w *planner.World, q planner.ReplanRequest) planner.Repla
 func again(r *planner.Route, old *floor.Map, q planner.Request, from geom.Point) planner.ReplanRequest {
 	now := q
 	now.Start.At = from
-	return planner.ReplanRequest{Previous: points(r), Old: old, OldBody: q.Body, OldGoal: q.Goal, OldOptions: q.Options, Request: now}
+	return planner.ReplanRequest{Previous: points(r), Old: old, OldBody: q.Body, OldGoal: q.Goal, OldOptions: q.Options, OldBound: r.Bound.Kind, Request: now}
 }
 
 // along is the place a share of the way along a route, as a robot would report it.

@@ -101,7 +101,7 @@ func TestShortestFromBesideASlantingWall(t *testing.T) {
 		}
 		q := shortest(body(0.3), planner.Pose{At: s}, pose(16, 9))
 		got := mustRoute(t, w, q)
-		if got.Bound.Kind != planner.AnyAngleOptimum || got.SmallestUm < r {
+		if b := got.Bound; b.Kind != planner.AtMostRoadmapOptimum || b.WidthBiasUm != 2*anyangle.DeltaUm || got.SmallestUm < r {
 			t.Errorf("from %v: %+v", s, got.Bound)
 		}
 		q.Start, q.Goal = q.Goal, q.Start

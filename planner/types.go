@@ -202,8 +202,9 @@ type ReplanRequest struct {
 	OldBody     Body
 	OldGoal     Pose
 	OldOptions  Options
-	Request     Request // the question now; Request.Start is the robot's pose
-	SwitchShare float64 // keep the old route unless a new one is cheaper by more than this share
+	OldBound    BoundKind // what was said of the old route; 0 when not known
+	Request     Request   // the question now; Request.Start is the robot's pose
+	SwitchShare float64   // keep the old route unless a new one is cheaper by more than this share
 }
 
 // ReplanCause says why an old route was not kept.

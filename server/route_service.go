@@ -133,6 +133,7 @@ func (v routeService) replanRequest(r *pb.ReplanRequest, snap *mapstore.Snapshot
 		Previous:    routePointsIn(r.Previous),
 		OldBody:     bodyIn(r.Previous.Body, set),
 		OldGoal:     poseIn(r.Previous.Goal),
+		OldBound:    boundKinds.in(r.Previous.GetBound().GetKind()),
 		SwitchShare: r.SwitchShare,
 	}
 	f.bodyOnFloor(root.at("previous").at("body"), out.OldBody, set)

@@ -1,0 +1,190 @@
+package planner
+
+import (
+	"context"
+	"math"
+	"math/bits"
+	"reflect"
+	"slices"
+
+	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/anyangle"
+)
+
+// onRouteUm is how far, in micrometres, a pose may be from a route and still count as on
+// it, and a point of a route from the line between its neighbours and still count as
+// added by describing: two roundings to whole micrometres, at most 0.71 each.
+const onRouteUm = 1.5
+
+// kept is the rest of an old any-angle optimum from the pose on, when nothing on this
+// version can be shorter; nil when that is not known without a search. old is that
+// rest, clear on this version.
+//
+// Let F be the old version's mesh and F' this one's, T the rest of the old route, from x
+// to g, R what is solid (or a closed zone) in the old version and not in this one, grown as
+// the meshes grow it, and bound(R) the least |x-y| + |y-g| over y in R. T is kept when
+// bound(R) >= |T|. A shortest way Q in F' meets R, then |Q| >= bound(R) >= |T|, or it
+// does not, then it lies in F, and |Q| >= |T| since the rest of an optimum is one. The same
+// with ways of anyangle.DeltaUm more clearance than required shows that Bound holds of T
+// here too, and keeps doing so from version to version: when x moves along T by d,
+// bound(R) falls by at most d and |T| by d.
+//
+// That meshes fall short of the true free space by up to DeltaUm does not matter, as long
+// as R is grown by that much more: both do at the same places, but where a change moves
+// the ends of their cells' slanting sides, each rounded to whole micrometres. A fresh
+// plan may be the shorter one by that, a square micrometre over the distance between
+// ends, and by twice the pose's distance from the route, at most onRouteUm. One-way
+// zones need no regard: T obeys those of this version, or it would not be clear, and
+// Q is no longer without them. An end outside F' is left to a search, which joins it to F'
+// by exact pieces that may cut a corner short.
+func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *course {
+	before, now := q.Old, t.w.m
+	if q.OldBound != AnyAngleOptimum || !t.q.Options.anyAngle() || before.Settings() != now.Settings() ||
+		project(q.Previous, t.q.Start.At).off > onRouteUm {
+		return nil
+	}
+	pts := slices.Clone(old)
+	for i := 1; i+1 < len(pts); {
+		if d, _ := geom.SegmentDist(pts[i], pts[i-1], pts[i+1]); d <= onRouteUm && t.j.Sight(pts[i-1], pts[i+1]) {
+			pts = slices.Delete(pts, i, i+1)
+		} else {
+			i++
+		}
+	}
+	g, err := t.w.meshes.get(ctx, meshKey{t.j.NeedUm, t.j.RadiusUm})
+	if err != nil || !g.Contains(pts[0]) || !g.Contains(pts[len(pts)-1]) {
+		return nil
+	}
+	d := detour{from: pts[0], to: pts[len(pts)-1], long: lengthOf(pts)}
+	change := floor.Diff(before, now)
+	for _, f := range change.Features {
+		if grow, ok := t.gone(f); ok && d.overShape(f.Before.Shape, grow) {
+			return nil
+		}
+	}
+	for _, c := range change.Cells {
+		if d.overCells(before, now, c, float64(t.j.NeedUm)+meshStandsOff) {
+			return nil
+		}
+	}
+	return &course{pts: pts, kind: AnyAngleOptimum, roadmap: math.Inf(1)}
+}
+
+// meshStandsOff is how much farther than required a mesh may stand off, and a micrometre
+// for rounding here.
+const meshStandsOff = anyangle.DeltaUm + 1
+
+// gone says whether a change takes an obstacle away, and by how much a mesh grows it.
+func (t *task) gone(f floor.FeatureChange) (grow float64, ok bool) {
+	b, a := f.Before, f.After
+	if b == nil || a != nil && a.Kind == b.Kind && reflect.DeepEqual(a.Shape, b.Shape) {
+		return 0, false
+	}
+	switch b.Kind {
+	case floor.Solid:
+		return float64(t.j.NeedUm) + meshStandsOff, true
+	case floor.ClosedZone:
+		return float64(t.j.RadiusUm) + meshStandsOff, true
+	}
+	return 0, false
+}
+
+// detour asks whether a way over some place could be shorter than one of that length.
+type detour struct {
+	from, to geom.Point
+	long     float64
+}
+
+// overShape is about the places within grow of a shape. Those nearest to the way lie
+// about its edges, unless an end is inside.
+func (d *detour) overShape(s floor.Shape, grow float64) bool {
+	if s.Kind == floor.Polygon && (geom.InPolygon(s.Chains, d.from) || geom.InPolygon(s.Chains, d.to)) {
+		return d.over(d.from)
+	}
+	grow += s.Grow
+	box := s.CoreBounds().Grow(grow).Corners()
+	if !d.over(box[:]...) {
+		return false
+	}
+	for a, b := range s.Edges {
+		u := geom.Point{X: grow}
+		if long := geom.Dist(a, b); long > 0 {
+			u = geom.Point{X: (b.X - a.X) / long * grow, Y: (b.Y - a.Y) / long * grow}
+		}
+		if d.over(
+			geom.Point{X: a.X - u.X + u.Y, Y: a.Y - u.Y - u.X}, geom.Point{X: b.X + u.X + u.Y, Y: b.Y + u.Y - u.X},
+			geom.Point{X: b.X + u.X - u.Y, Y: b.Y + u.Y + u.X}, geom.Point{X: a.X - u.X - u.Y, Y: a.Y - u.Y + u.X},
+		) {
+			return true
+		}
+	}
+	return false
+}
+
+// overCells is about the places within grow of cells of c that are solid before and not now.
+func (d *detour) overCells(before, now *floor.Map, c floor.CellRect, grow float64) bool {
+	s := now.Settings()
+	over := func(c floor.CellRect) bool {
+		box := s.CellBounds(c).Grow(grow).Corners()
+		return d.over(box[:]...)
+	}
+	if !over(c) {
+		return false
+	}
+	const side = floor.BlockSize
+	var was, is [side]uint64
+	for by := c.Y0 / side; by*side < c.Y1; by++ {
+		for bx := c.X0 / side; bx*side < c.X1; bx++ {
+			before.SolidBits(bx, by, &was)
+			now.SolidBits(bx, by, &is)
+			for y := range was {
+				for gone := was[y] &^ is[y]; gone != 0; {
+					x := bits.TrailingZeros64(gone)
+					n := bits.TrailingZeros64(^(gone >> x))
+					if over(floor.CellRect{X0: bx*side + x, Y0: by*side + y, X1: bx*side + x + n, Y1: by*side + y + 1}) {
+						return true
+					}
+					gone &^= (math.MaxUint64 >> (side - n)) << x
+				}
+			}
+		}
+	}
+	return false
+}
+
+// over is about the places of a convex polygon, counter-clockwise, or a point.
+func (d *detour) over(ring ...geom.Point) bool {
+	within := true
+	b := ring[len(ring)-1]
+	for _, c := range ring {
+		if geom.SegmentsTouch(d.from, d.to, b, c) || d.overSegment(b, c) < d.long {
+			return true
+		}
+		within = within && geom.Orient(b, c, d.from) >= 0
+		b = c
+	}
+	return within
+}
+
+// overSegment is the length of the shortest way over a place of the segment uv: as light
+// goes by a mirror along it, which is where the sum of the two distances is smallest on
+// the line; along it, that sum is convex.
+func (d *detour) overSegment(u, v geom.Point) float64 {
+	at := u
+	if long := geom.Dist(u, v); long > 0 {
+		ex, ey := (v.X-u.X)/long, (v.Y-u.Y)/long
+		foot := func(p geom.Point) (along, off float64) {
+			x, y := p.X-u.X, p.Y-u.Y
+			return float64(x*ex) + float64(y*ey), math.Abs(float64(x*ey) - float64(y*ex))
+		}
+		a, ha := foot(d.from)
+		b, hb := foot(d.to)
+		if ha+hb > 0 {
+			a += float64((b - a) * (ha / (ha + hb)))
+		}
+		a = min(max(a, 0), long)
+		at = geom.Point{X: u.X + float64(a*ex), Y: u.Y + float64(a*ey)}
+	}
+	return geom.Dist(d.from, at) + geom.Dist(at, d.to)
+}
