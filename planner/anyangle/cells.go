@@ -74,7 +74,10 @@ func (c *cutter) finish() *cut {
 			}
 			top := rowAt(u.y1, &u.top)
 			n := len(out.rows)
-			if sameSides(bottom, &t.top, &u.bottom, &u.top) {
+			// Between the same sides a row is one too many. Its ends were rounded, though, so
+			// that without it the sides may bend otherwise at the row before.
+			if sameSides(bottom, &t.top, &u.bottom, &u.top) &&
+				(n-first < 3 || convexAt(out.rows[n-3], out.rows[n-2], top)) {
 				out.rows[n-1] = top
 			} else if convexAt(out.rows[n-2], out.rows[n-1], top) {
 				out.rows = append(out.rows, top)
