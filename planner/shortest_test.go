@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"math"
+	"reflect"
 	"testing"
 
 	"pgregory.net/rapid"
@@ -155,4 +156,33 @@ func TestConvexCellsAreForShortest(t *testing.T) {
 	if _, err := w.Plan(context.Background(), q); !errors.As(err, &re) || re.Field != "options.roadmap" {
 		t.Errorf("%v, want a fault in options.roadmap", err)
 	}
+}
+
+// Many robots ask at once on a version where no mesh is made yet; later, and on a world
+// advanced from another version with its meshes, the answers are the same.
+func TestLaw8ShortestFromManyAtOnce(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		sc := drawScene(t, true)
+		sc.q.Options.Preference, sc.q.Options.Roadmap, sc.q.Options.KeepRoadmapPath = planner.Shortest, planner.Auto, false
+		other := newMapFrom(t, sc.m, drawChange(t, sc.m.Settings(), sc.m))
+		from := newWorld(t, other)
+		plan(t, from, sc.q) // makes the mesh
+		advanced, err := from.Advance(context.Background(), sc.m)
+		if err != nil {
+			t.Fatal(err)
+		}
+		got := make(chan planner.Answer, 6)
+		for range 6 {
+			go func() {
+				a, _ := sc.w.Plan(context.Background(), sc.q)
+				got <- a
+			}()
+		}
+		want := plan(t, advanced, sc.q)
+		for range 6 {
+			if a := <-got; !reflect.DeepEqual(a, want) {
+				t.Fatalf("advanced:\n%+v\nat once, from scratch:\n%+v", want, a)
+			}
+		}
+	})
 }
