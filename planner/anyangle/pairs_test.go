@@ -42,6 +42,9 @@ func (g *Mesh) ringsOf() [][]geom.Point {
 			if b.turned {
 				slices.Reverse(ring)
 			}
+			if box := geom.BoundsOf(ring...); box.Width() == 0 || box.Height() == 0 {
+				ring = []geom.Point{box.Min, box.Max} // of no width: there, and not back
+			}
 			out = append(out, slices.Compact(ring))
 		}
 	}
@@ -77,7 +80,7 @@ func covered(rings [][]geom.Point, a, b geom.Point) bool {
 	box := geom.BoundsOf(a, b).Grow(tol)
 	var in [][2]float64
 	for _, ring := range rings {
-		if !box.Intersects(geom.BoundsOf(ring...)) {
+		if len(ring) < 2 || !box.Intersects(geom.BoundsOf(ring...)) {
 			continue
 		}
 		t0, t1 := 0.0, 1.0
@@ -126,7 +129,7 @@ func outlineShortest(rings [][]geom.Point, s, e geom.Point) float64 {
 		vs = append(vs, r...)
 	}
 	slices.SortFunc(vs[2:], func(p, q geom.Point) int { return cmp.Or(cmp.Compare(p.X, q.X), cmp.Compare(p.Y, q.Y)) })
-	vs = slices.Compact(vs)
+	vs = append(vs[:2], slices.Compact(vs[2:])...)
 	d, done := make([]float64, len(vs)), make([]bool, len(vs))
 	for i := range d {
 		d[i] = math.Inf(1)
