@@ -301,7 +301,7 @@ func same(t *rapid.T, q *roadmap.Query, diagonal bool, got roadmap.Path, out roa
 func consistent(t interface{ Fatalf(string, ...any) }, s *Session, q *roadmap.Query) {
 	queued := map[uint32]entry{}
 	for _, e := range s.open.all {
-		if old, ok := queued[e.id]; !ok || e.less(&old) {
+		if old, ok := queued[e.id]; !ok || e.before(&old) == 1 {
 			queued[e.id] = e
 		}
 	}
@@ -321,7 +321,7 @@ func consistent(t interface{ Fatalf(string, ...any) }, s *Session, q *roadmap.Qu
 			if u.cost[k] != u.next[k] {
 				here++
 				now := s.key(u, k)
-				if e, ok := queued[now.id]; !ok || now.less(&e) {
+				if e, ok := queued[now.id]; !ok || now.before(&e) == 1 {
 					t.Fatalf("node %d inconsistent, its key %+v, queued with %+v, %t", now.id, now, e, ok)
 				}
 			}

@@ -37,17 +37,17 @@ func (s *Session) search(ctx context.Context) (roadmap.Outcome, error) {
 
 // run is search; again says that a search from scratch is likely to be less work.
 func (s *Session) run(ctx context.Context) (out roadmap.Outcome, again bool, err error) {
-	limit := int64(math.MaxInt64)
-	if s.mended && s.fresh > 0 {
-		limit = max(s.fresh/giveUp, leastRepair)
+	limit, ask := int64(math.MaxInt64), connectAfter
+	if s.mended && s.fresh > 0 { // soon over in any case
+		limit, ask = max(s.fresh/giveUp, leastRepair), -1
 	}
 	for n := 0; ; n++ {
-		if n == connectAfter {
+		if n == ask {
 			if out := roadmap.Connected(s.q); out != roadmap.Found {
 				return out, false, nil
 			}
 		}
-		e, ok := s.pop()
+		e, ok := s.next()
 		switch {
 		case !ok && s.best() == never:
 			if out := roadmap.Connected(s.q); out != roadmap.Found {
@@ -58,7 +58,6 @@ func (s *Session) run(ctx context.Context) (out roadmap.Outcome, again bool, err
 			return roadmap.Found, false, nil
 		}
 		if err := s.poll(ctx); err != nil {
-			s.open.push(e)
 			return roadmap.Found, false, err
 		}
 		if !s.expand(e) {
@@ -74,35 +73,42 @@ func (s *Session) run(ctx context.Context) (out roadmap.Outcome, again bool, err
 	}
 }
 
-// pop takes the node of least key out of the queue, when it can matter to the cheapest path.
-func (s *Session) pop() (entry, bool) {
+// next is the node of least key in the queue, when it can matter to the cheapest path.
+func (s *Session) next() (entry, bool) {
 	if s.first != nil {
 		if s.first.Empty() {
 			return entry{}, false
 		}
 		f, id := s.first.Pop()
-		return entry{f: f, g: never, id: id}, f-s.moved <= s.best()
+		return entry{f: uint64(f), id: id}, f-s.moved <= s.best()
 	}
-	if len(s.open.all) == 0 || s.open.all[0].f-s.moved > s.best() {
+	if len(s.open.all) == 0 || int64(s.open.all[0].f)-s.moved > s.best() {
 		return entry{}, false
 	}
-	return s.open.pop(), true
+	return s.open.all[0], true
 }
 
-// expand makes a node consistent, or at least no longer counts on its cost; false when
-// there was nothing to do.
+// expand takes a node out of the queue and makes it consistent, or at least no longer counts
+// on its cost; false when there was nothing to do, or the node is not next by now.
 func (s *Session) expand(e entry) bool {
 	t, k := s.node(e.id)
 	old, next := t.cost[k], t.next[k]
-	if old == next {
-		return false
+	if s.first == nil {
+		if now := s.key(t, k); old != next && e.before(&now) == 1 {
+			s.open.sink(now)
+			return false
+		}
+		s.open.pop()
 	}
-	if now := s.key(t, k); e.f < now.f || e.f == now.f && e.g < now.g {
-		s.open.push(now)
+	if old == next {
 		return false
 	}
 	if old > next {
 		s.setCost(t, k, next)
+		if m, rim := s.moves(t, k); !rim && !t.oneWay {
+			s.lower(t, k, m, next)
+			return true
+		}
 		s.around(t, k, func(u *tile, i int, step int64) {
 			if v := next + step; v < u.next[i] {
 				s.setNext(u, i, v)
@@ -118,6 +124,32 @@ func (s *Session) expand(e entry) bool {
 	})
 	return true
 }
+
+// lower lets a node's neighbours, all in its block, know of its cost: what is most of a search
+// from scratch.
+func (s *Session) lower(t *tile, k int, m uint8, cost int64) {
+	flat, across := cost+s.flat[t.class[k]], cost+s.across[t.class[k]]
+	for ; m != 0; m &= m - 1 {
+		d := bits.TrailingZeros8(m)
+		n := k + within[d]
+		v := flat + s.flat[t.class[n]]
+		if d >= 4 {
+			v = across + s.across[t.class[n]]
+		}
+		if v < t.next[n] {
+			s.setNext(t, n, v)
+		}
+	}
+}
+
+// within is where each move leads in a block.
+var within = func() (w [8]int) {
+	for d := range w {
+		dx, dy := roadmap.MoveOf(d)
+		w[d] = dy*side + dx
+	}
+	return w
+}()
 
 // derive is the cost to go of a node that follows from its neighbours' by one step.
 func (s *Session) derive(t *tile, k int) int64 {
@@ -140,13 +172,13 @@ func (s *Session) derive(t *tile, k int) int64 {
 // key is a node's key by now.
 func (s *Session) key(t *tile, k int) entry {
 	v := min(t.cost[k], t.next[k])
-	return entry{f: v + s.from.reach(s, t.cell(k)) + s.moved, g: v, id: s.id(t, k)}
+	return entry{f: uint64(v + s.from.reach(s, t.cell(k)) + s.moved), g: uint64(v), id: s.id(t, k)}
 }
 
 func (s *Session) push(t *tile, k int) {
 	if s.first != nil {
 		e := s.key(t, k)
-		s.first.Push(e.f, e.id)
+		s.first.Push(int64(e.f), e.id)
 		s.q.Count.Queued++
 		return
 	}

@@ -46,11 +46,11 @@ const never = int64(1) << 62
 const farthest = int64(1) << 60
 
 // giveUp is the share, 1 / giveUp, of the expansions of the session's last search from
-// scratch that a repair may take before that is done instead. A change near the
-// goal may otherwise cost more than a search from scratch. leastRepair is what is allowed
-// in any case.
+// scratch that a repair may take before that is done instead: near the goal, or where all
+// ways from the robot led past the change, a repair is more work than a search from scratch,
+// and a node of it takes several times as long. leastRepair is what is allowed in any case.
 const (
-	giveUp      = 2
+	giveUp      = 3
 	leastRepair = roadmap.PollEvery
 )
 
