@@ -24,12 +24,7 @@ func (e *CheckError) Error() string { return "planner: route failed its check: "
 // "no way" is a Refusal. A deadline that passes during the search gives a Refusal with
 // OutOfTime when the deadline is ctx's own cause ErrTimeBudget, else ctx's error.
 func (w *World) Plan(ctx context.Context, q Request) (Answer, error) {
-	t, err := w.task(q)
-	if err != nil {
-		return Answer{}, err
-	}
-	a, err := t.plan(ctx)
-	return t.finish(ctx, a, err)
+	return w.PlanIn(ctx, nil, q)
 }
 
 // task is one request being worked on.
@@ -41,6 +36,9 @@ type task struct {
 	levels []*mask.Mask // none where every metre costs the same
 	search roadmap.Counters
 	shut   roadmap.Outcome // which end is shut in, once no path was found
+
+	session *Session // nil without
+	mended  bool     // whether a path was found by repairing the session's search
 }
 
 func (w *World) task(q Request) (*task, error) {
@@ -169,8 +167,10 @@ func (t *task) course(ctx context.Context) (*course, error) {
 	switch o.Roadmap {
 	case Quadtree:
 		p, out, err = roadmap.Quadtree(ctx, q)
+	case Grid4, Grid8:
+		p, out, err = t.grid(ctx, q)
 	default:
-		p, out, err = roadmap.Grid(ctx, q, o.Roadmap != Grid4)
+		p, out, err = roadmap.Grid(ctx, q, true)
 	}
 	if err == nil && out != roadmap.Found {
 		if t.shut = out; o.Roadmap == Quadtree {

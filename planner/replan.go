@@ -22,6 +22,11 @@ const keepSlack = 1e-9
 // Counters are those of everything done. CutS is given for Cut only. A refusal
 // has the cause why the old route would not do.
 func (w *World) Replan(ctx context.Context, q ReplanRequest) (ReplanAnswer, error) {
+	return w.ReplanIn(ctx, nil, q)
+}
+
+// ReplanIn is Replan in a session, best the one that the old route was planned in.
+func (w *World) ReplanIn(ctx context.Context, s *Session, q ReplanRequest) (ReplanAnswer, error) {
 	t, err := w.task(q.Request)
 	if err != nil {
 		return ReplanAnswer{}, err
@@ -29,8 +34,10 @@ func (w *World) Replan(ctx context.Context, q ReplanRequest) (ReplanAnswer, erro
 	if err := q.validate(); err != nil {
 		return ReplanAnswer{}, err
 	}
+	t.session = s
 	r, err := t.replan(ctx, &q)
 	r.Answer, err = t.finish(ctx, r.Answer, err)
+	r.Mended = t.mended && !r.Kept && r.Route != nil
 	if r.Refusal != nil {
 		r.Kept = false
 	}

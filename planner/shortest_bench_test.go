@@ -235,7 +235,7 @@ func BenchmarkShortestVsGonum(b *testing.B) {
 
 // BenchmarkReplanVsPlan takes routes half driven and changes of 1 m² somewhere in the hall, and
 // reports the time of a fresh plan over that of a replan that kept the route without a
-// search, and over that of one that searched (plan/kept, plan/searched).
+// search, and over that of one that searched (plan/kept, plan/searched); then reportMending's.
 func BenchmarkReplanVsPlan(b *testing.B) {
 	p := prepare(b, benchFloors[0])
 	ctx := context.Background()
@@ -274,6 +274,7 @@ func BenchmarkReplanVsPlan(b *testing.B) {
 	b.ReportMetric(float64(planKept)/float64(max(1, kept)), "plan/kept")
 	b.ReportMetric(float64(planSearched)/float64(max(1, searched)), "plan/searched")
 	b.ReportMetric(float64(nKept)/float64(nKept+nSearched), "kept-share")
+	reportMending(b, p)
 }
 
 // BenchmarkParallelPlans reports the time of the same plans one after the other over that on

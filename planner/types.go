@@ -220,12 +220,14 @@ const (
 )
 
 // ReplanAnswer is the answer to a ReplanRequest. Kept says whether Answer.Route
-// is the old route trimmed to the pose.
+// is the old route trimmed to the pose, Mended whether it is a new one that was found by
+// repairing the session's search.
 type ReplanAnswer struct {
 	Answer
-	Kept  bool
-	Cause ReplanCause
-	CutS  float64 // where a change cuts the old route, micrometres along it
+	Kept   bool
+	Mended bool
+	Cause  ReplanCause
+	CutS   float64 // where a change cuts the old route, micrometres along it
 }
 
 // GuideSetup is what a guided robot drives by.
