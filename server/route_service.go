@@ -56,8 +56,9 @@ func (v routeService) Plan(ctx context.Context, r *pb.PlanRequest) (*pb.PlanResp
 		return nil, statusOf(ctx, err, about)
 	}
 	var answer planner.Answer
+	session := newSession(q.Options)
 	err = v.s.search(ctx, snap, q.budget, func(ctx context.Context, w *planner.World) (err error) {
-		answer, err = w.Plan(ctx, q.Request)
+		answer, err = w.PlanIn(ctx, session, q.Request)
 		return err
 	})
 	if err != nil {
@@ -65,7 +66,9 @@ func (v routeService) Plan(ctx context.Context, r *pb.PlanRequest) (*pb.PlanResp
 	}
 	out := &pb.PlanResponse{Stamp: stampOut(snap.Info), Counters: countersOut(answer.Counters)}
 	if answer.Route != nil {
-		out.Outcome = &pb.PlanResponse_Route{Route: v.route(snap, q, answer.Route)}
+		route := v.route(snap, q, answer.Route)
+		v.s.kept.keep(route.RouteId, session)
+		out.Outcome = &pb.PlanResponse_Route{Route: route}
 	} else {
 		out.Outcome = &pb.PlanResponse_Refusal{Refusal: refusalOut(answer.Refusal, retryOutOfTime.Seconds())}
 	}
@@ -97,11 +100,14 @@ func (v routeService) Replan(ctx context.Context, r *pb.ReplanRequest) (*pb.Repl
 		request.Old = old.Map
 	}
 	var answer planner.ReplanAnswer
+	driven := r.Previous.RouteId
+	session := v.s.kept.take(driven, q.Options)
 	err = v.s.search(ctx, snap, q.budget, func(ctx context.Context, w *planner.World) (err error) {
-		answer, err = w.Replan(ctx, request)
+		answer, err = w.ReplanIn(ctx, session, request)
 		return err
 	})
 	if err != nil {
+		v.s.kept.keep(driven, session)
 		return nil, statusOf(ctx, err, about)
 	}
 	out := &pb.ReplanResponse{
@@ -112,15 +118,20 @@ func (v routeService) Replan(ctx context.Context, r *pb.ReplanRequest) (*pb.Repl
 	}
 	switch {
 	case answer.Route == nil:
+		v.s.kept.keep(driven, session)
 		out.Result = pb.ReplanResult_REPLAN_RESULT_REFUSED
 		out.Outcome = &pb.ReplanResponse_Refusal{Refusal: refusalOut(answer.Refusal, retryOutOfTime.Seconds())}
 		return out, nil
 	case answer.Kept:
 		out.Result = pb.ReplanResult_REPLAN_RESULT_KEPT
+	case answer.Mended:
+		out.Result = pb.ReplanResult_REPLAN_RESULT_MENDED
 	default:
 		out.Result = pb.ReplanResult_REPLAN_RESULT_NEW
 	}
-	out.Outcome = &pb.ReplanResponse_Route{Route: v.route(snap, q, answer.Route)}
+	route := v.route(snap, q, answer.Route)
+	v.s.kept.keep(route.RouteId, session)
+	out.Outcome = &pb.ReplanResponse_Route{Route: route}
 	return out, nil
 }
 

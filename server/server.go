@@ -37,6 +37,7 @@ type Server struct {
 	store  *mapstore.Store
 	worlds *worlds
 	holds  *holds
+	kept   *sessions
 	lanes  *lanes
 	grpc   *grpc.Server
 	health *health.Server
@@ -56,6 +57,7 @@ func New(ctx context.Context, cfg Config, log zerolog.Logger) (*Server, error) {
 	s := &Server{
 		cfg: cfg, log: log,
 		holds: newHolds(time.Now),
+		kept:  newSessions(time.Now),
 		lanes: newLanes(cfg.planners(), cfg.PlanQueue, cfg.PlanWait),
 	}
 	s.draining, s.drain = context.WithCancel(context.Background())

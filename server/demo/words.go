@@ -156,6 +156,8 @@ func resultWords(r *wideberthv1.ReplanResponse) string {
 		return "the old route is kept"
 	case wideberthv1.ReplanResult_REPLAN_RESULT_NEW:
 		return "a new route"
+	case wideberthv1.ReplanResult_REPLAN_RESULT_MENDED:
+		return "a new route, mended from the old search"
 	case wideberthv1.ReplanResult_REPLAN_RESULT_REFUSED:
 		return "no route any more"
 	}

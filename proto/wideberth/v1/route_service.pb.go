@@ -388,6 +388,10 @@ const (
 	ReplanResult_REPLAN_RESULT_NEW ReplanResult = 2
 	// There is no route any more.
 	ReplanResult_REPLAN_RESULT_REFUSED ReplanResult = 3
+	// A new one, found by repairing the search behind the old one, which the server
+	// keeps for a while where ROADMAP_GRID4 or ROADMAP_GRID8 was asked for. It is the
+	// route that REPLAN_RESULT_NEW would have come with: only the work is less.
+	ReplanResult_REPLAN_RESULT_MENDED ReplanResult = 4
 )
 
 // Enum value maps for ReplanResult.
@@ -397,12 +401,14 @@ var (
 		1: "REPLAN_RESULT_KEPT",
 		2: "REPLAN_RESULT_NEW",
 		3: "REPLAN_RESULT_REFUSED",
+		4: "REPLAN_RESULT_MENDED",
 	}
 	ReplanResult_value = map[string]int32{
 		"REPLAN_RESULT_UNSPECIFIED": 0,
 		"REPLAN_RESULT_KEPT":        1,
 		"REPLAN_RESULT_NEW":         2,
 		"REPLAN_RESULT_REFUSED":     3,
+		"REPLAN_RESULT_MENDED":      4,
 	}
 )
 
@@ -2981,12 +2987,13 @@ const file_wideberth_v1_route_service_proto_rawDesc = "" +
 	"\x1cREFUSAL_REASON_START_BLOCKED\x10\x01\x12\x1f\n" +
 	"\x1bREFUSAL_REASON_GOAL_BLOCKED\x10\x02\x12\x1d\n" +
 	"\x19REFUSAL_REASON_NO_PASSAGE\x10\x03\x12\x1e\n" +
-	"\x1aREFUSAL_REASON_OUT_OF_TIME\x10\x04*w\n" +
+	"\x1aREFUSAL_REASON_OUT_OF_TIME\x10\x04*\x91\x01\n" +
 	"\fReplanResult\x12\x1d\n" +
 	"\x19REPLAN_RESULT_UNSPECIFIED\x10\x00\x12\x16\n" +
 	"\x12REPLAN_RESULT_KEPT\x10\x01\x12\x15\n" +
 	"\x11REPLAN_RESULT_NEW\x10\x02\x12\x19\n" +
-	"\x15REPLAN_RESULT_REFUSED\x10\x03*\xb9\x01\n" +
+	"\x15REPLAN_RESULT_REFUSED\x10\x03\x12\x18\n" +
+	"\x14REPLAN_RESULT_MENDED\x10\x04*\xb9\x01\n" +
 	"\vReplanCause\x12\x1c\n" +
 	"\x18REPLAN_CAUSE_UNSPECIFIED\x10\x00\x12\x14\n" +
 	"\x10REPLAN_CAUSE_CUT\x10\x01\x12\x18\n" +

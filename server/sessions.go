@@ -1,0 +1,95 @@
+package server
+
+import (
+	"container/list"
+	"sync"
+	"time"
+
+	"example.com/wideberth/planner"
+)
+
+// What the kept searches may come to. A search across a busy hall of 1024x1024 cells takes
+// about 9 MiB, one of 4096x4096 up to some 130. The one used longest ago goes first; that
+// costs time when its robot replans, and changes no route.
+const (
+	maxSessions     = 1024
+	maxSessionBytes = 192 << 20
+	sessionIdle     = 10 * time.Minute // after which it goes in any case, once another is kept
+)
+
+// sessions are the searches kept for robots that drive a route planned on a named grid, by
+// the route's id. A restart loses them.
+type sessions struct {
+	now   func() time.Time
+	mu    sync.Mutex
+	by    map[string]*list.Element
+	order *list.List // of *kept, the last used in front
+	bytes int64
+	most  int64 // bytes
+}
+
+type kept struct {
+	id    string
+	s     *planner.Session
+	bytes int64
+	at    time.Time
+}
+
+func newSessions(now func() time.Time) *sessions {
+	return &sessions{now: now, by: map[string]*list.Element{}, order: list.New(), most: maxSessionBytes}
+}
+
+// newSession is an empty session, nil when the options have no use for one.
+func newSession(o planner.Options) *planner.Session {
+	if o.Roadmap != planner.Grid4 && o.Roadmap != planner.Grid8 {
+		return nil
+	}
+	return new(planner.Session)
+}
+
+// take is the session of a route, which is the caller's alone until it is kept again; a
+// new one when there is none, nil when the options have no use for one.
+func (c *sessions) take(id string, o planner.Options) *planner.Session {
+	s := newSession(o)
+	c.mu.Lock()
+	defer c.mu.Unlock()
+	if e := c.by[id]; e != nil && s != nil {
+		return c.remove(e).s
+	}
+	return s
+}
+
+// keep keeps a session, which may be nil, for the route of that id.
+func (c *sessions) keep(id string, s *planner.Session) {
+	if s == nil {
+		return
+	}
+	k := &kept{id, s, s.Bytes(), c.now()}
+	if k.bytes == 0 {
+		return
+	}
+	var gone []*planner.Session
+	c.mu.Lock()
+	if e := c.by[id]; e != nil {
+		gone = append(gone, c.remove(e).s)
+	}
+	c.by[id] = c.order.PushFront(k)
+	c.bytes += k.bytes
+	for e := c.order.Back(); e != nil; e = c.order.Back() {
+		if c.bytes <= c.most && c.order.Len() <= maxSessions && k.at.Sub(e.Value.(*kept).at) < sessionIdle {
+			break
+		}
+		gone = append(gone, c.remove(e).s)
+	}
+	c.mu.Unlock()
+	for _, s := range gone {
+		s.Release()
+	}
+}
+
+func (c *sessions) remove(e *list.Element) *kept {
+	k := c.order.Remove(e).(*kept)
+	delete(c.by, k.id)
+	c.bytes -= k.bytes
+	return k
+}
