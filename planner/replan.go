@@ -14,9 +14,10 @@ import (
 const keepSlack = 1e-9
 
 // Replan answers a replan request. An old route that still answers the question is
-// trimmed to the pose and checked on this version; it is kept when nothing can be
-// cheaper (it runs straight to the goal in the open), or when a fresh plan is not
-// cheaper by more than SwitchShare. It is kept too when a fresh plan finds no way,
+// trimmed to the pose and checked on this version; it is kept, without a search, when
+// nothing can be cheaper (it runs straight to the goal in the open, or it is an
+// any-angle optimum that no change undercuts), or when a fresh plan is not cheaper by more
+// than SwitchShare. It is kept too when a fresh plan finds no way,
 // or runs out of time, while the old route is still clear.
 //
 // Counters are those of everything done. CutS is given for Cut only. A refusal
