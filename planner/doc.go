@@ -15,8 +15,8 @@
 // The two ends are judged exactly (clearance.Field.At, zones). If the straight way is
 // clear and nothing can be cheaper, it is the route. Shortest is the any-angle optimum,
 // found over a mesh of convex cells (package anyangle; optimum.go), as long as that goes
-// against no one-way zone. Else, and for balanced, a roadmap is searched whose nodes are cells, or quadtree leaves of cells, that keep the required clearance as a
-// whole; ends join it by straight pieces that are clear. Auto is then the 8-connected grid. The
+// against no one-way zone. Else, and for balanced, a roadmap is searched whose nodes are
+// cells, or quadtree leaves of cells, that keep the required clearance as a whole; ends join it by straight pieces that are clear. Auto is then the 8-connected grid. The
 // path found is straightened by exact lines of sight (package pull): bends are
 // pulled to corners, and a corner is cut as often as that saves a fiftieth of a cell.
 // Tight stretches of balanced routes then go to the middle between what is on their sides
@@ -76,8 +76,8 @@
 // # Reading the source
 //
 // plan.go is the way through; optimum.go answers shortest on meshes that meshes.go keeps,
-// and keep.go knows when an old answer stands; ends.go joins ends to roadmaps, bottleneck.go explains
-// refusals, describe.go makes legs and points, replan.go keeps or replaces old routes,
+// and keep.go knows when an old answer stands; ends.go joins ends to roadmaps,
+// bottleneck.go explains refusals, describe.go makes legs and points, replan.go keeps or replaces old routes,
 // session.go keeps a named grid's search for the next answer (package dstar),
 // advise.go guides. Beneath: internal/judge decides exactly and says what a metre costs,
 // internal/touch knows points, internal/mask holds free cells, internal/roadmap searches,
