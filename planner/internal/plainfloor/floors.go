@@ -91,8 +91,10 @@ func RackHall(n int, turn float64, vector bool) (*floor.Map, error) {
 	}
 	var edits []floor.Edit
 	for i, r := range racks(n) {
-		s := floor.NewPolygon([][]geom.Point{r.ring(turn, n)}, 0)
+		ring := r.ring(turn, n)
+		s := floor.NewPolygon([][]geom.Point{ring}, 0)
 		switch {
+		case geom.CheckPolygon([][]geom.Point{ring}) != nil: // turned off the floor
 		case vector:
 			edits = append(edits, floor.Edit{Kind: floor.PutFeature, Feature: &floor.Feature{Name: fmt.Sprintf("rack-%d", i), Kind: floor.Solid, Shape: s}})
 		case turn == 0:
