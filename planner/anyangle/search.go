@@ -15,7 +15,11 @@ import (
 // over more than a hundred million cells.
 const MaxNodes = 4_000_000
 
-// ErrTooLarge says that a search came to MaxNodes.
+// maxExpanded bounds the nodes that a search may look at, some ten times as many as it may
+// keep: it ends even if rounding should lead it round in circles.
+const maxExpanded = 16 * MaxNodes
+
+// ErrTooLarge says that a search came to MaxNodes, or to the bound of its work.
 var ErrTooLarge = errors.New("anyangle: the search came to its bound of nodes")
 
 // pollEvery is how many expansions pass between looks at the context.
@@ -169,6 +173,9 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 			if s.expanded++; s.expanded%pollEvery == 0 {
 				if err := ctx.Err(); err != nil {
 					return s.none(), false, err
+				}
+				if s.expanded > maxExpanded {
+					return s.none(), false, ErrTooLarge
 				}
 			}
 			s.expand(&n)
