@@ -1,0 +1,92 @@
+package voronoi
+
+import (
+	"slices"
+
+	"example.com/wideberth/mapstore/geom"
+)
+
+// net is the roads that have one required clearance, cut into connected pieces.
+type net struct {
+	piece    []int32   // of each node, by its lowest node
+	portals  [][]int32 // by part of Open: those from which another portal is reached along roads
+	siblings map[int32][]int32
+}
+
+// maxNets bounds the required clearances whose nets are kept; a floor has as many as
+// kinds of bodies.
+const maxNets = 32
+
+// netOf is the net for clearance r, kept for the next time.
+func (w *Roads) netOf(r float64) *net {
+	w.nets.mu.Lock()
+	defer w.nets.mu.Unlock()
+	for _, k := range w.nets.list {
+		if k.r == r {
+			return k.net
+		}
+	}
+	n := w.makeNet(r)
+	if len(w.nets.list) == maxNets {
+		w.nets.list = slices.Delete(w.nets.list, 0, 1)
+	}
+	w.nets.list = append(w.nets.list, keyed{r, n})
+	return n
+}
+
+type keyed struct {
+	r float64
+	*net
+}
+
+func (w *Roads) makeNet(r float64) *net {
+	n := &net{piece: make([]int32, len(w.nodes)), siblings: map[int32][]int32{}}
+	for i := range n.piece {
+		n.piece[i] = int32(i)
+	}
+	for i := range w.roads {
+		if v := &w.roads[i]; v.um0 >= r-tieUm {
+			a, b := find(n.piece, v.a), find(n.piece, v.b)
+			n.piece[max(a, b)] = min(a, b)
+		}
+	}
+	for i := range n.piece {
+		n.piece[i] = n.piece[n.piece[i]]
+		if w.nodes[i].part >= 0 {
+			n.siblings[n.piece[i]] = append(n.siblings[n.piece[i]], int32(i))
+		}
+	}
+	n.portals = make([][]int32, len(w.portals))
+	for k, part := range w.portals {
+		for _, v := range part {
+			if len(n.siblings[n.piece[v]]) > 1 {
+				n.portals[k] = append(n.portals[k], v)
+			}
+		}
+	}
+	return n
+}
+
+// maxSiblings bounds the portals that leaving looks at.
+const maxSiblings = 64
+
+// leaving is a lower bound of the cost from portal v to the goal when the way goes on
+// along roads: to the goal's way in, or to another portal and as the crow flies from there.
+func (k *seeker) leaving(v int32) float64 {
+	piece := k.net.piece[v]
+	best := inf
+	if piece == k.goalPiece {
+		best = float64((1 + k.weight) * geom.Dist(k.nodes[v].at, k.to.to))
+	}
+	list := k.net.siblings[piece]
+	if len(list) > maxSiblings {
+		return k.estimate(v)
+	}
+	for _, u := range list {
+		if u != v {
+			at := k.nodes[u].at
+			best = min(best, float64((1+k.weight)*geom.Dist(k.nodes[v].at, at))+geom.Dist(at, k.to.to))
+		}
+	}
+	return best
+}
