@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/bits"
+	"slices"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -40,8 +41,9 @@ func (w *walker) point(pts []geom.Point, solids, zones bool) string {
 		if through != "" {
 			return fmt.Sprintf("piece %d goes through %s", i-1, through)
 		}
+		slices.Sort(places) // cells share corners
 		long := math.Hypot(b.X-a.X, b.Y-a.Y)
-		for _, s := range places {
+		for _, s := range slices.Compact(places) {
 			if s > 2*SlackUm && s < long-2*SlackUm {
 				p := geom.Point{X: a.X + s/long*(b.X-a.X), Y: a.Y + s/long*(b.Y-a.Y)}
 				if x, y := between(w.facings(p, outlines, solids), minus(a, b), minus(b, a)); x != "" {
@@ -150,9 +152,16 @@ func (w *walker) cellsAbout(a, b geom.Point, do func(x0, y0, x1, y1 float64)) {
 			if blk == nil {
 				continue
 			}
-			for word := blk[r%floor.BlockSize]; word != 0; word &= word - 1 {
+			word := blk[r%floor.BlockSize]
+			if skip := first - bx*floor.BlockSize; skip > 0 {
+				word = word >> skip << skip
+			}
+			for ; word != 0; word &= word - 1 {
 				c := bx*floor.BlockSize + bits.TrailingZeros64(word)
-				if x := w.lo.X + float64(c)*w.h; c >= first && c <= last && boxDistance(x, y, x+w.h, y+w.h, a, b) <= SlackUm {
+				if c > last {
+					break
+				}
+				if x := w.lo.X + float64(c)*w.h; boxDistance(x, y, x+w.h, y+w.h, a, b) <= SlackUm {
 					do(x, y, x+w.h, y+w.h)
 				}
 			}
