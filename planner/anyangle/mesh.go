@@ -4,12 +4,10 @@ import (
 	"context"
 	"fmt"
 	"math"
-	"runtime"
-	"sync"
-	"sync/atomic"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/parallel"
 )
 
 // Need is what a mesh is for.
@@ -167,7 +165,7 @@ func (g *Mesh) blocksOf(r geom.Rect, d float64) (x0, y0, x1, y1 int, ok bool) {
 func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []int) error {
 	near := g.pieces(fresh)
 	thin := g.need.ClearanceUm > 0
-	err := each(ctx, len(fresh), func() func(int) {
+	err := parallel.Each(ctx, len(fresh), func() func(int) {
 		z := newRasterizer(g.need.ClearanceUm, g.m.Settings().ResolutionUm)
 		c := &cutter{}
 		return func(k int) {
@@ -194,7 +192,7 @@ func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []i
 	if err != nil {
 		return err
 	}
-	err = each(ctx, len(joins), func() func(int) {
+	err = parallel.Each(ctx, len(joins), func() func(int) {
 		j := &joiner{}
 		return func(k int) {
 			i := joins[k]
@@ -306,25 +304,4 @@ func (g *Mesh) connect() {
 	for i := range g.comp {
 		g.comp[i] = g.comp[g.comp[i]] // leaders are the lowest, so settled before
 	}
-}
-
-// each calls work(0..n-1) on all processors; mk makes the work of one of them. It stops
-// early when ctx ends.
-func each(ctx context.Context, n int, mk func() func(int)) error {
-	var next atomic.Int64
-	var wg sync.WaitGroup
-	for range min(runtime.GOMAXPROCS(0), n) {
-		wg.Go(func() {
-			work := mk()
-			for ctx.Err() == nil {
-				i := int(next.Add(1)) - 1
-				if i >= n {
-					return
-				}
-				work(i)
-			}
-		})
-	}
-	wg.Wait()
-	return ctx.Err()
 }

@@ -4,13 +4,11 @@ import (
 	"context"
 	"fmt"
 	"math"
-	"runtime"
 	"slices"
-	"sync"
-	"sync/atomic"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/parallel"
 	"example.com/wideberth/planner/anyangle"
 	"example.com/wideberth/planner/clearance"
 )
@@ -90,7 +88,7 @@ func Build(ctx context.Context, f *clearance.Field, need Need) (*Graph, error) {
 	for i := range all {
 		all[i] = i
 	}
-	err := each(ctx, n, func() func(int) {
+	err := parallel.Each(ctx, n, func() func(int) {
 		return func(i int) { g.cells[i] = g.cellSites(f.Map(), i%g.nx, i/g.nx) }
 	})
 	if err != nil {
@@ -216,7 +214,7 @@ func boxDist(b box, s *site) float64 {
 // trace makes the blocks listed. Where may is given and a block's sites are those of
 // the old block that it holds, that one is kept.
 func (g *Graph) trace(ctx context.Context, list []int, may func(i int) *block) error {
-	return each(ctx, len(list), func() func(int) {
+	return parallel.Each(ctx, len(list), func() func(int) {
 		t := &tracer{}
 		return func(n int) {
 			i := list[n]
@@ -263,25 +261,4 @@ func (g *Graph) traceBlock(t *tracer, i int, near []site) *block {
 	}
 	t.square(b, ids, false)
 	return finish(near, b, t.merge(), t.mid, t.rimAt)
-}
-
-// each calls work(0..n-1) on all processors; mk makes the work of one of them. It stops
-// early when ctx ends.
-func each(ctx context.Context, n int, mk func() func(int)) error {
-	var next atomic.Int64
-	var wg sync.WaitGroup
-	for range min(runtime.GOMAXPROCS(0), n) {
-		wg.Go(func() {
-			work := mk()
-			for ctx.Err() == nil {
-				i := int(next.Add(1)) - 1
-				if i >= n {
-					return
-				}
-				work(i)
-			}
-		})
-	}
-	wg.Wait()
-	return ctx.Err()
 }
