@@ -45,17 +45,8 @@ func (s *screen) String() string {
 	return s.text.String()
 }
 
-// raceDetector says that the tests were built with it.
-var raceDetector bool
-
 // TestNightShift plays the demonstration once, staying, and holds it to its story.
-// The race detector makes its searches ten times as long, near to the contract's
-// longest time budget on a busy machine, so with it the story is played only where
-// WIDEBERTH_SLOW=1 asks for the long tests.
 func TestNightShift(t *testing.T) {
-	if raceDetector && os.Getenv("WIDEBERTH_SLOW") != "1" {
-		t.Skip("with the race detector only where WIDEBERTH_SLOW=1")
-	}
 	ctx, cancel := context.WithCancel(t.Context())
 	defer cancel()
 	var told screen

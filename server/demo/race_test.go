@@ -1,5 +1,0 @@
-//go:build race
-
-package demo
-
-func init() { raceDetector = true }
