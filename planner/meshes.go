@@ -2,6 +2,7 @@ package planner
 
 import (
 	"context"
+	"fmt"
 	"slices"
 	"sync"
 
@@ -90,7 +91,7 @@ func (s *meshes) find(k meshKey) *keptMesh {
 	s.kept = append(s.kept, e)
 	go func() {
 		defer cancel()
-		g, err := anyangle.Build(ctx, s.m, k.need())
+		g, err := build(ctx, s.m, k.need())
 		s.mu.Lock()
 		defer s.mu.Unlock()
 		if e.mesh, e.err = g, err; err != nil {
@@ -99,6 +100,17 @@ func (s *meshes) find(k meshKey) *keptMesh {
 		close(e.done)
 	}()
 	return e
+}
+
+// build makes a mesh. It runs apart from any call, so a panic, a fault of this
+// program, becomes an error for those who wait rather than the process's end.
+func build(ctx context.Context, m *floor.Map, need anyangle.Need) (g *anyangle.Mesh, err error) {
+	defer func() {
+		if p := recover(); p != nil {
+			g, err = nil, fmt.Errorf("planner: making convex cells: %v", p)
+		}
+	}()
+	return anyangle.Build(ctx, m, need)
 }
 
 // drop forgets e; s.mu is held.

@@ -4,7 +4,9 @@ import (
 	"container/list"
 	"context"
 	"errors"
+	"fmt"
 	"runtime"
+	"runtime/debug"
 	"sync"
 	"time"
 
@@ -267,8 +269,16 @@ func (w *worlds) start(key worldKey, snap *mapstore.Snapshot) *build {
 }
 
 // make builds one world, from base when there is one. Only builds of heads start
-// without waiting for a turn.
-func (w *worlds) make(ctx context.Context, base *planner.World, snap *mapstore.Snapshot, isHead bool) (*planner.World, error) {
+// without waiting for a turn. It runs apart from any call, so a panic in it is logged
+// and becomes an error for this version alone.
+func (w *worlds) make(ctx context.Context, base *planner.World, snap *mapstore.Snapshot, isHead bool) (world *planner.World, err error) {
+	defer func() {
+		if p := recover(); p != nil {
+			w.log.Error().Str("floor", snap.Info.Floor).Int64("map_version", snap.Info.Version).
+				Str("panic", fmt.Sprint(p)).Bytes("stack", debug.Stack()).Msg("making a version ready panicked")
+			world, err = nil, errPanic
+		}
+	}()
 	if !isHead {
 		select {
 		case w.turns <- struct{}{}:

@@ -1,6 +1,7 @@
 package server
 
 import (
+	"bytes"
 	"context"
 	"errors"
 	"strings"
@@ -14,6 +15,8 @@ import (
 	"example.com/wideberth/mapstore"
 	"example.com/wideberth/planner"
 	pb "example.com/wideberth/proto/wideberth/v1"
+
+	"github.com/rs/zerolog"
 )
 
 // snap is a version straight from the store.
@@ -290,4 +293,24 @@ func TestTimeBudget(t *testing.T) {
 	}
 	_, err = r.routes.Plan(r.ctx(), edited(q, func(q *pb.PlanRequest) { q.Version = pinned(9) }))
 	wantStatus(t, err, codes.NotFound, "VERSION_NOT_FOUND")
+}
+
+// TestPanicWhileMakingAVersionReady stands for a fault in the planner: the daemon
+// and its other floors must outlive it. A snapshot without content is what panics.
+func TestPanicWhileMakingAVersionReady(t *testing.T) {
+	var log bytes.Buffer
+	w := newWorlds(nil, 1, zerolog.New(&log))
+	defer w.close()
+	world, err := w.get(t.Context(), &mapstore.Snapshot{Info: mapstore.VersionInfo{Floor: "hall", Version: 7}})
+	if world != nil || !errors.Is(err, errPanic) {
+		t.Errorf("world %v, error %v; wanted no world and errPanic", world, err)
+	}
+	for _, want := range []string{`"floor":"hall"`, `"map_version":7`, `"stack":`} {
+		if !strings.Contains(log.String(), want) {
+			t.Errorf("log lacks %s: %s", want, log.String())
+		}
+	}
+	if code := statusOf(context.Background(), err, subject{}); !strings.Contains(code.Error(), "Internal") {
+		t.Errorf("status %v, wanted Internal", code)
+	}
 }

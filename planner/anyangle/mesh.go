@@ -165,7 +165,7 @@ func (g *Mesh) blocksOf(r geom.Rect, d float64) (x0, y0, x1, y1 int, ok bool) {
 func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []int) error {
 	near := g.pieces(fresh)
 	thin := g.need.ClearanceUm > 0
-	err := parallel.Each(ctx, len(fresh), func() func(int) {
+	err := parallel.Each(ctx, 0, len(fresh), func() func(int) {
 		z := newRasterizer(g.need.ClearanceUm, g.m.Settings().ResolutionUm)
 		c := &cutter{}
 		return func(k int) {
@@ -192,7 +192,7 @@ func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []i
 	if err != nil {
 		return err
 	}
-	err = parallel.Each(ctx, len(joins), func() func(int) {
+	err = parallel.Each(ctx, 0, len(joins), func() func(int) {
 		j := &joiner{}
 		return func(k int) {
 			i := joins[k]

@@ -2,11 +2,9 @@ package clearance
 
 import (
 	"context"
-	"runtime"
-	"sync"
-	"sync/atomic"
 
 	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/planner/internal/parallel"
 )
 
 // Windows are computed in tiles, so that scratch space stays small and tiles can be
@@ -127,39 +125,26 @@ type scratch struct {
 	spans  []float64
 }
 
-// shareOut does n jobs on a few goroutines and gives the error of the first job that
-// failed.
+// shareOut does n jobs on a few goroutines and gives ctx's error, or that of the first
+// job that failed.
 func (f *Field) shareOut(ctx context.Context, n int, job func(*scratch, int) error) error {
 	errs := make([]error, n)
-	var next atomic.Int64
-	var stop atomic.Bool
-	work := func() {
+	going, stop := context.WithCancel(ctx)
+	defer stop()
+	err := parallel.Each(going, buildWorkers, n, func() func(int) {
 		s := &scratch{raster: transformer{lad: f.lad}}
-		for !stop.Load() {
-			k := int(next.Add(1)) - 1
-			if k >= n {
-				return
-			}
-			if errs[k] = ctx.Err(); errs[k] == nil {
-				errs[k] = job(s, k)
-			}
-			if errs[k] != nil {
-				stop.Store(true)
+		return func(k int) {
+			if errs[k] = job(s, k); errs[k] != nil {
+				stop()
 			}
 		}
-	}
-	var wg sync.WaitGroup
-	for range min(buildWorkers, runtime.GOMAXPROCS(0), n) - 1 {
-		wg.Go(work)
-	}
-	work()
-	wg.Wait()
-	for _, err := range errs {
-		if err != nil {
-			return err
+	})
+	for _, e := range errs {
+		if e != nil {
+			return e
 		}
 	}
-	return nil
+	return err
 }
 
 // tiles cuts w at multiples of the tile size.

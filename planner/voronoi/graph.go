@@ -8,9 +8,9 @@ import (
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
-	"example.com/wideberth/planner/internal/parallel"
 	"example.com/wideberth/planner/anyangle"
 	"example.com/wideberth/planner/clearance"
+	"example.com/wideberth/planner/internal/parallel"
 )
 
 // slackUm is how much further than Need.MostUm edges are traced, so that every edge is
@@ -88,7 +88,7 @@ func Build(ctx context.Context, f *clearance.Field, need Need) (*Graph, error) {
 	for i := range all {
 		all[i] = i
 	}
-	err := parallel.Each(ctx, n, func() func(int) {
+	err := parallel.Each(ctx, 0, n, func() func(int) {
 		return func(i int) { g.cells[i] = g.cellSites(f.Map(), i%g.nx, i/g.nx) }
 	})
 	if err != nil {
@@ -214,7 +214,7 @@ func boxDist(b box, s *site) float64 {
 // trace makes the blocks listed. Where may is given and a block's sites are those of
 // the old block that it holds, that one is kept.
 func (g *Graph) trace(ctx context.Context, list []int, may func(i int) *block) error {
-	return parallel.Each(ctx, len(list), func() func(int) {
+	return parallel.Each(ctx, 0, len(list), func() func(int) {
 		t := &tracer{}
 		return func(n int) {
 			i := list[n]

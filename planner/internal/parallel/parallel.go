@@ -10,17 +10,20 @@ import (
 	"sync/atomic"
 )
 
-// Each calls work(0) to work(n-1), each once, on all processors; mk makes the work of one
-// of them, so that it can keep scratch of its own. It stops early when ctx ends and
-// returns ctx's error. A panic in one piece of work ends the others and is raised
+// Each calls work(0) to work(n-1), each once, on at most workers goroutines (0: one for
+// each processor, and never more than that); mk makes the work of one of them, so that
+// it can keep scratch of its own. It stops early when ctx ends and returns ctx's error. A panic in one piece of work ends the others and is raised
 // again in the caller, where whoever guards the call can catch it.
-func Each(ctx context.Context, n int, mk func() func(int)) error {
+func Each(ctx context.Context, workers, n int, mk func() func(int)) error {
+	if procs := runtime.GOMAXPROCS(0); workers <= 0 || workers > procs {
+		workers = procs
+	}
 	ctx, stop := context.WithCancelCause(ctx)
 	defer stop(nil)
 	var next atomic.Int64
 	var fault atomic.Pointer[string]
 	var wg sync.WaitGroup
-	for range min(runtime.GOMAXPROCS(0), n) {
+	for range min(workers, n) {
 		wg.Go(func() {
 			defer func() {
 				if r := recover(); r != nil {

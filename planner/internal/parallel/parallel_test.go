@@ -11,7 +11,7 @@ import (
 func TestEachDoesEveryPieceOnce(t *testing.T) {
 	for _, n := range []int{0, 1, 2, 1000} {
 		done := make([]atomic.Int32, n)
-		err := Each(t.Context(), n, func() func(int) { return func(i int) { done[i].Add(1) } })
+		err := Each(t.Context(), n%3, n, func() func(int) { return func(i int) { done[i].Add(1) } })
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -26,7 +26,7 @@ func TestEachDoesEveryPieceOnce(t *testing.T) {
 func TestEachStopsWithItsContext(t *testing.T) {
 	ctx, cancel := context.WithCancel(t.Context())
 	var done atomic.Int32
-	err := Each(ctx, 1_000_000, func() func(int) {
+	err := Each(ctx, 0, 1_000_000, func() func(int) {
 		return func(int) {
 			if done.Add(1) == 10 {
 				cancel()
@@ -47,7 +47,7 @@ func TestEachRaisesAPanicInItsCaller(t *testing.T) {
 			t.Errorf("recovered %v, wanted the panic of piece 3", r)
 		}
 	}()
-	_ = Each(t.Context(), 100, func() func(int) {
+	_ = Each(t.Context(), 2, 100, func() func(int) {
 		return func(i int) {
 			if i == 3 {
 				panic("piece 3")
