@@ -9,14 +9,13 @@ import (
 	"testing"
 	"time"
 
+	"github.com/rs/zerolog"
 	"google.golang.org/grpc/codes"
 	"google.golang.org/protobuf/proto"
 
 	"example.com/wideberth/mapstore"
 	"example.com/wideberth/planner"
 	pb "example.com/wideberth/proto/wideberth/v1"
-
-	"github.com/rs/zerolog"
 )
 
 // snap is a version straight from the store.
