@@ -11,6 +11,7 @@ import (
 	"google.golang.org/grpc"
 	"google.golang.org/grpc/codes"
 	"google.golang.org/grpc/status"
+	"google.golang.org/protobuf/proto"
 	"pgregory.net/rapid"
 
 	"example.com/wideberth/mapstore/floor"
@@ -22,7 +23,7 @@ type part = wideberthv1.ReadFloorResponse
 func header(columns, rows int32) *part {
 	return &part{Part: &wideberthv1.ReadFloorResponse_Header{Header: &wideberthv1.ReadFloorHeader{
 		Stamp:    stampAt(3),
-		Settings: &wideberthv1.FloorSettings{ResolutionM: 0.05, Columns: columns, Rows: rows},
+		Settings: &wideberthv1.FloorSettings{ResolutionM: proto.Float64(0.05), Columns: columns, Rows: rows},
 	}}}
 }
 

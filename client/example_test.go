@@ -6,6 +6,8 @@ import (
 	"log"
 	"time"
 
+	"google.golang.org/protobuf/proto"
+
 	"example.com/wideberth/client"
 	"example.com/wideberth/client/trial"
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
@@ -34,7 +36,7 @@ func newHall(ctx context.Context, c *client.Client) {
 	_, err := c.CreateFloor(ctx, &wideberthv1.CreateFloorRequest{
 		Floor: "hall",
 		Settings: &wideberthv1.FloorSettings{
-			ResolutionM: 0.05, Columns: 160, Rows: 80,
+			ResolutionM: proto.Float64(0.05), Columns: 160, Rows: 80,
 			InitialOccupancy: wideberthv1.Occupancy_OCCUPANCY_FREE,
 		},
 		Author: "engineer",

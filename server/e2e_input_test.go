@@ -73,7 +73,8 @@ func TestBadRequestsChangeNothing(t *testing.T) {
 	}{
 		{"NaN", edited(plan(), func(q *pb.PlanRequest) { q.Body.RadiusM = nan }), codes.InvalidArgument, "INVALID_FIELD", "body.radius_m", ""},
 		{"infinite", edited(plan(), func(q *pb.PlanRequest) { q.Start = atPose(inf, 0) }), codes.InvalidArgument, "INVALID_FIELD", "start.pose.x_m", ""},
-		{"negative resolution", edited(create(), func(q *pb.CreateFloorRequest) { q.Floor, q.Settings.ResolutionM = "yard", -1 }), codes.InvalidArgument, "INVALID_FIELD", "settings.resolution_m", ""},
+		{"negative resolution", edited(create(), func(q *pb.CreateFloorRequest) { q.Floor, q.Settings.ResolutionM = "yard", proto.Float64(-1) }), codes.InvalidArgument, "INVALID_FIELD", "settings.resolution_m", ""},
+		{"zero resolution", edited(create(), func(q *pb.CreateFloorRequest) { q.Floor, q.Settings.ResolutionM = "yard", proto.Float64(0) }), codes.InvalidArgument, "INVALID_FIELD", "settings.resolution_m", ""},
 		{"2^31 cells", edited(create(), func(q *pb.CreateFloorRequest) { q.Floor, q.Settings.Columns, q.Settings.Rows = "yard", 65536, 32768 }), codes.InvalidArgument, "INVALID_FIELD", "settings.columns", ""},
 		{"floor taken", edited(create(), func(q *pb.CreateFloorRequest) { q.Settings.Rows = 7 }), codes.AlreadyExists, "FLOOR_EXISTS", "floor", "floor=hall"},
 		{"self-intersecting", base(push(put(solidPolygon("x", polygon(0, 0, 2, 2, 2, 0, 0, 2)))), 2), codes.InvalidArgument, "INVALID_FIELD", "patch.edits[0].put_feature.feature.solid.polygon.outer.points", ""},

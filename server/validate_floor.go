@@ -27,11 +27,11 @@ func checkCreateFloor(r *pb.CreateFloorRequest, f *faults) {
 // depends on another field is floor.Settings.Validate's business.
 func checkSettings(s *pb.FloorSettings, p *field, f *faults) {
 	ok := true
-	if s.ResolutionM != 0 {
-		ok = f.number(p.at("resolution_m"), s.ResolutionM, geom.Metres(floor.MinResolutionUm), geom.Metres(floor.MaxResolutionUm))
+	if s.ResolutionM != nil {
+		ok = f.number(p.at("resolution_m"), *s.ResolutionM, geom.Metres(floor.MinResolutionUm), geom.Metres(floor.MaxResolutionUm))
 	}
-	if um := s.ResolutionM * geom.UmPerMetre; ok && math.Abs(um-math.Round(um)) > 1e-3 {
-		f.add(p.at("resolution_m"), "%v, wanted a whole number of micrometres", s.ResolutionM)
+	if um := s.GetResolutionM() * geom.UmPerMetre; ok && math.Abs(um-math.Round(um)) > 1e-3 {
+		f.add(p.at("resolution_m"), "%v, wanted a whole number of micrometres", s.GetResolutionM())
 		ok = false
 	}
 	ok = f.number(p.at("clearance_cap_m"), s.ClearanceCapM, 0, maxCapM) && ok

@@ -133,7 +133,7 @@ func (b *builder) settings(spec *fileSpec) *wideberthv1.FloorSettings {
 		return nil
 	}
 	return &wideberthv1.FloorSettings{
-		ResolutionM: resM, Columns: int32(b.grid.columns), Rows: int32(b.grid.rows),
+		ResolutionM: &resM, Columns: int32(b.grid.columns), Rows: int32(b.grid.rows),
 		Origin:        &wideberthv1.Point{XM: x, YM: y},
 		ClearanceCapM: spec.CapM, UnknownIsFree: spec.UnknownIsFree, OpenBorder: spec.OpenBorder,
 		InitialOccupancy: initial,

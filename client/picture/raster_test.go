@@ -6,6 +6,8 @@ import (
 
 	"pgregory.net/rapid"
 
+	"google.golang.org/protobuf/proto"
+
 	"example.com/wideberth/client"
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
 )
@@ -13,7 +15,7 @@ import (
 // raw makes a floor of cells alone; origin off zero, so that it is not forgotten.
 func raw(cols, rows int, cell func(col, row int) byte) *client.FloorContent {
 	c := &client.FloorContent{
-		Settings: &wideberthv1.FloorSettings{ResolutionM: 0.05, Columns: int32(cols), Rows: int32(rows), Origin: &wideberthv1.Point{XM: -3, YM: 2}},
+		Settings: &wideberthv1.FloorSettings{ResolutionM: proto.Float64(0.05), Columns: int32(cols), Rows: int32(rows), Origin: &wideberthv1.Point{XM: -3, YM: 2}},
 		Cells:    make([]byte, (cols*rows+3)/4),
 	}
 	for row := range rows {

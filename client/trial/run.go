@@ -12,6 +12,8 @@ import (
 	"strconv"
 	"time"
 
+	"google.golang.org/protobuf/proto"
+
 	"example.com/wideberth/client"
 	"example.com/wideberth/mapstore/floor"
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
@@ -166,7 +168,7 @@ func load(ctx context.Context, c *client.Client, g *Grid) (*wideberthv1.VersionS
 	made, err := c.CreateFloor(ctx, &wideberthv1.CreateFloorRequest{
 		Floor: id,
 		Settings: &wideberthv1.FloorSettings{
-			ResolutionM: 1, Columns: int32(g.Width), Rows: int32(g.Height),
+			ResolutionM: proto.Float64(1), Columns: int32(g.Width), Rows: int32(g.Height),
 			OpenBorder: true, InitialOccupancy: wideberthv1.Occupancy_OCCUPANCY_FREE,
 		},
 		Author: author,

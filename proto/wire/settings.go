@@ -1,6 +1,8 @@
 package wire
 
 import (
+	"google.golang.org/protobuf/proto"
+
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 	pb "example.com/wideberth/proto/wideberth/v1"
@@ -25,7 +27,7 @@ func SettingsIn(s *pb.FloorSettings) floor.Settings {
 		OpenBorder:    s.GetOpenBorder(),
 		Initial:       OccupancyIn(s.GetInitialOccupancy()),
 	}
-	if s.GetResolutionM() == 0 {
+	if s.GetResolutionM() == 0 { // not set
 		out.ResolutionUm = defaultResolutionUm
 	}
 	if s.GetClearanceCapM() == 0 {
@@ -38,7 +40,7 @@ func SettingsIn(s *pb.FloorSettings) floor.Settings {
 // SettingsOut are a floor's settings as a message.
 func SettingsOut(s floor.Settings) *pb.FloorSettings {
 	return &pb.FloorSettings{
-		ResolutionM:      Metres(s.ResolutionUm),
+		ResolutionM:      proto.Float64(Metres(s.ResolutionUm)),
 		Columns:          int32(s.Columns),
 		Rows:             int32(s.Rows),
 		Origin:           &pb.Point{XM: Metres(s.OriginX), YM: Metres(s.OriginY)},

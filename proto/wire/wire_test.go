@@ -134,8 +134,8 @@ func TestSettingsDefaults(t *testing.T) {
 		res, cap int64
 	}{
 		{&pb.FloorSettings{}, 50_000, 5_000_000},
-		{&pb.FloorSettings{ResolutionM: 0.01}, 10_000, 2_500_000},
-		{&pb.FloorSettings{ResolutionM: 10}, 10_000_000, 10_000_000}, // never below a cell
+		{&pb.FloorSettings{ResolutionM: proto.Float64(0.01)}, 10_000, 2_500_000},
+		{&pb.FloorSettings{ResolutionM: proto.Float64(10)}, 10_000_000, 10_000_000}, // never below a cell
 		{&pb.FloorSettings{ClearanceCapM: 3}, 50_000, 3_000_000},
 	} {
 		got := wire.SettingsIn(c.in)

@@ -69,7 +69,7 @@ func (s *story) tell(ctx context.Context) error {
 	}
 	set := s.hall.Settings
 	s.say.line("%s: a fictional floor of %.0f m by %.0f m, %d x %d cells of %.2f m.",
-		s.hall.Title, float64(set.Columns)*set.ResolutionM, float64(set.Rows)*set.ResolutionM, set.Columns, set.Rows, set.ResolutionM)
+		s.hall.Title, float64(set.Columns)*set.GetResolutionM(), float64(set.Rows)*set.GetResolutionM(), set.Columns, set.Rows, set.GetResolutionM())
 	s.say.line("A wideberth server listens on %s, its journal in a temporary file.", s.address)
 	for _, b := range []*wideberthv1.Body{s.tug, s.runner} {
 		s.say.line("  %-6s  radius %.2f m, margin %.2f m: needs %.2f m of width, prefers %.2f m of clearance",

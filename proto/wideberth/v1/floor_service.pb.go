@@ -82,8 +82,9 @@ func (VersionKind) EnumDescriptor() ([]byte, []int) {
 // What stays the same for all versions of a floor.
 type FloorSettings struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
-	// Metres per cell, from 0.001 to 10, a whole number of micrometres. 0 asks for 0.05.
-	ResolutionM float64 `protobuf:"fixed64,1,opt,name=resolution_m,json=resolutionM,proto3" json:"resolution_m,omitempty"`
+	// Metres per cell, from 0.001 to 10, a whole number of micrometres. Not set asks
+	// for 0.05; a 0 that is set is refused.
+	ResolutionM *float64 `protobuf:"fixed64,1,opt,name=resolution_m,json=resolutionM,proto3,oneof" json:"resolution_m,omitempty"`
 	// Cells from left to right, from 1 to 65,536. At most 268,435,456 cells in all.
 	Columns int32 `protobuf:"varint,2,opt,name=columns,proto3" json:"columns,omitempty"`
 	// Cells from bottom to top, from 1 to 65,536.
@@ -135,8 +136,8 @@ func (*FloorSettings) Descriptor() ([]byte, []int) {
 }
 
 func (x *FloorSettings) GetResolutionM() float64 {
-	if x != nil {
-		return x.ResolutionM
+	if x != nil && x.ResolutionM != nil {
+		return *x.ResolutionM
 	}
 	return 0
 }
@@ -2617,9 +2618,9 @@ var File_wideberth_v1_floor_service_proto protoreflect.FileDescriptor
 
 const file_wideberth_v1_floor_service_proto_rawDesc = "" +
 	"\n" +
-	" wideberth/v1/floor_service.proto\x12\fwideberth.v1\x1a\x1fgoogle/protobuf/timestamp.proto\x1a\x19wideberth/v1/common.proto\"\xc4\x02\n" +
-	"\rFloorSettings\x12!\n" +
-	"\fresolution_m\x18\x01 \x01(\x01R\vresolutionM\x12\x18\n" +
+	" wideberth/v1/floor_service.proto\x12\fwideberth.v1\x1a\x1fgoogle/protobuf/timestamp.proto\x1a\x19wideberth/v1/common.proto\"\xda\x02\n" +
+	"\rFloorSettings\x12&\n" +
+	"\fresolution_m\x18\x01 \x01(\x01H\x00R\vresolutionM\x88\x01\x01\x12\x18\n" +
 	"\acolumns\x18\x02 \x01(\x05R\acolumns\x12\x12\n" +
 	"\x04rows\x18\x03 \x01(\x05R\x04rows\x12+\n" +
 	"\x06origin\x18\x04 \x01(\v2\x13.wideberth.v1.PointR\x06origin\x12&\n" +
@@ -2627,7 +2628,8 @@ const file_wideberth_v1_floor_service_proto_rawDesc = "" +
 	"\x0funknown_is_free\x18\x06 \x01(\bR\runknownIsFree\x12\x1f\n" +
 	"\vopen_border\x18\a \x01(\bR\n" +
 	"openBorder\x12D\n" +
-	"\x11initial_occupancy\x18\b \x01(\x0e2\x17.wideberth.v1.OccupancyR\x10initialOccupancy\"\xe4\x01\n" +
+	"\x11initial_occupancy\x18\b \x01(\x0e2\x17.wideberth.v1.OccupancyR\x10initialOccupancyB\x0f\n" +
+	"\r_resolution_m\"\xe4\x01\n" +
 	"\x05Floor\x12\x0e\n" +
 	"\x02id\x18\x01 \x01(\tR\x02id\x127\n" +
 	"\bsettings\x18\x02 \x01(\v2\x1b.wideberth.v1.FloorSettingsR\bsettings\x12.\n" +
@@ -2954,6 +2956,7 @@ func file_wideberth_v1_floor_service_proto_init() {
 		return
 	}
 	file_wideberth_v1_common_proto_init()
+	file_wideberth_v1_floor_service_proto_msgTypes[0].OneofWrappers = []any{}
 	file_wideberth_v1_floor_service_proto_msgTypes[4].OneofWrappers = []any{
 		(*PaintOccupancy_Polygon)(nil),
 		(*PaintOccupancy_Rect)(nil),
