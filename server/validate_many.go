@@ -15,11 +15,7 @@ const (
 func checkPlanMany(r *pb.PlanManyRequest, f *faults) {
 	f.floorID(root.at("floor"), r.Floor)
 	f.selector(root.at("version"), r.Version)
-	if r.Body == nil {
-		f.missing(root.at("body"))
-	} else {
-		checkBody(r.Body, root.at("body"), f)
-	}
+	checkGivenBody(r.Body, root.at("body"), f)
 	starts, goals := checkPlaces(r.Starts, root.at("starts"), f), checkPlaces(r.Goals, root.at("goals"), f)
 	if n := len(r.Starts) * len(r.Goals); starts && goals && n > maxPairs {
 		f.add(root.at("goals"), "%d goals for %d starts are %d pairs, wanted at most %d", len(r.Goals), len(r.Starts), n, maxPairs)

@@ -10,14 +10,19 @@ import (
 	"example.com/wideberth/proto/wire"
 )
 
+// checkGivenBody checks a body that must be there.
+func checkGivenBody(b *pb.Body, p *field, f *faults) {
+	if b == nil {
+		f.missing(p)
+		return
+	}
+	checkBody(b, p, f)
+}
+
 func checkPlan(r *pb.PlanRequest, f *faults) {
 	f.floorID(root.at("floor"), r.Floor)
 	f.selector(root.at("version"), r.Version)
-	if r.Body == nil {
-		f.missing(root.at("body"))
-	} else {
-		checkBody(r.Body, root.at("body"), f)
-	}
+	checkGivenBody(r.Body, root.at("body"), f)
 	checkPlace(r.Start, root.at("start"), f)
 	checkPlace(r.Goal, root.at("goal"), f)
 	checkOptions(r.Options, root.at("options"), f)

@@ -151,13 +151,18 @@ func oracle(polys [][]geom.Point, bounds geom.Rect, s, g geom.Point) float64 {
 			}
 		}
 	}
-	d := make([]float64, len(vs))
-	done := make([]bool, len(vs))
+	return overGraph(vs, func(a, b geom.Point) bool { return !blocked(a, b) })
+}
+
+// overGraph is A* from vs[0] to vs[1] over all pairs of vs that see one another; +Inf
+// when there is no way.
+func overGraph(vs []geom.Point, sees func(a, b geom.Point) bool) float64 {
+	d, done := make([]float64, len(vs)), make([]bool, len(vs))
 	for i := range d {
 		d[i] = math.Inf(1)
 	}
 	d[0] = 0
-	h := &graphHeap{{geom.Dist(s, g), 0}}
+	h := &graphHeap{{geom.Dist(vs[0], vs[1]), 0}}
 	for h.Len() > 0 {
 		i := heap.Pop(h).(graphItem).i
 		if i == 1 {
@@ -168,10 +173,9 @@ func oracle(polys [][]geom.Point, bounds geom.Rect, s, g geom.Point) float64 {
 		}
 		done[i] = true
 		for k := range vs {
-			nd := d[i] + geom.Dist(vs[i], vs[k])
-			if nd < d[k] && !blocked(vs[i], vs[k]) {
+			if nd := d[i] + geom.Dist(vs[i], vs[k]); nd < d[k] && sees(vs[i], vs[k]) {
 				d[k] = nd
-				heap.Push(h, graphItem{nd + geom.Dist(vs[k], g), k})
+				heap.Push(h, graphItem{nd + geom.Dist(vs[k], vs[1]), k})
 			}
 		}
 	}

@@ -2,7 +2,6 @@ package anyangle
 
 import (
 	"cmp"
-	"container/heap"
 	"context"
 	"fmt"
 	"math"
@@ -130,29 +129,7 @@ func outlineShortest(rings [][]geom.Point, s, e geom.Point) float64 {
 	}
 	slices.SortFunc(vs[2:], func(p, q geom.Point) int { return cmp.Or(cmp.Compare(p.X, q.X), cmp.Compare(p.Y, q.Y)) })
 	vs = append(vs[:2], slices.Compact(vs[2:])...)
-	d, done := make([]float64, len(vs)), make([]bool, len(vs))
-	for i := range d {
-		d[i] = math.Inf(1)
-	}
-	d[0] = 0
-	h := &graphHeap{{geom.Dist(s, e), 0}}
-	for h.Len() > 0 {
-		i := heap.Pop(h).(graphItem).i
-		if i == 1 {
-			return d[1]
-		}
-		if done[i] {
-			continue
-		}
-		done[i] = true
-		for k := range vs {
-			if nd := d[i] + geom.Dist(vs[i], vs[k]); nd < d[k] && covered(rings, vs[i], vs[k]) {
-				d[k] = nd
-				heap.Push(h, graphItem{nd + geom.Dist(vs[k], e), k})
-			}
-		}
-	}
-	return math.Inf(1)
+	return overGraph(vs, func(a, b geom.Point) bool { return covered(rings, a, b) })
 }
 
 // checkPair fails unless there is a way from s to e exactly when the two are connected,
