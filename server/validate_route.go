@@ -99,11 +99,7 @@ func checkRoute(r *pb.Route, p *field, f *faults) {
 		return
 	}
 	checkStamp(r.CheckedAgainst, p.at("checked_against"), f)
-	if r.Body == nil {
-		f.missing(p.at("body"))
-	} else {
-		checkBody(r.Body, p.at("body"), f)
-	}
+	checkGivenBody(r.Body, p.at("body"), f)
 	checkOptions(r.Options, p.at("options"), f)
 	f.pose(p.at("goal"), r.Goal)
 	legs := p.at("legs")
