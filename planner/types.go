@@ -34,6 +34,7 @@ type Preference uint8
 const (
 	Balanced Preference = iota // metres below the preferred clearance cost more
 	Shortest                   // as short as the required clearance allows
+	Clearest                   // the largest smallest clearance there is, then the shortest
 )
 
 // Roadmap is which roadmap is searched.
@@ -127,6 +128,10 @@ type Bound struct {
 	WidthBiasUm      int64   // a passage up to this much wider than 2·Required may be missed
 	ClearanceShortUm int64   // reported clearances are at most this much below the truth
 	OptimumWithinUm  int64   // AnyAngleOptimum; else 0
+	// CutShort is set when the time budget ran out and this is the best checked route by
+	// then. No route costs less than CostUm / (1 + GapShare).
+	CutShort bool
+	GapShare float64
 }
 
 // Route is a checked way from Start to Goal.

@@ -33,6 +33,9 @@ const (
 	// does not: metres below the preferred clearance cost more, the more the less
 	// clearance they have (see PlanOptions.tight_weight).
 	Preference_PREFERENCE_BALANCED Preference = 2
+	// As far from everything as the floor allows: the largest smallest clearance
+	// there is, up to the floor's cap, and among those ways the shortest.
+	Preference_PREFERENCE_CLEAREST Preference = 3
 )
 
 // Enum value maps for Preference.
@@ -41,11 +44,13 @@ var (
 		0: "PREFERENCE_UNSPECIFIED",
 		1: "PREFERENCE_SHORTEST",
 		2: "PREFERENCE_BALANCED",
+		3: "PREFERENCE_CLEAREST",
 	}
 	Preference_value = map[string]int32{
 		"PREFERENCE_UNSPECIFIED": 0,
 		"PREFERENCE_SHORTEST":    1,
 		"PREFERENCE_BALANCED":    2,
+		"PREFERENCE_CLEAREST":    3,
 	}
 )
 
@@ -1301,8 +1306,14 @@ type Bound struct {
 	// With BOUND_KIND_ANY_ANGLE_OPTIMUM, the clearance beyond the required one from
 	// which on no route is shorter; else 0.
 	OptimumWithinM float64 `protobuf:"fixed64,5,opt,name=optimum_within_m,json=optimumWithinM,proto3" json:"optimum_within_m,omitempty"`
-	unknownFields  protoimpl.UnknownFields
-	sizeCache      protoimpl.SizeCache
+	// Whether the time budget ran out: this is then the best checked route found by
+	// then, and gap_share says how good.
+	CutShort bool `protobuf:"varint,6,opt,name=cut_short,json=cutShort,proto3" json:"cut_short,omitempty"`
+	// No route of this preference costs less than cost_m / (1 + gap_share). 0 when
+	// the search ended.
+	GapShare      float64 `protobuf:"fixed64,7,opt,name=gap_share,json=gapShare,proto3" json:"gap_share,omitempty"`
+	unknownFields protoimpl.UnknownFields
+	sizeCache     protoimpl.SizeCache
 }
 
 func (x *Bound) Reset() {
@@ -1366,6 +1377,20 @@ func (x *Bound) GetClearanceShortM() float64 {
 func (x *Bound) GetOptimumWithinM() float64 {
 	if x != nil {
 		return x.OptimumWithinM
+	}
+	return 0
+}
+
+func (x *Bound) GetCutShort() bool {
+	if x != nil {
+		return x.CutShort
+	}
+	return false
+}
+
+func (x *Bound) GetGapShare() float64 {
+	if x != nil {
+		return x.GapShare
 	}
 	return 0
 }
@@ -2828,14 +2853,16 @@ const file_wideberth_v1_route_service_proto_rawDesc = "" +
 	"\x11speed_ceiling_mps\x18\v \x01(\x01R\x0fspeedCeilingMps\x129\n" +
 	"\vspeed_cause\x18\f \x01(\x0e2\x18.wideberth.v1.SpeedCauseR\n" +
 	"speedCause\x12%\n" +
-	"\x0ebeyond_sensing\x18\r \x01(\bR\rbeyondSensing\"\xd0\x01\n" +
+	"\x0ebeyond_sensing\x18\r \x01(\bR\rbeyondSensing\"\x8a\x02\n" +
 	"\x05Bound\x12+\n" +
 	"\x04kind\x18\x01 \x01(\x0e2\x17.wideberth.v1.BoundKindR\x04kind\x12\"\n" +
 	"\rlower_bound_m\x18\x02 \x01(\x01R\vlowerBoundM\x12 \n" +
 	"\fwidth_bias_m\x18\x03 \x01(\x01R\n" +
 	"widthBiasM\x12*\n" +
 	"\x11clearance_short_m\x18\x04 \x01(\x01R\x0fclearanceShortM\x12(\n" +
-	"\x10optimum_within_m\x18\x05 \x01(\x01R\x0eoptimumWithinM\"\xc1\x04\n" +
+	"\x10optimum_within_m\x18\x05 \x01(\x01R\x0eoptimumWithinM\x12\x1b\n" +
+	"\tcut_short\x18\x06 \x01(\bR\bcutShort\x12\x1b\n" +
+	"\tgap_share\x18\a \x01(\x01R\bgapShare\"\xc1\x04\n" +
 	"\x05Route\x12\x19\n" +
 	"\broute_id\x18\x01 \x01(\tR\arouteId\x12C\n" +
 	"\x0fchecked_against\x18\x02 \x01(\v2\x1a.wideberth.v1.VersionStampR\x0echeckedAgainst\x12&\n" +
@@ -2954,12 +2981,13 @@ const file_wideberth_v1_route_service_proto_rawDesc = "" +
 	"\x06header\x18\x01 \x01(\v2\x1c.wideberth.v1.PlanManyHeaderH\x00R\x06header\x122\n" +
 	"\x06answer\x18\x02 \x01(\v2\x18.wideberth.v1.PairAnswerH\x00R\x06answer\x12-\n" +
 	"\x03end\x18\x03 \x01(\v2\x19.wideberth.v1.PlanManyEndH\x00R\x03endB\x06\n" +
-	"\x04part*Z\n" +
+	"\x04part*s\n" +
 	"\n" +
 	"Preference\x12\x1a\n" +
 	"\x16PREFERENCE_UNSPECIFIED\x10\x00\x12\x17\n" +
 	"\x13PREFERENCE_SHORTEST\x10\x01\x12\x17\n" +
-	"\x13PREFERENCE_BALANCED\x10\x02*x\n" +
+	"\x13PREFERENCE_BALANCED\x10\x02\x12\x17\n" +
+	"\x13PREFERENCE_CLEAREST\x10\x03*x\n" +
 	"\aRoadmap\x12\x17\n" +
 	"\x13ROADMAP_UNSPECIFIED\x10\x00\x12\x11\n" +
 	"\rROADMAP_GRID4\x10\x01\x12\x11\n" +
