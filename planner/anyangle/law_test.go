@@ -3,7 +3,6 @@ package anyangle
 import (
 	"context"
 	"errors"
-	"math"
 	"math/rand/v2"
 	"reflect"
 	"testing"
@@ -78,119 +77,6 @@ func TestLaw5ClearanceIsNeverOverstated(t *testing.T) {
 				t.Fatalf("case %d: clearance %v at %v, in the mesh for %d µm: %v", k, d, p, r, in)
 			}
 		}
-	}
-}
-
-// TestLaw6NoPassageIsLostAxisAligned checks walls with a door or a corridor of
-// exactly twice the clearance: passable, and not at 1 µm more.
-func TestLaw6NoPassageIsLostAxisAligned(t *testing.T) {
-	const seed = 6
-	t.Logf("seed %d", seed)
-	tried := 0
-	for k := range 300 {
-		rng := rand.New(rand.NewPCG(seed, uint64(k)))
-		const n = 150
-		h := int64(benchCell)
-		side := n * h
-		r := int64(1 + rng.IntN(700_000))
-		var x, y0, y1 int64 // the passage's middle, and the wall's two sides
-		raster := rng.IntN(2) == 0
-		x = side/4 + rng.Int64N(side/2)
-		y0 = side/4 + rng.Int64N(side/4)
-		y1 = y0 + 1 + rng.Int64N(side/4)
-		if raster {
-			r = r/h*h + h
-			x, y0, y1 = x/h*h, y0/h*h, (y1/h+1)*h
-		}
-		switch rng.IntN(3) {
-		case 0: // on a border between blocks
-			x = 64 * h * (1 + rng.Int64N(2))
-		case 1: // touching one
-			x = 64*h*(1+rng.Int64N(2)) + r*(2*rng.Int64N(2)-1)
-		}
-		if x-r < h || x+r > side-h || y0 < 2*r+2 || side-y1 < 2*r+2 {
-			continue // no room for the walls, or to stand beyond them
-		}
-		tried++
-		rects := [][4]int64{{0, y0, x - r, y1}, {x + r, y0, side, y1}}
-		if rng.IntN(2) == 0 { // along the other axis
-			for i, q := range rects {
-				rects[i] = [4]int64{q[1], q[0], q[3], q[2]}
-			}
-		}
-		f := newMask(n, n).floor(t, false)
-		var edits []floor.Edit
-		for i, q := range rects {
-			if raster {
-				edits = append(edits, floor.Edit{Kind: floor.PaintRect, Fill: floor.Occupied,
-					Rect: floor.CellRect{X0: int(q[0] / h), Y0: int(q[1] / h), X1: int(q[2] / h), Y1: int(q[3] / h)}})
-				continue
-			}
-			x0, y0, x1, y1 := float64(q[0]), float64(q[1]), float64(q[2]), float64(q[3])
-			edits = append(edits, floor.Edit{Kind: floor.PutFeature, Feature: &floor.Feature{
-				Name: string(rune('a' + i)), Kind: floor.Solid,
-				Shape: floor.NewPolygon([][]geom.Point{{{X: x0, Y: y0}, {X: x1, Y: y0}, {X: x1, Y: y1}, {X: x0, Y: y1}}}, 0)}})
-		}
-		f, err := f.Apply(edits)
-		if err != nil {
-			t.Fatal(err)
-		}
-		d := float64(r) + 1
-		s, e := geom.Point{X: d, Y: d}, geom.Point{X: float64(side) - d, Y: float64(side) - d}
-		if _, ok, err := build(t, f, r).Shortest(context.Background(), s, e); !ok || err != nil {
-			t.Fatalf("case %d: %v: no way through %d µm at clearance %d µm (%v)", k, rects, 2*r, r, err)
-		}
-		if _, ok, _ := build(t, f, r+1).Shortest(context.Background(), s, e); ok {
-			t.Fatalf("case %d: %v: a way through %d µm at clearance %d µm", k, rects, 2*r, r+1)
-		}
-	}
-	if tried < 100 {
-		t.Errorf("%d passages tried", tried)
-	}
-}
-
-// TestLaw6NoPassageIsLostOblique checks doors between the round ends of two walls
-// at any angle.
-func TestLaw6NoPassageIsLostOblique(t *testing.T) {
-	const seed = 66
-	t.Logf("seed %d", seed)
-	tried := 0
-	for k := range 400 {
-		rng := rand.New(rand.NewPCG(seed, uint64(k)))
-		const side = 8_000_000
-		a, b := randomPoint(rng, geom.Rect{Min: geom.Point{Y: side / 4}, Max: geom.Point{Y: 3 * side / 4}}), geom.Point{}
-		b = geom.Point{X: side, Y: side - a.Y}
-		at := func(t float64) geom.Point {
-			return geom.Point{X: math.Round(a.X + t*(b.X-a.X)), Y: math.Round(a.Y + t*(b.Y-a.Y))}
-		}
-		t0 := 0.3 + 0.3*rng.Float64()
-		p, q := at(t0), at(t0+0.05+0.1*rng.Float64())
-		width := int64(1 + rng.IntN(100_000))
-		gap := geom.Dist(p, q) - float64(width)
-		beta := gap / 2
-		if beta < DeltaUm+10 {
-			continue
-		}
-		tried++
-		f, err := newMask(160, 160).floor(t, false).Apply([]floor.Edit{
-			{Kind: floor.PutFeature, Feature: &floor.Feature{Name: "a", Kind: floor.Solid, WidthUm: width, Shape: floor.NewPolyline([]geom.Point{a, p}, width, 0)}},
-			{Kind: floor.PutFeature, Feature: &floor.Feature{Name: "b", Kind: floor.Solid, WidthUm: width, Shape: floor.NewPolyline([]geom.Point{q, b}, width, 0)}},
-		})
-		if err != nil {
-			t.Fatal(err)
-		}
-		s, e := geom.Point{X: side / 2, Y: 700_000}, geom.Point{X: side / 2, Y: side - 700_000}
-		r := int64(beta - DeltaUm)
-		if _, ok, err := build(t, f, r).Shortest(context.Background(), s, e); !ok || err != nil {
-			t.Fatalf("case %d: no way through %v µm at clearance %d µm (%v)", k, gap, r, err)
-		}
-		r = int64(math.Ceil(beta)) + 1
-		if _, ok, _ := build(t, f, r).Shortest(context.Background(), s, e); ok {
-			t.Fatalf("case %d: a way through %v µm at clearance %d µm", k, gap, r)
-		}
-	}
-	if tried < 200 {
-		t.Errorf("%d doors tried", tried)
 	}
 }
 
