@@ -87,6 +87,8 @@ type search struct {
 	fs      []float64
 
 	expanded, queued int64
+	most             float64 // ways longer than that are of no use
+	gaveUp           bool    // because there is none shorter
 }
 
 var pool = sync.Pool{New: func() any { return new(search) }}
@@ -98,24 +100,7 @@ var pool = sync.Pool{New: func() any { return new(search) }}
 // ways of one length the same is found each time. The error is ctx's (looked at
 // every 1,024 expansions) or ErrTooLarge. The counters are given in any case.
 func (g *Mesh) Shortest(ctx context.Context, start, goal geom.Point) (way Way, ok bool, err error) {
-	if err := ctx.Err(); err != nil {
-		return Way{}, false, err
-	}
-	s := pool.Get().(*search)
-	defer func() {
-		s.g = nil // an idle search keeps no version alive
-		pool.Put(s)
-	}()
-	// A goal behind a notch of the lean mesh needs the full one, and so does a way
-	// that the lean one does not have.
-	lean, ok, err := s.run(ctx, g.lean, start, goal)
-	if ok || err != nil {
-		return lean, ok, err
-	}
-	way, ok, err = s.run(ctx, g, start, goal)
-	way.Expanded += lean.Expanded
-	way.Queued += lean.Queued
-	return way, ok, err
+	return g.ShortestWithin(ctx, start, goal, math.Inf(1))
 }
 
 // none is the counters without a way.
@@ -129,7 +114,7 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 	s.table.reset()
 	s.visited.reset()
 	s.best = s.best[:0]
-	s.expanded, s.queued = 0, 0
+	s.expanded, s.queued, s.gaveUp = 0, 0, false
 	s.goals = g.locate(s.goals[:0], goal, g.eps)
 	if len(s.goals) == 0 {
 		return Way{}, false, nil
@@ -167,6 +152,10 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 		n := s.nodes[i]
 		s.spare = append(s.spare, i)
 		for s.trim(&n, &f) {
+			if f > s.most {
+				s.gaveUp = true
+				return s.none(), false, nil
+			}
 			if s.isGoal(n.block, n.cell) {
 				return s.way(&n), true, nil
 			}

@@ -1,0 +1,31 @@
+package anyangle
+
+import (
+	"context"
+
+	"example.com/wideberth/mapstore/geom"
+)
+
+// ShortestWithin is Shortest for one who has no use for a way longer than mostUm: ok is
+// false then as well, and the search ends as soon as that is certain.
+func (g *Mesh) ShortestWithin(ctx context.Context, start, goal geom.Point, mostUm float64) (way Way, ok bool, err error) {
+	if err := ctx.Err(); err != nil {
+		return Way{}, false, err
+	}
+	s := pool.Get().(*search)
+	s.most = mostUm + tieUm
+	defer func() {
+		s.g = nil // an idle search keeps no version alive
+		pool.Put(s)
+	}()
+	// A goal behind a notch of the lean mesh needs the full one, and so does a way
+	// that the lean one does not have.
+	lean, ok, err := s.run(ctx, g.lean, start, goal)
+	if ok || err != nil || s.gaveUp {
+		return lean, ok && lean.LengthUm <= s.most, err
+	}
+	way, ok, err = s.run(ctx, g, start, goal)
+	way.Expanded += lean.Expanded
+	way.Queued += lean.Queued
+	return way, ok && way.LengthUm <= s.most, err
+}
