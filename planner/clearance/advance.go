@@ -2,21 +2,19 @@ package clearance
 
 import (
 	"context"
-	"math"
 
 	"example.com/wideberth/mapstore/floor"
-	"example.com/wideberth/mapstore/geom"
 )
 
-// manyWindows is the number of changed areas above which they are gathered by block
-// instead of being merged pair by pair.
-const manyWindows = 64
+// manyChanges is the number of changed places above which what they reach is gathered
+// by block instead of being looked at place by place.
+const manyChanges = 64
 
 // Advance makes the field of m, another version of the same floor, from f; ch is
 // floor.Diff of f's version and m. The result equals Build's bit for bit and shares
-// with f what did not change. Only the surroundings of what changed, as far as
-// the cap reaches, are computed anew: O(changed area grown by the cap), plus the
-// top of the tables. The error is ctx's.
+// with f what did not change. Only where the value may differ, and never farther than
+// the cap from a change, are values computed anew: O(that area, grown by the
+// clearances in it), plus the top of the tables. The error is ctx's.
 func (f *Field) Advance(ctx context.Context, m *floor.Map, ch floor.Change) (*Field, error) {
 	if m.Settings() != f.m.Settings() {
 		return Build(ctx, m)
@@ -28,18 +26,13 @@ func (f *Field) Advance(ctx context.Context, m *floor.Map, ch floor.Change) (*Fi
 	for k := range g.pyramid {
 		g.pyramid[k] = f.pyramid[k].fork()
 	}
-	d := newDirty(&g)
-	windows := d.features(ch.Features)
-	windows = append(windows, d.cells(ch.Cells)...)
-	if len(windows) > manyWindows {
-		windows = g.byBlock(windows)
-	} else {
-		windows = merge(windows)
-	}
+	d := &dirty{f: &g, blocks: map[[2]int]mark{}}
+	d.features(ch.Features)
+	d.cells(ch.Cells)
 	s := &scratch{raster: transformer{lad: g.lad}}
-	for _, w := range windows {
-		for _, t := range w.tiles() {
-			if err := g.compute(ctx, s, t, d.vertices); err != nil {
+	for _, a := range g.areas(d.places) {
+		for _, t := range a.tiles() {
+			if err := g.compute(ctx, s, t, a.reach, d.vertices); err != nil {
 				return nil, err
 			}
 		}
@@ -51,212 +44,120 @@ func (f *Field) Advance(ctx context.Context, m *floor.Map, ch floor.Change) (*Fi
 	return &g, nil
 }
 
-// dirty collects which blocks of the field under construction must be derived anew.
-type dirty struct {
-	f            *Field
-	bar, sum, up []bool // cell blocks: cells, smallest and largest values, anything
+// area is a window of vertices to compute, and a guess in cells of how large their
+// values get.
+type area struct {
+	window
+	reach int
 }
 
-func newDirty(f *Field) *dirty {
-	n := f.sums.nx * f.sums.ny
-	return &dirty{f, make([]bool, n), make([]bool, n), make([]bool, n)}
+// areas are where values may differ after changes within places, which are windows of
+// vertices. The values are still those from before.
+func (f *Field) areas(places []window) []area {
+	if len(places) > manyChanges {
+		return f.byBlock(places)
+	}
+	var as []area
+	for _, p := range places {
+		as = append(as, f.touched(p))
+	}
+	return merge(as)
 }
 
-// vertices marks the cell blocks that vertex block (bx, by) belongs to.
-func (d *dirty) vertices(bx, by int) {
-	for y := max(0, by-1); y <= min(by, d.f.sums.ny-1); y++ {
-		for x := max(0, bx-1); x <= min(bx, d.f.sums.nx-1); x++ {
-			d.sum[y*d.f.sums.nx+x] = true
+// touched is where the value may differ after changes within the place. A value differs
+// only if what was nearest is gone or what has come is nearer; either way the
+// value from before is at least the distance to the place. Such vertices are
+// star-shaped about the place, for clearance is 1-Lipschitz: when there is none at k
+// cells from it in x or y (the larger), there is none farther out.
+func (f *Field) touched(place window) area {
+	all := window{0, 0, f.cols + 1, f.rows + 1}
+	// The way straight to the place may pass half a cell beside a vertex, which
+	// changes either distance by as much; values are rounded down.
+	slack := int64(f.h) + 2
+	steps := f.lad.steps
+	box := place
+	most := int32(0)
+	row := make([]int32, place.width()+2*f.lad.reach)
+	for j := place.j0; j < place.j1; j++ {
+		row := row[:place.width()]
+		f.vertexRow(place.i0, j, row)
+		for _, v := range row {
+			most = max(most, v)
 		}
 	}
-}
-
-// cells reads changed cells and gives the windows of vertices they reach.
-func (d *dirty) cells(rects []floor.CellRect) []window {
-	f := d.f
-	var ws []window
-	for _, r := range rects {
-		for by := max(0, r.Y0) >> blockShift; by<<blockShift < min(r.Y1, f.rows); by++ {
-			for bx := max(0, r.X0) >> blockShift; bx<<blockShift < min(r.X1, f.cols); bx++ {
-				old, now := f.bits.at(bx, by), f.readBits(bx, by)
-				c := changedCells(old, now)
-				if c.X0 >= c.X1 {
-					continue
-				}
-				f.bits.set(bx, by, now)
-				d.bar[by*f.sums.nx+bx] = true
-				i, j := bx<<blockShift, by<<blockShift
-				ws = append(ws, f.reached(i+c.X0, j+c.Y0, i+c.X1, j+c.Y1))
+	for k := 1; k <= f.lad.reach; k++ {
+		ring := window{place.i0 - k, place.j0 - k, place.i1 + k, place.j1 + k}
+		on := ring.intersect(all)
+		hit := window{all.i1, all.j1, -1, -1}
+		is := func(i, j int, v int32) {
+			dx := max(place.i0-i, i-place.i1+1, 0)
+			dy := max(place.j0-j, j-place.j1+1, 0)
+			if d := dx*dx + dy*dy; d < len(steps) && int64(v)+slack >= int64(steps[d]) {
+				hit = window{min(hit.i0, i), min(hit.j0, j), max(hit.i1, i+1), max(hit.j1, j+1)}
+				most = max(most, v)
 			}
 		}
+		for _, j := range [2]int{ring.j0, ring.j1 - 1} {
+			if j < 0 || j > f.rows {
+				continue
+			}
+			row := row[:on.width()]
+			f.vertexRow(on.i0, j, row)
+			for i, v := range row {
+				is(on.i0+i, j, v)
+			}
+		}
+		for _, i := range [2]int{ring.i0, ring.i1 - 1} {
+			if i < 0 || i > f.cols {
+				continue
+			}
+			for j := max(ring.j0+1, 0); j < min(ring.j1-1, f.rows+1); j++ {
+				is(i, j, f.Vertex(i, j))
+			}
+		}
+		if hit.empty() {
+			break
+		}
+		box = box.union(hit)
 	}
-	return ws
+	// Taking away lets values grow somewhat beyond those about it.
+	return area{box, min(f.lad.reach, int(float64(most)*1.25/f.h)+2)}
 }
 
-// reached is the vertices within the cap of the closed cells i0 <= i < i1, j0 <= j < j1.
-func (f *Field) reached(i0, j0, i1, j1 int) window {
-	r := f.lad.reach
-	return window{i0 - r, j0 - r, i1 + r + 1, j1 + r + 1}.intersect(window{0, 0, f.cols + 1, f.rows + 1})
-}
-
-// changedCells is the smallest rectangle of cells that holds what differs.
-func changedCells(a, b *cellBits) floor.CellRect {
-	var zero cellBits
-	if a == nil {
-		a = &zero
-	}
-	if b == nil {
-		b = &zero
-	}
-	r := floor.CellRect{X0: blockSize, Y0: blockSize}
-	var columns uint64
-	for y := range a {
-		if x := a[y] ^ b[y]; x != 0 {
-			columns |= x
-			r.Y0, r.Y1 = min(r.Y0, y), y+1
-		}
-	}
-	for x := range blockSize {
-		if columns>>x&1 == 1 {
-			r.X0, r.X1 = min(r.X0, x), x+1
-		}
-	}
-	return r
-}
-
-// features takes changed solids out of the index and puts them in, and gives the
-// windows of vertices they reach.
-func (d *dirty) features(changes []floor.FeatureChange) []window {
-	f := d.f
-	var ws []window
-	for _, c := range changes {
-		before, after := c.Before, c.After
-		if before != nil && before.Kind != floor.Solid {
-			before = nil
-		}
-		if after != nil && after.Kind != floor.Solid {
-			after = nil
-		}
-		moved := before == nil || after == nil || !sameShape(&before.Shape, &after.Shape)
-		if before != nil {
-			s := newSolid(before)
-			f.leave(before.Name, s.bounds)
-			if moved {
-				ws = d.solid(s.bounds, ws)
-			}
-		}
-		if after != nil {
-			s := newSolid(after)
-			f.enter(s, false)
-			if moved {
-				ws = d.solid(s.bounds, ws)
-			}
-		}
-	}
-	return ws
-}
-
-// solid marks what a solid of these bounds touches and appends the window it reaches.
-func (d *dirty) solid(bounds geom.Rect, ws []window) []window {
-	f := d.f
-	x0, y0, x1, y1 := f.bucketRange(bounds.Grow(bucketSlack))
-	r := f.bucketReach()
-	for y := max(0, y0-r); y <= min(f.sums.ny-1, y1+r); y++ {
-		for x := max(0, x0-r); x <= min(f.sums.nx-1, x1+r); x++ {
-			at := y*f.sums.nx + x
-			d.up[at] = true
-			if x0 <= x && x <= x1 && y0 <= y && y <= y1 {
-				d.bar[at] = true
-			}
-		}
-	}
-	b := bounds.Grow(float64(f.cap) + bucketSlack)
-	cut := func(v float64, most int) int { return int(max(0, min(v, float64(most)))) }
-	w := window{
-		cut(math.Ceil((b.Min.X-f.ox)/f.h), f.cols+1), cut(math.Ceil((b.Min.Y-f.oy)/f.h), f.rows+1),
-		cut(math.Floor((b.Max.X-f.ox)/f.h)+1, f.cols+1), cut(math.Floor((b.Max.Y-f.oy)/f.h)+1, f.rows+1),
-	}
-	if w.empty() {
-		return ws
-	}
-	return append(ws, w)
-}
-
-// settle derives marked blocks anew, and the pyramid above them.
-func (d *dirty) settle(ctx context.Context, s *scratch) error {
-	f := d.f
-	nx := f.sums.nx
-	for y := range f.sums.ny {
-		if ctx.Err() != nil {
-			return ctx.Err()
-		}
-		for x := range nx {
-			at := y*nx + x
-			if d.bar[at] {
-				if b := f.bar(s, x, y); !sameBits(b, f.barred.at(x, y)) {
-					f.barred.set(x, y, b)
-				}
-			}
-			if d.sum[at] {
-				f.sums.set(x, y, f.summarize(x, y))
-			}
-			d.up[at] = d.up[at] || d.bar[at] || d.sum[at]
-			if d.up[at] {
-				sp := f.blockSpan(x, y)
-				if d.up[at] = sp != f.pyramid[0].at(x, y); d.up[at] {
-					f.pyramid[0].set(x, y, sp)
-				}
-			}
-		}
-	}
-	marks := d.up
-	for k := 1; k < len(f.pyramid); k++ {
-		level := &f.pyramid[k]
-		low := f.pyramid[k-1]
-		next := make([]bool, level.nx*level.ny)
-		for at, m := range marks {
-			if x, y := at%low.nx/2, at/low.nx/2; m && !next[y*level.nx+x] {
-				next[y*level.nx+x] = true
-				level.set(x, y, f.joinSpan(k, x, y))
-			}
-		}
-		marks = next
-	}
-	return nil
-}
-
-// merge joins windows wherever that saves work.
-func merge(ws []window) []window {
+// merge joins areas wherever that saves work.
+func merge(as []area) []area {
 	for again := true; again; {
 		again = false
-		for a := 0; a < len(ws); a++ {
-			for b := a + 1; b < len(ws); b++ {
-				if u := ws[a].union(ws[b]); u.vertices() <= ws[a].vertices()+ws[b].vertices() {
-					ws[a] = u
-					ws = append(ws[:b], ws[b+1:]...)
+		for a := 0; a < len(as); a++ {
+			for b := a + 1; b < len(as); b++ {
+				if u := as[a].union(as[b].window); u.vertices() <= as[a].vertices()+as[b].vertices() {
+					as[a] = area{u, max(as[a].reach, as[b].reach)}
+					as = append(as[:b], as[b+1:]...)
 					again = true
 					b--
 				}
 			}
 		}
 	}
-	return ws
+	return as
 }
 
-// byBlock gives windows of whole vertex blocks that cover ws, in runs along each row
-// of blocks.
-func (f *Field) byBlock(ws []window) []window {
+// byBlock gives areas of whole vertex blocks that cover all within the cap of places, in
+// runs along each row of blocks.
+func (f *Field) byBlock(places []window) []area {
 	nx, ny := f.values.nx, f.values.ny
+	all := window{0, 0, f.cols + 1, f.rows + 1}
 	marks := make([]bool, nx*ny)
-	for _, w := range ws {
+	r := f.lad.reach
+	for _, p := range places {
+		w := window{p.i0 - r, p.j0 - r, p.i1 + r, p.j1 + r}.intersect(all)
 		for y := w.j0 >> blockShift; y<<blockShift < w.j1; y++ {
 			for x := w.i0 >> blockShift; x<<blockShift < w.i1; x++ {
 				marks[y*nx+x] = true
 			}
 		}
 	}
-	all := window{0, 0, f.cols + 1, f.rows + 1}
-	var runs []window
+	var runs []area
 	for y := range ny {
 		for x := 0; x < nx; x++ {
 			if !marks[y*nx+x] {
@@ -266,10 +167,11 @@ func (f *Field) byBlock(ws []window) []window {
 			for x+1 < nx && marks[y*nx+x+1] {
 				x++
 			}
-			runs = append(runs, window{x0 << blockShift, y << blockShift, (x + 1) << blockShift, (y + 1) << blockShift}.intersect(all))
+			w := window{x0 << blockShift, y << blockShift, (x + 1) << blockShift, (y + 1) << blockShift}
+			runs = append(runs, area{w.intersect(all), r})
 		}
 	}
-	if len(runs) > manyWindows {
+	if len(runs) > manyChanges {
 		return runs
 	}
 	return merge(runs)

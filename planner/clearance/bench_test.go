@@ -23,6 +23,10 @@ func benchSettings() floor.Settings {
 // benchHall is a rack hall of 205 m a side: rows of racks 1.2 m deep with 3 m aisles and
 // cross aisles, painted into the raster or kept as rectangles with exact outlines.
 func benchHall(tb testing.TB, vector bool) *floor.Map {
+	return mustMap(tb, benchSettings(), rackEdits(vector)...)
+}
+
+func rackEdits(vector bool) []floor.Edit {
 	var edits []floor.Edit
 	for y := 40; y+24 < benchSide; y += 84 {
 		for x := 60; x+400 < benchSide; x += 460 {
@@ -41,7 +45,7 @@ func benchHall(tb testing.TB, vector bool) *floor.Map {
 			edits = append(edits, floor.Edit{Kind: floor.PutFeature, Feature: &ft})
 		}
 	}
-	return mustMap(tb, benchSettings(), edits...)
+	return edits
 }
 
 // benchClutter has single solid cells strewn at random.
@@ -163,41 +167,80 @@ func textbookRow[T float32 | float64](f, d []T, v []int, z []T) {
 	}
 }
 
-// BenchmarkPatchVsRebuild puts and takes away 1 m² at many places of a hall of 4096x4096
-// cells. rebuild/patch is how many times longer Build takes.
+// BenchmarkPatchVsRebuild puts 1 m² at many places of a floor of 4096x4096 cells and takes
+// it away again, as cells and as outlines. rebuild/patch is how many times longer Build
+// takes, the mean of a few builds among the patches; finding what differs is part of
+// a patch. On the empty floor, where most of what lies within the cap of a patch
+// changes, there is the least to save.
 func BenchmarkPatchVsRebuild(b *testing.B) {
-	for _, vector := range []bool{false, true} {
-		b.Run(map[bool]string{false: "cells", true: "outlines"}[vector], func(b *testing.B) {
-			m := benchHall(b, vector)
-			f := mustBuild(b, m)
-			start := time.Now()
-			mustBuild(b, m)
-			rebuild := time.Since(start)
-			rng := rand.New(rand.NewPCG(7, 3))
-			var maps []*floor.Map
-			for range 16 {
-				x, y := rng.IntN(benchSide-20), rng.IntN(benchSide-20)
-				e := floor.Edit{Kind: floor.PaintRect, Rect: floor.CellRect{X0: x, Y0: y, X1: x + 20, Y1: y + 20}, Fill: floor.Occupied}
-				if vector {
-					at := func(dx, dy int) geom.Point {
-						return geom.Point{X: float64((x+dx)*benchRes + 1234), Y: float64((y+dy)*benchRes + 4321)}
-					}
-					e = floor.Edit{Kind: floor.PutFeature, Feature: &floor.Feature{Name: "spill", Kind: floor.Solid,
-						Shape: floor.NewPolygon([][]geom.Point{{at(0, 0), at(20, 0), at(20, 20), at(0, 20)}}, 0)}}
-				}
-				maps = append(maps, mustApply(b, m, e))
-			}
-			k := 0
+	for _, c := range []struct {
+		name   string
+		racks  bool
+		vector bool
+		capUm  int64
+	}{
+		{"racks/cells/cap-5m", true, false, 5_000_000},
+		{"racks/outlines/cap-5m", true, true, 5_000_000},
+		{"racks/cells/cap-2m", true, false, 2_000_000},
+		{"racks/outlines/cap-2m", true, true, 2_000_000},
+		{"empty/cells/cap-5m", false, false, 5_000_000},
+		{"empty/outlines/cap-5m", false, true, 5_000_000},
+	} {
+		// Floors are made once a case, not once a trial of its length.
+		m := benchFloor(b, c.racks, c.vector, c.capUm)
+		var maps []*floor.Map
+		rng := rand.New(rand.NewPCG(7, 3))
+		for range 64 {
+			maps = append(maps, mustApply(b, m, squareMetre(rng, c.vector)))
+		}
+		f := mustBuild(b, m)
+		b.Run(c.name, func(b *testing.B) {
+			var put, take, rebuild time.Duration
+			k, builds := 0, 0
 			for b.Loop() {
+				if k%256 == 0 {
+					start := time.Now()
+					mustBuild(b, m)
+					rebuild += time.Since(start)
+					builds++
+				}
+				start := time.Now()
 				g := mustAdvance(b, f, maps[k%len(maps)])
+				half := time.Now()
 				mustAdvance(b, g, m)
+				put += half.Sub(start)
+				take += time.Since(half)
 				k++
 			}
-			per := b.Elapsed() / time.Duration(2*b.N)
-			b.ReportMetric(float64(per.Microseconds()), "µs/patch")
-			b.ReportMetric(float64(rebuild)/float64(per), "rebuild/patch")
+			per := float64(rebuild) / float64(builds) * float64(k)
+			b.ReportMetric(float64((put+take).Nanoseconds())/float64(2*k)/1e3, "µs/patch")
+			b.ReportMetric(2*per/float64(put+take), "rebuild/patch")
+			b.ReportMetric(per/float64(put), "rebuild/put")
+			b.ReportMetric(per/float64(take), "rebuild/take")
+			b.ReportMetric(0, "ns/op") // a build now and then is part of it
 		})
 	}
+}
+
+func benchFloor(tb testing.TB, racks, vector bool, capUm int64) *floor.Map {
+	s := benchSettings()
+	s.CapUm = capUm
+	if !racks {
+		return mustMap(tb, s)
+	}
+	return mustMap(tb, s, rackEdits(vector)...)
+}
+
+func squareMetre(rng *rand.Rand, vector bool) floor.Edit {
+	x, y := rng.IntN(benchSide-20), rng.IntN(benchSide-20)
+	if !vector {
+		return floor.Edit{Kind: floor.PaintRect, Rect: floor.CellRect{X0: x, Y0: y, X1: x + 20, Y1: y + 20}, Fill: floor.Occupied}
+	}
+	at := func(dx, dy int) geom.Point {
+		return geom.Point{X: float64((x+dx)*benchRes + 1234), Y: float64((y+dy)*benchRes + 4321)}
+	}
+	return floor.Edit{Kind: floor.PutFeature, Feature: &floor.Feature{Name: "spill", Kind: floor.Solid,
+		Shape: floor.NewPolygon([][]geom.Point{{at(0, 0), at(20, 0), at(20, 20), at(0, 20)}}, 0)}}
 }
 
 // BenchmarkQueries times single questions along the aisles of the hall, outlines exact.

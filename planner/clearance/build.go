@@ -2,6 +2,7 @@ package clearance
 
 import (
 	"context"
+	"slices"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/planner/internal/parallel"
@@ -52,7 +53,7 @@ func Build(ctx context.Context, m *floor.Map) (*Field, error) {
 	}
 	tiles := window{0, 0, f.cols + 1, f.rows + 1}.tiles()
 	if err := f.shareOut(ctx, len(tiles), func(s *scratch, k int) error {
-		return f.compute(ctx, s, tiles[k], nil)
+		return f.compute(ctx, s, tiles[k], f.lad.reach, nil)
 	}); err != nil {
 		return nil, err
 	}
@@ -158,31 +159,55 @@ func (w window) tiles() []window {
 	return ts
 }
 
-// compute works out the values of w, which lies within one tile, and keeps those that
-// are new. changed, when not nil, is told which vertex blocks got other values.
-func (f *Field) compute(ctx context.Context, s *scratch, w window, changed func(bx, by int)) error {
-	s.out = grow(s.out, w.vertices())
-	if err := s.raster.raster(ctx, f, w, s.out); err != nil {
-		return err
-	}
-	if err := s.vector.apply(ctx, f, w, s.out); err != nil {
+// compute works out the values of w and keeps those that are new. changed, when not
+// nil, is told where other values than before may be.
+func (f *Field) compute(ctx context.Context, s *scratch, w window, reach int, changed func(sub window)) error {
+	if err := f.evaluate(ctx, s, w, reach); err != nil {
 		return err
 	}
 	for by := w.j0 >> blockShift; by<<blockShift < w.j1; by++ {
 		for bx := w.i0 >> blockShift; bx<<blockShift < w.i1; bx++ {
 			if f.keep(w, s.out, bx, by) && changed != nil {
-				changed(bx, by)
+				changed(w.intersect(blockWindow(bx, by)))
 			}
 		}
 	}
 	return nil
 }
 
+// evaluate writes the values of w, which lies within one tile, to s.out. reach is a
+// guess, in cells, of how large they get: it saves work and changes no value.
+func (f *Field) evaluate(ctx context.Context, s *scratch, w window, reach int) error {
+	s.out = grow(s.out, w.vertices())
+	for {
+		s.raster.lad.reach, s.vector.limit = reach, float64(f.cap)
+		if reach < f.lad.reach {
+			s.vector.limit = float64(reach) * f.h
+		}
+		if err := s.raster.raster(ctx, f, w, s.out); err != nil {
+			return err
+		}
+		if err := s.vector.apply(ctx, f, w, s.out); err != nil {
+			return err
+		}
+		// What is no farther than was looked is exact.
+		if reach >= f.lad.reach || float64(slices.Max(s.out)) <= s.vector.limit {
+			return nil
+		}
+		reach = min(2*reach+1, f.lad.reach)
+	}
+}
+
+// blockWindow is the vertices of vertex block (bx, by).
+func blockWindow(bx, by int) window {
+	return window{bx << blockShift, by << blockShift, (bx + 1) << blockShift, (by + 1) << blockShift}
+}
+
 // keep stores the part of w's values that belongs to vertex block (bx, by) and says
 // whether anything differs from before. Blocks that are 0 or the cap throughout
 // are shared ones.
 func (f *Field) keep(w window, out []int32, bx, by int) bool {
-	block := window{bx << blockShift, by << blockShift, (bx + 1) << blockShift, (by + 1) << blockShift}
+	block := blockWindow(bx, by)
 	whole := block.intersect(window{0, 0, f.cols + 1, f.rows + 1})
 	sub := block.intersect(w)
 	old := f.values.at(bx, by)

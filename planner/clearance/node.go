@@ -6,28 +6,6 @@ import (
 	"example.com/wideberth/mapstore/floor"
 )
 
-// lowestKept is the lowest level kept in a summary: squares of 8x8 cells. Below it,
-// smallest and largest are read from the vertices.
-const (
-	lowestKept = 3
-	keptNodes  = 64 + 16 + 4 + 1
-)
-
-// summary holds the smallest and largest value over the closed squares of 8, 16, 32
-// and 64 cells of one block, level by level, row by row. Squares beyond the floor
-// hold an empty range.
-type summary struct{ lo, hi [keptNodes]int32 }
-
-// levelStart is where the squares of 2^level cells start in a summary.
-func levelStart(level int) int { return [...]int{0, 64, 80, 84}[level-lowestKept] }
-
-func uniformSummary(v int32) *summary {
-	s := new(summary)
-	fill(s.lo[:], v)
-	fill(s.hi[:], v)
-	return s
-}
-
 // span is a node above the blocks: smallest and largest value, and whether some and
 // whether all of its cells are barred at clearance 0.
 type span struct {
@@ -40,80 +18,6 @@ var emptySpan = span{lo: math.MaxInt32, hi: -1, all: true}
 
 func (s span) with(o span) span {
 	return span{min(s.lo, o.lo), max(s.hi, o.hi), s.any || o.any, s.all && o.all, s.near || o.near}
-}
-
-// summarize works out the summary of cell block (bx, by) from the vertices.
-func (f *Field) summarize(bx, by int) *summary {
-	if s := f.sharedSummary(bx, by); s != nil {
-		return s
-	}
-	s := new(summary)
-	fill(s.lo[:], math.MaxInt32)
-	fill(s.hi[:], -1)
-	i1, j1 := min(f.cols-bx<<blockShift, blockSize), min(f.rows-by<<blockShift, blockSize)
-	var row [blockSize + 1]int32
-	for j := 0; j <= j1; j++ {
-		f.vertexRow(bx<<blockShift, by<<blockShift+j, row[:i1+1])
-		for g := 0; g<<lowestKept < i1; g++ {
-			lo, hi := int32(math.MaxInt32), int32(-1)
-			for _, v := range row[g<<lowestKept : min(g<<lowestKept+9, i1+1)] {
-				lo, hi = min(lo, v), max(hi, v)
-			}
-			if j < j1 {
-				at := j>>lowestKept<<3 | g
-				s.lo[at], s.hi[at] = min(s.lo[at], lo), max(s.hi[at], hi)
-			}
-			if j&7 == 0 && j > 0 {
-				at := (j>>lowestKept-1)<<3 | g
-				s.lo[at], s.hi[at] = min(s.lo[at], lo), max(s.hi[at], hi)
-			} else if j == j1 {
-				at := j>>lowestKept<<3 | g
-				s.lo[at], s.hi[at] = min(s.lo[at], lo), max(s.hi[at], hi)
-			}
-		}
-	}
-	for level := lowestKept + 1; level <= blockShift; level++ {
-		n := blockSize >> level
-		from, to := levelStart(level-1), levelStart(level)
-		for y := range n {
-			for x := range n {
-				a := from + (2*y)*(2*n) + 2*x
-				b := a + 2*n
-				s.lo[to+y*n+x] = min(s.lo[a], s.lo[a+1], s.lo[b], s.lo[b+1])
-				s.hi[to+y*n+x] = max(s.hi[a], s.hi[a+1], s.hi[b], s.hi[b+1])
-			}
-		}
-	}
-	return s
-}
-
-// sharedSummary is the summary of a whole block that is uniform, else nil.
-func (f *Field) sharedSummary(bx, by int) *summary {
-	if (bx+1)<<blockShift > f.cols || (by+1)<<blockShift > f.rows {
-		return nil
-	}
-	a := f.values.at(bx, by)
-	if a != zeroBlock && a != f.capBlock {
-		return nil
-	}
-	if f.values.at(bx+1, by) != a || f.values.at(bx, by+1) != a || f.values.at(bx+1, by+1) != a {
-		return nil
-	}
-	if a == zeroBlock {
-		return f.allClose
-	}
-	return f.allCap
-}
-
-// vertexRow copies the values from vertex (i, j) to the right into dst.
-func (f *Field) vertexRow(i, j int, dst []int32) {
-	blocks := f.values.rows[j>>blockShift]
-	base := (j & blockMask) << blockShift
-	for len(dst) > 0 {
-		n := copy(dst, blocks[i>>blockShift][base+i&blockMask:base+blockSize])
-		dst = dst[n:]
-		i += n
-	}
 }
 
 // blockSpan is the pyramid's entry for cell block (bx, by).

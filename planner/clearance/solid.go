@@ -200,6 +200,12 @@ func byName(e entry, name string) int {
 	return 0
 }
 
+// holds says whether the solid of that name is in the bucket.
+func (b bucket) holds(name string) bool {
+	_, found := slices.BinarySearchFunc(b, name, byName)
+	return found
+}
+
 // leave takes the solid of that name out of the buckets that bounds meet.
 func (f *Field) leave(name string, bounds geom.Rect) {
 	x0, y0, x1, y1 := f.bucketRange(bounds.Grow(bucketSlack))

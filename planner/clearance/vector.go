@@ -18,6 +18,7 @@ type candidate struct {
 // vectorizer lowers a window's values to the distances of vector solids. It holds scratch
 // space only.
 type vectorizer struct {
+	limit float64 // in micrometres; larger distances need not be right, but stay larger
 	seen  map[*solid][]uint64
 	order []*solid
 	stack []candidate
@@ -56,14 +57,14 @@ func (v *vectorizer) apply(ctx context.Context, f *Field, w window, out []int32)
 	return nil
 }
 
-// gather collects the solids and pieces within the cap of w, each once.
+// gather collects the solids and pieces within the limit of w, each once.
 func (v *vectorizer) gather(f *Field, w window) {
 	v.order, v.stack = v.order[:0], v.stack[:0]
 	if v.seen == nil {
 		v.seen = make(map[*solid][]uint64)
 	}
 	clear(v.seen)
-	x0, y0, x1, y1 := f.bucketRange(f.vertexRect(w).Grow(float64(f.cap) + bucketSlack))
+	x0, y0, x1, y1 := f.bucketRange(f.vertexRect(w).Grow(v.limit + bucketSlack))
 	for y := y0; y <= y1; y++ {
 		for x := x0; x <= x1; x++ {
 			for _, e := range f.buckets.at(x, y) {
@@ -127,7 +128,7 @@ func (v *vectorizer) square(f *Field, w, sub window, out []int32, from, to int) 
 		Y: f.oy + float64(sub.j0+sub.j1-1)*f.h/2,
 	}
 	rad := math.Hypot(float64(sub.width()-1), float64(sub.height()-1))*f.h/2 + pruneSlack
-	limit := float64(most)
+	limit := min(float64(most), v.limit)
 	base := len(v.stack)
 	for k := from; k < to; k++ {
 		c := v.stack[k]
