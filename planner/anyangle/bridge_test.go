@@ -54,7 +54,7 @@ func TestFilledNotchesChangeNoWay(t *testing.T) {
 				filled++
 			}
 		}
-		var s search
+		s := search{most: math.Inf(1)}
 		for range 8 {
 			a, b := randomPoint(rng, f.Bounds()), randomPoint(rng, f.Bounds())
 			if !g.lean.Contains(a) || !g.lean.Contains(b) {

@@ -44,6 +44,7 @@ type cut struct {
 	links   []link
 	comps   int32
 	contact [5][]contact // by side; inside is not used
+	rounds  []round      // corners of vector obstacles that ways may bend about; none in a lean mesh's own cuts
 }
 
 func (c *cut) rowsOf(i int32) []row {

@@ -26,10 +26,14 @@
 // them are left out of a second, lean mesh, which is searched when both ends lie in
 // it: no shortest way between such ends enters a notch.
 //
+// A way bends at corners of chords. Taut solves its bends again with common tangents and
+// arcs, which gives the exact length, and draws it as a polyline outside the arcs.
+//
 // A block's cells depend on the solids near it alone. Advance makes the mesh of the next
 // version from the last by cutting the blocks within reach of the change again
 // and sharing the others.
 //
 // Read mesh.go first, then cut.go and slab.go for the cells, join.go for portals,
-// search.go and look.go for the search, bridge.go for the lean mesh.
+// search.go and look.go for the search, bridge.go for the lean mesh, taut.go and corner.go
+// for the bends.
 package anyangle

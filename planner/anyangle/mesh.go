@@ -163,7 +163,7 @@ func (g *Mesh) blocksOf(r geom.Rect, d float64) (x0, y0, x1, y1 int, ok bool) {
 // fill cuts the blocks listed in fresh, takes the others from cuts (and leanCuts), and
 // joins those listed in joins; g.blocks and g.lean.blocks hold the rest already.
 func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []int) error {
-	near := g.pieces(fresh)
+	near, rounds := g.pieces(fresh)
 	thin := g.need.ClearanceUm > 0
 	err := parallel.Each(ctx, 0, len(fresh), func() func(int) {
 		z := newRasterizer(g.need.ClearanceUm, g.m.Settings().ResolutionUm)
@@ -180,6 +180,7 @@ func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []i
 			}
 			fills := z.fills(all, w, h)
 			cuts[i] = c.cut(w, h, all, thin)
+			cuts[i].rounds = rounds[i]
 			leanCuts[i] = cuts[i]
 			if len(fills) > 0 {
 				for k := range fills {
@@ -212,20 +213,21 @@ func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []i
 	return nil
 }
 
-// pieces are the vector obstacles near each of the blocks listed, from the floor's
-// lower left corner.
-func (g *Mesh) pieces(blocks []int) map[int][]*piece {
+// pieces are the vector obstacles near each of the blocks listed, and their corners, from the
+// floor's lower left corner.
+func (g *Mesh) pieces(blocks []int) (near map[int][]*piece, rounds map[int][]round) {
 	wanted := make(map[int]bool, len(blocks))
 	for _, i := range blocks {
 		wanted[i] = true
 	}
-	near := make(map[int][]*piece)
+	near, rounds = make(map[int][]*piece), make(map[int][]round)
 	for f := range g.m.Features() {
 		x0, y0, x1, y1, ok := g.reachOf(f)
 		if !ok || !g.anyWanted(wanted, x0, y0, x1, y1) {
 			continue
 		}
 		grow, _ := g.need.growth(f.Kind)
+		g.rounds(f, grow, rounds, wanted)
 		shape := shapePieces(f.Shape, grow, g.o)
 		for k := range shape {
 			p := &shape[k]
@@ -244,7 +246,7 @@ func (g *Mesh) pieces(blocks []int) map[int][]*piece {
 			}
 		}
 	}
-	return near
+	return near, rounds
 }
 
 func (g *Mesh) anyWanted(wanted map[int]bool, x0, y0, x1, y1 int) bool {
