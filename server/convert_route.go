@@ -177,6 +177,8 @@ func routeOut(r *planner.Route, v mapstore.VersionInfo, b planner.Body, o *pb.Pl
 			WidthBiasM:      wire.Metres(r.Bound.WidthBiasUm),
 			ClearanceShortM: wire.Metres(r.Bound.ClearanceShortUm),
 			OptimumWithinM:  wire.Metres(r.Bound.OptimumWithinUm),
+			CutShort:        r.Bound.CutShort,
+			GapShare:        r.Bound.GapShare,
 		},
 		ValidForS: validForS,
 	}
@@ -202,7 +204,7 @@ func refusalOut(r *planner.Refusal, retryS float64) *pb.Refusal {
 	case planner.NoPassage:
 		out.Explanation = bottleneckText(r.Bottleneck)
 	case planner.OutOfTime:
-		out.Explanation = "the time budget ran out before the search ended"
+		out.Explanation = "the time budget ran out before any route was found"
 		out.RetryAfterS = retryS
 	}
 	if b := r.Blocked; b != nil {

@@ -40,6 +40,7 @@ var (
 	preferences = twins[planner.Preference, pb.Preference]{
 		{planner.Balanced, pb.Preference_PREFERENCE_BALANCED},
 		{planner.Shortest, pb.Preference_PREFERENCE_SHORTEST},
+		{planner.Clearest, pb.Preference_PREFERENCE_CLEAREST},
 	}
 	roadmaps = twins[planner.Roadmap, pb.Roadmap]{
 		{planner.Auto, pb.Roadmap_ROADMAP_UNSPECIFIED},

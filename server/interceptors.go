@@ -133,11 +133,11 @@ func (s *Server) bound(m any) time.Duration {
 	d := s.cfg.CallTimeout
 	switch r := m.(type) {
 	case *pb.PlanRequest:
-		d = prepareGrace + s.cfg.PlanWait + s.budget(r.Options)
+		d = prepareGrace + s.cfg.PlanWait + s.budget(r.Options).Duration
 	case *pb.ReplanRequest:
-		d = prepareGrace + s.cfg.PlanWait + s.budget(r.Previous.GetOptions())
+		d = prepareGrace + s.cfg.PlanWait + s.budget(r.Previous.GetOptions()).Duration
 		if r.Options != nil {
-			d = prepareGrace + s.cfg.PlanWait + s.budget(r.Options)
+			d = prepareGrace + s.cfg.PlanWait + s.budget(r.Options).Duration
 		}
 	}
 	if r, ok := m.(interface{ GetVersion() *pb.VersionSelector }); ok {

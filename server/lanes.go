@@ -2,8 +2,11 @@ package server
 
 import (
 	"context"
+	"errors"
 	"sync/atomic"
 	"time"
+
+	"example.com/wideberth/planner"
 )
 
 // maxManyCalls is how many PlanMany calls may be under way at once, on all
@@ -73,8 +76,10 @@ func (l *lanes) enter(ctx context.Context) (leave func(), err error) {
 	defer l.waiting.Add(-1)
 	wait := l.wait
 	if end, ok := ctx.Deadline(); ok {
-		// Half of what is left to the caller is for the search.
-		wait = min(wait, time.Until(end)/2)
+		// Half of what is left, to the caller or of the time budget, is for the search.
+		if wait = min(wait, time.Until(end)/2); wait <= 0 {
+			return nil, errOverloaded
+		}
 	}
 	timer := time.NewTimer(wait)
 	defer timer.Stop()
@@ -84,6 +89,9 @@ func (l *lanes) enter(ctx context.Context) (leave func(), err error) {
 	case <-timer.C:
 		return nil, errOverloaded
 	case <-ctx.Done():
+		if errors.Is(context.Cause(ctx), planner.ErrTimeBudget) {
+			return nil, errOverloaded
+		}
 		return nil, ctx.Err()
 	}
 }

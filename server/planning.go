@@ -15,26 +15,56 @@ const (
 	// prepareGrace is how long a plan waits for its version to be made ready,
 	// beside what the search itself may take.
 	prepareGrace = 5 * time.Second
-	// answerShare is the share of the caller's remaining time that is kept back for
-	// the answer, so that "out of time" arrives before the caller's own deadline.
+	// answerShare is the part of a time budget, and of the caller's remaining time, that
+	// is kept back for describing and sending the answer, so that it arrives in time.
 	answerShare = 10
 	// retryOutOfTime is a refusal's retry_after_s when the time budget ran out: the
 	// search itself would do the same again, the machine may be less busy.
 	retryOutOfTime = time.Second
 )
 
-// budget is how long a request lets the search take.
-func (s *Server) budget(o *pb.PlanOptions) time.Duration {
-	if b := o.GetTimeBudgetS(); b > 0 {
-		return seconds(b)
-	}
-	return s.cfg.PlanTimeout
+// budget is how long a plan may take.
+type budget struct {
+	time.Duration
+	// asked is whether the request names it: it is for the whole answer then, and
+	// for the search alone where it is the server's own.
+	asked bool
 }
 
-// search makes a version ready, takes a lane and runs one search in it within its
-// budget.
-func (s *Server) search(ctx context.Context, snap *mapstore.Snapshot, budget time.Duration, run func(context.Context, *planner.World) error) error {
+// budget is how long a request lets its plan take.
+func (s *Server) budget(o *pb.PlanOptions) budget {
+	if b := o.GetTimeBudgetS(); b > 0 {
+		return budget{seconds(b), true}
+	}
+	return budget{Duration: s.cfg.PlanTimeout}
+}
+
+// timed ends ctx for that cause after d, and before the caller's deadline: some of
+// what is left to it is kept back for the answer.
+func timed(ctx context.Context, d time.Duration, cause error) (context.Context, context.CancelFunc) {
+	if end, ok := ctx.Deadline(); ok {
+		d = min(d, beforeAnswer(time.Until(end)))
+	}
+	return context.WithTimeoutCause(ctx, d, cause)
+}
+
+// beforeAnswer is what is left of d for all but describing and sending the answer.
+func beforeAnswer(d time.Duration) time.Duration { return d - d/answerShare }
+
+// search makes a version ready, takes a lane and runs one search in it, within the
+// budget. When a budget that was asked for runs out before the version is ready, the
+// answer is the refusal that a search out of time would have given.
+func (s *Server) search(ctx context.Context, snap *mapstore.Snapshot, b budget, answer *planner.Answer, run func(context.Context, *planner.World) error) error {
+	if b.asked {
+		var cancel context.CancelFunc
+		ctx, cancel = timed(ctx, beforeAnswer(b.Duration), planner.ErrTimeBudget)
+		defer cancel()
+	}
 	world, err := s.world(ctx, snap)
+	if b.asked && errors.Is(err, errPreparing) {
+		*answer = planner.Answer{Refusal: &planner.Refusal{Reason: planner.OutOfTime}}
+		return nil
+	}
 	if err != nil {
 		return err
 	}
@@ -43,22 +73,21 @@ func (s *Server) search(ctx context.Context, snap *mapstore.Snapshot, budget tim
 		return err
 	}
 	defer leave()
-	if end, ok := ctx.Deadline(); ok {
-		left := time.Until(end)
-		budget = min(budget, left-left/answerShare)
+	if !b.asked {
+		var cancel context.CancelFunc
+		ctx, cancel = timed(ctx, b.Duration, planner.ErrTimeBudget)
+		defer cancel()
 	}
-	ctx, cancel := context.WithTimeoutCause(ctx, budget, planner.ErrTimeBudget)
-	defer cancel()
 	return run(ctx, world)
 }
 
 // world is a version's world. The error is errPreparing when it takes too long.
 func (s *Server) world(ctx context.Context, snap *mapstore.Snapshot) (*planner.World, error) {
 	s.worlds.follow(snap.Info.Floor)
-	wait, cancel := context.WithTimeoutCause(ctx, prepareGrace, errPreparing)
+	wait, cancel := timed(ctx, prepareGrace, errPreparing)
 	defer cancel()
 	world, err := s.worlds.get(wait, snap)
-	if err != nil && errors.Is(context.Cause(wait), errPreparing) {
+	if cause := context.Cause(wait); err != nil && (errors.Is(cause, errPreparing) || errors.Is(cause, planner.ErrTimeBudget)) {
 		return nil, errPreparing
 	}
 	return world, err

@@ -101,13 +101,9 @@ func (c *manyCall) run(ctx context.Context, world *planner.World, budget time.Du
 	}}}); err != nil {
 		return err
 	}
-	if end, ok := ctx.Deadline(); ok {
-		left := time.Until(end)
-		budget = min(budget, left-left/answerShare)
-	}
-	within, cancel := context.WithTimeoutCause(ctx, budget, planner.ErrTimeBudget)
+	inTime, cancel := timed(ctx, budget, planner.ErrTimeBudget)
 	defer cancel()
-	err := world.PlanMany(within, c.many, planner.ManyRun{
+	err := world.PlanMany(inTime, c.many, planner.ManyRun{
 		Workers: cap(c.s.lanes.turns),
 		Enter:   c.enter,
 		Emit:    func(a planner.PairAnswer) error { return c.emit(ctx, a) },
@@ -124,7 +120,7 @@ func (c *manyCall) enter(ctx context.Context) (context.Context, func(), error) {
 	if err != nil {
 		return nil, nil, err
 	}
-	ctx, cancel := context.WithTimeoutCause(ctx, c.one.budget, planner.ErrTimeBudget)
+	ctx, cancel := context.WithTimeoutCause(ctx, c.one.budget.Duration, planner.ErrTimeBudget)
 	return ctx, func() { cancel(); leave() }, nil
 }
 

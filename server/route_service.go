@@ -2,7 +2,6 @@ package server
 
 import (
 	"context"
-	"time"
 
 	"example.com/wideberth/mapstore"
 	"example.com/wideberth/mapstore/floor"
@@ -21,7 +20,7 @@ type routeService struct {
 // beside it.
 type asked struct {
 	planner.Request
-	budget  time.Duration
+	budget  budget
 	options *pb.PlanOptions // with defaults filled in
 }
 
@@ -57,7 +56,7 @@ func (v routeService) Plan(ctx context.Context, r *pb.PlanRequest) (*pb.PlanResp
 	}
 	var answer planner.Answer
 	session := newSession(q.Options)
-	err = v.s.search(ctx, snap, q.budget, func(ctx context.Context, w *planner.World) (err error) {
+	err = v.s.search(ctx, snap, q.budget, &answer, func(ctx context.Context, w *planner.World) (err error) {
 		answer, err = w.PlanIn(ctx, session, q.Request)
 		return err
 	})
@@ -102,7 +101,7 @@ func (v routeService) Replan(ctx context.Context, r *pb.ReplanRequest) (*pb.Repl
 	var answer planner.ReplanAnswer
 	driven := r.Previous.RouteId
 	session := v.s.kept.take(driven, q.Options)
-	err = v.s.search(ctx, snap, q.budget, func(ctx context.Context, w *planner.World) (err error) {
+	err = v.s.search(ctx, snap, q.budget, &answer.Answer, func(ctx context.Context, w *planner.World) (err error) {
 		answer, err = w.ReplanIn(ctx, session, request)
 		return err
 	})

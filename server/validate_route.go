@@ -81,6 +81,7 @@ func checkOptions(o *pb.PlanOptions, p *field, f *faults) {
 	}
 	enum(f, p.at("preference"), o.Preference, pb.Preference_name, true)
 	enum(f, p.at("roadmap"), o.Roadmap, pb.Roadmap_name, true)
+	checkMeeting(o, p, f)
 	f.number(p.at("tight_weight"), o.TightWeight, 0, 100)
 	f.number(p.at("tight_below_m"), o.TightBelowM, 0, maxCapM)
 	if o.TimeBudgetS != 0 {
@@ -88,6 +89,20 @@ func checkOptions(o *pb.PlanOptions, p *field, f *faults) {
 	}
 	if o.MaxSpacingM != 0 {
 		f.number(p.at("max_spacing_m"), o.MaxSpacingM, 0.05, maxCoordinateM)
+	}
+}
+
+// checkMeeting checks that the options go together.
+func checkMeeting(o *pb.PlanOptions, p *field, f *faults) {
+	clearest := o.Preference == pb.Preference_PREFERENCE_CLEAREST
+	switch {
+	case clearest && o.Roadmap != pb.Roadmap_ROADMAP_UNSPECIFIED:
+		f.add(p.at("roadmap"), "%s, wanted none with PREFERENCE_CLEAREST", o.Roadmap)
+	case o.Roadmap == pb.Roadmap_ROADMAP_CONVEX_CELLS && o.Preference != pb.Preference_PREFERENCE_SHORTEST:
+		f.add(p.at("roadmap"), "%s, wanted another or none unless with PREFERENCE_SHORTEST", o.Roadmap)
+	}
+	if clearest && o.KeepRoadmapPath {
+		f.add(p.at("keep_roadmap_path"), "true, wanted false with PREFERENCE_CLEAREST")
 	}
 }
 

@@ -189,7 +189,16 @@ func TestBadInputNamesTheField(t *testing.T) {
 		{"no start", edited(plan(), func(r *pb.PlanRequest) { r.Start = nil }), "start", "wanted a pose or a station"},
 		{"start infinite", edited(plan(), func(r *pb.PlanRequest) { r.Start = atPose(inf, 1) }), "start.pose.x_m", "+Inf"},
 		{"station name", edited(plan(), func(r *pb.PlanRequest) { r.Goal = atStation("Dock 4") }), "goal.station", `"Dock 4", wanted`},
-		{"unknown preference", edited(plan(), func(r *pb.PlanRequest) { r.Options = &pb.PlanOptions{Preference: 7} }), "options.preference", "7, wanted one of the values 0 to 2"},
+		{"unknown preference", edited(plan(), func(r *pb.PlanRequest) { r.Options = &pb.PlanOptions{Preference: 7} }), "options.preference", "7, wanted one of the values 0 to 3"},
+		{"clearest over a grid", edited(plan(), func(r *pb.PlanRequest) {
+			r.Options = &pb.PlanOptions{Preference: pb.Preference_PREFERENCE_CLEAREST, Roadmap: pb.Roadmap_ROADMAP_GRID8}
+		}), "options.roadmap", "ROADMAP_GRID8, wanted none with PREFERENCE_CLEAREST"},
+		{"clearest from cell to cell", edited(plan(), func(r *pb.PlanRequest) {
+			r.Options = &pb.PlanOptions{Preference: pb.Preference_PREFERENCE_CLEAREST, KeepRoadmapPath: true}
+		}), "options.keep_roadmap_path", "true, wanted false"},
+		{"many balanced over convex cells", edited(planMany(), func(r *pb.PlanManyRequest) {
+			r.Options = &pb.PlanOptions{Roadmap: pb.Roadmap_ROADMAP_CONVEX_CELLS}
+		}), "options.roadmap", "ROADMAP_CONVEX_CELLS, wanted"},
 		{"unknown roadmap", edited(plan(), func(r *pb.PlanRequest) { r.Options = &pb.PlanOptions{Roadmap: -1} }), "options.roadmap", "-1"},
 		{"weight", edited(plan(), func(r *pb.PlanRequest) { r.Options = &pb.PlanOptions{TightWeight: 101} }), "options.tight_weight", "101, wanted 0 to 100"},
 		{"budget", edited(plan(), func(r *pb.PlanRequest) { r.Options = &pb.PlanOptions{TimeBudgetS: 31} }), "options.time_budget_s", "31, wanted 0.001 to 30"},

@@ -266,7 +266,9 @@ func TestTimeBudget(t *testing.T) {
 		}
 		edits = append(edits, put(solidPolygon("wall-"+string(rune('a'+i)), polygon(x, lo, x+0.1, lo, x+0.1, hi, x, hi))))
 	}
-	r.push(edits...)
+	if _, err := r.s.worlds.get(r.ctx(), r.snap(r.push(edits...).Version)); err != nil {
+		t.Fatal(err)
+	}
 	q := plan()
 	q.Goal = atPose(98, 50)
 	q.Options = &pb.PlanOptions{Roadmap: pb.Roadmap_ROADMAP_GRID8, TimeBudgetS: 0.001}
@@ -279,16 +281,24 @@ func TestTimeBudget(t *testing.T) {
 	}
 	q.Options.TimeBudgetS = 30
 	ctx, cancel := context.WithCancel(r.ctx())
-	time.AfterFunc(5*time.Millisecond, cancel)
-	if _, err := r.routes.Plan(ctx, q); err == nil {
+	defer cancel()
+	ended := make(chan error, 1)
+	go func() {
+		_, err := r.routes.Plan(ctx, q)
+		ended <- err
+	}()
+	plans := func() int { return strings.Count(r.log.String(), `"grpc.method":"Plan"`) }
+	for len(r.s.lanes.slots) == 0 && plans() < 2 {
+		time.Sleep(100 * time.Microsecond) // until the search is under way
+	}
+	cancel()
+	if err := <-ended; err == nil {
 		t.Log("the plan was quicker than its caller")
 	} else {
-		for !strings.Contains(r.log.String(), `"grpc.code":"Canceled"`) {
-			time.Sleep(time.Millisecond) // the server noticed
-		}
+		wantStatus(t, err, codes.Canceled, "")
 	}
-	for len(r.s.lanes.slots) > 0 {
-		time.Sleep(time.Millisecond) // and freed its planner
+	for plans() < 2 || len(r.s.lanes.slots) > 0 {
+		time.Sleep(time.Millisecond) // the server noticed and freed its planner
 	}
 	_, err = r.routes.Plan(r.ctx(), edited(q, func(q *pb.PlanRequest) { q.Version = pinned(9) }))
 	wantStatus(t, err, codes.NotFound, "VERSION_NOT_FOUND")

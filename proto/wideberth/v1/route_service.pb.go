@@ -30,11 +30,14 @@ const (
 	// As short as the required clearance allows.
 	Preference_PREFERENCE_SHORTEST Preference = 1
 	// The wide berth where the floor allows it, the middle of the passage where it
-	// does not: metres below the preferred clearance cost more, the more the less
-	// clearance they have (see PlanOptions.tight_weight).
+	// does not: a metre with less than the preferred clearance costs 1 + tight_weight,
+	// any other 1, and metres of the first kind are driven in the middle, equally far
+	// from what is on either side. An end with less than the preferred clearance is
+	// left straight away from its nearest solid.
 	Preference_PREFERENCE_BALANCED Preference = 2
 	// As far from everything as the floor allows: the largest smallest clearance
-	// there is, up to the floor's cap, and among those ways the shortest.
+	// there is, up to the floor's cap, and among those ways the shortest along the
+	// middles. What the ends themselves leave is not counted.
 	Preference_PREFERENCE_CLEAREST Preference = 3
 )
 
@@ -85,9 +88,16 @@ func (Preference) EnumDescriptor() ([]byte, []int) {
 type Roadmap int32
 
 const (
-	// Not said: the server chooses.
+	// Not said: what the preference is defined by. Shortest: convex cells, as
+	// ROADMAP_CONVEX_CELLS. Balanced and clearest: ways in any direction where there is
+	// the preferred clearance (for clearest, the floor's cap), joined by the Voronoi
+	// edges, which are as far from one solid as from another. With
+	// keep_roadmap_path, and where a route of these would go against a one-way
+	// zone: ROADMAP_GRID8, and the bound says so.
 	Roadmap_ROADMAP_UNSPECIFIED Roadmap = 0
-	// Cells wholly clear, moves to the 4 neighbours.
+	// Cells wholly clear, moves to the 4 neighbours. Here, as in the two below,
+	// balanced takes a cell for below the preferred clearance as a whole, and
+	// PREFERENCE_CLEAREST is INVALID_ARGUMENT.
 	Roadmap_ROADMAP_GRID4 Roadmap = 1
 	// Cells wholly clear, moves to the 8 neighbours, no cutting of corners.
 	Roadmap_ROADMAP_GRID8 Roadmap = 2
@@ -95,8 +105,7 @@ const (
 	Roadmap_ROADMAP_QUADTREE Roadmap = 3
 	// Convex cells of the space that is clear, crossed in any direction: the optimum
 	// over all directions (BOUND_KIND_ANY_ANGLE_OPTIMUM). For PREFERENCE_SHORTEST
-	// alone, and what the server chooses for it; there is no path of the roadmap's
-	// own to keep. Where that optimum goes against a one-way zone, ROADMAP_GRID8 is
+	// alone (else INVALID_ARGUMENT); there is no path of the roadmap's own to keep. Where that optimum goes against a one-way zone, ROADMAP_GRID8 is
 	// searched instead and the bound says so.
 	Roadmap_ROADMAP_CONVEX_CELLS Roadmap = 4
 )
@@ -268,8 +277,9 @@ const (
 	BoundKind_BOUND_KIND_AT_MOST_ROADMAP_OPTIMUM BoundKind = 2
 	// It is the straight line: nothing is shorter.
 	BoundKind_BOUND_KIND_STRAIGHT BoundKind = 3
-	// No route that keeps optimum_within_m more than the required clearance, and as
-	// much more from closed zones, is shorter, but for rounding (1e-9 of its length).
+	// Shortest: no route that keeps optimum_within_m more than the required clearance,
+	// and as much more from closed zones, is shorter, but for rounding (1e-9 of its
+	// length).
 	BoundKind_BOUND_KIND_ANY_ANGLE_OPTIMUM BoundKind = 4
 )
 
@@ -332,7 +342,8 @@ const (
 	RefusalReason_REFUSAL_REASON_GOAL_BLOCKED RefusalReason = 2
 	// Every way is too narrow or closed.
 	RefusalReason_REFUSAL_REASON_NO_PASSAGE RefusalReason = 3
-	// The time budget ran out before the search ended.
+	// The time budget ran out before any route was found, or before the version was
+	// ready to plan on.
 	RefusalReason_REFUSAL_REASON_OUT_OF_TIME RefusalReason = 4
 )
 
@@ -769,18 +780,25 @@ type PlanOptions struct {
 	Preference Preference `protobuf:"varint,1,opt,name=preference,proto3,enum=wideberth.v1.Preference" json:"preference,omitempty"`
 	// Which roadmap to search.
 	Roadmap Roadmap `protobuf:"varint,2,opt,name=roadmap,proto3,enum=wideberth.v1.Roadmap" json:"roadmap,omitempty"`
-	// Send the roadmap's own path, from cell to cell, without straightening.
+	// Send the roadmap's own path, from cell to cell, without straightening. Not for
+	// PREFERENCE_CLEAREST (INVALID_ARGUMENT).
 	KeepRoadmapPath bool `protobuf:"varint,3,opt,name=keep_roadmap_path,json=keepRoadmapPath,proto3" json:"keep_roadmap_path,omitempty"`
-	// Balanced: how much more a metre costs where clearance is hardly the required
-	// one than an open metre does, from 0 to 100. Between the required and the
-	// preferred clearance this falls in four equal steps: in the lowest quarter a
-	// metre costs 1 + tight_weight, in the highest 1 + tight_weight / 4. 0 asks for 1.
+	// Balanced: how much more a metre costs where there is less than the body's
+	// preferred clearance, from 0 to 100: such a metre costs 1 + tight_weight, any
+	// other 1. 0 asks for 1.
 	TightWeight float64 `protobuf:"fixed64,4,opt,name=tight_weight,json=tightWeight,proto3" json:"tight_weight,omitempty"`
 	// A leg is tight where clearance is below this, up to the floor's cap. 0 asks
-	// for the body's preferred clearance.
+	// for the body's preferred clearance. It marks legs and changes no cost.
 	TightBelowM float64 `protobuf:"fixed64,5,opt,name=tight_below_m,json=tightBelowM,proto3" json:"tight_below_m,omitempty"`
-	// How long the search may take, from 0.001 to 30 s. 0 asks for the server's
-	// own bound. When it runs out the answer is a refusal saying so.
+	// How long the answer may take at the server, from 0.001 to 30 s, once the version
+	// is there (see VersionSelector.max_wait_s): making it ready and waiting for a free
+	// planner included, and a tenth of it kept back for describing and sending. When
+	// it runs out the answer is the best checked route found by then, with
+	// Bound.cut_short, or a refusal saying so when there is none. 0 asks for the
+	// server's own bound, which is for the search alone: the version may take some
+	// seconds more (then UNAVAILABLE). A deadline of the call that comes earlier counts
+	// in the same way. With either, RESOURCE_EXHAUSTED says that no planner would be
+	// free by half of the time; all of these errors name a time to ask again.
 	TimeBudgetS float64 `protobuf:"fixed64,6,opt,name=time_budget_s,json=timeBudgetS,proto3" json:"time_budget_s,omitempty"`
 	// The most metres between two points of the route, 0.05 or more. 0 sends
 	// points only where the route bends, a leg begins, clearance is smallest or a
@@ -1299,7 +1317,7 @@ type Bound struct {
 	// No route whatever is shorter than this, in metres.
 	LowerBoundM float64 `protobuf:"fixed64,2,opt,name=lower_bound_m,json=lowerBoundM,proto3" json:"lower_bound_m,omitempty"`
 	// A passage up to this much wider than twice the required clearance may be
-	// missed by the searched roadmap, in metres of width.
+	// missed by the searched roadmap, in metres of width. 0 when none is.
 	WidthBiasM float64 `protobuf:"fixed64,3,opt,name=width_bias_m,json=widthBiasM,proto3" json:"width_bias_m,omitempty"`
 	// Clearances in the answer are at most this much below the true distance.
 	ClearanceShortM float64 `protobuf:"fixed64,4,opt,name=clearance_short_m,json=clearanceShortM,proto3" json:"clearance_short_m,omitempty"`
@@ -1310,7 +1328,7 @@ type Bound struct {
 	// then, and gap_share says how good.
 	CutShort bool `protobuf:"varint,6,opt,name=cut_short,json=cutShort,proto3" json:"cut_short,omitempty"`
 	// No route of this preference costs less than cost_m / (1 + gap_share). 0 when
-	// the search ended.
+	// the search ended. Clearest, cut short: there may also be one with more clearance.
 	GapShare      float64 `protobuf:"fixed64,7,opt,name=gap_share,json=gapShare,proto3" json:"gap_share,omitempty"`
 	unknownFields protoimpl.UnknownFields
 	sizeCache     protoimpl.SizeCache
@@ -1418,7 +1436,9 @@ type Route struct {
 	LengthM float64 `protobuf:"fixed64,8,opt,name=length_m,json=lengthM,proto3" json:"length_m,omitempty"`
 	// Seconds in all at the advised speed ceilings, without ramps.
 	DurationS float64 `protobuf:"fixed64,9,opt,name=duration_s,json=durationS,proto3" json:"duration_s,omitempty"`
-	// What the preference minimises: metres, tight ones weighted as tight_weight says.
+	// What the preference minimises. Shortest, and clearest among the ways with the
+	// largest smallest clearance: the length. Balanced: the metres with the preferred
+	// clearance, and 1 + tight_weight times the others.
 	CostM float64 `protobuf:"fixed64,10,opt,name=cost_m,json=costM,proto3" json:"cost_m,omitempty"`
 	// The smallest clearance along it, rounded down; at most the floor's cap.
 	SmallestClearanceM float64 `protobuf:"fixed64,11,opt,name=smallest_clearance_m,json=smallestClearanceM,proto3" json:"smallest_clearance_m,omitempty"`
@@ -1672,10 +1692,11 @@ func (x *BlockedEnd) GetBearingRad() float64 {
 	return 0
 }
 
-// The narrowest place on the widest way. It is what stops the body when width_m is
-// below width_needed_m, unless zone is set. With a roadmap asked for by name, or
-// keep_roadmap_path, it may be no narrower than needed: the body fits, but that
-// roadmap misses the passage (see Bound.width_bias_m).
+// The narrowest place on the widest way, found by exact geometry whatever roadmap
+// is searched. It is what stops the body when width_m is below width_needed_m,
+// unless zone is set. With a roadmap asked for by name, or keep_roadmap_path, it may
+// be no narrower than needed: the body fits, but that roadmap misses the passage (see
+// Bound.width_bias_m).
 type Bottleneck struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
 	// Whether there is any way at all, however narrow.
@@ -1684,7 +1705,7 @@ type Bottleneck struct {
 	At *Point `protobuf:"bytes,2,opt,name=at,proto3" json:"at,omitempty"`
 	// How wide it is, rounded down.
 	WidthM float64 `protobuf:"fixed64,3,opt,name=width_m,json=widthM,proto3" json:"width_m,omitempty"`
-	// How far width_m may be short of the truth.
+	// How far width_m may be short of the truth, in metres.
 	WidthShortM float64 `protobuf:"fixed64,4,opt,name=width_short_m,json=widthShortM,proto3" json:"width_short_m,omitempty"`
 	// How wide it would need to be for this body.
 	WidthNeededM float64 `protobuf:"fixed64,5,opt,name=width_needed_m,json=widthNeededM,proto3" json:"width_needed_m,omitempty"`
@@ -2390,7 +2411,7 @@ type RouteSummary struct {
 	LengthM float64 `protobuf:"fixed64,2,opt,name=length_m,json=lengthM,proto3" json:"length_m,omitempty"`
 	// Seconds in all at the advised speed ceilings, without ramps.
 	DurationS float64 `protobuf:"fixed64,3,opt,name=duration_s,json=durationS,proto3" json:"duration_s,omitempty"`
-	// What the preference minimises: metres, tight ones weighted as tight_weight says.
+	// What the preference minimises, see Route.cost_m.
 	CostM float64 `protobuf:"fixed64,4,opt,name=cost_m,json=costM,proto3" json:"cost_m,omitempty"`
 	// The smallest clearance along it, rounded down; at most the floor's cap.
 	SmallestClearanceM float64 `protobuf:"fixed64,5,opt,name=smallest_clearance_m,json=smallestClearanceM,proto3" json:"smallest_clearance_m,omitempty"`
