@@ -51,6 +51,31 @@ type Roadmap interface {
 	Describe() Description
 }
 
+// Size is how large a roadmap is.
+type Size struct {
+	Nodes, Edges, Cells int64
+	Bytes               int64
+}
+
+// Windowed is a Roadmap that may be too large to describe at once. Its Describe is
+// DescribeIn of the whole floor, cut off at MaxWindow nodes.
+type Windowed interface {
+	Roadmap
+	// DescribeIn describes the nodes and cells that meet area, and the edges between
+	// them; ErrTooLarge is wrapped when there are more than MaxWindow nodes.
+	DescribeIn(ctx context.Context, area geom.Rect) (Description, error)
+	// Size counts all of it.
+	Size() Size
+}
+
+// MaxWindow is how many nodes a Windowed roadmap describes at most.
+const MaxWindow = 200_000
+
+// Size counts what a description holds.
+func (d *Description) Size() Size {
+	return Size{int64(len(d.Nodes)), int64(len(d.Edges)), int64(len(d.Cells)), d.Bytes}
+}
+
 // Description is a roadmap as data. Clearances are to the nearest solid, rounded down,
 // at most the floor's cap.
 type Description struct {
@@ -76,6 +101,7 @@ type Edge struct {
 	Points      []geom.Point
 	LengthUm    float64
 	ClearanceUm int64 // smallest along it
+	WidestUm    int64 // largest along it; 0 when not known
 }
 
 // Cell is a convex region, counter-clockwise.

@@ -308,3 +308,13 @@ func (s *quad) path(e quadEntry) Path {
 	p.Points = slices.Compact(p.Points)
 	return p
 }
+
+// Borders are the middles of the borders that a free leaf shares with other free leaves.
+func Borders(f Frame, free *mask.Mask, l Leaf) []geom.Point {
+	s := &quad{Query: &Query{Frame: f, Free: free}}
+	var pts []geom.Point
+	for _, p := range s.border(l) {
+		pts = append(pts, s.point(p))
+	}
+	return pts
+}
