@@ -1,0 +1,168 @@
+package solids
+
+import (
+	"math/bits"
+	"slices"
+
+	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
+)
+
+// corner is a place where the raster's outline turns, with the two sides it runs to.
+type corner struct {
+	x, y      int32
+	right, up bool // its horizontal side runs to the right, its vertical one up
+	above     bool // the solid is above its horizontal side
+}
+
+// Trace follows the outline of the raster's solid cells: closed chains of lattice
+// vertices, the solid on their left, a point at each turn. Two cells that touch in
+// a corner are one solid. Unless the border is open, all beyond the floor is solid
+// too. Chains begin at their lowest, then leftmost vertex and are in the order of
+// those. Time is linear in the bits and the outline's turns.
+//
+// Each turn has one side along x and one along y: in a row of vertices the first turn
+// is joined to the second, the third to the fourth and so on, and in columns alike
+// (O'Rourke, "Uniqueness of orthogonal connect-the-dots", 1988).
+func Trace(m *floor.Map) [][]geom.Point {
+	s := m.Settings()
+	cs := corners(m)
+	next := make([]int32, len(cs))
+	// Rows: corners come row by row, in each by x, a side to the left before one to the right.
+	for i := 0; i+1 < len(cs); i += 2 {
+		if cs[i].above { // solid above: to the right
+			next[i] = int32(i + 1)
+		} else {
+			next[i+1] = int32(i)
+		}
+	}
+	byCol := make([]int32, len(cs))
+	counts := make([]int32, s.Columns+2)
+	for _, c := range cs {
+		counts[c.x+1]++
+	}
+	for x := 1; x < len(counts); x++ {
+		counts[x] += counts[x-1]
+	}
+	for i, c := range cs {
+		byCol[counts[c.x]] = int32(i)
+		counts[c.x]++
+	}
+	for k := 1; k < len(byCol); k++ {
+		if a, b := cs[byCol[k-1]], cs[byCol[k]]; a.x == b.x && a.y == b.y && a.up {
+			byCol[k-1], byCol[k] = byCol[k], byCol[k-1] // a pinch: the side down comes first
+		}
+	}
+	for k := 0; k+1 < len(byCol); k += 2 {
+		lo, hi := byCol[k], byCol[k+1]
+		// Where the horizontal side of the lower end goes in, the vertical one goes out.
+		if leaves := cs[lo].above == cs[lo].right; leaves {
+			next[hi] = lo
+		} else {
+			next[lo] = hi
+		}
+	}
+	var loops [][]geom.Point
+	done := make([]bool, len(cs))
+	for i := range cs {
+		if done[i] {
+			continue
+		}
+		var loop []geom.Point
+		for k := int32(i); !done[k]; k = next[k] {
+			done[k] = true
+			loop = append(loop, s.Vertex(int(cs[k].x), int(cs[k].y)))
+		}
+		loops = append(loops, loop)
+	}
+	return loops
+}
+
+// corners lists the turns of the outline row by row.
+func corners(m *floor.Map) []corner {
+	s := m.Settings()
+	words := (s.Columns+floor.BlockSize-1)/floor.BlockSize + 1
+	edge := s.Columns & (floor.BlockSize - 1)
+	outside := uint64(0)
+	if !s.OpenBorder {
+		outside = ^uint64(0)
+	}
+	blank := func() []uint64 {
+		row := make([]uint64, words)
+		for i := range row {
+			row[i] = outside
+		}
+		return row
+	}
+	// A band of blocks is read at once; words beyond the last column are as outside.
+	band := make([][]uint64, floor.BlockSize)
+	for i := range band {
+		band[i] = make([]uint64, words)
+	}
+	var out []corner
+	below := blank()
+	row := func(y int, above []uint64) {
+		carryB, carryA := outside&1, outside&1
+		for w := range words {
+			b, a := below[w], above[w]
+			lb, la := b<<1|carryB, a<<1|carryA // the cells to the left of each vertex
+			carryB, carryA = b>>63, a>>63
+			turn := (b ^ lb ^ a ^ la) | (b^lb)&(b^a)&(lb^la) // an odd number, or two opposite ones
+			for ; turn != 0; turn &= turn - 1 {
+				i := bits.TrailingZeros64(turn)
+				x := w*floor.BlockSize + i
+				if x > s.Columns {
+					break
+				}
+				out = appendCorner(out, int32(x), int32(y), lb>>i&1 != 0, b>>i&1 != 0, la>>i&1 != 0, a>>i&1 != 0)
+			}
+		}
+		copy(below, above)
+	}
+	var buf [floor.BlockSize]uint64
+	for by := 0; by*floor.BlockSize < s.Rows; by++ {
+		for bx := range words {
+			m.SolidBits(bx, by, &buf)
+			for i := range band {
+				v := buf[i]
+				if bx == s.Columns/floor.BlockSize {
+					v |= outside << edge
+				} else if bx > s.Columns/floor.BlockSize {
+					v = outside
+				}
+				band[i][bx] = v
+			}
+		}
+		for i := 0; i < floor.BlockSize && by*floor.BlockSize+i < s.Rows; i++ {
+			row(by*floor.BlockSize+i, band[i])
+		}
+	}
+	row(s.Rows, blank())
+	return slices.Clip(out)
+}
+
+// appendCorner adds the turn at (x, y) among its four cells, two for a pinch: one about
+// each free cell.
+func appendCorner(out []corner, x, y int32, sw, se, nw, ne bool) []corner {
+	n := 0
+	for _, v := range [4]bool{sw, se, nw, ne} {
+		if v {
+			n++
+		}
+	}
+	c := func(right, up bool) corner {
+		above := nw
+		if right {
+			above = ne
+		}
+		return corner{x: x, y: y, right: right, up: up, above: above}
+	}
+	if n != 2 {
+		odd := n == 1 // what the cell unlike the others is
+		return append(out, c(se == odd || ne == odd, nw == odd || ne == odd))
+	}
+	if sw { // and ne: the free cells are nw and se
+		return append(out, c(false, true), c(true, false))
+	}
+	return append(out, c(false, false), c(true, true))
+}
