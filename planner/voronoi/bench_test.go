@@ -165,7 +165,6 @@ func BenchmarkPlan(b *testing.B) {
 				var expanded, opened, searched int64
 				for b.Loop() {
 					first, again = first[:0], again[:0]
-					w.known.dist = nil
 					expanded, opened, searched = 0, 0, 0
 					for pass := range 2 {
 						for _, k := range tasks {

@@ -240,8 +240,8 @@ func (w *Roads) touch(e *entry, i int, p vec) bool {
 	}
 	e.to = g.place(in.block, g.arc(in).at(e.s))
 	e.length = geom.Dist(e.from, e.to)
-	n := w.arcBase[in.block] + in.arc
-	for r := w.pieces[n]; r < w.pieces[n+1]; r++ {
+	first, end := w.piecesOf(in.block, in.arc)
+	for r := first; r < end; r++ {
 		v := &w.roads[r]
 		if e.s >= min(v.s0, v.s1)-joinUm && e.s <= max(v.s0, v.s1)+joinUm {
 			e.s = min(max(e.s, min(v.s0, v.s1)), max(v.s0, v.s1))

@@ -6,12 +6,15 @@ import (
 	"example.com/wideberth/mapstore/geom"
 )
 
-// net is the roads that have one required clearance, cut into connected pieces.
+// net is the roads that have one clearance, cut into connected pieces.
 type net struct {
-	piece    []int32   // of each node, by its lowest node
-	portals  [][]int32 // by part of Open: those from which another portal is reached along roads
-	siblings map[int32][]int32
+	piece   []int32   // of each node, by its lowest node
+	portals [][]int32 // by part of Open: those from which another portal is reached along roads
+	begin   []int32   // portals of piece n: list[begin[n]:begin[n+1]]
+	list    []int32
 }
+
+func (n *net) siblings(piece int32) []int32 { return n.list[n.begin[piece]:n.begin[piece+1]] }
 
 // maxNets bounds the required clearances whose nets are kept; a floor has as many as
 // kinds of bodies.
@@ -40,7 +43,7 @@ type keyed struct {
 }
 
 func (w *Roads) makeNet(r float64) *net {
-	n := &net{piece: make([]int32, len(w.nodes)), siblings: map[int32][]int32{}}
+	n := &net{piece: make([]int32, len(w.nodes)), begin: make([]int32, len(w.nodes)+1)}
 	for i := range n.piece {
 		n.piece[i] = int32(i)
 	}
@@ -51,15 +54,26 @@ func (w *Roads) makeNet(r float64) *net {
 		}
 	}
 	for i := range n.piece {
-		n.piece[i] = n.piece[n.piece[i]]
+		n.piece[i] = n.piece[n.piece[i]] // leaders are the lowest, so settled before
 		if w.nodes[i].part >= 0 {
-			n.siblings[n.piece[i]] = append(n.siblings[n.piece[i]], int32(i))
+			n.begin[n.piece[i]+1]++
+		}
+	}
+	for i := range n.piece {
+		n.begin[i+1] += n.begin[i]
+	}
+	n.list = make([]int32, n.begin[len(n.piece)])
+	next := slices.Clone(n.begin)
+	for i, k := range n.piece {
+		if w.nodes[i].part >= 0 {
+			n.list[next[k]] = int32(i)
+			next[k]++
 		}
 	}
 	n.portals = make([][]int32, len(w.portals))
 	for k, part := range w.portals {
 		for _, v := range part {
-			if len(n.siblings[n.piece[v]]) > 1 {
+			if len(n.siblings(n.piece[v])) > 1 {
 				n.portals[k] = append(n.portals[k], v)
 			}
 		}
@@ -78,7 +92,7 @@ func (k *seeker) leaving(v int32) float64 {
 	if piece == k.goalPiece {
 		best = float64((1 + k.weight) * geom.Dist(k.nodes[v].at, k.to.to))
 	}
-	list := k.net.siblings[piece]
+	list := k.net.siblings(piece)
 	if len(list) > maxSiblings {
 		return k.estimate(v)
 	}

@@ -15,7 +15,7 @@ type Path struct {
 	TightUm  float64
 	Expanded int64 // nodes settled
 	Queued   int64
-	Opened   int64 // open distances searched for, not remembered
+	Opened   int64 // open distances searched for
 }
 
 // Leg is a part of a path that is tight, or open, throughout.
@@ -50,8 +50,8 @@ const MaxTightWeight = 1e6
 //
 // It is A* over portals and tight edges. The open distance between two portals is
 // searched for only when the straight line between them is not too long to matter
-// (as lazy weighted A* does, Cohen, Phillips & Likhachev 2014; from memory), and
-// remembered.
+// (as lazy weighted A* does, Cohen, Phillips & Likhachev 2014; from memory), and no
+// further than it may matter.
 func (w *Roads) Balanced(ctx context.Context, s, t geom.Point, r int64, weight float64) (p Path, ok bool, err error) {
 	if r < 0 || float64(r) > w.p {
 		return p, false, &RangeError{"required clearance", float64(r), fmt.Sprintf("0 to %.0f µm", w.p)}
@@ -59,7 +59,7 @@ func (w *Roads) Balanced(ctx context.Context, s, t geom.Point, r int64, weight f
 	if !(weight >= 0 && weight <= MaxTightWeight) {
 		return p, false, &RangeError{"tight weight", weight, fmt.Sprintf("0 to %.0f", float64(MaxTightWeight))}
 	}
-	return w.search(ctx, s, t, float64(r), weight)
+	return w.search(ctx, s, t, float64(r), float64(r), weight)
 }
 
 // Clearest finds a way from s to t whose smallest clearance is the largest there is
@@ -73,12 +73,12 @@ func (w *Roads) Clearest(ctx context.Context, s, t geom.Point, r int64) (p Path,
 	if err != nil || !ok || b.ClearanceUm < float64(r)-tieUm {
 		return p, b, false, err
 	}
-	p, ok, err = w.search(ctx, s, t, b.ClearanceUm, 0)
+	p, ok, err = w.search(ctx, s, t, b.ClearanceUm, min(float64(r), b.ClearanceUm), 0)
 	return p, b, ok, err
 }
 
 // assemble draws the cheapest way to the goal.
-func (k *seeker) assemble(last item) (Path, bool, error) {
+func (k *seeker) assemble(last item) Path {
 	steps := []item{last}
 	for n := last.from; n >= 0; {
 		it := k.best[n]
@@ -102,16 +102,10 @@ func (k *seeker) assemble(last item) (Path, bool, error) {
 		it := &steps[i]
 		from := it.from / 2
 		if it.kind == byOpen {
-			key := [2]int32{from, it.node}
-			if k.ways[key] == nil { // its length was remembered
-				if _, err := k.walk(from, it.node); err != nil {
-					return Path{}, false, err
-				}
-			}
-			add(false, it.g-k.best[it.from].g, k.ways[key]...)
+			add(false, it.g-k.best[it.from].g, k.ways[it.by]...)
 			continue
 		}
-		v := &k.roads[it.road]
+		v := &k.roads[it.by]
 		s0, s1 := v.s0, v.s1
 		if from == v.b {
 			s0, s1 = v.s1, v.s0
@@ -144,7 +138,7 @@ func (k *seeker) assemble(last item) (Path, bool, error) {
 		p.Legs = []Leg{{Points: []geom.Point{k.from.from, k.to.from}}}
 	}
 	p.CostUm = last.g + float64((1+k.weight)*k.to.length)
-	return *p, true, nil
+	return *p
 }
 
 func appendNew(out, pts []geom.Point) []geom.Point {

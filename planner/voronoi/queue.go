@@ -13,8 +13,8 @@ const (
 type item struct {
 	f, g float64 // cost with and without the estimate
 	node int32
-	from int32
-	road int32
+	from int32 // the state it comes from, -1 at the start
+	by   int32 // the road, or the way in Open; -1 for neither
 	kind kind
 }
 

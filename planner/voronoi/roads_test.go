@@ -28,11 +28,11 @@ func TestRoadsAreTheEdgesBelowP(t *testing.T) {
 		w := roadsOf(t, g, []int64{300_000, 1_000_000, 2_000_000}[rng.IntN(3)])
 		g.eachArc(func(b, i int32) {
 			a := &g.blocks[b].arcs[i]
-			n := w.arcBase[b] + i
+			first, end := w.piecesOf(b, i)
 			for q := range 20 {
 				s := a.s0 + (a.s1-a.s0)*(float64(q)+0.5)/20
 				um, on := a.clearance(s), 0
-				for _, v := range w.roads[w.pieces[n]:w.pieces[n+1]] {
+				for _, v := range w.roads[first:end] {
 					if s > min(v.s0, v.s1) && s < max(v.s0, v.s1) {
 						on++
 					}

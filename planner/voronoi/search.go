@@ -3,7 +3,7 @@ package voronoi
 import (
 	"context"
 	"math"
-	"slices"
+	"sync"
 
 	"example.com/wideberth/mapstore/geom"
 )
@@ -22,27 +22,54 @@ type seeker struct {
 	from, to  entry
 	start     int32 // numbers of the ends, after all nodes
 	goal      int32
-	goalPiece int32          // of the net that the goal's way in comes to, -1 for none
-	best      map[int32]item // cheapest way known to a state
-	ways      map[[2]int32][]geom.Point
-	q         queue
+	goalPiece int32   // of the net that the goal's way in comes to, -1 for none
+	least     float64 // cheapest way known to the goal
 	path      Path
+
+	// Scratch.
+	best  []item   // cheapest way known to a state
+	known []uint32 // where this is the search's number
+	count uint32
+	ways  [][]geom.Point // in Open
+	q     queue
 }
 
-func (w *Roads) search(ctx context.Context, s, t geom.Point, r, weight float64) (Path, bool, error) {
-	k := &seeker{Roads: w, ctx: ctx, r: r, weight: weight, best: map[int32]item{}, ways: map[[2]int32][]geom.Point{}, goalPiece: -1}
-	k.start, k.goal = int32(len(w.nodes)), int32(len(w.nodes))+1
-	var ok1, ok2 bool
-	k.from, ok1 = w.enter(s)
-	k.to, ok2 = w.enter(t)
-	if !ok1 || !ok2 || k.from.um < r-tieUm || k.to.um < r-tieUm {
+var seekers = sync.Pool{New: func() any { return new(seeker) }}
+
+// search finds the cheapest way at clearance r. Its estimates are those of the roads
+// that have clearance netAt, at most r.
+func (w *Roads) search(ctx context.Context, s, t geom.Point, r, netAt, weight float64) (Path, bool, error) {
+	from, ok1 := w.enter(s)
+	to, ok2 := w.enter(t)
+	if !ok1 || !ok2 || from.um < r-tieUm || to.um < r-tieUm {
 		return Path{}, false, ctx.Err()
 	}
-	k.net = w.netOf(r)
-	if k.to.road >= 0 {
-		k.goalPiece = k.net.piece[w.roads[k.to.road].b]
+	k := seekers.Get().(*seeker)
+	defer k.drop()
+	k.Roads, k.net, k.ctx, k.r, k.weight = w, w.netOf(netAt), ctx, r, weight
+	k.from, k.to, k.goalPiece, k.least = from, to, -1, inf
+	k.start, k.goal = int32(len(w.nodes)), int32(len(w.nodes))+1
+	if to.road >= 0 {
+		k.goalPiece = k.net.piece[w.roads[to.road].b]
 	}
+	k.clear(2*len(w.nodes) + 4)
 	return k.run()
+}
+
+// clear forgets the states of the search before.
+func (k *seeker) clear(states int) {
+	k.count++
+	if len(k.best) < states || k.count == 0 {
+		k.best, k.known, k.count = make([]item, states), make([]uint32, states), 1
+	}
+	k.q = k.q[:0]
+}
+
+// drop gives the scratch back. It keeps no version alive.
+func (k *seeker) drop() {
+	clear(k.ways)
+	*k = seeker{best: k.best, known: k.known, count: k.count, ways: k.ways[:0], q: k.q}
+	seekers.Put(k)
 }
 
 // state is the number of a node's state.
@@ -70,21 +97,12 @@ func (k *seeker) estimate(n int32) float64 {
 
 func (k *seeker) run() (Path, bool, error) {
 	tight := 1 + k.weight
-	k.offer(item{g: float64(tight * k.from.length), node: k.start, from: -1, road: -1, kind: byRoad})
+	k.offer(item{g: float64(tight * k.from.length), node: k.start, from: -1, by: -1, kind: byRoad})
 	for len(k.q) > 0 {
 		it := k.q.pop()
 		if it.kind == byGuess {
-			if k.beaten(&it) {
-				continue
-			}
-			from := it.from / 2
-			d, err := k.between(from, it.node)
-			if err != nil {
+			if err := k.resolve(it); err != nil {
 				return Path{}, false, err
-			}
-			if !math.IsInf(d, 1) {
-				it.g, it.kind = it.g-geom.Dist(k.spot(from), k.spot(it.node))+d, byOpen
-				k.offer(it)
 			}
 			continue
 		}
@@ -96,54 +114,87 @@ func (k *seeker) run() (Path, bool, error) {
 			return Path{}, false, k.ctx.Err()
 		}
 		if it.node == k.goal {
-			return k.assemble(it)
+			return k.assemble(it), true, nil
 		}
 		k.expand(it)
 	}
 	return Path{}, false, k.ctx.Err()
 }
 
-// beaten says whether a state as good as an item's is known to be reached as cheaply.
-func (k *seeker) beaten(it *item) bool {
-	if b, ok := k.best[state(it.node, byRoad)]; ok && b.g <= it.g {
-		return true
+// costOf is the cost of the cheapest way known to a state.
+func (k *seeker) costOf(state int32) float64 {
+	if k.known[state] != k.count {
+		return inf
 	}
-	if it.kind != byRoad {
-		b, ok := k.best[state(it.node, byOpen)]
-		return ok && b.g <= it.g
-	}
-	return false
+	return k.best[state].g
 }
 
-// offer takes a way to a node when it is cheaper than those known.
+// costTo is that of a state as good as an item's.
+func (k *seeker) costTo(it *item) float64 {
+	g := k.costOf(state(it.node, byRoad))
+	if it.kind != byRoad {
+		g = min(g, k.costOf(state(it.node, byOpen)))
+	}
+	return g
+}
+
+// offer takes a way to a node when it is cheaper than those known and may lead to a
+// cheaper one to the goal.
 func (k *seeker) offer(it item) {
-	if k.beaten(&it) {
+	if k.costTo(&it) <= it.g {
 		return
 	}
-	left := 0.0
-	switch {
-	case it.node == k.goal:
-	case it.kind == byRoad:
-		left = k.estimate(it.node)
-	default:
-		left = k.leaving(it.node)
-	}
-	if math.IsInf(left, 1) {
+	it.f = it.g + k.left(&it)
+	if math.IsInf(it.f, 1) || it.f > k.least {
 		return
 	}
-	it.f = it.g + left
 	if it.kind != byGuess {
-		k.best[state(it.node, it.kind)] = it
+		n := state(it.node, it.kind)
+		k.best[n], k.known[n] = it, k.count
+		if it.node == k.goal {
+			k.least = min(k.least, it.g)
+		}
 	}
 	k.path.Queued++
 	k.q.push(it)
+}
+
+// left is a lower bound of the cost from an item's node on to the goal.
+func (k *seeker) left(it *item) float64 {
+	switch {
+	case it.node == k.goal:
+		return 0
+	case it.kind == byRoad:
+		return k.estimate(it.node)
+	}
+	return k.leaving(it.node)
+}
+
+// resolve searches for the way in Open that an item guesses the length of, as far as it
+// is of use, and offers it.
+func (k *seeker) resolve(it item) error {
+	from := it.from / 2
+	gone := k.best[it.from].g
+	most := min(k.costTo(&it), k.least-k.left(&it)) - gone
+	if most < geom.Dist(k.spot(from), k.spot(it.node))-tieUm {
+		return nil // it has been overtaken
+	}
+	k.path.Opened++
+	way, ok, err := k.open.ShortestWithin(k.ctx, k.spot(from), k.spot(it.node), most)
+	if err != nil || !ok {
+		return err
+	}
+	it.g, it.kind, it.by = gone+way.LengthUm, byOpen, int32(len(k.ways))
+	k.ways = append(k.ways, way.Points)
+	k.offer(it)
+	return nil
 }
 
 func (k *seeker) expand(it item) {
 	tight := 1 + k.weight
 	n := it.node
 	along := func(road, to int32, length float64) {
-		k.offer(item{g: it.g + float64(tight*length), node: to, from: state(n, it.kind), road: road, kind: byRoad})
+		k.offer(item{g: it.g + float64(tight*length), node: to, from: state(n, it.kind), by: road, kind: byRoad})
 	}
 	part := int32(-1)
 	if n == k.start {
@@ -199,7 +250,7 @@ func (k *seeker) expand(it item) {
 		}
 		if k.goalPiece >= 0 {
 			// A portal that leads to the goal alone.
-			if list := k.siblings[k.goalPiece]; len(list) == 1 && k.nodes[list[0]].part == part && list[0] != n {
+			if list := k.siblings(k.goalPiece); len(list) == 1 && k.nodes[list[0]].part == part && list[0] != n {
 				k.guess(it, list[0])
 			}
 		}
@@ -208,39 +259,5 @@ func (k *seeker) expand(it item) {
 
 // guess offers a way in Open at its length as the crow flies.
 func (k *seeker) guess(it item, to int32) {
-	k.offer(item{g: it.g + geom.Dist(k.spot(it.node), k.spot(to)), node: to, from: state(it.node, it.kind), road: -1, kind: byGuess})
-}
-
-// between is the length of the shortest way in Open.
-func (k *seeker) between(a, b int32) (float64, error) {
-	if a < k.start && b < k.start {
-		if d, ok := k.known.get(a, b); ok {
-			return d, nil
-		}
-	}
-	d, err := k.walk(a, b)
-	if err == nil && a < k.start && b < k.start {
-		k.known.put(a, b, d)
-	}
-	return d, err
-}
-
-// walk searches for the shortest way in Open between two nodes and keeps it. Portals
-// are asked for from the lower to the higher, so that the answer does not depend on
-// who asked first.
-func (k *seeker) walk(a, b int32) (float64, error) {
-	swap := a < k.start && b < k.start && a > b
-	if swap {
-		a, b = b, a
-	}
-	k.path.Opened++
-	way, ok, err := k.open.Shortest(k.ctx, k.spot(a), k.spot(b))
-	if err != nil || !ok {
-		return inf, err
-	}
-	k.ways[[2]int32{a, b}] = way.Points
-	back := slices.Clone(way.Points)
-	slices.Reverse(back)
-	k.ways[[2]int32{b, a}] = back
-	return way.LengthUm, nil
+	k.offer(item{g: it.g + geom.Dist(k.spot(it.node), k.spot(to)), node: to, from: state(it.node, it.kind), by: -1, kind: byGuess})
 }

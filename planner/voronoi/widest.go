@@ -1,7 +1,6 @@
 package voronoi
 
 import (
-	"cmp"
 	"context"
 	"math"
 	"slices"
@@ -76,16 +75,26 @@ func (w *Roads) grow() *forest {
 			when++
 		}
 	}
-	order := make([]int32, len(w.roads))
-	for i := range order {
-		order[i] = int32(i)
+	type wide struct {
+		um   float64
+		road int32
 	}
-	slices.SortFunc(order, func(a, b int32) int {
-		return cmp.Or(cmp.Compare(w.roads[b].um0, w.roads[a].um0), cmp.Compare(a, b))
+	order := make([]wide, len(w.roads))
+	for i := range order {
+		order[i] = wide{w.roads[i].um0, int32(i)}
+	}
+	slices.SortFunc(order, func(a, b wide) int {
+		switch {
+		case a.um > b.um:
+			return -1
+		case a.um < b.um:
+			return 1
+		}
+		return int(a.road - b.road)
 	})
-	for _, i := range order {
-		r := &w.roads[i]
-		f.join(r.a, r.b, when, i, min(r.um0, w.p))
+	for _, v := range order {
+		r := &w.roads[v.road]
+		f.join(r.a, r.b, when, v.road, min(v.um, w.p))
 		when++
 	}
 	return f
@@ -126,14 +135,15 @@ func (w *Roads) Widest(ctx context.Context, s, t geom.Point) (b Bottleneck, ok b
 		}
 		return b, true, ctx.Err()
 	}
-	n, ok := w.forest.narrowest(w.topOf(&from), w.topOf(&to))
+	f := w.forest()
+	n, ok := f.narrowest(w.topOf(&from), w.topOf(&to))
 	if !ok {
 		return Bottleneck{}, false, ctx.Err()
 	}
-	if n >= 0 && w.forest.road[n] >= 0 && w.forest.um[n] < b.ClearanceUm {
-		r := &w.roads[w.forest.road[n]]
+	if n >= 0 && f.road[n] >= 0 && f.um[n] < b.ClearanceUm {
+		r := &w.roads[f.road[n]]
 		gate := w.g.gateAt(r.step.block, w.g.arc(r.step), r.s0)
-		b = Bottleneck{ClearanceUm: w.forest.um[n], At: gate.At, Gate: gate}
+		b = Bottleneck{ClearanceUm: f.um[n], At: gate.At, Gate: gate}
 	}
 	return b, true, ctx.Err()
 }
