@@ -15,14 +15,19 @@ import (
 // turns out to be wide enough after all, between cells that are not free as a whole,
 // it becomes the course, unless the request names its roadmap.
 func (t *task) noPassage(ctx context.Context) (*course, *Refusal, error) {
+	if t.q.Options.unnamed() {
+		if c, r, err := t.exactly(ctx); c != nil || r != nil || err != nil {
+			return c, r, err
+		}
+	}
 	g, err := t.widest(ctx, t.w.rules)
 	if err != nil {
 		return nil, nil, err
 	}
 	o := t.q.Options
-	if g != nil && g.least >= float64(t.j.NeedUm) && o.Roadmap == Auto && !o.KeepRoadmapPath {
+	if g != nil && g.least >= float64(t.j.NeedUm) && o.unnamed() {
 		c := &course{kind: AtMostRoadmapOptimum, roadmap: math.Inf(1)}
-		c.pts, err = t.straighten(ctx, g.way, math.Inf(1))
+		c.pts, err = t.straighten(ctx, g.way)
 		return c, nil, err
 	}
 	refusal := func(b *Bottleneck) *Refusal { return &Refusal{Reason: NoPassage, Bottleneck: b} }

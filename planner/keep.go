@@ -52,7 +52,7 @@ func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *co
 			i++
 		}
 	}
-	g, err := t.w.meshes.get(ctx, meshKey{t.j.NeedUm, t.j.RadiusUm})
+	g, err := t.w.ways.meshes.get(ctx, t.needed())
 	if err != nil || !g.Contains(pts[0]) || !g.Contains(pts[len(pts)-1]) {
 		return nil
 	}

@@ -11,16 +11,17 @@ import (
 	"example.com/wideberth/planner/internal/plainfloor"
 )
 
-func mazeMeshes(t *testing.T, n int) *meshes {
+// mazeMeshes are the meshes of a maze, and must gets one of them.
+func mazeMeshes(t *testing.T, n int) (*floor.Map, *meshes) {
 	t.Helper()
 	m, err := plainfloor.Maze(n, 4).Floor()
 	if err != nil {
 		t.Fatal(err)
 	}
-	return newMeshes(m)
+	return m, newMeshes(m)
 }
 
-func (s *meshes) must(t *testing.T, um int64) *anyangle.Mesh {
+func must(t *testing.T, s *meshes, um int64) *anyangle.Mesh {
 	t.Helper()
 	g, err := s.get(context.Background(), meshKey{um: um})
 	if err != nil {
@@ -30,18 +31,18 @@ func (s *meshes) must(t *testing.T, um int64) *anyangle.Mesh {
 }
 
 func TestMeshesAreBoundedAndTheUsedOnesStay(t *testing.T) {
-	s := mazeMeshes(t, 40)
-	first := s.must(t, 1)
+	_, s := mazeMeshes(t, 40)
+	first := must(t, s, 1)
 	for k := range int64(MeshLimit + 5) {
-		s.must(t, 10+k)
-		if s.must(t, 1) != first {
+		must(t, s, 10+k)
+		if must(t, s, 1) != first {
 			t.Fatalf("dropped after %d others although it was in use", k+1)
 		}
 		if n := len(s.kept); n > MeshLimit {
 			t.Fatalf("%d meshes kept, want at most %d", n, MeshLimit)
 		}
 	}
-	if n := s.must(t, 10).Need().ClearanceUm; n != 10 {
+	if n := must(t, s, 10).Need().ClearanceUm; n != 10 {
 		t.Errorf("asked for 10 µm once more and got %d", n)
 	}
 	if _, err := s.get(context.Background(), meshKey{um: anyangle.MaxClearanceUm + 1}); err == nil || len(s.kept) > MeshLimit {
@@ -50,7 +51,7 @@ func TestMeshesAreBoundedAndTheUsedOnesStay(t *testing.T) {
 }
 
 func TestOneMeshIsMadeForAllWhoAskAtOnce(t *testing.T) {
-	s := mazeMeshes(t, 200)
+	_, s := mazeMeshes(t, 200)
 	var wg sync.WaitGroup
 	got := make([]*anyangle.Mesh, 8)
 	for i := range got {
@@ -64,9 +65,9 @@ func TestOneMeshIsMadeForAllWhoAskAtOnce(t *testing.T) {
 	}
 }
 
-// Whoever waits may leave: the others get the mesh, and the next one does once all left.
+// Whoever waits may leave: the others get the mesh, and so does the next one.
 func TestWaitingForAMeshEndsWithItsContext(t *testing.T) {
-	s := mazeMeshes(t, 500)
+	_, s := mazeMeshes(t, 500)
 	spent := errors.New("spent")
 	for range 20 {
 		ctx, cancel := context.WithCancelCause(context.Background())
@@ -75,40 +76,83 @@ func TestWaitingForAMeshEndsWithItsContext(t *testing.T) {
 			t.Fatalf("%p, error %v", g, err)
 		}
 	}
-	if g := s.must(t, 7); g == nil {
+	if g := must(t, s, 7); g == nil {
 		t.Fatal("no mesh")
 	}
 }
 
 func TestMeshesInUseAreCarriedOn(t *testing.T) {
-	s := mazeMeshes(t, 60)
-	s.must(t, 3)
-	s.must(t, 4)
-	old := s.m
-	for k := range meshIdle + 2 {
-		m, err := s.m.Apply([]floor.Edit{{Kind: floor.PaintRect, Fill: floor.Occupancy(k % 2), Rect: floor.CellRect{X0: 2, Y0: 2, X1: 4, Y1: 4}}})
+	at, s := mazeMeshes(t, 60)
+	must(t, s, 3)
+	must(t, s, 4)
+	for k := range shelfIdle + 2 {
+		m, err := at.Apply([]floor.Edit{{Kind: floor.PaintRect, Fill: floor.Occupancy(k % 2), Rect: floor.CellRect{X0: 2, Y0: 2, X1: 4, Y1: 4}}})
 		if err != nil {
 			t.Fatal(err)
 		}
-		n, err := s.carry(context.Background(), m, floor.Diff(s.m, m))
+		n, err := carryMeshes(context.Background(), s, m, floor.Diff(at, m))
 		if err != nil {
 			t.Fatal(err)
 		}
-		if s = n; len(s.kept) > 0 && s.kept[0].mesh.Map() != m {
+		if s, at = n, m; len(s.kept) > 0 && s.kept[0].val.Map() != m {
 			t.Fatal("a mesh of another version")
 		}
-		s.must(t, 4)
+		must(t, s, 4)
 	}
-	if len(s.kept) != 1 || s.kept[0].key.um != 4 || s.m == old {
+	if len(s.kept) != 1 || s.kept[0].key.um != 4 {
 		t.Errorf("%d meshes are carried, want the one in use", len(s.kept))
 	}
 	ctx, cancel := context.WithCancel(context.Background())
 	cancel()
-	m, err := s.m.Apply([]floor.Edit{{Kind: floor.PaintRect, Fill: floor.Occupied, Rect: floor.CellRect{X0: 8, Y0: 2, X1: 9, Y1: 4}}})
+	m, err := at.Apply([]floor.Edit{{Kind: floor.PaintRect, Fill: floor.Occupied, Rect: floor.CellRect{X0: 8, Y0: 2, X1: 9, Y1: 4}}})
 	if err != nil {
 		t.Fatal(err)
 	}
-	if _, err := s.carry(ctx, m, floor.Diff(s.m, m)); !errors.Is(err, context.Canceled) {
+	if _, err := carryMeshes(ctx, s, m, floor.Diff(at, m)); !errors.Is(err, context.Canceled) {
 		t.Errorf("error %v, want the context's", err)
+	}
+}
+
+// A structure that is in the making when the version changes is made and carried on.
+func TestWhatIsInTheMakingIsCarriedOn(t *testing.T) {
+	type pair struct{ made, advanced int }
+	release := make(chan struct{})
+	s := &shelf[int, pair]{limit: 4, make: func(_ context.Context, k int) (pair, error) { <-release; return pair{made: k}, nil }}
+	n := &shelf[int, pair]{limit: 4, make: func(context.Context, int) (pair, error) { return pair{}, errors.New("made afresh") }}
+	s.find(5)
+	err := s.carry(context.Background(), n, func(_ context.Context, _ int, p pair) (pair, error) { p.advanced++; return p, nil })
+	if err != nil {
+		t.Fatal(err)
+	}
+	close(release)
+	if got, err := n.get(context.Background(), 5); err != nil || got != (pair{5, 1}) {
+		t.Errorf("%+v, %v", got, err)
+	}
+}
+
+// Makings go on when nobody waits any more, but not any number of them.
+func TestMakingsThatNobodyWaitsForAreBounded(t *testing.T) {
+	ended := make(chan int, 10)
+	s := &shelf[int, int]{limit: 10, make: func(ctx context.Context, k int) (int, error) {
+		<-ctx.Done()
+		ended <- k
+		return 0, ctx.Err()
+	}}
+	for k := range 5 {
+		ctx, cancel := context.WithCancel(context.Background())
+		e := s.find(k)
+		cancel()
+		if _, err := s.wait(ctx, e); !errors.Is(err, context.Canceled) {
+			t.Fatal(err)
+		}
+	}
+	got := map[int]bool{<-ended: true, <-ended: true, <-ended: true}
+	if !got[0] || !got[1] || !got[2] {
+		t.Errorf("ended %v, want the oldest", got)
+	}
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if len(s.making) > 2+3 || len(s.kept) != unattendedLimit {
+		t.Errorf("%d kept", len(s.kept))
 	}
 }

@@ -2,7 +2,6 @@ package planner
 
 import (
 	"context"
-	"errors"
 	"math"
 	"slices"
 
@@ -31,7 +30,7 @@ func (o *Options) anyAngle() bool {
 // are in different parts of the mesh, so that only passages within anyangle.DeltaUm of
 // too narrow may be left.
 func (t *task) optimum(ctx context.Context) (c *course, apart bool, err error) {
-	g, err := t.w.meshes.get(ctx, meshKey{t.j.NeedUm, t.j.RadiusUm})
+	g, err := await(ctx, t, t.w.ways.meshes, t.needed())
 	if err != nil {
 		return nil, false, unlessUnfit(err)
 	}
@@ -68,15 +67,6 @@ func (t *task) optimum(ctx context.Context) (c *course, apart bool, err error) {
 	}
 	c.pts = pts
 	return c, false, nil
-}
-
-// unlessUnfit is nil for what says that there can be no mesh, or no search over it.
-func unlessUnfit(err error) error {
-	var need *anyangle.NeedError
-	if errors.As(err, &need) || errors.Is(err, anyangle.ErrTooLarge) {
-		return nil
-	}
-	return err
 }
 
 // joint is the place where an end joins the mesh: the end itself when the mesh holds it, or

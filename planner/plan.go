@@ -21,8 +21,12 @@ type CheckError struct{ Problem string }
 func (e *CheckError) Error() string { return "planner: route failed its check: " + e.Problem }
 
 // Plan answers a request. The error is ctx's, a *RequestError or a *CheckError;
-// "no way" is a Refusal. A deadline that passes during the search gives a Refusal with
-// OutOfTime when the deadline is ctx's own cause ErrTimeBudget, else ctx's error.
+// "no way" is a Refusal. When the deadline is ctx's own cause ErrTimeBudget and passes
+// during the search, the best checked route known by then is given (Bound.CutShort), else
+// a Refusal with OutOfTime. What is done after that deadline: when no way is known
+// but the mesh for the shortest is there, 20 ms go to looking for it, and what was found is
+// described and checked, which takes as long as for any route of as many points. For
+// other deadlines the error is ctx's.
 func (w *World) Plan(ctx context.Context, q Request) (Answer, error) {
 	return w.PlanIn(ctx, nil, q)
 }
@@ -39,6 +43,9 @@ type task struct {
 
 	session *Session // nil without
 	mended  bool     // whether a path was found by repairing the session's search
+
+	stopgap *stopgap // what to answer when time runs out; nil for none
+	hasty   bool     // looks for a stopgap
 }
 
 func (w *World) task(q Request) (*task, error) {
@@ -49,11 +56,14 @@ func (w *World) task(q Request) (*task, error) {
 	t := &task{w: w, q: q, j: judge.New(w.field, w.rules, b.Required(), b.RadiusUm)}
 	t.j.Ends = [2]geom.Point{q.Start.At, q.Goal.At}
 	t.free = w.masks.Mask(mask.Key{Um: b.Required(), RadiusUm: b.RadiusUm, Zones: true})
-	if q.Options.Preference == Balanced && q.Options.TightWeight > 0 {
-		t.j.Grade(q.Options.TightWeight, b.PreferredUm)
-		for _, um := range t.j.Levels {
-			t.levels = append(t.levels, w.masks.Mask(mask.Key{Um: um}))
+	switch q.Options.Preference {
+	case Balanced:
+		t.j.WideUm, t.j.Weight = b.PreferredUm, q.Options.TightWeight
+		if t.j.Weight > 0 {
+			t.levels = []*mask.Mask{w.masks.Mask(mask.Key{Um: b.PreferredUm})}
 		}
+	case Clearest:
+		t.j.WideUm = w.field.Cap()
 	}
 	return t, nil
 }
@@ -100,16 +110,25 @@ func (t *task) plan(ctx context.Context) (Answer, error) {
 // between plans between ends that can both be stood on.
 func (t *task) between(ctx context.Context) (Answer, error) {
 	c, err := t.course(ctx)
-	if err != nil {
-		return Answer{}, err
-	}
-	if c == nil {
+	if err == nil && c == nil {
 		var r *Refusal
-		if c, r, err = t.noPassage(ctx); err != nil || r != nil {
-			return Answer{Refusal: r}, err
+		if c, r, err = t.noPassage(ctx); err == nil && r != nil {
+			return Answer{Refusal: r}, nil
 		}
 	}
-	r, err := t.route(ctx, c)
+	if err != nil {
+		if !spent(ctx) {
+			return Answer{}, err
+		}
+		r, late := t.late(ctx)
+		if r == nil && late == nil {
+			late = err
+		}
+		return Answer{Route: r}, late
+	}
+	long, stop := lasting(ctx)
+	defer stop()
+	r, err := t.route(long, c)
 	if err != nil {
 		return Answer{}, err
 	}
@@ -126,44 +145,62 @@ type course struct {
 	bias    int64 // by how much wider than needed a passage may be that was missed; 0: as on grids
 }
 
-// direct is the straight way, when it can be driven and nothing can be cheaper.
+// direct is the straight way, when it can be driven and nothing can be cheaper. Where room
+// counts it must have all that is asked for.
 func (t *task) direct() *course {
 	s, g := t.q.Start.At, t.q.Goal.At
-	if t.q.Options.KeepRoadmapPath || !t.j.Sight(s, g) {
-		return nil
-	}
-	if cost, _ := t.j.Weigh(s, g); cost > geom.Dist(s, g) {
+	if t.q.Options.KeepRoadmapPath || !t.j.Keeps(s, g, t.j.Open()) {
 		return nil
 	}
 	return &course{pts: []geom.Point{s, g}, kind: Straight, roadmap: math.Inf(1)}
 }
 
-// course searches the roadmap; nil when there is no path over it.
+// course finds a way; nil when there is none, or none that what is searched can see.
 func (t *task) course(ctx context.Context) (*course, error) {
 	if c := t.direct(); c != nil {
 		return c, nil
 	}
-	o := t.q.Options
+	o := &t.q.Options
 	apart := false
-	if o.anyAngle() {
+	if o.anyAngle() || o.roomy() && o.Preference == Balanced && t.j.WideUm == t.j.NeedUm {
 		c, no, err := t.optimum(ctx)
 		if c != nil || err != nil {
 			return c, err
 		}
 		apart = no
 	}
-	q := &roadmap.Query{
+	if o.roomy() {
+		if c, err := t.roomy(ctx); c != nil || err != nil {
+			return c, err
+		}
+		apart = true
+	}
+	if apart {
+		if t.shut = roadmap.Connected(t.query()); t.shut != roadmap.Found {
+			return nil, nil
+		}
+	}
+	return t.overCells(ctx)
+}
+
+// query is the search of a roadmap of cells.
+func (t *task) query() *roadmap.Query {
+	return &roadmap.Query{
 		Frame: t.w.frame, Free: t.free, Levels: t.levels, Weight: t.j.Weight, Rules: t.w.rules,
 		From: t.connect(t.q.Start.At, false), To: t.connect(t.q.Goal.At, true), Count: &t.search,
 	}
-	if apart {
-		if t.shut = roadmap.Connected(q); t.shut != roadmap.Found {
-			return nil, nil
-		}
+}
+
+// overCells searches a roadmap of cells; nil when there is no path over it.
+func (t *task) overCells(ctx context.Context) (*course, error) {
+	o := &t.q.Options
+	if o.Preference == Clearest {
+		return t.clearCells(ctx)
 	}
 	var p roadmap.Path
 	var out roadmap.Outcome
 	var err error
+	q := t.query()
 	switch o.Roadmap {
 	case Quadtree:
 		p, out, err = roadmap.Quadtree(ctx, q)
@@ -184,10 +221,37 @@ func (t *task) course(ctx context.Context) (*course, error) {
 	pts := joined(t.q.Start.At, p.Points, t.q.Goal.At)
 	c := &course{pts: pts, kind: RoadmapOptimum, roadmap: p.CostUm}
 	if !o.KeepRoadmapPath {
-		c.pts, err = t.straighten(ctx, pts, p.CostUm)
+		c.pts, err = t.straighten(ctx, pts)
 		c.kind = AtMostRoadmapOptimum
 	}
 	return c, err
+}
+
+// clearSteps is how many clearances above the required one clearCells tries.
+const clearSteps = 4
+
+// clearCells is the shortest way over the 8-connected grid of cells that keep as much of
+// what both ends have as joins them, tried in equal steps down to the required
+// clearance; nil when there is none.
+func (t *task) clearCells(ctx context.Context) (*course, error) {
+	most := min(t.j.At(t.q.Start.At).Um, t.j.At(t.q.Goal.At).Um, t.j.Open())
+	for k := clearSteps; k >= 0; k-- {
+		n := *t
+		j := *t.j
+		n.j, n.q.Options.Preference = &j, Shortest
+		j.NeedUm += (int64(most) - t.j.NeedUm) * int64(k) / clearSteps
+		j.RadiusUm, j.WideUm = max(0, j.NeedUm-t.q.Body.MarginUm), 0
+		if k == 0 {
+			j.NeedUm, j.RadiusUm = t.j.NeedUm, t.j.RadiusUm
+		}
+		n.free = t.w.masks.Mask(mask.Key{Um: j.NeedUm, RadiusUm: j.RadiusUm, Zones: true})
+		c, err := n.overCells(ctx)
+		t.search, t.shut = n.search, n.shut
+		if c != nil || err != nil {
+			return c, err
+		}
+	}
+	return nil, nil
 }
 
 // joined puts the ends to a path, dropping points that repeat.
@@ -207,15 +271,9 @@ func joined(start geom.Point, path []geom.Point, goal geom.Point) []geom.Point {
 // leastGain is what a change of the straightened path must save, in cells.
 const leastGain = 1.0 / 50
 
-// straighten makes a driven path of a roadmap's. Where metres differ in cost its tight
-// stretches then go to the middle, for as long as the whole costs no more than most.
-func (t *task) straighten(ctx context.Context, pts []geom.Point, most float64) ([]geom.Point, error) {
-	gain := float64(leastGain * t.w.frame.Res)
-	pts, err := pull.Straighten(ctx, t.j, pts, gain)
-	if err != nil || t.j.Weight == 0 {
-		return pts, err
-	}
-	return pull.Relax(ctx, t.j, pts, gain, most-t.costOf(pts))
+// straighten makes a driven path of a roadmap's.
+func (t *task) straighten(ctx context.Context, pts []geom.Point) ([]geom.Point, error) {
+	return pull.Straighten(ctx, t.j, pts, float64(leastGain*t.w.frame.Res))
 }
 
 // route describes a course and has it checked.

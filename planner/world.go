@@ -14,15 +14,15 @@ import (
 )
 
 // World is one version made ready for planning: its clearance field, its zones, and
-// the free cells and meshes of the bodies that were planned for. What it answers never
+// the free cells, meshes and Voronoi edges for the bodies that were planned for. What it answers never
 // changes; it is safe for any number of readers.
 type World struct {
-	m      *floor.Map
-	field  *clearance.Field
-	rules  *rules.Rules
-	masks  *mask.Set
-	meshes *meshes
-	frame  roadmap.Frame
+	m     *floor.Map
+	field *clearance.Field
+	rules *rules.Rules
+	masks *mask.Set
+	ways  *ways
+	frame roadmap.Frame
 }
 
 // ErrTimeBudget is the cause to set on a context whose deadline is the request's own
@@ -37,7 +37,7 @@ func NewWorld(ctx context.Context, m *floor.Map) (*World, error) {
 		return nil, err
 	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, masks: mask.NewSet(f, r), meshes: newMeshes(m), frame: roadmap.FrameOf(m.Settings())}, nil
+	return &World{m: m, field: f, rules: r, masks: mask.NewSet(f, r), ways: newWays(f, newMeshes(m)), frame: roadmap.FrameOf(m.Settings())}, nil
 }
 
 // Advance makes m ready from the world of an earlier (or later) version of the
@@ -52,12 +52,12 @@ func (w *World) Advance(ctx context.Context, m *floor.Map) (*World, error) {
 	if err != nil {
 		return nil, err
 	}
-	g, err := w.meshes.carry(ctx, m, change)
+	g, err := w.ways.carry(ctx, f, change)
 	if err != nil {
 		return nil, err
 	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, masks: w.masks.Carry(f, r, closedBounds(change)), meshes: g, frame: w.frame}, nil
+	return &World{m: m, field: f, rules: r, masks: w.masks.Carry(f, r, closedBounds(change)), ways: g, frame: w.frame}, nil
 }
 
 // closedBounds are the bounds of the closed zones that differ, before and after.

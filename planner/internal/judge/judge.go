@@ -18,9 +18,9 @@ type Judge struct {
 	Rules    *rules.Rules
 	NeedUm   int64 // required clearance; at 0 the body is a point (package touch)
 	RadiusUm int64 // kept from closed zones; at 0 they are touched, not entered
-	// Levels are clearances, falling: a metre costs Weight/len(Levels) more for each that
-	// clearance is below there. None: all metres are alike.
-	Levels []int64
+	// WideUm is the preferred clearance: a metre costs Weight more where clearance is
+	// below it. 0: all metres are alike.
+	WideUm int64
 	Weight float64
 
 	// Ends are where the route asked for begins and ends. They alone may be places
@@ -36,19 +36,6 @@ type Judge struct {
 // New makes a judge for a body's required clearance and radius.
 func New(f *clearance.Field, r *rules.Rules, requiredUm, radiusUm int64) *Judge {
 	return &Judge{Field: f, Rules: r, NeedUm: requiredUm, RadiusUm: radiusUm}
-}
-
-// levels is how many steps the cost of a metre rises by as clearance falls from the
-// preferred one to the required one.
-const levels = 4
-
-// Grade makes metres cost more where clearance is below wideUm: in equal steps of
-// clearance and cost, by weight where it is nearly the required clearance.
-func (j *Judge) Grade(weight float64, wideUm int64) {
-	j.Weight, j.Levels = weight, nil
-	for k := int64(levels); k > 0; k-- {
-		j.Levels = append(j.Levels, j.NeedUm+((wideUm-j.NeedUm)*k+levels-1)/levels)
-	}
 }
 
 // end is At for the ends of pieces, of which one after another is often the same.
@@ -155,12 +142,7 @@ func (j *Judge) solids(a, b geom.Point) *touch.Solids {
 }
 
 // Open is the clearance from which on a piece costs its length.
-func (j *Judge) Open() float64 {
-	if j.Weight == 0 {
-		return 0
-	}
-	return float64(j.Levels[0])
-}
+func (j *Judge) Open() float64 { return float64(j.WideUm) }
 
 // Dearest is what a micrometre costs at most.
 func (j *Judge) Dearest() float64 { return 1 + j.Weight }
@@ -171,7 +153,7 @@ func (j *Judge) Allowed(a, b geom.Point) bool {
 }
 
 // Weigh is what the straight piece ab costs, in micrometres, and the smallest
-// clearance along it, at most Open. With no weight, clearance is not looked at.
+// clearance along it, at most Open. Where all metres are alike, clearance is not looked at.
 func (j *Judge) Weigh(a, b geom.Point) (cost, least float64) {
 	return j.Cost(a, b, math.Inf(1)), j.Least(a, b)
 }
@@ -180,20 +162,18 @@ func (j *Judge) Weigh(a, b geom.Point) (cost, least float64) {
 // may be something less, but still more than most.
 func (j *Judge) Cost(a, b geom.Point, most float64) float64 {
 	long := geom.Dist(a, b)
-	if j.Weight == 0 || long > most || j.Field.SegmentClear(a, b, j.Levels[0]) {
+	if j.Weight == 0 || long > most || j.Field.SegmentClear(a, b, j.WideUm) {
 		return long
 	}
-	g := grader{j: j, a: a, b: b, long: long}
-	each := j.Weight / float64(len(j.Levels))
-	g.most = (most - long) / each
+	g := grader{j: j, a: a, b: b, long: long, most: (most - long) / j.Weight}
 	pa, pb := g.at(a), g.at(b)
 	g.halve(0, 1, &pa, &pb)
-	return long + float64(each*g.sum)
+	return long + float64(j.Weight*g.sum)
 }
 
 // Least is the smallest clearance along the straight piece ab, at most Open.
 func (j *Judge) Least(a, b geom.Point) float64 {
-	if j.Weight == 0 || j.Field.SegmentClear(a, b, j.Levels[0]) {
+	if j.WideUm == 0 || j.Field.SegmentClear(a, b, j.WideUm) {
 		return j.Open()
 	}
 	return j.Segment(a, b).Um

@@ -85,8 +85,8 @@ func TestTightAgainstSamples(t *testing.T) {
 	})
 }
 
-// What a piece costs against sampling: the levels that clearance is below, at the middle of
-// many equal parts.
+// What a piece costs against sampling: whether clearance is below the preferred one, at the
+// middle of many equal parts.
 func TestWeighAgainstSamples(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		m := drawFloor(t)
@@ -95,7 +95,7 @@ func TestWeighAgainstSamples(t *testing.T) {
 			t.Fatal(err)
 		}
 		j := judge.New(f, rules.Of(m), rapid.Int64Range(0, 300_000).Draw(t, "need"), 0)
-		j.Grade(rapid.Float64Range(0.5, 4).Draw(t, "weight"), rapid.Int64Range(300_000, 2_500_000).Draw(t, "wide"))
+		j.Weight, j.WideUm = rapid.Float64Range(0.5, 4).Draw(t, "weight"), rapid.Int64Range(300_000, 2_500_000).Draw(t, "wide")
 		in := func(label string) geom.Point {
 			return geom.Point{X: float64(rapid.Int64Range(0, 5_000_000).Draw(t, label)), Y: float64(rapid.Int64Range(0, 4_000_000).Draw(t, label))}
 		}
@@ -109,23 +109,21 @@ func TestWeighAgainstSamples(t *testing.T) {
 		want, changes, last := long, 0, -1
 		for k := range samples {
 			below := 0
-			for _, um := range j.Levels {
-				if f.At(judge.Along(a, b, (float64(k)+0.5)/samples)).Um < float64(um) {
-					below++
-				}
+			if f.At(judge.Along(a, b, (float64(k)+0.5)/samples)).Um < float64(j.WideUm) {
+				below = 1
 			}
-			want += j.Weight / float64(len(j.Levels)) * float64(below) * long / samples
+			want += j.Weight * float64(below) * long / samples
 			if below != last {
 				changes, last = changes+max(below-last, last-below), below
 			}
 		}
-		// Each change of level is off by half a sample and by the resolution; two changes
+		// Each change is off by half a sample and by the resolution; two changes
 		// may hide between two samples.
-		each := j.Weight / float64(len(j.Levels)) * (long/samples + judge.TightResolution)
+		each := j.Weight * (long/samples + judge.TightResolution)
 		if got < want-float64(changes+4)*each || got > want+float64(changes+4)*each {
 			t.Fatalf("costs %f, sampled %f, %d changes", got, want, changes)
 		}
-		if low := min(f.Segment(a, b).Um, float64(j.Levels[0])); least < low-1e-3 || least > f.Segment(a, b).Um+1e-3 {
+		if low := min(f.Segment(a, b).Um, j.Open()); least < low-1e-3 || least > f.Segment(a, b).Um+1e-3 {
 			t.Fatalf("smallest clearance %f, is %f", least, low)
 		}
 	})

@@ -1,0 +1,207 @@
+package planner
+
+import (
+	"context"
+	"fmt"
+	"slices"
+	"sync"
+)
+
+const (
+	// shelfIdle is for how many versions a structure is brought up to date without being
+	// asked for.
+	shelfIdle = 64
+	// unattendedLimit is how many makings that nobody waits for any more go on, of each kind
+	// of structure and in each version.
+	unattendedLimit = 2
+)
+
+// shelf keeps structures of one version, each made when it is first asked for. It is
+// safe for any number of callers: those who ask for one at once wait for one making of
+// it, others do not wait. Whoever waits may leave; the making goes on for the next
+// question, within unattendedLimit.
+type shelf[K comparable, V any] struct {
+	limit int
+	make  func(context.Context, K) (V, error)
+	mu    sync.Mutex    // held to look at or change the fields below and those of what is kept
+	kept  []*kept[K, V] // at most limit; the one asked for last is last
+	// making are those not done yet, kept or not, oldest first.
+	making []*kept[K, V]
+}
+
+// kept is a structure, or one in the making.
+type kept[K comparable, V any] struct {
+	key     K
+	idle    int // versions since it was asked for
+	waiters int
+	cancel  context.CancelFunc
+	done    chan struct{} // closed once val and err are set
+	val     V
+	err     error
+}
+
+func (e *kept[K, V]) ready() bool {
+	select {
+	case <-e.done:
+		return true
+	default:
+		return false
+	}
+}
+
+// get is the structure for k. The error is ctx's cause, or that of its making.
+func (s *shelf[K, V]) get(ctx context.Context, k K) (v V, err error) {
+	if ctx.Err() != nil {
+		return v, context.Cause(ctx)
+	}
+	return s.wait(ctx, s.find(k))
+}
+
+// peek is the structure for k if it is there; it asks for none.
+func (s *shelf[K, V]) peek(k K) (v V, ok bool) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if e := s.held(k); e != nil && e.ready() && e.err == nil {
+		return e.val, true
+	}
+	return v, false
+}
+
+// wait waits for what find gave.
+func (s *shelf[K, V]) wait(ctx context.Context, e *kept[K, V]) (v V, err error) {
+	select {
+	case <-e.done:
+	case <-ctx.Done():
+		err = context.Cause(ctx)
+	}
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	e.waiters--
+	if err == nil {
+		return e.val, e.err
+	}
+	s.thin()
+	return v, err
+}
+
+// thin ends makings that nobody waits for, the oldest first, down to the limit; s.mu is held.
+func (s *shelf[K, V]) thin() {
+	var alone []*kept[K, V]
+	for _, e := range s.making {
+		if e.waiters == 0 {
+			alone = append(alone, e)
+		}
+	}
+	for ; len(alone) > unattendedLimit; alone = alone[1:] {
+		alone[0].cancel()
+		s.drop(alone[0])
+	}
+}
+
+func (s *shelf[K, V]) held(k K) *kept[K, V] {
+	if i := slices.IndexFunc(s.kept, func(e *kept[K, V]) bool { return e.key == k }); i >= 0 {
+		return s.kept[i]
+	}
+	return nil
+}
+
+// find is what is kept for k, its making begun if need be; the caller counts as a waiter.
+func (s *shelf[K, V]) find(k K) *kept[K, V] {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	e := s.held(k)
+	if e == nil {
+		e = s.begin(k, func(ctx context.Context) (V, error) { return s.make(ctx, k) })
+	} else if i := slices.Index(s.kept, e); i < len(s.kept)-1 {
+		copy(s.kept[i:], s.kept[i+1:])
+		s.kept[len(s.kept)-1] = e
+	}
+	e.idle = 0
+	e.waiters++
+	return e
+}
+
+// begin starts a making; s.mu is held.
+func (s *shelf[K, V]) begin(k K, make func(context.Context) (V, error)) *kept[K, V] {
+	ctx, cancel := context.WithCancel(context.Background())
+	e := &kept[K, V]{key: k, cancel: cancel, done: newDone()}
+	s.put(e)
+	s.making = append(s.making, e)
+	go func() {
+		defer cancel()
+		v, err := guarded(ctx, make)
+		s.mu.Lock()
+		defer s.mu.Unlock()
+		if e.val, e.err = v, err; err != nil {
+			s.drop(e)
+		}
+		s.making = slices.DeleteFunc(s.making, func(o *kept[K, V]) bool { return o == e })
+		close(e.done)
+	}()
+	return e
+}
+
+func newDone() chan struct{} { return make(chan struct{}) }
+
+// put adds e as the one asked for last; s.mu is held.
+func (s *shelf[K, V]) put(e *kept[K, V]) {
+	if len(s.kept) == s.limit {
+		s.kept = slices.Delete(s.kept, 0, 1) // whoever waits for it has it still
+	}
+	s.kept = append(s.kept, e)
+}
+
+// guarded makes a structure. It runs apart from any call, so a panic, a fault of this
+// program, becomes an error for those who wait rather than the process's end.
+func guarded[V any](ctx context.Context, make func(context.Context) (V, error)) (v V, err error) {
+	defer func() {
+		if p := recover(); p != nil {
+			err = fmt.Errorf("planner: making a structure: %v", p)
+		}
+	}()
+	return make(ctx)
+}
+
+// drop forgets e; s.mu is held.
+func (s *shelf[K, V]) drop(e *kept[K, V]) {
+	s.kept = slices.DeleteFunc(s.kept, func(o *kept[K, V]) bool { return o == e })
+}
+
+// carry fills n, the shelf of another version, from what is made and in use here. What
+// is still in the making is carried on once it is made, in the background. The error is
+// ctx's.
+func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(context.Context, K, V) (V, error)) error {
+	var ready []*kept[K, V]
+	s.mu.Lock()
+	n.mu.Lock()
+	for _, e := range s.kept {
+		switch {
+		case e.idle >= shelfIdle:
+		case !e.ready():
+			e.waiters++
+			n.begin(e.key, func(ctx context.Context) (V, error) {
+				v, err := s.wait(ctx, e)
+				if err != nil {
+					return v, err
+				}
+				return advance(ctx, e.key, v)
+			}).idle = e.idle + 1
+		default:
+			ready = append(ready, e)
+		}
+	}
+	n.mu.Unlock()
+	s.mu.Unlock()
+	for _, e := range ready {
+		v, err := advance(ctx, e.key, e.val)
+		if err != nil {
+			return err
+		}
+		done := newDone()
+		close(done)
+		n.mu.Lock()
+		n.put(&kept[K, V]{key: e.key, idle: e.idle + 1, cancel: func() {}, done: done, val: v})
+		n.mu.Unlock()
+	}
+	return nil
+}
