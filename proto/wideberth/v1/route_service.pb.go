@@ -105,9 +105,24 @@ const (
 	Roadmap_ROADMAP_QUADTREE Roadmap = 3
 	// Convex cells of the space that is clear, crossed in any direction: the optimum
 	// over all directions (BOUND_KIND_ANY_ANGLE_OPTIMUM). For PREFERENCE_SHORTEST
-	// alone (else INVALID_ARGUMENT); there is no path of the roadmap's own to keep. Where that optimum goes against a one-way zone, ROADMAP_GRID8 is
-	// searched instead and the bound says so.
+	// alone (else INVALID_ARGUMENT); there is no path of the roadmap's own to keep.
+	// Where that optimum goes against a one-way zone, ROADMAP_GRID8 is searched
+	// instead and the bound says so.
 	Roadmap_ROADMAP_CONVEX_CELLS Roadmap = 4
+	// The visibility graph of the grown solids: tangents and arcs about their corners.
+	// Raster solids enter with outlines simplified on the outside. This and those
+	// below are for PREFERENCE_SHORTEST alone (else INVALID_ARGUMENT), obey no one-way
+	// zone (a way that goes against one is refused with the zone named), and are
+	// described and compared by RoadmapService. With keep_roadmap_path the answer is the
+	// roadmap's own way, else that way straightened.
+	Roadmap_ROADMAP_VISIBILITY_GRAPH Roadmap = 5
+	// Convex regions, crossed at the middles of the borders they share; then path
+	// relaxation within the regions.
+	Roadmap_ROADMAP_MEADOW_MAP Roadmap = 6
+	// The edges as far from one solid as from another, and the floor beyond the cap.
+	Roadmap_ROADMAP_VORONOI_GRAPH Roadmap = 7
+	// Vertical trapezoids, crossed at the middles of the borders they share.
+	Roadmap_ROADMAP_EXACT_CELLS Roadmap = 8
 )
 
 // Enum value maps for Roadmap.
@@ -118,13 +133,21 @@ var (
 		2: "ROADMAP_GRID8",
 		3: "ROADMAP_QUADTREE",
 		4: "ROADMAP_CONVEX_CELLS",
+		5: "ROADMAP_VISIBILITY_GRAPH",
+		6: "ROADMAP_MEADOW_MAP",
+		7: "ROADMAP_VORONOI_GRAPH",
+		8: "ROADMAP_EXACT_CELLS",
 	}
 	Roadmap_value = map[string]int32{
-		"ROADMAP_UNSPECIFIED":  0,
-		"ROADMAP_GRID4":        1,
-		"ROADMAP_GRID8":        2,
-		"ROADMAP_QUADTREE":     3,
-		"ROADMAP_CONVEX_CELLS": 4,
+		"ROADMAP_UNSPECIFIED":      0,
+		"ROADMAP_GRID4":            1,
+		"ROADMAP_GRID8":            2,
+		"ROADMAP_QUADTREE":         3,
+		"ROADMAP_CONVEX_CELLS":     4,
+		"ROADMAP_VISIBILITY_GRAPH": 5,
+		"ROADMAP_MEADOW_MAP":       6,
+		"ROADMAP_VORONOI_GRAPH":    7,
+		"ROADMAP_EXACT_CELLS":      8,
 	}
 )
 
@@ -3008,13 +3031,17 @@ const file_wideberth_v1_route_service_proto_rawDesc = "" +
 	"\x16PREFERENCE_UNSPECIFIED\x10\x00\x12\x17\n" +
 	"\x13PREFERENCE_SHORTEST\x10\x01\x12\x17\n" +
 	"\x13PREFERENCE_BALANCED\x10\x02\x12\x17\n" +
-	"\x13PREFERENCE_CLEAREST\x10\x03*x\n" +
+	"\x13PREFERENCE_CLEAREST\x10\x03*\xe2\x01\n" +
 	"\aRoadmap\x12\x17\n" +
 	"\x13ROADMAP_UNSPECIFIED\x10\x00\x12\x11\n" +
 	"\rROADMAP_GRID4\x10\x01\x12\x11\n" +
 	"\rROADMAP_GRID8\x10\x02\x12\x14\n" +
 	"\x10ROADMAP_QUADTREE\x10\x03\x12\x18\n" +
-	"\x14ROADMAP_CONVEX_CELLS\x10\x04*k\n" +
+	"\x14ROADMAP_CONVEX_CELLS\x10\x04\x12\x1c\n" +
+	"\x18ROADMAP_VISIBILITY_GRAPH\x10\x05\x12\x16\n" +
+	"\x12ROADMAP_MEADOW_MAP\x10\x06\x12\x19\n" +
+	"\x15ROADMAP_VORONOI_GRAPH\x10\a\x12\x17\n" +
+	"\x13ROADMAP_EXACT_CELLS\x10\b*k\n" +
 	"\n" +
 	"SpeedCause\x12\x1b\n" +
 	"\x17SPEED_CAUSE_UNSPECIFIED\x10\x00\x12\x14\n" +
