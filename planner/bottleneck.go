@@ -15,6 +15,9 @@ import (
 // turns out to be wide enough after all, between cells that are not free as a whole,
 // it becomes the course, unless the request names its roadmap.
 func (t *task) noPassage(ctx context.Context) (*course, *Refusal, error) {
+	if t.barred != nil {
+		return nil, &Refusal{Reason: NoPassage, Bottleneck: t.barred}, nil
+	}
 	if t.q.Options.unnamed() {
 		if c, r, err := t.exactly(ctx); c != nil || r != nil || err != nil {
 			return c, r, err

@@ -46,6 +46,8 @@ type task struct {
 
 	stopgap *stopgap // what to answer when time runs out; nil for none
 	hasty   bool     // looks for a stopgap
+
+	barred *Bottleneck // the zone that a named roadmap's way goes against
 }
 
 func (w *World) task(q Request) (*task, error) {
@@ -161,6 +163,9 @@ func (t *task) course(ctx context.Context) (*course, error) {
 		return c, nil
 	}
 	o := &t.q.Options
+	if o.classic() {
+		return t.classic(ctx)
+	}
 	apart := false
 	if o.anyAngle() || o.roomy() && o.Preference == Balanced && t.j.WideUm == t.j.NeedUm {
 		c, no, err := t.optimum(ctx)

@@ -22,9 +22,13 @@ const (
 // question, within unattendedLimit.
 type shelf[K comparable, V any] struct {
 	limit int
-	make  func(context.Context, K) (V, error)
-	mu    sync.Mutex    // held to look at or change the fields below and those of what is kept
-	kept  []*kept[K, V] // at most limit; the one asked for last is last
+	idle  int // 0: shelfIdle
+	// behind says that structures are brought up to date in the background, whoever asks
+	// for one meanwhile waiting for it.
+	behind bool
+	make   func(context.Context, K) (V, error)
+	mu     sync.Mutex    // held to look at or change the fields below and those of what is kept
+	kept   []*kept[K, V] // at most limit; the one asked for last is last
 	// making are those not done yet, kept or not, oldest first.
 	making []*kept[K, V]
 }
@@ -141,6 +145,13 @@ func (s *shelf[K, V]) begin(k K, make func(context.Context) (V, error)) *kept[K,
 	return e
 }
 
+func (s *shelf[K, V]) idleLimit() int {
+	if s.idle > 0 {
+		return s.idle
+	}
+	return shelfIdle
+}
+
 func newDone() chan struct{} { return make(chan struct{}) }
 
 // put adds e as the one asked for last; s.mu is held.
@@ -176,8 +187,8 @@ func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(co
 	n.mu.Lock()
 	for _, e := range s.kept {
 		switch {
-		case e.idle >= shelfIdle:
-		case !e.ready():
+		case e.idle >= s.idleLimit():
+		case !e.ready() || s.behind:
 			e.waiters++
 			n.begin(e.key, func(ctx context.Context) (V, error) {
 				v, err := s.wait(ctx, e)

@@ -47,6 +47,11 @@ const (
 	Grid8
 	Quadtree
 	ConvexCells // any-angle optima over convex cells; for Shortest alone
+	// The classical roadmaps, for Shortest alone; they obey no one-way zone.
+	VisibilityGraph
+	MeadowMap
+	VoronoiGraph
+	ExactCells
 )
 
 // Options say how to plan. The zero value is a balanced plan on the default roadmap

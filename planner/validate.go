@@ -64,8 +64,8 @@ func (f *fault) pose(field string, p Pose) {
 
 func (f *fault) options(o Options, s floor.Settings) {
 	f.check(o.Preference <= Clearest, "options.preference", "%d: want balanced, shortest or clearest", o.Preference)
-	f.check(o.Roadmap <= ConvexCells, "options.roadmap", "%d: want auto, grid4, grid8, quadtree or convex cells", o.Roadmap)
-	f.check(o.Roadmap != ConvexCells || o.Preference == Shortest, "options.roadmap", "convex cells: want preference shortest")
+	f.check(o.Roadmap <= ExactCells, "options.roadmap", "%d: want a roadmap that there is", o.Roadmap)
+	f.check(o.Roadmap < ConvexCells || o.Preference == Shortest, "options.roadmap", "convex cells, visibility graph, meadow map, Voronoi graph and exact cells: want preference shortest")
 	f.check(o.Roadmap == Auto || o.Preference != Clearest, "options.roadmap", "%d: want auto for preference clearest", o.Roadmap)
 	f.check(o.TightWeight >= 0 && o.TightWeight <= MaxTightWeight, "options.tight_weight", "%g: want 0 to %d", o.TightWeight, MaxTightWeight)
 	f.check(o.TightBelowUm >= 0 && o.TightBelowUm <= s.CapUm, "options.tight_below_m", "%g: want 0 up to the floor's clearance cap, %g", geom.Metres(float64(o.TightBelowUm)), geom.Metres(float64(s.CapUm)))

@@ -11,6 +11,7 @@ import (
 	"example.com/wideberth/planner/internal/mask"
 	"example.com/wideberth/planner/internal/roadmap"
 	"example.com/wideberth/planner/internal/rules"
+	roadmaps "example.com/wideberth/planner/roadmap"
 )
 
 // World is one version made ready for planning: its clearance field, its zones, and
@@ -22,7 +23,9 @@ type World struct {
 	rules *rules.Rules
 	masks *mask.Set
 	ways  *ways
-	frame roadmap.Frame
+	// classics are the roadmaps that engineers asked for by name.
+	classics *shelf[classicKey, roadmaps.Roadmap]
+	frame    roadmap.Frame
 }
 
 // ErrTimeBudget is the cause to set on a context whose deadline is the request's own
@@ -37,7 +40,7 @@ func NewWorld(ctx context.Context, m *floor.Map) (*World, error) {
 		return nil, err
 	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, masks: mask.NewSet(f, r), ways: newWays(f, newMeshes(m)), frame: roadmap.FrameOf(m.Settings())}, nil
+	return &World{m: m, field: f, rules: r, masks: mask.NewSet(f, r), ways: newWays(f, newMeshes(m)), classics: newClassics(f), frame: roadmap.FrameOf(m.Settings())}, nil
 }
 
 // Advance makes m ready from the world of an earlier (or later) version of the
@@ -56,8 +59,15 @@ func (w *World) Advance(ctx context.Context, m *floor.Map) (*World, error) {
 	if err != nil {
 		return nil, err
 	}
+	classics := newClassics(f)
+	err = w.classics.carry(ctx, classics, func(ctx context.Context, _ classicKey, r roadmaps.Roadmap) (roadmaps.Roadmap, error) {
+		return r.Advance(ctx, f, change)
+	})
+	if err != nil {
+		return nil, err
+	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, masks: w.masks.Carry(f, r, closedBounds(change)), ways: g, frame: w.frame}, nil
+	return &World{m: m, field: f, rules: r, masks: w.masks.Carry(f, r, closedBounds(change)), ways: g, classics: classics, frame: w.frame}, nil
 }
 
 // closedBounds are the bounds of the closed zones that differ, before and after.
