@@ -110,7 +110,7 @@ func bytesOf(f func()) float64 {
 // takes, which no clock disturbs.
 func TestFirstPlanOnANewVersionMakesNothing(t *testing.T) {
 	defer debug.SetGCPercent(debug.SetGCPercent(-1)) // pools keep what they have
-	for _, preference := range []pb.Preference{pb.Preference_PREFERENCE_SHORTEST} {
+	for _, preference := range []pb.Preference{pb.Preference_PREFERENCE_SHORTEST, pb.Preference_PREFERENCE_BALANCED, pb.Preference_PREFERENCE_CLEAREST} {
 		name := preference.String()
 		r := start(t)
 		req := create()

@@ -16,8 +16,11 @@ const (
 	// beside what the search itself may take.
 	prepareGrace = 5 * time.Second
 	// answerShare is the part of a time budget, and of the caller's remaining time, that
-	// is kept back for describing and sending the answer, so that it arrives in time.
+	// is kept back for describing and sending the answer, so that it arrives in time;
+	// answerLeast is the least, since a planner whose time is up may still look for a
+	// way for 20 ms, where that leaves half of the time.
 	answerShare = 10
+	answerLeast = 25 * time.Millisecond
 	// retryOutOfTime is a refusal's retry_after_s when the time budget ran out: the
 	// search itself would do the same again, the machine may be less busy.
 	retryOutOfTime = time.Second
@@ -49,7 +52,9 @@ func timed(ctx context.Context, d time.Duration, cause error) (context.Context, 
 }
 
 // beforeAnswer is what is left of d for all but describing and sending the answer.
-func beforeAnswer(d time.Duration) time.Duration { return d - d/answerShare }
+func beforeAnswer(d time.Duration) time.Duration {
+	return d - max(d/answerShare, min(answerLeast, d/2))
+}
 
 // search makes a version ready, takes a lane and runs one search in it, within the
 // budget. When a budget that was asked for runs out before the version is ready, the

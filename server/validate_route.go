@@ -98,7 +98,7 @@ func checkMeeting(o *pb.PlanOptions, p *field, f *faults) {
 	switch {
 	case clearest && o.Roadmap != pb.Roadmap_ROADMAP_UNSPECIFIED:
 		f.add(p.at("roadmap"), "%s, wanted none with PREFERENCE_CLEAREST", o.Roadmap)
-	case o.Roadmap == pb.Roadmap_ROADMAP_CONVEX_CELLS && o.Preference != pb.Preference_PREFERENCE_SHORTEST:
+	case o.Roadmap >= pb.Roadmap_ROADMAP_CONVEX_CELLS && o.Preference != pb.Preference_PREFERENCE_SHORTEST:
 		f.add(p.at("roadmap"), "%s, wanted another or none unless with PREFERENCE_SHORTEST", o.Roadmap)
 	}
 	if clearest && o.KeepRoadmapPath {

@@ -209,6 +209,9 @@ func (d *drawing) facts() []fact {
 	if r := d.scene.Route; r != nil {
 		say(fmt.Sprintf("Route %.1f m, about %.0f s at the advised speed ceilings", r.GetLengthM(), r.GetDurationS()))
 		say("Smallest clearance " + metres(r.GetSmallestClearanceM()) + " at " + placeWords(r.GetSmallestAt()))
+		if r.GetBound().GetCutShort() {
+			say("The time budget ran out: the best route found by then")
+		}
 		d.tightFacts(&out)
 	}
 	if r := d.scene.Refusal; r != nil {

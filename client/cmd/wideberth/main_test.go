@@ -171,6 +171,31 @@ func TestPlanRefusedExits6AndSaysWhy(t *testing.T) {
 	}
 }
 
+// An answer that the time budget cut short says so beside its figures, and is a route.
+func TestCutShortIsSaid(t *testing.T) {
+	t.Parallel()
+	var out bytes.Buffer
+	a := &app{stdout: &out}
+	cut := &wideberthv1.Bound{CutShort: true, GapShare: 0.12301}
+	for name, print := range map[string]func() error{
+		"plan": func() error {
+			return a.printPlan(&wideberthv1.PlanResponse{Outcome: &wideberthv1.PlanResponse_Route{Route: &wideberthv1.Route{Bound: cut}}})
+		},
+		"reach": func() error {
+			r := reached{app: a, flags: &reachFlags{from: []string{"dock-1"}, to: []string{"dock-2"}}, ways: []way{{summary: &wideberthv1.RouteSummary{Bound: cut}}}}
+			return r.finish()
+		},
+	} {
+		out.Reset()
+		if err := print(); err != nil || !strings.Contains(out.String(), "time ran out; at most 12.4 % dearer than the best") {
+			t.Errorf("%s (%v) does not say that it was cut short:\n%s", name, err, &out)
+		}
+	}
+	if words := cutShort(&wideberthv1.Bound{}); words != "" {
+		t.Errorf("a search that ended: %q", words)
+	}
+}
+
 func TestVersionsCompareRestore(t *testing.T) {
 	t.Parallel()
 	x := hall(t)
@@ -320,6 +345,7 @@ func TestUsageExits2(t *testing.T) {
 		{"plan", "hall", "--from", "0,0", "--to", "1,1", "--radius", "1", "--roadmap", "grid6"},
 		{"plan", "hall", "--from", "0,0", "--to", "1,1", "--radius", "1", "--preference", "scenic"},
 		{"plan", "hall", "--from", "0,0", "--to", "1,1", "--radius", "1", "--shortest", "--balanced"},
+		{"plan", "hall", "--from", "0,0", "--to", "1,1", "--radius", "1", "--clearest", "--preference", "clearest"},
 		{"trial", "--map", "x"},
 		{"floors", "--server", "no-port"},
 		{"floors", "--server", "192.0.2.1:7443"},

@@ -68,6 +68,9 @@ func choice(flag, text, prefix string, values map[string]int32, want string) (in
 	return v, nil
 }
 
+// preferenceNames are what --preference takes.
+const preferenceNames = "shortest, balanced or clearest"
+
 // roadmapNames are what --roadmap takes.
 const roadmapNames = "auto, grid4, grid8, quadtree or convex-cells"
 

@@ -2,6 +2,7 @@ package main
 
 import (
 	"fmt"
+	"math"
 	"os"
 	"strings"
 
@@ -23,7 +24,7 @@ type questionFlags struct {
 	body, preference, roadmap              string
 	radius, margin, preferred, tightWeight float64
 	budget, spacing                        float64
-	shortest, balanced, keep               bool
+	shortest, balanced, clearest, keep     bool
 	version                                int64
 }
 
@@ -87,16 +88,17 @@ func (p *questionFlags) add(cmd *cobra.Command) {
 	f.Float64Var(&p.radius, "radius", 0, "half the body's width, load included, in `metres`")
 	f.Float64Var(&p.margin, "margin", 0, "kept free beyond the radius, in `metres`")
 	f.Float64Var(&p.preferred, "preferred", 0, "clearance to keep where the floor allows, in `metres`")
-	f.StringVar(&p.preference, "preference", "balanced", "what the route should be: shortest or balanced")
+	f.StringVar(&p.preference, "preference", "balanced", "what the route should be: "+preferenceNames)
 	f.BoolVar(&p.shortest, "shortest", false, "the same as --preference shortest")
 	f.BoolVar(&p.balanced, "balanced", false, "the same as --preference balanced")
-	f.Float64Var(&p.tightWeight, "tight-weight", 0, "balanced: how much more a tight metre costs; 0 asks for 1")
-	f.StringVar(&p.roadmap, "roadmap", "auto", "which roadmap to search: "+roadmapNames+"; convex-cells for --shortest alone")
+	f.BoolVar(&p.clearest, "clearest", false, "the same as --preference clearest")
+	f.Float64Var(&p.tightWeight, "tight-weight", 0, "balanced: how much more a metre below the preferred clearance costs; 0 asks for 1")
+	f.StringVar(&p.roadmap, "roadmap", "auto", "which roadmap to search: "+roadmapNames+"; convex-cells for --shortest alone, auto alone for --clearest")
 	f.BoolVar(&p.keep, "keep-roadmap-path", false, "the roadmap's own path, without straightening")
 	f.Float64Var(&p.spacing, "max-spacing", 0, "the most `metres` between two points; 0 sends points where they matter")
-	f.Float64Var(&p.budget, "time-budget", 0, "how many `seconds` the search may take; 0 asks for the server's own")
+	f.Float64Var(&p.budget, "time-budget", 0, "how many `seconds` the answer may take; when they run out it is the best route found by then; 0 asks for the server's own bound")
 	f.Int64Var(&p.version, "version", 0, "plan on this `version`; default the head")
-	cmd.MarkFlagsMutuallyExclusive("shortest", "balanced", "preference")
+	cmd.MarkFlagsMutuallyExclusive("shortest", "balanced", "clearest", "preference")
 }
 
 // caution says beside every answer what it is not.
@@ -126,10 +128,13 @@ func (p *planFlags) request(cmd *cobra.Command, floor string) (*wideberthv1.Plan
 // question makes a request without its ends.
 func (p *questionFlags) question(cmd *cobra.Command, floor string) (*wideberthv1.PlanRequest, error) {
 	preference := p.preference
-	if p.shortest {
+	switch {
+	case p.shortest:
 		preference = "shortest"
+	case p.clearest:
+		preference = "clearest"
 	}
-	pref, err := choice("preference", preference, "PREFERENCE_", wideberthv1.Preference_value, "shortest or balanced")
+	pref, err := choice("preference", preference, "PREFERENCE_", wideberthv1.Preference_value, preferenceNames)
 	if err != nil {
 		return nil, err
 	}
@@ -191,6 +196,9 @@ func (a *app) printPlan(resp *wideberthv1.PlanResponse) error {
 	if bias := r.GetBound().GetWidthBiasM(); bias > 0 {
 		about = append(about, []string{"may have missed", fmt.Sprintf("passages up to %s m wider than needed", up(bias))})
 	}
+	if words := cutShort(r.GetBound()); words != "" {
+		about = append(about, []string{"cut short", words})
+	}
 	about = append(about, []string{"nodes opened", number(resp.GetCounters().GetExpanded())})
 	if err := a.table(about...); err != nil {
 		return err
@@ -210,6 +218,14 @@ func (a *app) printPlan(resp *wideberthv1.PlanResponse) error {
 		})
 	}
 	return a.table(rows...)
+}
+
+// cutShort says how good a route is that the time budget cut short; empty for others.
+func cutShort(b *wideberthv1.Bound) string {
+	if !b.GetCutShort() {
+		return ""
+	}
+	return fmt.Sprintf("time ran out; at most %.1f %% dearer than the best there may be", math.Ceil(b.GetGapShare()*1000)/10)
 }
 
 func refusalRows(r *wideberthv1.Refusal) [][]string {

@@ -212,11 +212,11 @@ func (r *reached) finish() error {
 		}
 		return cmp.Or(refused(a)-refused(b), cmp.Compare(a.summary.GetCostM(), b.summary.GetCostM()), a.start-b.start, a.goal-b.goal)
 	})
-	rows := [][]string{{"FROM", "TO", "COST", "LENGTH", "TIME", "SMALLEST", "WHY NOT"}}
+	rows := [][]string{{"FROM", "TO", "COST", "LENGTH", "TIME", "SMALLEST", "REMARK"}}
 	for _, w := range r.ways {
 		row := []string{r.flags.from[w.start], r.flags.to[w.goal]}
 		if s := w.summary; s != nil {
-			row = append(row, metres(s.GetCostM()), metres(s.GetLengthM()), fmt.Sprintf("%.1f s", s.GetDurationS()), down(s.GetSmallestClearanceM()), "-")
+			row = append(row, metres(s.GetCostM()), metres(s.GetLengthM()), fmt.Sprintf("%.1f s", s.GetDurationS()), down(s.GetSmallestClearanceM()), or(cutShort(s.GetBound()), "-"))
 		} else {
 			row = append(row, "-", "-", "-", "-", word(w.refusal.GetReason(), "REFUSAL_REASON_")+": "+plain(w.refusal.GetExplanation()))
 		}
