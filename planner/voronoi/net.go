@@ -1,6 +1,7 @@
 package voronoi
 
 import (
+	"math"
 	"slices"
 
 	"example.com/wideberth/mapstore/geom"
@@ -16,9 +17,16 @@ type net struct {
 
 func (n *net) siblings(piece int32) []int32 { return n.list[n.begin[piece]:n.begin[piece+1]] }
 
-// maxNets bounds the required clearances whose nets are kept; a floor has as many as
-// kinds of bodies.
-const maxNets = 32
+const (
+	// maxNets bounds the clearances whose nets are kept: those required, as many as there
+	// are kinds of bodies on a floor, and netLevels.
+	maxNets = 64
+	// netLevels is how many nets serve for all bottlenecks.
+	netLevels = 32
+)
+
+// netLevel is the next clearance below um, or um itself, for which a net is kept.
+func (w *Roads) netLevel(um float64) float64 { return math.Floor(um/w.p*netLevels) * w.p / netLevels }
 
 // netOf is the net for clearance r, kept for the next time.
 func (w *Roads) netOf(r float64) *net {

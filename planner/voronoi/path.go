@@ -73,7 +73,7 @@ func (w *Roads) Clearest(ctx context.Context, s, t geom.Point, r int64) (p Path,
 	if err != nil || !ok || b.ClearanceUm < float64(r)-tieUm {
 		return p, b, false, err
 	}
-	p, ok, err = w.search(ctx, s, t, b.ClearanceUm, min(float64(r), b.ClearanceUm), 0)
+	p, ok, err = w.search(ctx, s, t, b.ClearanceUm, w.netLevel(b.ClearanceUm), 0)
 	return p, b, ok, err
 }
 
