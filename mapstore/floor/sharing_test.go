@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"encoding/hex"
 	"fmt"
+	"math"
 	"math/rand/v2"
 	"runtime"
 	"sync"
@@ -102,19 +103,57 @@ func heap() uint64 {
 	return s.HeapAlloc
 }
 
+// versionsMemory is what one version of a surveyed floor with 2,000 racks takes in bytes,
+// and that version with n more, each a patch of 1 m²: every other paints cells, every
+// other puts a feature, moves it or takes it away.
+func versionsMemory(t testing.TB, n int) (one, all uint64, versions []*Map) {
+	before := heap()
+	var racks []Edit
+	for k := range 2000 {
+		racks = append(racks, put(solidSquare(fmt.Sprintf("rack-%d", k), float64(k%50), float64(k/50))))
+	}
+	m := mustApply(t, survey(t), racks...)
+	racks = nil
+	one = heap() - before
+	r := rand.New(rand.NewPCG(3, 4))
+	versions = append(versions, m)
+	for k := range n {
+		edit := squareMetre(r)
+		switch {
+		case k%10 == 9:
+			edit = Edit{Kind: RemoveFeature, Name: fmt.Sprint("box-", k/10)}
+		case k%2 == 1:
+			edit = put(solidSquare(fmt.Sprint("box-", k/10), 200*r.Float64(), 200*r.Float64()))
+		}
+		m = mustApply(t, m, edit)
+		versions = append(versions, m)
+	}
+	return one, heap() - before, versions
+}
+
+// solidSquare is 1 m² with its lower left corner at (x, y) metres.
+func solidSquare(name string, x, y float64) *Feature {
+	x, y = math.Round(x*geom.UmPerMetre), math.Round(y*geom.UmPerMetre)
+	return &Feature{Name: name, Kind: Solid, Shape: NewPolygon([][]geom.Point{pts(x, y, x+1e6, y, x+1e6, y+1e6, x, y+1e6)}, 0)}
+}
+
+// BenchmarkVersionMemory reports what each of 1,000 versions takes beyond the first, and
+// how many times the memory of one all of them take.
+func BenchmarkVersionMemory(b *testing.B) {
+	const n = 1000
+	for b.Loop() {
+		one, all, versions := versionsMemory(b, n)
+		b.ReportMetric(float64(all-one)/n, "bytes/version")
+		b.ReportMetric(float64(all)/float64(one), "all/one")
+		b.ReportMetric(0, "ns/op")
+		runtime.KeepAlive(versions)
+	}
+}
+
 // A thousand versions, each a patch of a square metre, take less than twice the
 // memory of one; a patch within one block makes one node a level and no more.
 func TestAVersionCostsWhatItsPatchTouched(t *testing.T) {
-	before := heap()
-	m := survey(t)
-	one := heap() - before
-	r := rand.New(rand.NewPCG(3, 4))
-	versions := []*Map{m}
-	for range 1000 {
-		m = mustApply(t, m, squareMetre(r))
-		versions = append(versions, m)
-	}
-	all := heap() - before
+	one, all, versions := versionsMemory(t, 1000)
 	t.Logf("one version %d KiB, 1,001 versions %d KiB, %d bytes a version", one>>10, all>>10, (all-one)/1000)
 	if all >= 2*one {
 		t.Errorf("1,001 versions take %d bytes, one takes %d", all, one)
