@@ -102,7 +102,7 @@ func (k *seeker) run() (Path, bool, error) {
 		it := k.q.pop()
 		if it.kind == byGuess {
 			if err := k.resolve(it); err != nil {
-				return Path{}, false, err
+				return k.none(), false, err
 			}
 			continue
 		}
@@ -111,15 +111,18 @@ func (k *seeker) run() (Path, bool, error) {
 		}
 		k.path.Expanded++
 		if k.path.Expanded%1024 == 0 && k.ctx.Err() != nil {
-			return Path{}, false, k.ctx.Err()
+			return k.none(), false, k.ctx.Err()
 		}
 		if it.node == k.goal {
 			return k.assemble(it), true, nil
 		}
 		k.expand(it)
 	}
-	return Path{}, false, k.ctx.Err()
+	return k.none(), false, k.ctx.Err()
 }
+
+// none is the counters without a way.
+func (k *seeker) none() Path { return Path{Expanded: k.path.Expanded, Queued: k.path.Queued} }
 
 // costOf is the cost of the cheapest way known to a state.
 func (k *seeker) costOf(state int32) float64 {
