@@ -91,9 +91,9 @@ const (
 	// Not said: what the preference is defined by. Shortest: convex cells, as
 	// ROADMAP_CONVEX_CELLS. Balanced and clearest: ways in any direction where there is
 	// the preferred clearance (for clearest, the floor's cap), joined by the Voronoi
-	// edges, which are as far from one solid as from another. With
-	// keep_roadmap_path, and where a route of these would go against a one-way
-	// zone: ROADMAP_GRID8, and the bound says so.
+	// edges, which are as far from one solid as from another. With keep_roadmap_path,
+	// and where a route of these would go against a one-way zone, ROADMAP_GRID8 is
+	// searched instead, for clearest at a few clearances in turn, and the bound says so.
 	Roadmap_ROADMAP_UNSPECIFIED Roadmap = 0
 	// Cells wholly clear, moves to the 4 neighbours. Here, as in the two below,
 	// balanced takes a cell for below the preferred clearance as a whole, and
@@ -292,7 +292,7 @@ func (LegKind) EnumDescriptor() ([]byte, []int) {
 type BoundKind int32
 
 const (
-	// Not said.
+	// Not said; of a route that was cut short, nothing but its gap_share is known.
 	BoundKind_BOUND_KIND_UNSPECIFIED BoundKind = 0
 	// Its cost is the least over the searched roadmap.
 	BoundKind_BOUND_KIND_ROADMAP_OPTIMUM BoundKind = 1
@@ -815,13 +815,14 @@ type PlanOptions struct {
 	TightBelowM float64 `protobuf:"fixed64,5,opt,name=tight_below_m,json=tightBelowM,proto3" json:"tight_below_m,omitempty"`
 	// How long the answer may take at the server, from 0.001 to 30 s, once the version
 	// is there (see VersionSelector.max_wait_s): making it ready and waiting for a free
-	// planner included, and a tenth of it kept back for describing and sending. When
-	// it runs out the answer is the best checked route found by then, with
-	// Bound.cut_short, or a refusal saying so when there is none. 0 asks for the
-	// server's own bound, which is for the search alone: the version may take some
-	// seconds more (then UNAVAILABLE). A deadline of the call that comes earlier counts
-	// in the same way. With either, RESOURCE_EXHAUSTED says that no planner would be
-	// free by half of the time; all of these errors name a time to ask again.
+	// planner included, and a tenth of it kept back for describing and sending, or 25 ms
+	// where that is more and at most half. When it runs out the answer is the best
+	// checked route found by then, with Bound.cut_short, or a refusal saying so when
+	// there is none. 0 asks for the server's own bound, which is for the search alone:
+	// making the version ready may take some seconds more (then UNAVAILABLE). A deadline
+	// of the call that comes earlier counts in the same way. RESOURCE_EXHAUSTED says
+	// that no planner would be free by half of the time. Both errors name a time to ask
+	// again.
 	TimeBudgetS float64 `protobuf:"fixed64,6,opt,name=time_budget_s,json=timeBudgetS,proto3" json:"time_budget_s,omitempty"`
 	// The most metres between two points of the route, 0.05 or more. 0 sends
 	// points only where the route bends, a leg begins, clearance is smallest or a
