@@ -112,6 +112,9 @@ func nearFeature(s *solid, d float64, on, q geom.Point) Nearest {
 
 // nearestCell looks for solid cells row by row, outwards from p, next to p's column.
 func (f *Field) nearestCell(p geom.Point, n *Nearest) {
+	if f.rows == 0 {
+		return
+	}
 	limit := n.Um
 	if f.bounds.Contains(p) {
 		least, most := f.bracket(p)
@@ -120,7 +123,57 @@ func (f *Field) nearestCell(p geom.Point, n *Nearest) {
 		}
 		limit = min(limit, most)
 	}
-	f.cellsNear(p, p, p.Y-limit, p.Y+limit, limit, n)
+	f.cellsAbout(p, limit, n)
+}
+
+// cellsAbout lowers n to the solid cells nearer than limit to p.
+func (f *Field) cellsAbout(p geom.Point, limit float64, n *Nearest) {
+	mid, col := f.cellAt(p.Y-f.oy, 0, f.rows), f.cellAt(p.X-f.ox, -1, f.cols+1)
+	first, last := f.cellAt(p.X-limit-roundSlack-f.ox, 0, f.cols), f.cellAt(p.X+limit+roundSlack-f.ox, 0, f.cols)
+	row := func(r int) bool {
+		low := f.oy + float64(r)*f.h
+		if max(0, p.Y-(low+f.h), low-p.Y) >= limit {
+			return false
+		}
+		try := func(c int) {
+			at := f.cellRect(c, r).Nearest(p)
+			if d := geom.Dist(p, at); d < limit {
+				limit = d
+				*n = Nearest{Um: d, On: p, At: at, Cell: true}
+			}
+		}
+		right := f.nextSolid(max(0, col), last, r)
+		if right != col {
+			if left := f.prevSolid(min(col, f.cols)-1, first, r); left >= 0 {
+				try(left)
+			}
+		}
+		if right >= 0 {
+			try(right)
+		}
+		return limit > 0
+	}
+	for r := mid; r >= 0 && row(r); {
+		for r--; r >= 0 && r&blockMask == blockMask && f.noCells(first, last, r); {
+			r -= blockSize
+		}
+	}
+	for r := mid + 1; r < f.rows && row(r); {
+		for r++; r < f.rows && r&blockMask == 0 && f.noCells(first, last, r); {
+			r += blockSize
+		}
+	}
+}
+
+// noCells says whether the blocks that hold row r have no solid cell from column first to
+// column last.
+func (f *Field) noCells(first, last, r int) bool {
+	for _, b := range f.bits.rows[r>>blockShift][first>>blockShift : last>>blockShift+1] {
+		if b != nil {
+			return false
+		}
+	}
+	return true
 }
 
 // cellsNear lowers n to the solid cells nearer than limit to segment ab, in the rows

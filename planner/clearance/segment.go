@@ -6,16 +6,18 @@ import (
 	"example.com/wideberth/mapstore/geom"
 )
 
-// stretch is a part of a segment, as shares of its length.
-type stretch struct{ from, to float64 }
-
 // Segment is the smallest distance from any point of the closed segment ab to a
 // solid, exact but for geom.RelativeError, at most the cap, and where on the segment
 // it is reached. Ties as in At.
 func (f *Field) Segment(a, b geom.Point) Nearest {
-	n := f.At(a)
-	if m := f.At(b); m.Um < n.Um {
-		n = m
+	return f.SegmentBetween(a, b, f.At(a), f.At(b))
+}
+
+// SegmentBetween is Segment when At of a and of b is known.
+func (f *Field) SegmentBetween(a, b geom.Point, na, nb Nearest) Nearest {
+	n := na
+	if nb.Um < n.Um {
+		n = nb
 	}
 	// The border's distance is concave inside the floor: least at an end.
 	if n.Um == 0 || a == b {
@@ -24,6 +26,9 @@ func (f *Field) Segment(a, b geom.Point) Nearest {
 	var buf [16]stretch
 	need := n.Um
 	doubtful, _ := f.doubtful(a, b, &need, false, buf[:0])
+	if len(doubtful) > 0 && need < n.Um-f.h/2 {
+		doubtful, _ = f.doubtful(a, b, &need, false, buf[:0])
+	}
 	f.pieces(a, b, doubtful, need, func(s *solid, p *piece) bool {
 		d, on, q := geom.SegmentSegmentDist(a, b, p.a, p.b)
 		if d -= s.grow; d < n.Um {
@@ -99,42 +104,6 @@ func (f *Field) insideArea(p geom.Point) bool {
 		}
 	}
 	return false
-}
-
-// doubtful appends the stretches of ab where the clearance may be below need.
-// Clearance is 1-Lipschitz: where the field gives more than need, the segment is
-// clear for as far as the surplus (sphere tracing; Hart, "Sphere tracing", The
-// Visual Computer 12, 1996). Upper bounds found on the way lower need; with stop
-// set they end the walk instead, and the answer is false.
-func (f *Field) doubtful(a, b geom.Point, need *float64, stop bool, dst []stretch) ([]stretch, bool) {
-	length := geom.Dist(a, b)
-	if !f.bounds.Contains(a) || !f.bounds.Contains(b) || length == 0 {
-		return append(dst, stretch{0, 1}), true
-	}
-	for s := 0.0; s <= length; {
-		t := s / length
-		p := f.bounds.Nearest(along(a, b, t))
-		least, most := f.bracket(p)
-		if most < *need {
-			if stop {
-				return dst, false
-			}
-			*need = most
-		}
-		if ahead := least - *need; ahead >= f.h/2 {
-			s += ahead
-			continue
-		}
-		// Both ways, so that neither rounding nor the jump before leaves a gap.
-		from, to := max(0, (s-roundSlack)/length), min(1, (s+f.h+roundSlack)/length)
-		if k := len(dst) - 1; k >= 0 && dst[k].to >= from {
-			dst[k].to = to
-		} else {
-			dst = append(dst, stretch{from, to})
-		}
-		s += f.h
-	}
-	return dst, true
 }
 
 // along is the point at share t of the way from a to b.
