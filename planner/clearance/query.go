@@ -176,65 +176,86 @@ func (f *Field) noCells(first, last, r int) bool {
 	return true
 }
 
-// cellsNear lowers n to the solid cells nearer than limit to segment ab, in the rows
-// that meet y0 <= y <= y1. The distance of the cells of one row from a convex
-// thing is a convex function of the column: of the solid cells on either side of
+// cellsNear lowers n to the solid cells nearer than limit to the stretch from p to q of
+// segment ab, measured from the whole of it. The distance of the cells of one row from a
+// convex thing is a convex function of the column: of the solid cells on either side of
 // where it is least, only the next one counts.
-func (f *Field) cellsNear(a, b geom.Point, y0, y1, limit float64, n *Nearest) {
+func (f *Field) cellsNear(a, b, p, q geom.Point, limit float64, n *Nearest) {
 	limit = min(limit, n.Um)
+	if p.Y > q.Y {
+		p, q = q, p
+	}
+	y0, y1 := p.Y-limit-roundSlack, q.Y+limit+roundSlack
 	if f.rows == 0 || y1 < f.oy || y0 > f.bounds.Max.Y {
 		return
 	}
-	mid := f.cellAt((a.Y+b.Y)/2-f.oy, 0, f.rows)
+	x0, x1 := min(p.X, q.X)-limit-roundSlack, max(p.X, q.X)+limit+roundSlack
+	r := rower{
+		f: f, a: a, b: b, p: p, q: q, limit: limit, n: n,
+		c0: f.cellAt(x0-f.ox, 0, f.cols), c1: f.cellAt(x1-f.ox, 0, f.cols),
+	}
+	mid := f.cellAt((p.Y+q.Y)/2-f.oy, 0, f.rows)
 	first, last := f.cellAt(y0-f.oy, 0, f.rows), f.cellAt(y1-f.oy, 0, f.rows)
 	mid = max(first, min(mid, last))
-	for r := mid; r >= first && limit > 0; r-- {
-		f.rowNear(a, b, r, &limit, n)
+	for k := mid; k >= first && r.limit > 0; k-- {
+		r.row(k)
 	}
-	for r := mid + 1; r <= last && limit > 0; r++ {
-		f.rowNear(a, b, r, &limit, n)
+	for k := mid + 1; k <= last && r.limit > 0; k++ {
+		r.row(k)
 	}
 }
 
-// rowNear lowers n to the solid cells of row r nearer than limit to segment ab.
-func (f *Field) rowNear(a, b geom.Point, r int, limit *float64, n *Nearest) {
-	lowY := f.oy + float64(r)*f.h
-	highY := lowY + f.h
-	if a.Y > b.Y {
-		a, b = b, a
+// rower looks for the solid cells near the stretch from p to q, p.Y <= q.Y, of segment ab.
+type rower struct {
+	f          *Field
+	a, b, p, q geom.Point
+	c0, c1     int // columns that cells within limit may be in
+	limit      float64
+	n          *Nearest
+}
+
+func (w *rower) try(c, r int) float64 {
+	d, on, at := rectSegment(w.f.cellRect(c, r), w.a, w.b)
+	if d < w.limit {
+		w.limit = d
+		*w.n = Nearest{Um: d, On: on, At: at, Cell: true}
 	}
-	away := max(0, a.Y-highY, lowY-b.Y)
-	if away >= *limit {
+	return d
+}
+
+// row looks at the solid cells of one row nearer than limit.
+func (w *rower) row(r int) {
+	f := w.f
+	lowest := f.nextSolid(w.c0, w.c1, r)
+	if lowest < 0 {
 		return
 	}
-	// Where in x the part of the segment is that is nearest to the row's band, and the
-	// part that is within limit of it.
-	x0, x1 := xWithin(a, b, lowY, highY)
-	c0, c1 := f.cellAt(x0-f.ox, -1, f.cols+1), f.cellAt(x1-f.ox, -1, f.cols+1)
-	x0, x1 = xWithin(a, b, lowY-*limit, highY+*limit)
-	first := f.cellAt(x0-*limit-roundSlack-f.ox, 0, f.cols)
-	last := f.cellAt(x1+*limit+roundSlack-f.ox, 0, f.cols)
-	try := func(c int) float64 {
-		d, on, at := rectSegment(f.cellRect(c, r), a, b)
-		if d < *limit {
-			*limit = d
-			*n = Nearest{Um: d, On: on, At: at, Cell: true}
-		}
-		return d
+	lowY := f.oy + float64(r)*f.h
+	highY := lowY + f.h
+	away := max(0, w.p.Y-highY, lowY-w.q.Y)
+	if away >= w.limit {
+		return
 	}
+	// Where in x the part of the stretch is that is nearest to the row's band, and the
+	// part that is within limit of it.
+	x0, x1 := xWithin(w.p, w.q, lowY, highY)
+	c0, c1 := f.cellAt(x0-f.ox, -1, f.cols+1), f.cellAt(x1-f.ox, -1, f.cols+1)
+	x0, x1 = xWithin(w.p, w.q, lowY-w.limit, highY+w.limit)
+	first := max(lowest, f.cellAt(x0-w.limit-roundSlack-f.ox, 0, f.cols))
+	last := f.cellAt(x1+w.limit+roundSlack-f.ox, 0, f.cols)
 	// Rounding of x0 and x1 may shift a cell from one group to the next, no more.
-	if c := f.nextSolid(max(0, c0), min(c1, f.cols-1), r); c >= 0 {
-		if try(c) > away {
+	if c := f.nextSolid(max(lowest, c0), min(c1, f.cols-1), r); c >= 0 {
+		if w.try(c, r) > away {
 			if c = f.nextSolid(c+1, min(c1, f.cols-1), r); c >= 0 {
-				try(c)
+				w.try(c, r)
 			}
 		}
 	}
 	if c := f.prevSolid(min(c0-1, f.cols-1), first, r); c >= 0 {
-		try(c)
+		w.try(c, r)
 	}
-	if c := f.nextSolid(max(0, c1+1), last, r); c >= 0 {
-		try(c)
+	if c := f.nextSolid(max(lowest, c1+1), last, r); c >= 0 {
+		w.try(c, r)
 	}
 }
 

@@ -36,11 +36,10 @@ func (f *Field) SegmentBetween(a, b geom.Point, na, nb Nearest) Nearest {
 		}
 		return n.Um > 0
 	})
-	if n.Um > 0 {
-		f.rowsOf(a, b, doubtful, min(need, n.Um), func(y0, y1 float64) bool {
-			f.cellsNear(a, b, y0, y1, need, &n)
-			return n.Um > 0
-		})
+	for _, s := range doubtful {
+		if n.Um > 0 {
+			f.cellsNear(a, b, along(a, b, s.from), along(a, b, s.to), need, &n)
+		}
 	}
 	return n
 }
@@ -78,13 +77,10 @@ func (f *Field) SegmentClear(a, b geom.Point, um int64) bool {
 		ok = !blocks(d - s.grow)
 		return ok
 	})
-	if ok {
-		f.rowsOf(a, b, doubtful, need, func(y0, y1 float64) bool {
-			n := Nearest{Um: need}
-			f.cellsNear(a, b, y0, y1, need, &n)
-			ok = !n.Cell || !blocks(n.Um)
-			return ok
-		})
+	for i := 0; ok && i < len(doubtful); i++ {
+		n := Nearest{Um: need}
+		f.cellsNear(a, b, along(a, b, doubtful[i].from), along(a, b, doubtful[i].to), need, &n)
+		ok = !n.Cell || !blocks(n.Um)
 	}
 	return ok
 }
@@ -141,27 +137,6 @@ func (f *Field) pieces(a, b geom.Point, ss []stretch, need float64, do func(*sol
 					}
 				}
 			}
-		}
-	}
-}
-
-// rowsOf calls do with bands of y that hold every cell nearer than need to the
-// stretches of ab, none twice, until do says no.
-func (f *Field) rowsOf(a, b geom.Point, ss []stretch, need float64, do func(y0, y1 float64) bool) {
-	sign := 1.0
-	if b.Y < a.Y {
-		sign = -1
-	}
-	done := math.Inf(-1) // in the direction of travel
-	for _, st := range ss {
-		p, q := along(a, b, st.from), along(a, b, st.to)
-		lo, hi := max(done, sign*p.Y-need-roundSlack), sign*q.Y+need+roundSlack
-		if lo > hi {
-			continue
-		}
-		done = hi
-		if !do(min(sign*lo, sign*hi), max(sign*lo, sign*hi)) {
-			return
 		}
 	}
 }
