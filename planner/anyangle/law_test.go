@@ -123,6 +123,31 @@ func TestLaw4PatchedEqualsRebuilt(t *testing.T) {
 	}
 }
 
+// TestLaw4CornersJustBeyondABlock: a corner that only a way's bend, not an outline, reaches
+// from over a block's border.
+func TestLaw4CornersJustBeyondABlock(t *testing.T) {
+	const radius = 499
+	before, err := floor.New(floor.Settings{ResolutionUm: 1000, Columns: 2 * blockCells, Rows: 3, CapUm: 5000, OpenBorder: true})
+	if err != nil {
+		t.Fatal(err)
+	}
+	border := blockCells * 1000.0
+	for _, beyond := range []float64{DeltaUm, DeltaUm + 1, DeltaUm + snapUm, DeltaUm + snapUm + 1} {
+		after, err := before.Apply([]floor.Edit{{Kind: floor.PutFeature, Feature: &floor.Feature{Name: "post", Kind: floor.Solid, RadiusUm: radius,
+			Shape: floor.NewDisc(geom.Point{X: border + beyond + radius, Y: 1500}, radius, 0)}}})
+		if err != nil {
+			t.Fatal(err)
+		}
+		a, err := build(t, before, 0).Advance(context.Background(), after, floor.Diff(before, after))
+		if err != nil {
+			t.Fatal(err)
+		}
+		if b := build(t, after, 0); !reflect.DeepEqual(a.blocks, b.blocks) {
+			t.Errorf("%v µm beyond the border: patched differs from rebuilt", beyond)
+		}
+	}
+}
+
 func randomEdits(rng *rand.Rand, f *floor.Map) []floor.Edit {
 	s := f.Settings()
 	var out []floor.Edit

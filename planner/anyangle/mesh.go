@@ -135,13 +135,14 @@ func (n Need) growth(k floor.FeatureKind) (float64, bool) {
 	return 0, false
 }
 
-// reachOf is the blocks that a feature's grown outline can touch, borders included.
+// reachOf is the blocks that a feature's grown outline, or a way's bend about it, can
+// touch, borders included.
 func (g *Mesh) reachOf(f *floor.Feature) (x0, y0, x1, y1 int, ok bool) {
 	grow, ok := g.need.growth(f.Kind)
 	if !ok {
 		return 0, 0, 0, 0, false
 	}
-	return g.blocksOf(f.Bounds(), grow+DeltaUm)
+	return g.blocksOf(f.Bounds(), grow+cornerSlack)
 }
 
 // blocksOf is the blocks that touch r grown by d.
