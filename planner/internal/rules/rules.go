@@ -55,6 +55,9 @@ func Of(m *floor.Map) *Rules {
 	return r
 }
 
+// Closing are the closed zones alone.
+func (r *Rules) Closing() *Rules { return &Rules{closed: r.closed} }
+
 // HasClosed says whether there is a closed zone.
 func (r *Rules) HasClosed() bool { return len(r.closed) > 0 }
 

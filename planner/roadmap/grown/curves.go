@@ -50,10 +50,8 @@ type set struct {
 	grid grid
 }
 
-func newSet(m *floor.Map, need roadmap.Need, all []solids.Solid) *set {
-	b := m.Bounds()
-	s := &set{m: m, origin: b.Min, h: float64(m.Settings().ResolutionUm)}
-	s.slack = max(SlackUm, max(b.Width(), b.Height())*0x1p-31)
+// add takes in all solids.
+func (s *set) add(need roadmap.Need, all []solids.Solid) {
 	outward := need.ClearanceUm == 0
 	n := 0
 	for i := range all {
@@ -79,7 +77,7 @@ func newSet(m *floor.Map, need roadmap.Need, all []solids.Solid) *set {
 		for _, c := range v.Chains {
 			local := make([]geom.Point, len(c))
 			for k, p := range c {
-				local[k] = geom.Point{X: p.X - b.Min.X, Y: p.Y - b.Min.Y}
+				local[k] = geom.Point{X: p.X - s.origin.X, Y: p.Y - s.origin.Y}
 			}
 			chains = append(chains, local)
 			s.addChain(local, rho, exact, v.Zone)
@@ -90,7 +88,6 @@ func newSet(m *floor.Map, need roadmap.Need, all []solids.Solid) *set {
 		}
 	}
 	s.grid = newGrid(s)
-	return s
 }
 
 // addChain adds the sides and arcs of a closed chain.

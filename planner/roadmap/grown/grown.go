@@ -38,6 +38,8 @@ const MaxPieces = 1_000_000
 // passage that much wider or narrower than twice the radius may be taken for the other.
 const SlackUm = 1.0 / 16
 
+func slackOf(b geom.Rect) float64 { return max(SlackUm, max(b.Width(), b.Height())*0x1p-31) }
+
 // Piece is a straight piece or an arc of an outline, the grown solids on its left. An arc
 // runs counter-clockwise about Center, from From to To; RadiusUm is 0 for a straight
 // piece.
@@ -103,10 +105,13 @@ func Of(ctx context.Context, m *floor.Map, need roadmap.Need) (*Outline, error) 
 }
 
 // Simplified is Of with notches of the raster's outline filled: no more is added than lies
-// within errUm of the raster, nothing is taken away. errUm must be at most
-// need.ClearanceUm. It takes the teeth off walls that slant across the cells.
+// within errUm of the raster, nothing is taken away. Above the clearance less SlackUm and
+// a micrometre errUm counts as that. It takes the teeth off walls that slant across
+// the cells.
 func Simplified(ctx context.Context, m *floor.Map, need roadmap.Need, errUm float64) (*Outline, error) {
-	s := newSet(m, need, solids.Of(m, need.Zones, min(errUm, float64(need.ClearanceUm))))
+	s := &set{m: m, origin: m.Bounds().Min, h: float64(m.Settings().ResolutionUm), slack: slackOf(m.Bounds())}
+	// What is filled must be within the radius of the chord over it.
+	s.add(need, solids.Of(m, need.Zones, min(errUm, float64(need.ClearanceUm)-1-s.slack)))
 	if err := s.drop(ctx); err != nil {
 		return nil, err
 	}
