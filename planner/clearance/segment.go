@@ -156,18 +156,58 @@ func (f *Field) Travel(p geom.Point, heading float64, radiusUm int64, maxUm int6
 	if f.SegmentClear(p, at(float64(maxUm)), radiusUm) {
 		return float64(maxUm)
 	}
-	// Clear up to lo, not up to hi. The clearance ahead says how far lo may jump.
-	lo, hi := 0.0, float64(maxUm)
-	for hi-lo > 1 {
-		mid := lo + max(f.At(at(lo)).Um-float64(radiusUm)-roundSlack, min(f.h, (hi-lo)/2))
-		if mid >= hi {
-			mid = (lo + hi) / 2
+	t := traveller{f: f, p: p, ux: ux, uy: uy, radius: float64(radiusUm), lo: 0, hi: float64(maxUm)}
+	t.trace()
+	for guess := t.lo + f.h; t.hi-t.lo > 1; {
+		mid := guess
+		if !(mid > t.lo && mid < t.hi) {
+			mid = (t.lo + t.hi) / 2
 		}
-		if f.SegmentClear(p, at(mid), radiusUm) {
-			lo = mid
-		} else {
-			hi = mid
-		}
+		guess = t.try(mid)
 	}
-	return math.Floor(lo)
+	return math.Floor(t.lo)
+}
+
+// traveller finds how far a disc may go: clear up to lo, not up to hi.
+type traveller struct {
+	f      *Field
+	p      geom.Point
+	ux, uy float64
+	radius float64
+	lo, hi float64
+}
+
+func (t *traveller) at(s float64) geom.Point {
+	return geom.Point{X: t.p.X + float64(s*t.ux), Y: t.p.Y + float64(s*t.uy)}
+}
+
+// trace moves lo on by what clearance is left there, for as long as that is much.
+func (t *traveller) trace() {
+	for range 16 {
+		surplus := t.f.At(t.at(t.lo)).Um - t.radius - roundSlack
+		if surplus < t.f.h/4 || t.lo+surplus >= t.hi {
+			return
+		}
+		t.lo += surplus
+	}
+}
+
+// try asks whether the disc may go on from lo to s, and gives the next place to ask
+// about, or something that is not between lo and hi: short of where it would touch the
+// place that was in the way, deeper than its border.
+func (t *traveller) try(s float64) (next float64) {
+	n := t.f.Segment(t.at(t.lo), t.at(s))
+	if n.Um > 0 && n.Um >= t.radius {
+		t.lo = s
+		return -1
+	}
+	t.hi = s
+	x, y := n.At.X-t.p.X, n.At.Y-t.p.Y
+	along, off := float64(x*t.ux)+float64(y*t.uy), float64(x*t.uy)-float64(y*t.ux)
+	if n.Um == 0 || math.Abs(off) >= t.radius {
+		return -1
+	}
+	meets := along - math.Sqrt(float64(t.radius*t.radius)-float64(off*off))
+	t.hi = min(t.hi, max(meets, t.lo)+0.5)
+	return meets - 0.25
 }
