@@ -103,14 +103,18 @@ func drawBody(t *rapid.T, s floor.Settings) planner.Body {
 }
 
 func drawOptions(t *rapid.T, s floor.Settings, b planner.Body) planner.Options {
-	return planner.Options{
-		Preference:      rapid.SampledFrom([]planner.Preference{planner.Balanced, planner.Shortest}).Draw(t, "preference"),
+	o := planner.Options{
+		Preference:      rapid.SampledFrom([]planner.Preference{planner.Balanced, planner.Shortest, planner.Clearest}).Draw(t, "preference"),
 		Roadmap:         rapid.SampledFrom([]planner.Roadmap{planner.Auto, planner.Grid4, planner.Grid8, planner.Quadtree}).Draw(t, "roadmap"),
 		KeepRoadmapPath: rapid.IntRange(0, 3).Draw(t, "keep") == 0,
 		TightWeight:     rapid.SampledFrom([]float64{0, 1, 4}).Draw(t, "weight"),
 		TightBelowUm:    rapid.SampledFrom([]int64{0, b.PreferredUm, s.CapUm, b.Required() + 1000}).Draw(t, "below") % (s.CapUm + 1),
 		MaxSpacingUm:    rapid.SampledFrom([]int64{0, 0, 200_000}).Draw(t, "spacing"),
 	}
+	if o.Preference == planner.Clearest {
+		o.Roadmap = planner.Auto
+	}
+	return o
 }
 
 type scene struct {

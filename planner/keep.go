@@ -40,8 +40,13 @@ const onRouteUm = 1.5
 // by exact pieces that may cut a corner short.
 func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *course {
 	before, now := q.Old, t.w.m
-	if q.OldBound != AnyAngleOptimum || !t.q.Options.anyAngle() || before.Settings() != now.Settings() ||
-		project(q.Previous, t.q.Start.At).off > onRouteUm {
+	if before.Settings() != now.Settings() || project(q.Previous, t.q.Start.At).off > onRouteUm {
+		return nil
+	}
+	if q.OldBound == RoadmapOptimum && t.q.Options.roomy() {
+		return t.keptRoomy(ctx, before, old)
+	}
+	if q.OldBound != AnyAngleOptimum || !t.anyAngle() {
 		return nil
 	}
 	pts := slices.Clone(old)
@@ -58,37 +63,95 @@ func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *co
 	}
 	d := detour{from: pts[0], to: pts[len(pts)-1], long: lengthOf(pts)}
 	change := floor.Diff(before, now)
+	grown := standing{float64(t.j.NeedUm) + meshStandsOff, float64(t.j.RadiusUm) + meshStandsOff}
 	for _, f := range change.Features {
-		if grow, ok := t.gone(f); ok && d.overShape(f.Before.Shape, grow) {
+		if grow, ok := grown.of(f.Before); ok && differs(f) && d.overShape(f.Before.Shape, grow) {
 			return nil
 		}
 	}
 	for _, c := range change.Cells {
-		if d.overCells(before, now, c, float64(t.j.NeedUm)+meshStandsOff) {
+		if d.overCells(before, now, c, grown.solid, gone) {
 			return nil
 		}
 	}
 	return &course{pts: pts, kind: AnyAngleOptimum, roadmap: math.Inf(1)}
 }
 
+// keptRoomy is kept for the least cost, or the clearest way, over Voronoi edges and the open
+// floor of clearance p (for the clearest the floor's cap).
+//
+// Let S be all that is solid (or a closed zone) in one of the two versions and not in the
+// other, grown by p, T the rest of the old route. T is kept when bound(S) is no less than its
+// cost. A way Q that meets S is as long as bound(S), and costs no less. One that does
+// not has the same nearest solids all along, as far as they are nearer than p, so the
+// same edges, and the same cost as it had before, when it was no cheaper than T. T
+// itself does not meet S, since it is no longer than it costs. For the clearest, T must
+// have the largest bottleneck of this version besides, and is as short as any that has.
+//
+// A fresh plan may be the cheaper one by how differently it draws what it shares with
+// T: the pose may be off the edge by half a millimetre, where chords are, and these
+// may be shorter than others by 3e-4. One-way zones need no regard, as for kept.
+func (t *task) keptRoomy(ctx context.Context, before *floor.Map, pts []geom.Point) *course {
+	now, p := t.w.m, t.j.Open()
+	d := detour{from: pts[0], to: pts[len(pts)-1], long: t.costOf(pts)}
+	grown := standing{p + meshStandsOff, p - float64(t.q.Body.MarginUm) + meshStandsOff}
+	change := floor.Diff(before, now)
+	for _, f := range change.Features {
+		if !differs(f) {
+			continue
+		}
+		for _, f := range [2]*floor.Feature{f.Before, f.After} {
+			if grow, ok := grown.of(f); ok && d.overShape(f.Shape, grow) {
+				return nil
+			}
+		}
+	}
+	for _, c := range change.Cells {
+		if d.overCells(before, now, c, grown.solid, either) {
+			return nil
+		}
+	}
+	if t.q.Options.Preference == Clearest {
+		w, ok := t.w.ways.roads.peek(t.roadsFor())
+		if !ok {
+			return nil
+		}
+		b, ok, err := w.Widest(ctx, d.from, d.to)
+		if _, least := t.narrowest(pts); err != nil || !ok || b.ClearanceUm > least+onRouteUm {
+			return nil
+		}
+	}
+	return &course{pts: pts, kind: RoadmapOptimum, bias: meshBias}
+}
+
 // meshStandsOff is how much farther than required a mesh may stand off, and a micrometre
 // for rounding here.
 const meshStandsOff = anyangle.DeltaUm + 1
 
-// gone says whether a change takes an obstacle away, and by how much a mesh grows it.
-func (t *task) gone(f floor.FeatureChange) (grow float64, ok bool) {
-	b, a := f.Before, f.After
-	if b == nil || a != nil && a.Kind == b.Kind && reflect.DeepEqual(a.Shape, b.Shape) {
-		return 0, false
-	}
-	switch b.Kind {
-	case floor.Solid:
-		return float64(t.j.NeedUm) + meshStandsOff, true
-	case floor.ClosedZone:
-		return float64(t.j.RadiusUm) + meshStandsOff, true
+// standing is by how much solids and closed zones are grown.
+type standing struct{ solid, zone float64 }
+
+// of says whether a feature is an obstacle, and by how much it is grown.
+func (s standing) of(f *floor.Feature) (grow float64, ok bool) {
+	switch {
+	case f == nil:
+	case f.Kind == floor.Solid:
+		return s.solid, true
+	case f.Kind == floor.ClosedZone:
+		return s.zone, true
 	}
 	return 0, false
 }
+
+// differs says whether what a feature covers, or as what, is not the same.
+func differs(f floor.FeatureChange) bool {
+	b, a := f.Before, f.After
+	return b == nil || a == nil || a.Kind != b.Kind || !reflect.DeepEqual(a.Shape, b.Shape)
+}
+
+// gone and either pick the bits of cells that count, from those solid before and now.
+func gone(was, is uint64) uint64   { return was &^ is }
+func either(was, is uint64) uint64 { return was ^ is }
 
 // detour asks whether a way over some place could be shorter than one of that length.
 type detour struct {
@@ -122,8 +185,9 @@ func (d *detour) overShape(s floor.Shape, grow float64) bool {
 	return false
 }
 
-// overCells is about the places within grow of cells of c that are solid before and not now.
-func (d *detour) overCells(before, now *floor.Map, c floor.CellRect, grow float64) bool {
+// overCells is about the places within grow of cells of c that count, by what is solid in
+// either version.
+func (d *detour) overCells(before, now *floor.Map, c floor.CellRect, grow float64, count func(was, is uint64) uint64) bool {
 	s := now.Settings()
 	over := func(c floor.CellRect) bool {
 		box := s.CellBounds(c).Grow(grow).Corners()
@@ -139,13 +203,13 @@ func (d *detour) overCells(before, now *floor.Map, c floor.CellRect, grow float6
 			before.SolidBits(bx, by, &was)
 			now.SolidBits(bx, by, &is)
 			for y := range was {
-				for gone := was[y] &^ is[y]; gone != 0; {
-					x := bits.TrailingZeros64(gone)
-					n := bits.TrailingZeros64(^(gone >> x))
+				for left := count(was[y], is[y]); left != 0; {
+					x := bits.TrailingZeros64(left)
+					n := bits.TrailingZeros64(^(left >> x))
 					if over(floor.CellRect{X0: bx*side + x, Y0: by*side + y, X1: bx*side + x + n, Y1: by*side + y + 1}) {
 						return true
 					}
-					gone &^= (math.MaxUint64 >> (side - n)) << x
+					left &^= (math.MaxUint64 >> (side - n)) << x
 				}
 			}
 		}

@@ -131,6 +131,74 @@ func TestLaw7ReplannedShortestIsShortest(t *testing.T) {
 	}
 }
 
+// The same for the roomy preferences. A fresh plan may draw what it shares with the old
+// route otherwise: chords are shorter than a bent edge by up to 3.4e-4 of it (half a
+// millimetre off, where it bends with a radius of 0.5 m; from memory, no source), and a
+// pose on a chord is off the edge by up to half a millimetre, at either weight.
+// WIDEBERTH_SLOW=1 makes some 2,000 replans.
+func TestLaw7ReplannedRoomyCostsNoMore(t *testing.T) {
+	const seed = 78
+	t.Logf("seed %d", seed)
+	floors := 60
+	if os.Getenv("WIDEBERTH_SLOW") != "" {
+		floors *= 10
+	}
+	tried, kept, worst := [3]int{}, [3]int{}, 0.0
+	for k := range floors {
+		rng := rand.New(rand.NewPCG(seed, uint64(k)))
+		m := cluttered(t, rng)
+		w := newWorld(t, m)
+		bd := body(0.05 + float64(rng.IntN(3))*0.1)
+		bd.MarginUm = int64(rng.IntN(2) * 30_000)
+		bd.PreferredUm = bd.Required() + 1 + int64(rng.IntN(200_000))
+		spot := func() planner.Pose { return pose(0.2+7.6*rng.Float64(), 0.2+7.6*rng.Float64()) }
+		q := shortest(bd, spot(), spot())
+		q.Options = planner.Options{Preference: planner.Balanced, TightWeight: []float64{0, 0.2, 1}[rng.IntN(3)]}
+		if k%4 == 0 {
+			q.Options.Preference = planner.Clearest
+		}
+		a := plan(t, w, q)
+		for range 10 {
+			if a.Route == nil {
+				break
+			}
+			old, from := m, along(a.Route, rng.Float64()*rng.Float64())
+			if rng.IntN(4) == 0 {
+				from.X += float64(rng.IntN(2001) - 1000)
+				from.Y += float64(rng.IntN(2001) - 1000)
+			}
+			m = newMapFrom(t, m, clutterChange(rng, m))
+			var err error
+			if w, err = w.Advance(context.Background(), m); err != nil {
+				t.Fatal(err)
+			}
+			r := again(a.Route, old, q, from)
+			q = r.Request
+			got, fresh := replan(t, w, r), plan(t, w, q)
+			if (got.Route == nil) != (fresh.Route == nil) {
+				t.Fatalf("floor %d: replan %+v, plan %+v", k, got.Answer, fresh)
+			}
+			if a = got.Answer; a.Route == nil {
+				break
+			}
+			tried[q.Options.Preference]++
+			if got.Kept && got.Counters.Expanded == 0 && got.Route.Bound.Kind == planner.RoadmapOptimum {
+				kept[q.Options.Preference]++
+			}
+			slack := 3.4e-4*fresh.Route.CostUm + 2*500*(1+q.Options.TightWeight)
+			more := got.Route.CostUm - fresh.Route.CostUm
+			if worst = max(worst, more/slack); more > slack || q.Options.Preference == planner.Clearest && got.Route.SmallestUm < fresh.Route.SmallestUm-2 {
+				t.Errorf("floor %d: costs %f, keeps %d, kept %v; a fresh plan %f and %d\n%v\n%v", k, got.Route.CostUm, got.Route.SmallestUm, got.Kept,
+					fresh.Route.CostUm, fresh.Route.SmallestUm, points(got.Route), points(fresh.Route))
+			}
+		}
+	}
+	t.Logf("%d replans, %d kept without a search, at worst %g of what is allowed dearer", tried, kept, worst)
+	if kept[planner.Balanced] < tried[planner.Balanced]/20 || kept[planner.Clearest] == 0 {
+		t.Errorf("%d replans, %d kept without a search", tried, kept)
+	}
+}
+
 // cluttered is a floor of 8 by 8 m with walls, discs, polygons, cells and zones about.
 func cluttered(t testing.TB, rng *rand.Rand) *floor.Map {
 	s := settings(0, 0, 8, 8, 0.05)

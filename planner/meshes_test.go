@@ -7,7 +7,9 @@ import (
 	"testing"
 
 	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/anyangle"
+	"example.com/wideberth/planner/internal/judge"
 	"example.com/wideberth/planner/internal/plainfloor"
 )
 
@@ -154,5 +156,56 @@ func TestMakingsThatNobodyWaitsForAreBounded(t *testing.T) {
 	defer s.mu.Unlock()
 	if len(s.making) > 2+3 || len(s.kept) != unattendedLimit {
 		t.Errorf("%d kept", len(s.kept))
+	}
+}
+
+// A world advanced from one that was planned on has all that the next plan asks for.
+func TestAdvancedWorldIsReadyForEveryPreference(t *testing.T) {
+	ctx := context.Background()
+	m, err := plainfloor.Maze(60, 4).Floor()
+	if err != nil {
+		t.Fatal(err)
+	}
+	w, err := NewWorld(ctx, m)
+	if err != nil {
+		t.Fatal(err)
+	}
+	b := Body{RadiusUm: 2_000, PreferredUm: 60_000, MaxSpeed: 1, Braking: 1, Reaction: 1}
+	for pref := range Clearest + 1 {
+		q := Request{Body: b, Options: Options{Preference: pref, TightWeight: 1}}
+		s := m.Settings()
+		in := 0
+		for r := range s.Rows { // the first free cells far apart
+			for c := range s.Columns {
+				mid := geom.Point{X: float64(s.OriginX) + (float64(c)+0.5)*float64(s.ResolutionUm), Y: float64(s.OriginY) + (float64(r)+0.5)*float64(s.ResolutionUm)}
+				if !m.Solid(c, r) && w.field.At(mid).Um > 2_000 {
+					if in++; in == 1 {
+						q.Start.At = mid
+					}
+					q.Goal.At = mid
+				}
+			}
+		}
+		if a, err := w.Plan(ctx, q); err != nil || a.Route == nil {
+			t.Fatal(a, err)
+		}
+		next, err := m.Apply([]floor.Edit{{Kind: floor.PaintRect, Fill: floor.Occupied, Rect: floor.CellRect{X0: 30, Y0: 30, X1: 31, Y1: 31}}})
+		if err != nil {
+			t.Fatal(err)
+		}
+		v, err := w.Advance(ctx, next)
+		if err != nil {
+			t.Fatal(err)
+		}
+		k := &task{w: v, q: q, j: judge.New(v.field, v.rules, b.Required(), b.RadiusUm)}
+		k.j.WideUm = b.PreferredUm
+		if pref == Clearest {
+			k.j.WideUm = v.field.Cap()
+		}
+		_, mesh := v.ways.meshes.peek(k.needed())
+		_, roads := v.ways.roads.peek(k.roadsFor())
+		if pref == Shortest && !mesh || pref != Shortest && !roads {
+			t.Errorf("preference %d: mesh %v, roads %v", pref, mesh, roads)
+		}
 	}
 }

@@ -18,9 +18,12 @@ const joinReach = 8 * anyangle.DeltaUm
 // still be missed by a mesh.
 const meshBias = 2 * anyangle.DeltaUm
 
-// anyAngle says whether the shortest way over all directions is what is asked for.
-func (o *Options) anyAngle() bool {
-	return o.Roadmap == ConvexCells || o.Roadmap == Auto && o.Preference == Shortest && !o.KeepRoadmapPath
+// anyAngle says whether the shortest way over all directions is what is asked for: by
+// name, or since every metre of what the body needs is as good as another.
+func (t *task) anyAngle() bool {
+	o := &t.q.Options
+	return o.Roadmap == ConvexCells ||
+		o.unnamed() && (o.Preference == Shortest || o.Preference == Balanced && t.j.WideUm == t.j.NeedUm)
 }
 
 // optimum finds the any-angle optimum; nil when a roadmap must be searched instead: the

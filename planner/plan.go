@@ -142,7 +142,7 @@ type course struct {
 	pts  []geom.Point
 	kind BoundKind
 	// roadmap is the cost of the best path over the roadmap, each cell judged as a
-	// whole; +Inf when none was found.
+	// whole; +Inf when none was found, 0 when the course itself is the best path.
 	roadmap float64
 	bias    int64 // by how much wider than needed a passage may be that was missed; 0: as on grids
 }
@@ -167,7 +167,7 @@ func (t *task) course(ctx context.Context) (*course, error) {
 		return t.classic(ctx)
 	}
 	apart := false
-	if o.anyAngle() || o.roomy() && o.Preference == Balanced && t.j.WideUm == t.j.NeedUm {
+	if t.anyAngle() {
 		c, no, err := t.optimum(ctx)
 		if c != nil || err != nil {
 			return c, err

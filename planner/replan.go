@@ -15,8 +15,8 @@ const keepSlack = 1e-9
 
 // Replan answers a replan request. An old route that still answers the question is
 // trimmed to the pose and checked on this version; it is kept, without a search, when
-// nothing can be cheaper (it runs straight to the goal in the open, or it is an
-// any-angle optimum that no change undercuts), or when a fresh plan is not cheaper by more
+// nothing can be cheaper (it runs straight to the goal in the open, or it is the optimum of
+// its preference and no change undercuts it), or when a fresh plan is not cheaper by more
 // than SwitchShare. It is kept too when a fresh plan finds no way,
 // or runs out of time, while the old route is still clear.
 //
@@ -91,16 +91,22 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 		r.Answer = fresh
 		return r, err
 	}
-	dearer := func(cost, share float64) bool {
-		return fresh.Route != nil && cost > float64(fresh.Route.CostUm*(1+max(share, keepSlack)))
+	least := math.Inf(1)
+	if t.q.Options.Preference == Clearest {
+		_, least = t.narrowest(old)
 	}
+	dearer := func(cost, share float64) bool { return fresh.Route.beats(least, cost, max(share, keepSlack)) }
 	cost := t.costOf(old)
+	short := spent(ctx) && (fresh.Route == nil || fresh.Route.Bound.CutShort)
 	if !dearer(cost, q.SwitchShare) {
 		c := &course{pts: old, roadmap: math.Inf(1)}
-		if !dearer(cost, 0) {
+		if !dearer(cost, 0) && !short {
 			c.kind = AtMostRoadmapOptimum
 		}
 		route, err := t.route(context.WithoutCancel(ctx), c)
+		if err == nil && short {
+			route.cutShort(0)
+		}
 		// The points that describing adds are rounded, which may tip the balance.
 		if err != nil || !dearer(route.CostUm, q.SwitchShare) {
 			r.Answer.Route, r.Kept = route, err == nil
@@ -112,6 +118,21 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 		r.Cause = OffRoute
 	}
 	return r, nil
+}
+
+// beats says whether a route, if there is one, is better by more than a share than one of
+// that smallest clearance and cost. Where room comes first (else least is +Inf),
+// clearances within a micrometre of one another are alike.
+func (r *Route) beats(least, cost, share float64) bool {
+	switch {
+	case r == nil:
+		return false
+	case float64(r.SmallestUm) > least+1:
+		return float64(r.SmallestUm) > least*(1+share)
+	case !math.IsInf(least, 1) && float64(r.SmallestUm) < least-1:
+		return false
+	}
+	return cost > float64(r.CostUm*(1+share))
 }
 
 func (t *task) costOf(pts []geom.Point) float64 {

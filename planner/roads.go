@@ -16,8 +16,8 @@ const (
 	// million cells of a cluttered floor.
 	GraphLimit = 6
 	// RoadsLimit is how many joinings of edges and open floor a World keeps: three for
-	// each of a dozen kinds of body (preferred clearance, cap, without zones). They take
-	// up to 12 MB each once all their open distances are known, most far less.
+	// each of a dozen kinds of body (preferred clearance, cap, without zones). They take a
+	// megabyte or two each beside what they rest on.
 	RoadsLimit = 36
 )
 
@@ -92,8 +92,12 @@ func (w *ways) carry(ctx context.Context, f *clearance.Field, change floor.Chang
 	if err != nil {
 		return nil, err
 	}
-	return n, w.roads.carry(ctx, n.roads, func(ctx context.Context, k roadKey, _ *voronoi.Roads) (*voronoi.Roads, error) {
-		return n.roads.make(ctx, k)
+	return n, w.roads.carry(ctx, n.roads, func(ctx context.Context, k roadKey, old *voronoi.Roads) (*voronoi.Roads, error) {
+		graph, open, err := n.under(ctx, k)
+		if err != nil {
+			return nil, err
+		}
+		return old.Advance(ctx, graph, open)
 	})
 }
 

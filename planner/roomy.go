@@ -46,7 +46,7 @@ func (t *task) roomy(ctx context.Context) (*course, error) {
 	if pts == nil {
 		return nil, nil
 	}
-	return &course{pts: pts, kind: RoadmapOptimum, roadmap: p.CostUm, bias: meshBias}, nil
+	return &course{pts: pts, kind: RoadmapOptimum, bias: meshBias}, nil
 }
 
 // piecemeal is a polyline, with the clearance that each of its pieces is to keep.
