@@ -78,12 +78,17 @@ func (v *paver) holds(p geom.Point) bool {
 	return len(v.in) > 0
 }
 
-// arc adds the tight pieces of an arc: below p all of it, from p to the mesh's
-// shortfall above it as far as the mesh does not hold it.
+// pocketUm is how far above p the mesh is looked for. It may lack a pocket of Open a few
+// millimetres wide, from which edges lead on: they are tight as well, lest the
+// passage be lost.
+const pocketUm = 32 * anyangle.DeltaUm
+
+// arc adds the tight pieces of an arc: below p all of it, and above it as far as the mesh does
+// not hold it, within the mesh's shortfall as a rule.
 func (v *paver) arc(k int32) {
 	a := &v.g.blocks[v.block].arcs[k]
 	high := v.p + anyangle.DeltaUm
-	if a.um0 >= high {
+	if a.um0 >= v.p+pocketUm {
 		return
 	}
 	at := func(s float64) geom.Point { return v.g.place(v.block, a.curve.at(s)) }
@@ -106,14 +111,19 @@ func (v *paver) arc(k int32) {
 		low = n
 	}
 	// From here on the arc is in Open; the mesh may lack some of it.
-	top, clipped := a.s1, a.um1 > high
-	if clipped {
-		top = a.levelBetween(high)
+	var top float64
+	clipped, inQ := false, false
+	for _, um := range [2]float64{high, v.p + pocketUm} {
+		if a.um0 < um && !inQ {
+			top = a.s1
+			if clipped = a.um1 > um; clipped {
+				top = a.levelBetween(um)
+			}
+			inQ = v.holds(at(top))
+		}
 	}
-	p, q := at(s), at(top)
-	inQ := v.holds(q)
 	v.to = append(v.to[:0], v.in...)
-	inP := v.holds(p)
+	inP := v.holds(at(s))
 	if inP && inQ && v.joined() {
 		return
 	}
@@ -126,7 +136,7 @@ func (v *paver) arc(k int32) {
 		return
 	}
 	if clipped {
-		lay(low, v.stop(q, high, -1), s, top)
+		lay(low, v.stop(at(top), a.clearance(top), -1), s, top)
 		return
 	}
 	lay(low, v.end(a, true), s, top)
