@@ -65,3 +65,56 @@ func (g *Mesh) SharesAround(old *Mesh, r geom.Rect) bool {
 	}
 	return true
 }
+
+// Probe answers for places within one rectangle whether a mesh holds them. It has looked for the
+// cells about it once. The zero Probe serves Aim only; it may be aimed again.
+type Probe struct {
+	g     *Mesh
+	cells []at
+}
+
+// Aim readies p for places of r. Time is proportional to the cells of the blocks that
+// touch r.
+func (p *Probe) Aim(g *Mesh, r geom.Rect) {
+	p.g, p.cells = g, p.cells[:0]
+	bx0, by0, bx1, by1, ok := g.blocksOf(r, g.eps)
+	if !ok {
+		return
+	}
+	for by := by0; by <= by1; by++ {
+		for bx := bx0; bx <= bx1; bx++ {
+			i := bx + by*g.bx
+			b := g.blocks[i]
+			ox, oy := g.o.X+float64(bx)*g.side, g.o.Y+float64(by)*g.side
+			x0, x1, y0, y1 := r.Min.X-ox-g.eps, r.Max.X-ox+g.eps, r.Min.Y-oy-g.eps, r.Max.Y-oy+g.eps
+			if b.turned {
+				x0, x1, y0, y1 = y0, y1, x0, x1
+			}
+			for c := range b.cells {
+				rows := b.rowsOf(int32(c))
+				if float64(rows[0].y) > y1 || float64(rows[len(rows)-1].y) < y0 {
+					continue
+				}
+				left, right := true, true // of r, with all of its rows
+				for _, w := range rows {
+					left, right = left && float64(w.r) < x0, right && float64(w.l) > x1
+				}
+				if !left && !right {
+					p.cells = append(p.cells, at{int32(i), int32(c)})
+				}
+			}
+		}
+	}
+}
+
+// Holds says whether the mesh holds q, a place of the rectangle aimed at, as Contains does.
+func (p *Probe) Holds(q geom.Point) bool {
+	g := p.g
+	for _, a := range p.cells {
+		bx, by := int(a.block)%g.bx, int(a.block)/g.bx
+		if g.blocks[a.block].holds(a.cell, q.X-g.o.X-float64(bx)*g.side, q.Y-g.o.Y-float64(by)*g.side, g.eps) {
+			return true
+		}
+	}
+	return false
+}

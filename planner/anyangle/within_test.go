@@ -89,6 +89,19 @@ func TestPlacesOfOnePartAreConnected(t *testing.T) {
 			if g.Contains(p) != (len(a) > 0) {
 				t.Fatalf("case %d: %v in the mesh: %v, spots %v", k, p, g.Contains(p), a)
 			}
+			// Places about p, one of them p, by a probe.
+			r := geom.Rect{Min: p, Max: p}.Grow(rng.Float64() * 200_000)
+			var probe Probe
+			probe.Aim(g, r)
+			for n := range 6 {
+				v := p
+				if n > 0 {
+					v = randomPoint(rng, r)
+				}
+				if probe.Holds(v) != g.Contains(v) {
+					t.Fatalf("case %d: %v in the mesh: %v, not by a probe of %v", k, v, g.Contains(v), r)
+				}
+			}
 			one := false
 			for _, i := range a {
 				for _, j := range b {

@@ -122,6 +122,78 @@ func BenchmarkAdvanceVsBuild(b *testing.B) {
 	}
 }
 
+// BenchmarkRoadsAdvanceVsNew reports the time of joining all edges with the open floor over that
+// of bringing the roads up to date after a change of 1 m² (new/advance).
+func BenchmarkRoadsAdvanceVsNew(b *testing.B) {
+	for _, c := range benchFloors {
+		if c.name == "random512" || c.name == "hall4096" && testing.Short() {
+			continue
+		}
+		b.Run(c.name, func(b *testing.B) {
+			ctx := context.Background()
+			f := c.mk(b)
+			s := f.Settings()
+			field := fieldOf(b, f)
+			g, err := Build(ctx, field, Need{MostUm: min(5_000_000, field.Cap())})
+			if err != nil {
+				b.Fatal(err)
+			}
+			open, err := anyangle.Build(ctx, f, anyangle.Need{ClearanceUm: 1_200_000})
+			if err != nil {
+				b.Fatal(err)
+			}
+			w, err := NewRoads(ctx, g, open)
+			if err != nil {
+				b.Fatal(err)
+			}
+			rng := rand.New(rand.NewPCG(1, 1))
+			var whole, took []time.Duration
+			paved, steps := 0, 0
+			for b.Loop() {
+				x, y := rng.IntN(s.Columns-20), rng.IntN(s.Rows-20)
+				next, err := f.Apply([]floor.Edit{paint(x, y, x+20, y+20, floor.Occupancy(rng.IntN(2)))})
+				if err != nil {
+					b.Fatal(err)
+				}
+				change := floor.Diff(f, next)
+				if field, err = field.Advance(ctx, next, change); err != nil {
+					b.Fatal(err)
+				}
+				if g, err = g.Advance(ctx, field, change); err != nil {
+					b.Fatal(err)
+				}
+				if open, err = open.Advance(ctx, next, change); err != nil {
+					b.Fatal(err)
+				}
+				t0 := time.Now()
+				n, err := w.Advance(ctx, g, open)
+				if err != nil {
+					b.Fatal(err)
+				}
+				t1 := time.Now()
+				if _, err = NewRoads(ctx, g, open); err != nil {
+					b.Fatal(err)
+				}
+				took, whole = append(took, t1.Sub(t0)), append(whole, time.Since(t1))
+				for i := range n.paved {
+					if n.paved[i] != w.paved[i] {
+						paved++
+					}
+				}
+				steps++
+				f, w = next, n
+			}
+			slices.Sort(took)
+			slices.Sort(whole)
+			b.ReportMetric(float64(whole[steps/2])/float64(took[steps/2]), "new/advance")
+			b.ReportMetric(float64(took[steps/2].Microseconds()), "µs/advance")
+			b.ReportMetric(float64(whole[steps/2].Microseconds()), "µs/new")
+			b.ReportMetric(float64(paved)/float64(steps), "blocks-paved")
+			b.ReportMetric(float64(len(w.roads)), "roads")
+		})
+	}
+}
+
 // BenchmarkPlan reports how long roads take to make, and the median and 95th percentile of plans
 // between random places, the first time (open distances to be searched for) and again.
 func BenchmarkPlan(b *testing.B) {

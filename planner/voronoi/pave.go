@@ -35,6 +35,7 @@ type paver struct {
 	block  int32
 	stopOf []int32 // of the block's nodes, -1 for none yet
 	in, to []anyangle.Spot
+	probe  anyangle.Probe
 }
 
 func (v *paver) pave(block int32) *paved {
@@ -171,9 +172,12 @@ const insideUm = joinUm
 func (v *paver) takenUp(at func(float64) geom.Point, out, in float64) float64 {
 	top := in
 	p, q := at(out), at(in)
+	// An arc turns by less than a right angle: between two places it is within the
+	// square of their distance about one.
+	v.probe.Aim(v.open, geom.BoundsOf(q).Grow(2*geom.Dist(p, q)))
 	for n := 0; n < 60 && geom.Dist(p, q) > insideUm/8; n++ {
 		m := (out + in) / 2
-		if c := at(m); v.holds(c) {
+		if c := at(m); v.probe.Holds(c) {
 			in, q = m, c
 		} else {
 			out, p = m, c
