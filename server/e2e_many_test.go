@@ -76,8 +76,8 @@ func TestPlanMany(t *testing.T) {
 	q := toMany()
 	q.Version = pinned(head.Version)
 	r.push(put(solidPolygon("plug", polygon(4.9, 3, 5.1, 3, 5.1, 5, 4.9, 5)))) // not on that version
-	for _, detail := range []pb.PairDetail{pb.PairDetail_PAIR_DETAIL_UNSPECIFIED, pb.PairDetail_PAIR_DETAIL_SUMMARY, pb.PairDetail_PAIR_DETAIL_ROUTE} {
-		q.Detail = detail
+	for preference, detail := range []pb.PairDetail{pb.PairDetail_PAIR_DETAIL_UNSPECIFIED, pb.PairDetail_PAIR_DETAIL_SUMMARY, pb.PairDetail_PAIR_DETAIL_SUMMARY, pb.PairDetail_PAIR_DETAIL_ROUTE} {
+		q.Detail, q.Options = detail, &pb.PlanOptions{Preference: pb.Preference(preference)}
 		header, answers, end := r.many(q)
 		if !proto.Equal(header.Stamp, head) || header.Body.GetMaxSpeedMps() != 1 || header.Options.GetTightWeight() != 1 {
 			t.Errorf("header %v, wanted version %v and the defaults", header, head)
@@ -87,7 +87,7 @@ func TestPlanMany(t *testing.T) {
 		}
 		for _, a := range answers {
 			one := toBench()
-			one.Version, one.Start, one.Goal = q.Version, q.Starts[a.StartIndex], q.Goals[a.GoalIndex]
+			one.Version, one.Options, one.Start, one.Goal = q.Version, q.Options, q.Starts[a.StartIndex], q.Goals[a.GoalIndex]
 			want, err := r.routes.Plan(r.ctx(), one)
 			if err != nil {
 				t.Fatal(err)

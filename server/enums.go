@@ -48,6 +48,10 @@ var (
 		{planner.Grid8, pb.Roadmap_ROADMAP_GRID8},
 		{planner.Quadtree, pb.Roadmap_ROADMAP_QUADTREE},
 		{planner.ConvexCells, pb.Roadmap_ROADMAP_CONVEX_CELLS},
+		{planner.VisibilityGraph, pb.Roadmap_ROADMAP_VISIBILITY_GRAPH},
+		{planner.MeadowMap, pb.Roadmap_ROADMAP_MEADOW_MAP},
+		{planner.VoronoiGraph, pb.Roadmap_ROADMAP_VORONOI_GRAPH},
+		{planner.ExactCells, pb.Roadmap_ROADMAP_EXACT_CELLS},
 	}
 	speedCauses = twins[planner.SpeedCause, pb.SpeedCause]{
 		{planner.CauseBody, pb.SpeedCause_SPEED_CAUSE_BODY},

@@ -821,8 +821,8 @@ type PlanOptions struct {
 	// there is none. 0 asks for the server's own bound, which is for the search alone:
 	// making the version ready may take some seconds more (then UNAVAILABLE). A deadline
 	// of the call that comes earlier counts in the same way. RESOURCE_EXHAUSTED says
-	// that no planner would be free by half of the time. Both errors name a time to ask
-	// again.
+	// that no planner was free within the server's longest wait for one, or by half of
+	// the time. Both errors name a time to ask again.
 	TimeBudgetS float64 `protobuf:"fixed64,6,opt,name=time_budget_s,json=timeBudgetS,proto3" json:"time_budget_s,omitempty"`
 	// The most metres between two points of the route, 0.05 or more. 0 sends
 	// points only where the route bends, a leg begins, clearance is smallest or a
