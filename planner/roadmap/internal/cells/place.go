@@ -165,7 +165,7 @@ func (s *Space) Enter(p geom.Point) (Entry, bool) {
 				continue
 			}
 			// On a whole micrometre inside, the place is the cell's beyond doubt.
-			if to, ok := s.inside(i, on); ok && s.clear(p, to) {
+			if to, ok := s.inside(i, on); ok && s.Clear(p, to) {
 				best, at = d, to
 			}
 		}
@@ -189,8 +189,8 @@ func (s *Space) inside(i int32, on geom.Point) (geom.Point, bool) {
 	return geom.Point{}, false
 }
 
-// clear says whether the straight piece keeps what the space is for.
-func (s *Space) clear(a, b geom.Point) bool {
+// Clear says whether the straight piece keeps what the space is for.
+func (s *Space) Clear(a, b geom.Point) bool {
 	if !s.m.Bounds().Contains(a) || !s.f.SegmentClear(a, b, s.need.ClearanceUm) {
 		return false
 	}
@@ -235,4 +235,28 @@ func Smallest(segment func(a, b geom.Point) float64, ring []geom.Point) int64 {
 		best = min(best, segment(p, ring[(i+1)%len(ring)]))
 	}
 	return int64(math.Floor(best))
+}
+
+// OnSide is the place above (or below) p, which is in cell i, on its upper (lower) side,
+// rounded to the inside.
+func (s *Space) OnSide(i int32, p geom.Point, upper bool) geom.Point {
+	c := &s.Cells[i]
+	x, y := p.X-s.origin.X, p.Y-s.origin.Y
+	e, y0, y1 := c.bottom, c.Lo0, c.Lo1
+	if upper {
+		e, y0, y1 = c.top, c.Hi0, c.Hi1
+	}
+	switch {
+	case x == float64(c.X0):
+		return s.Point(x, float64(y0))
+	case x == float64(c.X1):
+		return s.Point(x, float64(y1))
+	case e.a.y == e.b.y:
+		return s.Point(x, float64(e.a.y))
+	}
+	at := float64(e.a.y) + float64(float64(e.b.y-e.a.y)*((x-float64(e.a.x))/float64(e.b.x-e.a.x)))
+	if upper {
+		return s.Point(x, max(y, math.Floor(at)))
+	}
+	return s.Point(x, min(y, math.Ceil(at)))
 }

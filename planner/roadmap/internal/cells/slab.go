@@ -29,10 +29,14 @@ func (s *sweeper) between(x0, x1 int64, a, b *gap) int64 {
 // ends is where to halve a slab for a gap on its left (or on its right) that has no like
 // on the other side.
 func (s *sweeper) ends(x0, x1 int64, g *gap, atRight bool) int64 {
-	if x1-x0 <= 1 || g.lo >= g.hi {
+	b, t := &s.edges[g.bottom], &s.edges[g.top]
+	opens := slopeSign(t, b)
+	if atRight {
+		opens = -opens
+	}
+	if x1-x0 <= 1 || g.lo >= g.hi && opens <= 0 {
 		return none // what is left is less than a micrometre, or a mere touch
 	}
-	b, t := &s.edges[g.bottom], &s.edges[g.top]
 	fits := func(x int64) bool {
 		lo, rest := b.at(x)
 		if rest > 0 {
@@ -41,12 +45,12 @@ func (s *sweeper) ends(x0, x1 int64, g *gap, atRight bool) int64 {
 		hi, _ := t.at(x)
 		return lo <= hi
 	}
-	x := x0 + (x1-x0)/2 // others shut it first
+	x := x0 + (x1-x0)/2 // others shut it first, or it opens too slowly to tell
 	if atRight {
-		if !fits(x0) {
+		if !fits(x0) && g.lo <= g.hi {
 			x = last(x0, x1, func(x int64) bool { return !fits(x) }) + 1
 		}
-	} else if !fits(x1) {
+	} else if !fits(x1) && g.lo <= g.hi {
 		x = last(x0, x1, fits)
 	}
 	return inner(x0, x1, x)

@@ -18,7 +18,7 @@ type Need roadmap.Need
 // The limits of a Space; roadmap.ErrTooLarge is wrapped beyond.
 const (
 	MaxClearanceUm = 100 * geom.UmPerMetre
-	MaxCells       = 1 << 22
+	MaxCells       = 1 << 22 // before those that go on beyond a strip are put together
 )
 
 // Cell is a convex part of the free space between two upright walls, in micrometres from
@@ -50,6 +50,7 @@ type Space struct {
 	origin    geom.Point
 	low, high pt // where the body's middle may be
 	strips    []*strip
+	most      int       // cells
 	ids       [][]int32 // of each strip's cells
 	of, at    []int32   // Walls of cell i: of[at[i]:at[i+1]]
 }
@@ -88,7 +89,7 @@ func check(n roadmap.Need) error {
 func newSpace(f *clearance.Field, need Need, chord float64) *Space {
 	m := f.Map()
 	st := m.Settings()
-	s := &Space{f: f, m: m, need: need, chord: chord, origin: st.Vertex(0, 0)}
+	s := &Space{f: f, m: m, most: MaxCells, need: need, chord: chord, origin: st.Vertex(0, 0)}
 	s.high = pt{int64(st.Columns) * st.ResolutionUm, int64(st.Rows) * st.ResolutionUm}
 	if !st.OpenBorder {
 		r := need.ClearanceUm
@@ -188,10 +189,10 @@ func (s *Space) fill(ctx context.Context, list []int) error {
 	total := 0
 	for _, t := range s.strips {
 		if t == nil {
-			return fmt.Errorf("%w: more than %d sides in a strip or %d cells", roadmap.ErrTooLarge, MaxStripEdges, MaxCells)
+			return fmt.Errorf("%w: more than %d sides in a strip or %d cells", roadmap.ErrTooLarge, MaxStripEdges, s.most)
 		}
-		if total += len(t.traps); total > MaxCells {
-			return fmt.Errorf("%w: more than %d cells", roadmap.ErrTooLarge, MaxCells)
+		if total += len(t.traps); total > s.most {
+			return fmt.Errorf("%w: more than %d cells", roadmap.ErrTooLarge, s.most)
 		}
 	}
 	s.assemble()

@@ -55,11 +55,11 @@ func (p *stripper) make(ctx context.Context, sp *Space, i int, features []*floor
 	s := &p.s
 	*s = sweeper{edges: append(p.o.edges, edge{pt{x0 - 1, y0}, pt{x1 + 1, y0}, -1, Source{}}, edge{pt{x0 - 1, y1}, pt{x1 + 1, y1}, 1, Source{}}),
 		uprights: p.o.uprights, x0: x0, x1: x1, y0: y0, y1: y1, left: x0 == sp.low.x, right: x1 == sp.high.x,
-		thin: sp.thin(), most: MaxCells, stop: func() bool { return ctx.Err() != nil },
+		thin: sp.thin(), most: sp.most, stop: func() bool { return ctx.Err() != nil },
 		items: s.items[:0], second: s.second[:0], spare: s.spare}
 	s.run()
 	p.o.edges = s.edges
-	if len(s.traps) > MaxCells || ctx.Err() != nil {
+	if len(s.traps) > sp.most || ctx.Err() != nil {
 		return nil
 	}
 	t.traps, t.links, t.first, t.last = s.traps, s.links, s.first, append([]int32(nil), s.front...)
