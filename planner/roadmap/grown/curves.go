@@ -44,7 +44,7 @@ type set struct {
 	curves []curve
 	areas  [][][]geom.Point // polygons, for places deep inside
 	boxes  []geom.Rect      // of areas
-	raster bool
+	raster *solids.Raster
 	joints []joint
 
 	grid grid
@@ -72,7 +72,9 @@ func (s *set) add(need roadmap.Need, all []solids.Solid) {
 		if outward || rho <= 0 {
 			rho = exact + shift
 		}
-		s.raster = s.raster || v.Raster
+		if v.Raster != nil {
+			s.raster = v.Raster
+		}
 		var chains [][]geom.Point
 		for _, c := range v.Chains {
 			local := make([]geom.Point, len(c))
@@ -82,7 +84,7 @@ func (s *set) add(need roadmap.Need, all []solids.Solid) {
 			chains = append(chains, local)
 			s.addChain(local, rho, exact, v.Zone)
 		}
-		if v.Area && !v.Raster {
+		if v.Area && v.Raster == nil {
 			s.areas = append(s.areas, chains)
 			s.boxes = append(s.boxes, geom.BoundsOf(chains[0]...))
 		}

@@ -55,7 +55,7 @@ func (s *set) inside(p geom.Point, tol float64) bool {
 			return true
 		}
 	}
-	if s.raster && s.solidAt(p) {
+	if s.raster != nil && s.raster.Solid(int(math.Floor(p.X/s.h)), int(math.Floor(p.Y/s.h))) {
 		return true
 	}
 	for _, i := range s.grid.areas[k] {
@@ -64,15 +64,6 @@ func (s *set) inside(p geom.Point, tol float64) bool {
 		}
 	}
 	return false
-}
-
-func (s *set) solidAt(p geom.Point) bool {
-	c, r := int(math.Floor(p.X/s.h)), int(math.Floor(p.Y/s.h))
-	set := s.m.Settings()
-	if c < 0 || r < 0 || c >= set.Columns || r >= set.Rows {
-		return !set.OpenBorder
-	}
-	return s.m.Solid(c, r)
 }
 
 // cut finds all crossings of curves, bucket by bucket.

@@ -104,14 +104,19 @@ func Of(ctx context.Context, m *floor.Map, need roadmap.Need) (*Outline, error) 
 	return Simplified(ctx, m, need, 0)
 }
 
-// Simplified is Of with notches of the raster's outline filled: no more is added than lies
-// within errUm of the raster, nothing is taken away. Above the clearance less SlackUm and
-// a micrometre errUm counts as that. It takes the teeth off walls that slant across
-// the cells.
+// Simplified is Of with the raster simplified on the outside: nothing is taken away, and
+// what is added is at most what growing by errUm more would add. Of that, two thirds are for
+// the depth of notches that are filled (the teeth of walls that slant across the cells; less
+// than the clearance), and a sixth each for gaps in rows and in columns of cells: a gap of
+// g adds no more to solids grown by r than growing them by sqrt(r² + g²/4) does.
 func Simplified(ctx context.Context, m *floor.Map, need roadmap.Need, errUm float64) (*Outline, error) {
 	s := &set{m: m, origin: m.Bounds().Min, h: float64(m.Settings().ResolutionUm), slack: slackOf(m.Bounds())}
-	// What is filled must be within the radius of the chord over it.
-	s.add(need, solids.Of(m, need.Zones, min(errUm, float64(need.ClearanceUm)-1-s.slack)))
+	r := float64(need.ClearanceUm)
+	s.add(need, solids.Of(m, need.Zones, solids.Simplification{
+		GapCells: int(2 * math.Sqrt(errUm/6*(2*r+errUm/6)) / s.h),
+		// What is filled must be within the radius of the chord over it.
+		NotchUm: min(errUm*2/3, r-1-s.slack),
+	}))
 	if err := s.drop(ctx); err != nil {
 		return nil, err
 	}

@@ -288,5 +288,5 @@ func BenchmarkRandomClutter(b *testing.B) {
 	for b.Loop() {
 		outline(b, f, 100_000)
 	}
-	b.ReportMetric(float64(len(solids.Of(f, false, 0)[0].Chains)), "chains")
+	b.ReportMetric(float64(len(solids.Of(f, false, solids.Simplification{})[0].Chains)), "chains")
 }

@@ -1,7 +1,9 @@
 package visibility
 
 import (
+	"cmp"
 	"context"
+	"slices"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -34,54 +36,73 @@ func (g *Graph) Advance(ctx context.Context, f *clearance.Field, change floor.Ch
 			was[i] = k
 		}
 	}
+	now := make([]int32, len(g.arcs)) // the new arc of each old one; -1 for none
+	for i := range now {
+		now[i] = -1
+	}
+	var fresh []int32
+	for i, k := range was {
+		if k >= 0 {
+			now[k] = int32(i)
+		} else {
+			fresh = append(fresh, int32(i))
+		}
+	}
 	touched := newRegion(change, f.Map().Settings(), g.need)
-	err = parallel.Each(ctx, 0, len(n.links), func() func(int) {
+	err = parallel.Each(ctx, 0, len(n.arcs), func() func(int) {
 		j := n.judge()
-		scratch := make([]int32, len(g.links))
-		return func(k int) { n.carry(g, int32(k), was, touched, j, scratch) }
+		var again []int32
+		return func(i int) {
+			if k := was[i]; k >= 0 {
+				again = n.carry(g, int32(i), k, was, now, fresh, touched, j, again[:0])
+			}
+		}
 	})
 	return n, err
 }
 
-// carry makes a node's tangents from those the old graph has found for it, if any. scratch
-// is zero for all old nodes, before and after.
-func (g *Graph) carry(from *Graph, node int32, was []int32, touched *region, j *judge.Judge, scratch []int32) {
-	w := was[node>>1]
-	if w < 0 {
-		return
+// carry makes the tangents of an arc, which was arc k of the old graph, from those the old
+// graph has found for it, if any.
+func (g *Graph) carry(from *Graph, i, k int32, was, now, fresh []int32, touched *region, j *judge.Judge, again []int32) []int32 {
+	old := [2]*[]link{from.links[2*k].Load(), from.links[2*k+1].Load()}
+	if old[0] == nil && old[1] == nil {
+		return again
 	}
-	old := from.links[w<<1|node&1].Load()
-	if old == nil {
-		return
+	again = append(again, fresh...)
+	a := &g.arcs[i]
+	for to := range g.arcs {
+		if was[to] >= 0 && int32(to) != i && touched.between(a, &g.arcs[to]) {
+			again = append(again, int32(to))
+		}
 	}
-	for i, l := range *old {
-		scratch[l.to] = int32(i) + 1
-	}
-	out := make([]link, 0, len(*old))
-	for to := range int32(len(g.links)) {
-		if to>>1 == node>>1 {
+	slices.Sort(again)
+	for s, l := range old {
+		if l == nil {
 			continue
 		}
-		t, ok := g.between(node, to)
-		if !ok {
-			continue
-		}
-		if k := was[to>>1]; k >= 0 && !touched.near(t.p, t.q) {
-			if i := scratch[k<<1|to&1]; i > 0 {
-				l := (*old)[i-1]
-				l.to = to
-				out = append(out, l)
+		node := 2*i + int32(s)
+		out := make([]link, 0, len(*l))
+		for _, k := range *l {
+			to := now[k.to>>1]
+			if to < 0 {
+				continue
 			}
-			continue
+			if _, found := slices.BinarySearch(again, to); !found {
+				k.to = to<<1 | k.to&1
+				out = append(out, k)
+			}
 		}
-		if j.Sight(t.p, t.q) {
-			out = append(out, g.link(node, to, t))
+		for _, to := range again {
+			for z := range int32(2) {
+				if t, ok := g.between(node, 2*to+z); ok && sight(j, t) {
+					out = append(out, g.link(node, 2*to+z, t))
+				}
+			}
 		}
+		slices.SortFunc(out, func(a, b link) int { return cmp.Compare(a.to, b.to) })
+		g.links[node].Store(&out)
 	}
-	for _, l := range *old {
-		scratch[l.to] = 0
-	}
-	g.links[node].Store(&out)
+	return again
 }
 
 // region is what a change may have an effect on: rectangles around all that differs, grown
@@ -113,13 +134,16 @@ func newRegion(c floor.Change, s floor.Settings, need roadmap.Need) *region {
 	return r
 }
 
-// near says whether the segment ab comes into the region.
-func (r *region) near(a, b geom.Point) bool {
-	if !r.all.Intersects(geom.BoundsOf(a, b)) || !geom.RectTouchesSegment(r.all, a, b) {
+// between says whether a tangent of two arcs may come into the region: all of them lie
+// within the larger radius of the segment between the centres.
+func (r *region) between(a, b *arc) bool {
+	wide := max(a.wide(), b.wide())
+	box := geom.BoundsOf(a.c, b.c).Grow(wide)
+	if !r.all.Intersects(box) || !geom.RectTouchesSegment(r.all.Grow(wide), a.c, b.c) {
 		return false
 	}
 	for _, k := range r.rects {
-		if k.Intersects(geom.BoundsOf(a, b)) && geom.RectTouchesSegment(k, a, b) {
+		if k.Intersects(box) && geom.RectTouchesSegment(k.Grow(wide), a.c, b.c) {
 			return true
 		}
 	}

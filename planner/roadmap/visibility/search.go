@@ -202,7 +202,7 @@ func (q *search) keep(l *label) {
 }
 
 // outOf are places from which a way to or from p may go on: p, and where it lies in a notch of
-// the raster that the outline has filled, places up to two cells straight out.
+// the raster that the outline has filled, places up to three cells straight out.
 func (g *Graph) outOf(p geom.Point, j *judge.Judge) []geom.Point {
 	out := []geom.Point{p}
 	n := j.At(p)

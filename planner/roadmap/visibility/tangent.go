@@ -1,7 +1,9 @@
 package visibility
 
 import (
+	"cmp"
 	"math"
+	"slices"
 
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/internal/judge"
@@ -52,13 +54,14 @@ func (g *Graph) between(i, j int32) (tangent, bool) {
 // circles wider by slackUm. An end of a way is an arc of no radius.
 func touching(a, b *arc, s, z float64) (tangent, bool) {
 	dx, dy := b.c.X-a.c.X, b.c.Y-a.c.Y
-	for _, n := range [4]geom.Point{{X: 0, Y: 1}, {X: 0, Y: -1}, {X: -1}, {X: 1}} {
-		// n is the line's left; it runs along (n.Y, -n.X).
-		length := float64(n.Y*dx) - float64(n.X*dy)
-		if length < 0 || n.X*dx+n.Y*dy != z*b.radius-s*a.radius || length == 0 && dx == 0 && dy == 0 {
-			continue
+	if off := math.Abs(z*b.radius - s*a.radius); (math.Abs(dx) == off || math.Abs(dy) == off) && (dx != 0 || dy != 0) {
+		for _, n := range [4]geom.Point{{X: 0, Y: 1}, {X: 0, Y: -1}, {X: -1}, {X: 1}} {
+			// n is the line's left; it runs along (n.Y, -n.X).
+			length := float64(n.Y*dx) - float64(n.X*dy)
+			if length >= 0 && float64(n.X*dx)+float64(n.Y*dy) == z*b.radius-s*a.radius {
+				return straight(a, b, n, s, z, a.radius, b.radius, length), true
+			}
 		}
-		return straight(a, b, n, s, z, a.radius, b.radius, length), true
 	}
 	ra, rb := a.wide(), b.wide()
 	k := z*rb - s*ra
@@ -100,7 +103,8 @@ func (g *Graph) toEnd(node int32, p geom.Point) (tangent, bool) {
 	return tangent{p: t.q, q: t.p, v: t.w, w: t.v, length: t.length}, ok
 }
 
-// linksOf are a node's tangents, found when first asked for.
+// linksOf are a node's tangents in the order of nodes, found when first asked for. A
+// tangent that is known the other way round is not looked at again.
 func (g *Graph) linksOf(node int32, j *judge.Judge) []link {
 	if l := g.links[node].Load(); l != nil {
 		return *l
@@ -110,12 +114,29 @@ func (g *Graph) linksOf(node int32, j *judge.Judge) []link {
 		if to>>1 == node>>1 {
 			continue
 		}
-		if t, ok := g.between(node, to); ok && j.Sight(t.p, t.q) {
+		t, ok := g.between(node, to)
+		if !ok {
+			continue
+		}
+		if back := g.links[to^1].Load(); back != nil {
+			_, ok = slices.BinarySearchFunc(*back, node^1, func(l link, n int32) int { return cmp.Compare(l.to, n) })
+		} else {
+			ok = sight(j, t)
+		}
+		if ok {
 			out = append(out, g.link(node, to, t))
 		}
 	}
 	g.links[node].CompareAndSwap(nil, &out)
 	return out
+}
+
+// sight is the same for a tangent and its reverse, bit for bit.
+func sight(j *judge.Judge, t tangent) bool {
+	if cmp.Or(cmp.Compare(t.p.Y, t.q.Y), cmp.Compare(t.p.X, t.q.X)) > 0 {
+		return j.Sight(t.q, t.p)
+	}
+	return j.Sight(t.p, t.q)
 }
 
 func (g *Graph) link(node, to int32, t tangent) link {

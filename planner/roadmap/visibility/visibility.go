@@ -10,10 +10,11 @@
 // # What is exact
 //
 // Vector solids are taken as they are. The outline of the raster is simplified on the
-// outside: notches up to one cell deep are filled when the clearance is more than a
-// cell (OutlineErrorUm), which takes the teeth off walls that slant across the cells. With
-// L*(x) the true optimum at clearance x, L*(r) <= LengthUm <= L*(r + OutlineErrorUm), but for
-// ArcErrorUm at each arc and for ends in notches, which may first go up to two cells straight
+// outside when the clearance is more than a cell (grown.Simplified): notches up to one cell
+// deep are filled, which takes the teeth off walls that slant across the cells, and gaps
+// between cells that add no more than growing by a quarter of a cell would, in
+// rows and in columns; OutlineErrorUm is one and a half cells. With L*(x) the true optimum at clearance x, L*(r) <= LengthUm <= L*(r + OutlineErrorUm), but for
+// ArcErrorUm at each arc and for ends in notches, which may first go up to three cells straight
 // out. Whether a tangent is clear is decided on the true solids: a way always keeps r.
 //
 // # Cost
@@ -103,11 +104,11 @@ func outlineError(s floor.Settings, need roadmap.Need) float64 {
 	if need.ClearanceUm <= s.ResolutionUm+outlineRoomUm {
 		return 0
 	}
-	return float64(s.ResolutionUm)
+	return 1.5 * float64(s.ResolutionUm)
 }
 
-// OutlineErrorUm is how far, in micrometres, the outline that the graph is made from
-// stands off from the raster at most.
+// OutlineErrorUm is how much more clearance, in micrometres, a way may need than the true
+// solids ask for before the graph is sure to have it.
 func (g *Graph) OutlineErrorUm() float64 { return g.errUm }
 
 // Need is what the graph is for.

@@ -1,7 +1,8 @@
 // Package solids gives the solids of one version of a floor as chains with the
 // solid on their left: raster cells, the closed border, vector solids, closed zones.
 //
-// trace.go follows the outline of the raster, simplify.go takes its teeth away.
+// raster.go holds the cells and fills gaps, trace.go follows their outline, simplify.go
+// takes its teeth away.
 package solids
 
 import (
@@ -18,25 +19,32 @@ import (
 type Solid struct {
 	Chains [][]geom.Point
 	GrowUm float64
-	Zone   bool // a closed zone
-	Area   bool // the chains have an inside
-	Raster bool // cells and the closed border, in one Solid
-	Key    uint32
+	Zone   bool    // a closed zone
+	Area   bool    // the chains have an inside
+	Raster *Raster // cells and the closed border, in one Solid
+	Key    uint32  // differs from solid to solid, as a rule; of the name alone
+}
+
+// Simplification says what may be added to the raster.
+type Simplification struct {
+	GapCells int     // see Raster.FillGaps
+	NotchUm  float64 // see Simplify; 0: none
 }
 
 // Of collects the solids of m, closed zones too when zones is set. The raster comes
-// first, its outline simplified to within errUm (see Simplify), then features by name.
-// Time is linear in the cells' bits and in the outlines.
-func Of(m *floor.Map, zones bool, errUm float64) []Solid {
+// first, simplified, then features by name. Time is linear in the cells' bits and in the
+// outlines.
+func Of(m *floor.Map, zones bool, simple Simplification) []Solid {
 	var out []Solid
-	if loops := Trace(m); len(loops) > 0 {
-		if errUm > 0 {
-			for i := range loops {
-				loops[i] = Simplify(loops[i], errUm)
-			}
+	r := ReadRaster(m)
+	r.FillGaps(simple.GapCells)
+	loops := r.Trace()
+	if simple.NotchUm > 0 {
+		for i := range loops {
+			loops[i] = Simplify(loops[i], simple.NotchUm)
 		}
-		out = append(out, Solid{Chains: loops, Area: true, Raster: true})
 	}
+	out = append(out, Solid{Chains: loops, Area: true, Raster: r})
 	for f := range m.Features() {
 		if f.Kind == floor.Solid || zones && f.Kind == floor.ClosedZone {
 			out = appendFeature(out, f)

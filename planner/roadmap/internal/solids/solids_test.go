@@ -61,7 +61,7 @@ func TestTracedOutlineHoldsTheSolidCells(t *testing.T) {
 		}
 		open := k%2 == 0
 		f := raster(t, rng, w, h, rng.Float64(), open)
-		loops := Trace(f)
+		loops := ReadRaster(f).Trace()
 		area, cells := 0.0, 0
 		for _, l := range loops {
 			area += geom.Ring(l).SignedArea() / (um * um)
@@ -104,7 +104,7 @@ func TestSimplifiedOutlineIsOutside(t *testing.T) {
 	rng := rand.New(rand.NewPCG(seed, 0))
 	for k := range 40 {
 		f := raster(t, rng, 1+rng.IntN(60), 1+rng.IntN(60), []float64{0.02, 0.2, 0.5, 0.9}[k%4], true)
-		loops := Trace(f)
+		loops := ReadRaster(f).Trace()
 		var simple [][]geom.Point
 		for _, l := range loops {
 			s := Simplify(l, um)
@@ -133,12 +133,57 @@ func TestSimplifiedOutlineIsOutside(t *testing.T) {
 		t.Fatal(err)
 	}
 	before, after := 0, 0
-	for _, l := range Trace(slant) {
+	for _, l := range ReadRaster(slant).Trace() {
 		before += len(l)
 		after += len(Simplify(l, um))
 	}
 	t.Logf("slanting racks: %d turns, %d after", before, after)
 	if after*4 > before {
 		t.Errorf("%d of %d turns are left of racks that slant", after, before)
+	}
+}
+
+// TestGapsAreFilled against a plain scan of rows, then of columns.
+func TestGapsAreFilled(t *testing.T) {
+	const seed = 9
+	t.Logf("seed %d", seed)
+	rng := rand.New(rand.NewPCG(seed, 0))
+	for k := range 60 {
+		w, h, gap := 1+rng.IntN(150), 1+rng.IntN(40), rng.IntN(9)
+		f := raster(t, rng, w, h, 0.1+0.3*rng.Float64(), k%2 == 0)
+		got := ReadRaster(f)
+		got.FillGaps(gap)
+		solid := make([]bool, w*h)
+		for i := range solid {
+			solid[i] = f.Solid(i%w, i/w)
+		}
+		fill := func(n int, at func(i int) *bool) {
+			last := -1 // the last solid one; the border, unless it is open
+			if k%2 == 0 {
+				last = -1000
+			}
+			for i := 0; i <= n; i++ {
+				if i < n && !*at(i) || i == n && k%2 == 0 {
+					continue
+				}
+				if i-last-1 <= gap {
+					for j := last + 1; j < i; j++ {
+						*at(j) = true
+					}
+				}
+				last = i
+			}
+		}
+		for y := range h {
+			fill(w, func(i int) *bool { return &solid[y*w+i] })
+		}
+		for x := range w {
+			fill(h, func(i int) *bool { return &solid[i*w+x] })
+		}
+		for i, want := range solid {
+			if got.Solid(i%w, i/w) != want {
+				t.Fatalf("case %d: cell (%d, %d) of %d by %d, gap %d: wanted %v", k, i%w, i/w, w, h, gap, want)
+			}
+		}
 	}
 }

@@ -15,7 +15,7 @@ type corner struct {
 	above     bool // the solid is above its horizontal side
 }
 
-// Trace follows the outline of the raster's solid cells: closed chains of lattice
+// Trace follows the outline of the solid cells: closed chains of lattice
 // vertices, the solid on their left, a point at each turn. Two cells that touch in
 // a corner are one solid. Unless the border is open, all beyond the floor is solid
 // too. Chains begin at their lowest, then leftmost vertex and are in the order of
@@ -24,9 +24,8 @@ type corner struct {
 // Each turn has one side along x and one along y: in a row of vertices the first turn
 // is joined to the second, the third to the fourth and so on, and in columns alike
 // (O'Rourke, "Uniqueness of orthogonal connect-the-dots", 1988).
-func Trace(m *floor.Map) [][]geom.Point {
-	s := m.Settings()
-	cs := corners(m)
+func (r *Raster) Trace() [][]geom.Point {
+	cs := r.corners()
 	next := make([]int32, len(cs))
 	// Rows: corners come row by row, in each by x, a side to the left before one to the right.
 	for i := 0; i+1 < len(cs); i += 2 {
@@ -37,7 +36,7 @@ func Trace(m *floor.Map) [][]geom.Point {
 		}
 	}
 	byCol := make([]int32, len(cs))
-	counts := make([]int32, s.Columns+2)
+	counts := make([]int32, r.cols+2)
 	for _, c := range cs {
 		counts[c.x+1]++
 	}
@@ -71,7 +70,7 @@ func Trace(m *floor.Map) [][]geom.Point {
 		var loop []geom.Point
 		for k := int32(i); !done[k]; k = next[k] {
 			done[k] = true
-			loop = append(loop, s.Vertex(int(cs[k].x), int(cs[k].y)))
+			loop = append(loop, r.settings.Vertex(int(cs[k].x), int(cs[k].y)))
 		}
 		loops = append(loops, loop)
 	}
@@ -79,31 +78,13 @@ func Trace(m *floor.Map) [][]geom.Point {
 }
 
 // corners lists the turns of the outline row by row.
-func corners(m *floor.Map) []corner {
-	s := m.Settings()
-	words := (s.Columns+floor.BlockSize-1)/floor.BlockSize + 1
-	edge := s.Columns & (floor.BlockSize - 1)
-	outside := uint64(0)
-	if !s.OpenBorder {
-		outside = ^uint64(0)
-	}
-	blank := func() []uint64 {
-		row := make([]uint64, words)
-		for i := range row {
-			row[i] = outside
-		}
-		return row
-	}
-	// A band of blocks is read at once; words beyond the last column are as outside.
-	band := make([][]uint64, floor.BlockSize)
-	for i := range band {
-		band[i] = make([]uint64, words)
-	}
+func (r *Raster) corners() []corner {
+	outside := r.beyond()
 	var out []corner
-	below := blank()
+	below := r.outside()
 	row := func(y int, above []uint64) {
 		carryB, carryA := outside&1, outside&1
-		for w := range words {
+		for w := range r.words {
 			b, a := below[w], above[w]
 			lb, la := b<<1|carryB, a<<1|carryA // the cells to the left of each vertex
 			carryB, carryA = b>>63, a>>63
@@ -111,33 +92,18 @@ func corners(m *floor.Map) []corner {
 			for ; turn != 0; turn &= turn - 1 {
 				i := bits.TrailingZeros64(turn)
 				x := w*floor.BlockSize + i
-				if x > s.Columns {
+				if x > r.cols {
 					break
 				}
 				out = appendCorner(out, int32(x), int32(y), lb>>i&1 != 0, b>>i&1 != 0, la>>i&1 != 0, a>>i&1 != 0)
 			}
 		}
-		copy(below, above)
+		below = above
 	}
-	var buf [floor.BlockSize]uint64
-	for by := 0; by*floor.BlockSize < s.Rows; by++ {
-		for bx := range words {
-			m.SolidBits(bx, by, &buf)
-			for i := range band {
-				v := buf[i]
-				if bx == s.Columns/floor.BlockSize {
-					v |= outside << edge
-				} else if bx > s.Columns/floor.BlockSize {
-					v = outside
-				}
-				band[i][bx] = v
-			}
-		}
-		for i := 0; i < floor.BlockSize && by*floor.BlockSize+i < s.Rows; i++ {
-			row(by*floor.BlockSize+i, band[i])
-		}
+	for y, above := range r.bits {
+		row(y, above)
 	}
-	row(s.Rows, blank())
+	row(r.rows, r.outside())
 	return slices.Clip(out)
 }
 
