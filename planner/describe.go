@@ -1,7 +1,9 @@
 package planner
 
 import (
+	"cmp"
 	"context"
+	"iter"
 	"math"
 	"slices"
 
@@ -23,6 +25,8 @@ const (
 	// roundingUm is float64's rounding of exact distances, with room to spare: a
 	// clearance this little below a whole micrometre, or below a threshold, is that.
 	roundingUm = 1e-6
+	// roundingReach, in micrometres, is farther than any of a place's roundings.
+	roundingReach = 3
 )
 
 // ClearanceShortUm is how far, in micrometres, a reported clearance may be below the
@@ -44,13 +48,20 @@ type outline struct {
 	pieces []piece
 }
 
-func (t *task) outline(pts []geom.Point) *outline {
-	o := &outline{t: t, below: float64(t.q.Options.TightBelowUm)}
+func (t *task) outline(c *course) *outline {
+	pts := c.pts
+	o := &outline{t: t, below: float64(t.q.Options.TightBelowUm), pieces: make([]piece, 0, len(pts)+2)}
 	for i := 1; i < len(pts); i++ {
-		a, b := pts[i-1], pts[i]
-		o.pieces = append(o.pieces, piece{a, b, t.j.Segment(a, b)})
+		w := piece{a: pts[i-1], b: pts[i]}
+		if c.near != nil {
+			w.near = c.near[i-1]
+		} else {
+			w.near = t.j.Segment(w.a, w.b)
+		}
+		o.pieces = append(o.pieces, w)
+		a, b := w.a, w.b
 		cuts := t.w.rules.SpeedCuts(nil, a, b)
-		if o.below > 0 {
+		if w.tight(o.below) {
 			for _, s := range t.j.Tight(a, b, o.below-roundingUm) {
 				cuts = append(cuts, s.From, s.To)
 			}
@@ -71,17 +82,24 @@ func (o *outline) cut(i int, at geom.Point) bool {
 	if geom.Dist(w.a, at) < leastPiece || geom.Dist(at, w.b) < leastPiece {
 		return false
 	}
+	was := w.tight(o.below)
+	// Where it is clear that both sides will be tight, the first rounding will do.
+	both := was && o.t.j.At(at).Um < o.below-roundingReach
 	var spare *[2]piece
-	for _, p := range roundings(at) {
-		if !o.t.j.Sight(w.a, p) || !o.t.j.Sight(p, w.b) {
+	for p := range rounded(at) {
+		two := [2]piece{{a: w.a, b: p}, {a: p, b: w.b}}
+		var ok bool
+		if two[0].near, ok = o.t.j.Drive(w.a, p); !ok {
 			continue
 		}
-		two := [2]piece{{w.a, p, o.t.j.Segment(w.a, p)}, {p, w.b, o.t.j.Segment(p, w.b)}}
-		was, is0, is1 := w.tight(o.below), two[0].tight(o.below), two[1].tight(o.below)
+		if two[1].near, ok = o.t.j.Drive(p, w.b); !ok {
+			continue
+		}
+		is0, is1 := two[0].tight(o.below), two[1].tight(o.below)
 		if !was && (is0 || is1) {
 			continue
 		}
-		if was && is0 && is1 && p != at {
+		if was && is0 && is1 && p != at && !both {
 			// One side was to be open, perhaps, and rounding made it tight.
 			if spare == nil {
 				spare = &two
@@ -99,28 +117,32 @@ func (o *outline) cut(i int, at geom.Point) bool {
 }
 
 // roundings are the whole-micrometre places about p, nearest first, and p itself.
-func roundings(p geom.Point) []geom.Point {
-	r := geom.Point{X: math.Round(p.X), Y: math.Round(p.Y)}
-	if r == p {
-		return []geom.Point{p}
-	}
-	var ps []geom.Point
-	for dy := -1.0; dy <= 1; dy++ {
-		for dx := -1.0; dx <= 1; dx++ {
-			ps = append(ps, geom.Point{X: r.X + dx, Y: r.Y + dy})
+func roundings(p geom.Point) []geom.Point { return slices.Collect(rounded(p)) }
+
+// rounded yields roundings one by one; mostly the first will do.
+func rounded(p geom.Point) iter.Seq[geom.Point] {
+	return func(yield func(geom.Point) bool) {
+		r := geom.Point{X: math.Round(p.X), Y: math.Round(p.Y)}
+		if !yield(r) || r == p {
+			return
+		}
+		ps := make([]geom.Point, 0, 9)
+		for dy := -1.0; dy <= 1; dy++ {
+			for dx := -1.0; dx <= 1; dx++ {
+				if dx != 0 || dy != 0 {
+					ps = append(ps, geom.Point{X: r.X + dx, Y: r.Y + dy})
+				}
+			}
+		}
+		slices.SortStableFunc(ps, func(a, b geom.Point) int {
+			return cmp.Compare(geom.Dist(a, p), geom.Dist(b, p))
+		})
+		for _, q := range append(ps, p) {
+			if !yield(q) {
+				return
+			}
 		}
 	}
-	slices.SortStableFunc(ps, func(a, b geom.Point) int {
-		da, db := geom.Dist(a, p), geom.Dist(b, p)
-		switch {
-		case da < db:
-			return -1
-		case da > db:
-			return 1
-		}
-		return 0
-	})
-	return append(ps, p)
 }
 
 // legs gives the index of each leg's first piece, and the number of pieces last.
@@ -169,7 +191,7 @@ func (o *outline) space(most float64) {
 
 // describe turns a course into a route.
 func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
-	o := t.outline(c.pts)
+	o := t.outline(c)
 	o.markSmallest()
 	if most := t.q.Options.MaxSpacingUm; most > 0 {
 		long := 0.0
@@ -197,7 +219,12 @@ func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
 	}
 	r.LengthUm = pts[len(pts)-1].S
 	for i := range o.pieces {
-		cost, _ := t.j.Weigh(o.pieces[i].a, o.pieces[i].b)
+		w := &o.pieces[i]
+		if w.near.Um >= t.j.Open() {
+			r.CostUm += geom.Dist(w.a, w.b)
+			continue
+		}
+		cost, _ := t.j.Weigh(w.a, w.b)
 		r.CostUm += cost
 	}
 	r.Bound = t.bound(c, r)
@@ -224,7 +251,7 @@ func (t *task) points(o *outline) []RoutePoint {
 		if i > 0 {
 			p.S = pts[i-1].S + geom.Dist(pts[i-1].At, p.At)
 		}
-		p.ClearanceUm = t.roundedDown(t.j.At(p.At).Um + roundingUm)
+		p.ClearanceUm = t.roundedDown(t.j.Place(p.At).Um + roundingUm)
 	}
 	return pts
 }

@@ -7,6 +7,7 @@ import (
 
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/anyangle"
+	"example.com/wideberth/planner/clearance"
 )
 
 // joinReach is how far, in micrometres, an end may be from a mesh and still be joined to
@@ -63,10 +64,13 @@ func (t *task) optimum(ctx context.Context) (c *course, apart bool, err error) {
 	if len(pts) > 2 && from != start && t.j.Sight(start, pts[2]) {
 		pts = slices.Delete(pts, 1, 2)
 	}
+	c.near = make([]clearance.Nearest, 0, len(pts))
 	for i := 1; i < len(pts); i++ {
-		if !t.j.Sight(pts[i-1], pts[i]) {
+		near, ok := t.j.Drive(pts[i-1], pts[i])
+		if !ok {
 			return nil, false, nil
 		}
+		c.near = append(c.near, near)
 	}
 	c.pts = pts
 	return c, false, nil
@@ -80,7 +84,7 @@ func (t *task) joint(g *anyangle.Mesh, p geom.Point, goal bool) (geom.Point, boo
 	if !ok || near == p {
 		return near, ok
 	}
-	for _, q := range roundings(near) {
+	for q := range rounded(near) {
 		a, b := p, q
 		if goal {
 			a, b = q, p

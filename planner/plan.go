@@ -8,6 +8,7 @@ import (
 
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/check"
+	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/judge"
 	"example.com/wideberth/planner/internal/mask"
 	"example.com/wideberth/planner/internal/pull"
@@ -47,6 +48,7 @@ type task struct {
 	stopgap *stopgap // what to answer when time runs out; nil for none
 	hasty   bool     // looks for a stopgap
 
+	over   classical   // the roadmap to search; nil for what the options say
 	barred *Bottleneck // the zone that a named roadmap's way goes against
 }
 
@@ -140,6 +142,7 @@ func (t *task) between(ctx context.Context) (Answer, error) {
 // course is a way from start to goal, found but not described yet.
 type course struct {
 	pts  []geom.Point
+	near []clearance.Nearest // by piece, where it was measured already; else nil
 	kind BoundKind
 	// roadmap is the cost of the best path over the roadmap, each cell judged as a
 	// whole; +Inf when none was found, 0 when the course itself is the best path.
@@ -163,7 +166,7 @@ func (t *task) course(ctx context.Context) (*course, error) {
 		return c, nil
 	}
 	o := &t.q.Options
-	if o.classic() {
+	if t.over != nil || o.classic() {
 		return t.classic(ctx)
 	}
 	apart := false

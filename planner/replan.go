@@ -164,7 +164,7 @@ func (t *task) trim(q *ReplanRequest) (pts []geom.Point, cause ReplanCause, cutS
 	if t.j.Sight(pose, rest[0]) {
 		return append([]geom.Point{pose}, rest...), 0, 0
 	}
-	for _, near := range roundings(on.at) {
+	for near := range rounded(on.at) {
 		if near != pose && near != rest[0] && t.j.Sight(pose, near) && t.j.Sight(near, rest[0]) {
 			return append([]geom.Point{pose, near}, rest...), 0, 0
 		}

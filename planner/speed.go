@@ -10,9 +10,11 @@ import (
 // body's own, a zone's, or what the free travel straight ahead allows. At the end of
 // a route a equals b.
 func (t *task) ceiling(a, b geom.Point, heading float64) (float64, SpeedCause) {
-	free := t.w.travel(a, heading, t.q.Body.RadiusUm, t.w.stopping(t.q.Body))
 	// The piece itself is known to be free, whatever rounding makes of its heading.
-	free = max(free, geom.Dist(a, b))
+	free := geom.Dist(a, b)
+	if most := t.w.stopping(t.q.Body); free < float64(most) {
+		free += t.w.travel(b, heading, t.q.Body.RadiusUm, most-int64(free))
+	}
 	return advised(t.q.Body, t.w.rules.SpeedLimit(a, b), free)
 }
 

@@ -38,7 +38,9 @@ func New(f *clearance.Field, r *rules.Rules, requiredUm, radiusUm int64) *Judge 
 	return &Judge{Field: f, Rules: r, NeedUm: requiredUm, RadiusUm: radiusUm}
 }
 
-// end is At for the ends of pieces, of which one after another is often the same.
+// Place is At for the ends of pieces, of which one after another is often the same.
+func (j *Judge) Place(p geom.Point) clearance.Nearest { return j.end(p) }
+
 func (j *Judge) end(p geom.Point) clearance.Nearest {
 	for i := range j.ends {
 		if j.ends[i].On == p && j.ends[i].Um > 0 {
@@ -61,8 +63,20 @@ func (j *Judge) At(p geom.Point) clearance.Nearest {
 // Segment is the field's answer, counted. Where nothing is nearer than the cap, both
 // places are a.
 func (j *Judge) Segment(a, b geom.Point) clearance.Nearest {
+	na, nb := j.end(a), j.end(b)
 	j.Exacts++
-	return placed(j.Field.Segment(a, b), a)
+	return placed(j.Field.SegmentBetween(a, b, na, nb), a)
+}
+
+// Drive is Sight and Segment in one.
+func (j *Judge) Drive(a, b geom.Point) (near clearance.Nearest, ok bool) {
+	near = j.Segment(a, b)
+	if j.NeedUm == 0 || j.RadiusUm == 0 {
+		return near, j.Sight(a, b)
+	}
+	j.Sights++
+	r := j.Field.Bounds()
+	return near, near.Um >= float64(j.NeedUm) && r.Contains(a) && r.Contains(b) && j.Allowed(a, b)
 }
 
 func placed(n clearance.Nearest, p geom.Point) clearance.Nearest {
@@ -75,7 +89,7 @@ func placed(n clearance.Nearest, p geom.Point) clearance.Nearest {
 // Stands says whether the body may stand at p. When not, zone is the closed zone that
 // forbids it, nil when clearance or the floor's edge does.
 func (j *Judge) Stands(p geom.Point) (ok bool, zone *floor.Feature) {
-	if !j.Field.Bounds().Contains(p) || j.At(p).Um < float64(j.NeedUm) {
+	if !j.Field.Bounds().Contains(p) || j.end(p).Um < float64(j.NeedUm) {
 		return false, nil
 	}
 	if zone = j.Rules.Entered(p, p, float64(j.RadiusUm)); zone != nil {
@@ -199,7 +213,7 @@ func (j *Judge) Tight(a, b geom.Point, um float64) []geom.Span {
 		return nil
 	}
 	t := tightener{j: j, a: a, b: b, um: um, long: geom.Dist(a, b)}
-	t.halve(0, 1, j.At(a), j.At(b))
+	t.halve(0, 1, j.end(a), j.end(b))
 	return t.out
 }
 
