@@ -112,7 +112,7 @@ func drawOptions(t *rapid.T, s floor.Settings, b planner.Body) planner.Options {
 		MaxSpacingUm:    rapid.SampledFrom([]int64{0, 0, 200_000}).Draw(t, "spacing"),
 	}
 	if o.Preference == planner.Clearest {
-		o.Roadmap = planner.Auto
+		o.Roadmap, o.KeepRoadmapPath = planner.Auto, false
 	}
 	return o
 }

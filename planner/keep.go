@@ -44,7 +44,7 @@ func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *co
 		return nil
 	}
 	if q.OldBound == RoadmapOptimum && t.q.Options.roomy() {
-		return t.keptRoomy(ctx, before, old)
+		return t.keptRoomy(before, old)
 	}
 	if q.OldBound != AnyAngleOptimum || !t.anyAngle() {
 		return nil
@@ -91,7 +91,7 @@ func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *co
 // A fresh plan may be the cheaper one by how differently it draws what it shares with
 // T: the pose may be off the edge by half a millimetre, where chords are, and these
 // may be shorter than others by 3e-4. One-way zones need no regard, as for kept.
-func (t *task) keptRoomy(ctx context.Context, before *floor.Map, pts []geom.Point) *course {
+func (t *task) keptRoomy(before *floor.Map, pts []geom.Point) *course {
 	now, p := t.w.m, t.j.Open()
 	d := detour{from: pts[0], to: pts[len(pts)-1], long: t.costOf(pts)}
 	grown := standing{p + meshStandsOff, p - float64(t.q.Body.MarginUm) + meshStandsOff}
@@ -116,8 +116,7 @@ func (t *task) keptRoomy(ctx context.Context, before *floor.Map, pts []geom.Poin
 		if !ok {
 			return nil
 		}
-		b, ok, err := w.Widest(ctx, d.from, d.to)
-		if _, least := t.narrowest(pts); err != nil || !ok || b.ClearanceUm > least+onRouteUm {
+		if b, ok := w.Between(d.from, d.to); !ok || b.ClearanceUm > t.roomOf(pts)+onRouteUm {
 			return nil
 		}
 	}

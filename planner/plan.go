@@ -295,15 +295,7 @@ func (t *task) route(ctx context.Context, c *course) (*Route, error) {
 
 // check compares a route with what code apart from search and field makes of it.
 func (t *task) check(r *Route) error {
-	var pts []geom.Point
-	for i := range r.Legs {
-		for k := range r.Legs[i].Points {
-			if p := r.Legs[i].Points[k].At; len(pts) == 0 || p != pts[len(pts)-1] {
-				pts = append(pts, p)
-			}
-		}
-	}
-	f := check.Way(t.w.m, pts, t.j.NeedUm, t.q.Body.RadiusUm)
+	f := check.Way(t.w.m, pointsOf(r), t.j.NeedUm, t.q.Body.RadiusUm)
 	switch {
 	case f.Problem != "":
 		return &CheckError{f.Problem}
@@ -311,4 +303,16 @@ func (t *task) check(r *Route) error {
 		return &CheckError{fmt.Sprintf("smallest clearance said to be %d µm, found to be %.3f µm", r.SmallestUm, f.SmallestUm)}
 	}
 	return nil
+}
+
+// pointsOf is where a route's pieces meet.
+func pointsOf(r *Route) (pts []geom.Point) {
+	for i := range r.Legs {
+		for k := range r.Legs[i].Points {
+			if p := r.Legs[i].Points[k].At; len(pts) == 0 || p != pts[len(pts)-1] {
+				pts = append(pts, p)
+			}
+		}
+	}
+	return pts
 }

@@ -91,11 +91,20 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 		r.Answer = fresh
 		return r, err
 	}
-	least := math.Inf(1)
-	if t.q.Options.Preference == Clearest {
-		_, least = t.narrowest(old)
+	var room, had float64 // of the fresh route and the old one, where room comes first
+	if t.q.Options.Preference == Clearest && fresh.Route != nil {
+		room, had = t.roomOf(pointsOf(fresh.Route)), t.roomOf(old)
 	}
-	dearer := func(cost, share float64) bool { return fresh.Route.beats(least, cost, max(share, keepSlack)) }
+	dearer := func(cost, share float64) bool {
+		share = max(share, keepSlack)
+		switch {
+		case fresh.Route == nil:
+			return false
+		case math.Abs(room-had) > alikeUm:
+			return room > float64(had*(1+share))
+		}
+		return cost > float64(fresh.Route.CostUm*(1+share))
+	}
 	cost := t.costOf(old)
 	short := spent(ctx) && (fresh.Route == nil || fresh.Route.Bound.CutShort)
 	if !dearer(cost, q.SwitchShare) {
@@ -120,20 +129,9 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 	return r, nil
 }
 
-// beats says whether a route, if there is one, is better by more than a share than one of
-// that smallest clearance and cost. Where room comes first (else least is +Inf),
-// clearances within a micrometre of one another are alike.
-func (r *Route) beats(least, cost, share float64) bool {
-	switch {
-	case r == nil:
-		return false
-	case float64(r.SmallestUm) > least+1:
-		return float64(r.SmallestUm) > least*(1+share)
-	case !math.IsInf(least, 1) && float64(r.SmallestUm) < least-1:
-		return false
-	}
-	return cost > float64(r.CostUm*(1+share))
-}
+// alikeUm is how far two smallest clearances may be apart, in micrometres, and still count as
+// one: points are rounded to whole micrometres.
+const alikeUm = 2
 
 func (t *task) costOf(pts []geom.Point) float64 {
 	sum := 0.0

@@ -33,7 +33,7 @@ func (t *task) roomy(ctx context.Context) (*course, error) {
 	var ok bool
 	s, g := t.q.Start.At, t.q.Goal.At
 	if t.q.Options.Preference == Clearest {
-		p, _, ok, err = w.Clearest(ctx, s, g, t.j.NeedUm)
+		p, _, ok, err = w.Roomiest(ctx, s, g, t.j.NeedUm)
 	} else {
 		p, ok, err = w.Balanced(ctx, s, g, t.j.NeedUm, t.j.Weight)
 	}
@@ -149,4 +149,33 @@ func (c *piecemeal) settled(i int, p geom.Point, fits func(int, geom.Point, bool
 // roads waits for the roads that a roomy way is looked for on.
 func (t *task) roads(ctx context.Context) (*voronoi.Roads, error) {
 	return await(ctx, t, t.w.ways.roads, t.roadsFor())
+}
+
+// dipUm is by how much, in micrometres, clearance along a drawn edge may fall where along the
+// edge it rises: chords are off it by half a millimetre at most.
+const dipUm = 500
+
+// roomOf is the smallest clearance along a way but for what its ends leave: from where
+// clearance first stops rising to where it last starts to fall.
+func (t *task) roomOf(pts []geom.Point) float64 {
+	n := len(pts) - 1
+	at, piece := make([]float64, n+1), make([]float64, n)
+	for i := range pts {
+		at[i] = t.j.At(pts[i]).Um
+		if i > 0 {
+			piece[i-1] = t.j.Segment(pts[i-1], pts[i]).Um
+		}
+	}
+	from, to := 0, n
+	for from < n && at[from+1] >= at[from] && piece[from] >= at[from]-dipUm {
+		from++
+	}
+	for to > from && at[to-1] >= at[to] && piece[to-1] >= at[to]-dipUm {
+		to--
+	}
+	room := min(at[from], at[to])
+	for i := from; i < to; i++ {
+		room = min(room, piece[i])
+	}
+	return room
 }

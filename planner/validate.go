@@ -67,6 +67,7 @@ func (f *fault) options(o Options, s floor.Settings) {
 	f.check(o.Roadmap <= ExactCells, "options.roadmap", "%d: want a roadmap that there is", o.Roadmap)
 	f.check(o.Roadmap < ConvexCells || o.Preference == Shortest, "options.roadmap", "convex cells, visibility graph, meadow map, Voronoi graph and exact cells: want preference shortest")
 	f.check(o.Roadmap == Auto || o.Preference != Clearest, "options.roadmap", "%d: want auto for preference clearest", o.Roadmap)
+	f.check(!o.KeepRoadmapPath || o.Preference != Clearest, "options.keep_roadmap_path", "true: want false for preference clearest")
 	f.check(o.TightWeight >= 0 && o.TightWeight <= MaxTightWeight, "options.tight_weight", "%g: want 0 to %d", o.TightWeight, MaxTightWeight)
 	f.check(o.TightBelowUm >= 0 && o.TightBelowUm <= s.CapUm, "options.tight_below_m", "%g: want 0 up to the floor's clearance cap, %g", geom.Metres(float64(o.TightBelowUm)), geom.Metres(float64(s.CapUm)))
 	f.check(o.MaxSpacingUm == 0 || o.MaxSpacingUm >= MinSpacingUm, "options.max_spacing_m", "%g: want 0, or %g or more", geom.Metres(float64(o.MaxSpacingUm)), geom.Metres(MinSpacingUm))

@@ -59,7 +59,7 @@ func (w *Roads) Balanced(ctx context.Context, s, t geom.Point, r int64, weight f
 	if !(weight >= 0 && weight <= MaxTightWeight) {
 		return p, false, &RangeError{"tight weight", weight, fmt.Sprintf("0 to %.0f", float64(MaxTightWeight))}
 	}
-	return w.search(ctx, s, t, float64(r), float64(r), weight)
+	return w.search(ctx, s, t, float64(r), float64(r), float64(r), weight)
 }
 
 // Clearest finds a way from s to t whose smallest clearance is the largest there is
@@ -73,7 +73,23 @@ func (w *Roads) Clearest(ctx context.Context, s, t geom.Point, r int64) (p Path,
 	if err != nil || !ok || b.ClearanceUm < float64(r)-tieUm {
 		return p, b, false, err
 	}
-	p, ok, err = w.search(ctx, s, t, b.ClearanceUm, w.netLevel(b.ClearanceUm), 0)
+	p, ok, err = w.search(ctx, s, t, b.ClearanceUm, b.ClearanceUm, w.netLevel(b.ClearanceUm), 0)
+	return p, b, ok, err
+}
+
+// Roomiest is Clearest, what the ends themselves leave not counted: b is the bottleneck
+// between where edges are come to, or the open floor, and where they are left, and all of
+// the way beyond an end's rise to an edge and on along it has that clearance. The whole has
+// clearance r.
+func (w *Roads) Roomiest(ctx context.Context, s, t geom.Point, r int64) (p Path, b Bottleneck, ok bool, err error) {
+	if r < 0 || float64(r) > w.p {
+		return p, b, false, &RangeError{"required clearance", float64(r), fmt.Sprintf("0 to %.0f µm", w.p)}
+	}
+	b, ok = w.Between(s, t)
+	if !ok || b.ClearanceUm < float64(r)-tieUm {
+		return p, b, false, ctx.Err()
+	}
+	p, ok, err = w.search(ctx, s, t, b.ClearanceUm, float64(r), w.netLevel(b.ClearanceUm), 0)
 	return p, b, ok, err
 }
 
@@ -120,10 +136,14 @@ func (k *seeker) assemble(last item) Path {
 		if it.node == k.goal {
 			s1 = k.to.s
 		}
-		pts := k.g.draw(v.step, s0, s1, k.r)
+		um, a := k.r, k.g.arc(v.step)
+		if min(a.clearance(s0), a.clearance(s1)) < um {
+			um = k.endUm
+		}
+		pts := k.g.draw(v.step, s0, s1, um)
 		// Nodes are where one of their arcs has them: the others' ends differ by rounding.
 		pts[0], pts[len(pts)-1] = k.spot(from), k.spot(it.node)
-		add(true, k.g.arc(v.step).length(s0, s1), pts...)
+		add(true, a.length(s0, s1), pts...)
 	}
 	if k.to.from != k.to.to {
 		add(true, k.to.length, k.to.to, k.to.from)

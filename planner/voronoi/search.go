@@ -18,6 +18,7 @@ type seeker struct {
 	*net
 	ctx       context.Context
 	r         float64
+	endUm     float64 // required of the ends and their ways in; else it is r
 	weight    float64
 	from, to  entry
 	start     int32 // numbers of the ends, after all nodes
@@ -38,15 +39,15 @@ var seekers = sync.Pool{New: func() any { return new(seeker) }}
 
 // search finds the cheapest way at clearance r. Its estimates are those of the roads
 // that have clearance netAt, at most r.
-func (w *Roads) search(ctx context.Context, s, t geom.Point, r, netAt, weight float64) (Path, bool, error) {
+func (w *Roads) search(ctx context.Context, s, t geom.Point, r, ends, netAt, weight float64) (Path, bool, error) {
 	from, ok1 := w.enter(s)
 	to, ok2 := w.enter(t)
-	if !ok1 || !ok2 || from.um < r-tieUm || to.um < r-tieUm {
+	if !ok1 || !ok2 || from.um < ends-tieUm || to.um < ends-tieUm {
 		return Path{}, false, ctx.Err()
 	}
 	k := seekers.Get().(*seeker)
 	defer k.drop()
-	k.Roads, k.net, k.ctx, k.r, k.weight = w, w.netOf(netAt), ctx, r, weight
+	k.Roads, k.net, k.ctx, k.r, k.endUm, k.weight = w, w.netOf(netAt), ctx, r, ends, weight
 	k.from, k.to, k.goalPiece, k.least = from, to, -1, inf
 	k.start, k.goal = int32(len(w.nodes)), int32(len(w.nodes))+1
 	if to.road >= 0 {

@@ -119,33 +119,50 @@ func (w *Roads) Widest(ctx context.Context, s, t geom.Point) (b Bottleneck, ok b
 	if !ok1 || !ok2 {
 		return Bottleneck{}, false, ctx.Err()
 	}
-	b = Bottleneck{ClearanceUm: w.p, Open: true}
+	b, ok = w.linked(&from, &to)
 	for _, e := range [2]*entry{&from, &to} {
-		if e.um < b.ClearanceUm {
+		if ok && e.um < b.ClearanceUm {
 			b = Bottleneck{ClearanceUm: e.um, At: e.from, Gate: Gate{X: e.foot, Y: e.foot, At: e.from, WidthUm: 2 * e.um, Features: [2]string{e.name, ""}}}
 		}
 	}
+	return b, ok, ctx.Err()
+}
+
+// Between is Widest, what the ends themselves leave not counted: the bottleneck between where
+// edges are come to, or the open floor, and where they are left.
+func (w *Roads) Between(s, t geom.Point) (b Bottleneck, ok bool) {
+	from, ok1 := w.enter(s)
+	to, ok2 := w.enter(t)
+	if !ok1 || !ok2 {
+		return Bottleneck{}, false
+	}
+	return w.linked(&from, &to)
+}
+
+// linked is the bottleneck between where two entries come to.
+func (w *Roads) linked(from, to *entry) (b Bottleneck, ok bool) {
+	b = Bottleneck{ClearanceUm: w.p, Open: true}
 	if from.road >= 0 && from.road == to.road {
-		return b, true, ctx.Err()
+		return b, true
 	}
 	if from.part == -1 && from.road < 0 || to.part == -1 && to.road < 0 {
 		// A part of Open that no edge leads to.
 		if from.road >= 0 || to.road >= 0 || !w.open.Connected(from.to, to.to) {
-			return Bottleneck{}, false, ctx.Err()
+			return Bottleneck{}, false
 		}
-		return b, true, ctx.Err()
+		return b, true
 	}
 	f := w.forest()
-	n, ok := f.narrowest(w.topOf(&from), w.topOf(&to))
+	n, ok := f.narrowest(w.topOf(from), w.topOf(to))
 	if !ok {
-		return Bottleneck{}, false, ctx.Err()
+		return Bottleneck{}, false
 	}
 	if n >= 0 && f.road[n] >= 0 && f.um[n] < b.ClearanceUm {
 		r := &w.roads[f.road[n]]
 		gate := w.g.gateAt(r.step.block, w.g.arc(r.step), r.s0)
 		b = Bottleneck{ClearanceUm: f.um[n], At: gate.At, Gate: gate}
 	}
-	return b, true, ctx.Err()
+	return b, true
 }
 
 // topOf is the node that an entry reaches without coming closer to solids.

@@ -7,6 +7,7 @@ import (
 	"math/rand/v2"
 	"testing"
 
+	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/check"
 	"example.com/wideberth/planner/clearance"
@@ -193,4 +194,44 @@ func TestEdgesAreDrawnWithTheirClearance(t *testing.T) {
 		}
 	}
 	t.Logf("%d edges", edges)
+}
+
+// Two doors, the ends beside walls with less room than either: the wider door counts, not
+// the nearer.
+func TestRoomiestLeavesOutTheEnds(t *testing.T) {
+	const side = 8_000_000
+	m, err := newFloor(t, 160, 160, 2_000_000, false).Apply([]floor.Edit{
+		put("a", rectUm(3_900_000, 0, 4_100_000, 1_000_000)), put("b", rectUm(3_900_000, 2_000_000, 4_100_000, 6_000_000)),
+		put("c", rectUm(3_900_000, 7_400_000, 4_100_000, side)),
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	w := roadsOf(t, graphOf(t, m, Need{MostUm: 2_000_000}), 2_000_000)
+	s, e := geom.Point{X: 3_700_000, Y: 2_500_000}, geom.Point{X: 4_300_000, Y: 2_500_000}
+	for _, c := range []struct {
+		beta float64
+		find func() (Path, Bottleneck, bool, error)
+	}{
+		{200_000, func() (Path, Bottleneck, bool, error) { return w.Clearest(context.Background(), s, e, 200_000) }},
+		{700_000, func() (Path, Bottleneck, bool, error) { return w.Roomiest(context.Background(), s, e, 200_000) }},
+	} {
+		p, b, ok, err := c.find()
+		if err != nil || !ok || math.Abs(b.ClearanceUm-c.beta) > 1e-3 {
+			t.Fatalf("%+v, %v, %v, wanted %v", b, ok, err, c.beta)
+		}
+		high := 0.0
+		for _, q := range p.points() {
+			high = max(high, q.Y)
+		}
+		if (high > 5_000_000) != (c.beta == 700_000) {
+			t.Errorf("bottleneck %v: the way goes up to %v", c.beta, high)
+		}
+		if f := check.Way(m, p.points(), 200_000, 1); f.Problem != "" {
+			t.Error(f.Problem)
+		}
+	}
+	if _, _, ok, _ := w.Roomiest(context.Background(), s, e, 200_001); ok {
+		t.Error("found, with ends that have less than is required")
+	}
 }
