@@ -8,6 +8,7 @@ import (
 	"fmt"
 	"math"
 	"math/bits"
+	"sync/atomic"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -29,17 +30,75 @@ type Finding struct {
 	Piece      int     // the first straight piece, from 0, with that distance
 }
 
+// Way is Of(m).Way.
+func Way(m *floor.Map, pts []geom.Point, needUm, radiusUm int64) Finding {
+	return Of(m).Way(pts, needUm, radiusUm)
+}
+
+// Index is what checking looks up about one version: its features by kind, and its solid
+// cells, read block by block as they are first looked at. It is safe for any number of
+// callers.
+type Index struct {
+	m                      *floor.Map
+	s                      floor.Settings
+	cap, h                 float64
+	lo, hi                 geom.Point // the floor
+	solids, closed, oneWay []outline
+	across                 int // blocks in a row of blocks
+	blocks                 []atomic.Pointer[block]
+}
+
+type block = [floor.BlockSize]uint64
+
+// Of makes an index, in time proportional to the outlines and to the blocks.
+func Of(m *floor.Map) *Index {
+	s := m.Settings()
+	x := &Index{m: m, s: s, cap: float64(s.CapUm), h: float64(s.ResolutionUm)}
+	x.lo = geom.Point{X: float64(s.OriginX), Y: float64(s.OriginY)}
+	x.hi = geom.Point{X: float64(s.OriginX + int64(s.Columns)*s.ResolutionUm), Y: float64(s.OriginY + int64(s.Rows)*s.ResolutionUm)}
+	x.across = (s.Columns + floor.BlockSize - 1) / floor.BlockSize
+	x.blocks = make([]atomic.Pointer[block], x.across*((s.Rows+floor.BlockSize-1)/floor.BlockSize))
+	for f := range m.Features() {
+		switch f.Kind {
+		case floor.Solid:
+			x.solids = append(x.solids, outlineOf(f))
+		case floor.ClosedZone:
+			x.closed = append(x.closed, outlineOf(f))
+		case floor.OneWayZone:
+			x.oneWay = append(x.oneWay, outlineOf(f))
+		}
+	}
+	return x
+}
+
+// block is the solid cells of a block.
+func (x *Index) block(bx, by int) *block {
+	at := &x.blocks[by*x.across+bx]
+	b := at.Load()
+	if b == nil {
+		b = new(block)
+		x.m.SolidBits(bx, by, b)
+		if *b == empty {
+			b = &empty
+		}
+		at.Store(b)
+	}
+	return b
+}
+
+var empty block // shared by all blocks without a solid cell
+
 // Way checks a polyline of two or more points: every point of it is on the floor, keeps
 // needUm from every solid, and radiusUm from every closed zone, and none of its pieces
 // goes backward in a one-way zone. Where needUm is 0 solids, and where radiusUm is 0
 // closed zones, may be touched, but neither entered nor passed between where two
 // touch. Time is proportional to
 // the cells within the smallest distance found, 64 at a time, plus the features.
-func Way(m *floor.Map, pts []geom.Point, needUm, radiusUm int64) Finding {
+func (x *Index) Way(pts []geom.Point, needUm, radiusUm int64) Finding {
 	if len(pts) == 1 {
 		pts = append(pts, pts[0])
 	}
-	w := newWalker(m, pts)
+	w := x.walker(pts)
 	f := Finding{SmallestUm: w.cap}
 	for i := 1; i < len(pts); i++ {
 		a, b := pts[i-1], pts[i]
@@ -76,46 +135,37 @@ type outline struct {
 	lo, hi geom.Point // bounds, grown
 }
 
-type walker struct {
-	m                      *floor.Map
-	s                      floor.Settings
-	cap, h                 float64
-	lo, hi                 geom.Point // the floor
-	solids, closed, oneWay []outline
-	blocks                 map[int]*[floor.BlockSize]uint64
-}
-
-func newWalker(m *floor.Map, pts []geom.Point) *walker {
-	s := m.Settings()
-	w := &walker{m: m, s: s, cap: float64(s.CapUm), h: float64(s.ResolutionUm), blocks: map[int]*[floor.BlockSize]uint64{}}
-	w.lo = geom.Point{X: float64(s.OriginX), Y: float64(s.OriginY)}
-	w.hi = geom.Point{X: float64(s.OriginX + int64(s.Columns)*s.ResolutionUm), Y: float64(s.OriginY + int64(s.Rows)*s.ResolutionUm)}
-	lo, hi := extent(pts)
-	for f := range m.Features() {
-		o := outline{f: f}
-		o.lo, o.hi = geom.Point{X: math.Inf(1), Y: math.Inf(1)}, geom.Point{X: math.Inf(-1), Y: math.Inf(-1)}
-		for _, c := range f.Shape.Chains {
-			l, u := extent(c)
-			o.lo = geom.Point{X: min(o.lo.X, l.X-f.Shape.Grow), Y: min(o.lo.Y, l.Y-f.Shape.Grow)}
-			o.hi = geom.Point{X: max(o.hi.X, u.X+f.Shape.Grow), Y: max(o.hi.Y, u.Y+f.Shape.Grow)}
-		}
-		reach := max(w.cap, 10e6) // no body is wider than 10 m
-		if o.apart(lo, hi) >= reach {
-			continue
-		}
-		switch f.Kind {
-		case floor.Solid:
-			w.solids = append(w.solids, o)
-		case floor.ClosedZone:
-			w.closed = append(w.closed, o)
-		case floor.OneWayZone:
-			w.oneWay = append(w.oneWay, o)
-		}
+func outlineOf(f *floor.Feature) outline {
+	o := outline{f: f}
+	o.lo, o.hi = geom.Point{X: math.Inf(1), Y: math.Inf(1)}, geom.Point{X: math.Inf(-1), Y: math.Inf(-1)}
+	for _, c := range f.Shape.Chains {
+		l, u := extent(c...)
+		o.lo = geom.Point{X: min(o.lo.X, l.X-f.Shape.Grow), Y: min(o.lo.Y, l.Y-f.Shape.Grow)}
+		o.hi = geom.Point{X: max(o.hi.X, u.X+f.Shape.Grow), Y: max(o.hi.Y, u.Y+f.Shape.Grow)}
 	}
-	return w
+	return o
 }
 
-func extent(pts []geom.Point) (lo, hi geom.Point) {
+// walker checks one route: an index with what is near the route only.
+type walker struct {
+	*Index
+	solids, closed, oneWay []outline
+}
+
+func (x *Index) walker(pts []geom.Point) *walker {
+	lo, hi := extent(pts...)
+	near := func(all []outline) (out []outline) {
+		for i := range all {
+			if all[i].apart(lo, hi) < max(x.cap, 10e6) { // no body is wider than 10 m
+				out = append(out, all[i])
+			}
+		}
+		return out
+	}
+	return &walker{x, near(x.solids), near(x.closed), near(x.oneWay)}
+}
+
+func extent(pts ...geom.Point) (lo, hi geom.Point) {
 	lo, hi = geom.Point{X: math.Inf(1), Y: math.Inf(1)}, geom.Point{X: math.Inf(-1), Y: math.Inf(-1)}
 	for _, p := range pts {
 		lo = geom.Point{X: min(lo.X, p.X), Y: min(lo.Y, p.Y)}
@@ -145,7 +195,7 @@ func (w *walker) distance(a, b geom.Point, most, need float64) (float64, string)
 			}
 		}
 	}
-	lo, hi := extent([]geom.Point{a, b})
+	lo, hi := extent(a, b)
 	for i := range w.solids {
 		o := &w.solids[i]
 		if o.apart(lo, hi) >= best {
@@ -174,6 +224,10 @@ func (w *walker) cells(a, b geom.Point, reach float64) float64 {
 	best := reach
 	first := int(math.Floor((a.Y - reach - w.lo.Y) / w.h))
 	last := int(math.Floor((b.Y + reach - w.lo.Y) / w.h))
+	slope := 0.0
+	if b.Y > a.Y {
+		slope = (b.X - a.X) / (b.Y - a.Y)
+	}
 	for row := max(0, first); row <= min(w.s.Rows-1, last); row++ {
 		y0 := w.lo.Y + float64(row)*w.h
 		y1 := y0 + w.h
@@ -184,62 +238,54 @@ func (w *walker) cells(a, b geom.Point, reach float64) float64 {
 		// The part of ab within best of the row, and best to either side of it.
 		x0, x1 := min(a.X, b.X), max(a.X, b.X)
 		if b.Y > a.Y {
-			t0 := max(0, (y0-best-a.Y)/(b.Y-a.Y))
-			t1 := min(1, (y1+best-a.Y)/(b.Y-a.Y))
-			p, q := a.X+t0*(b.X-a.X), a.X+t1*(b.X-a.X)
-			x0, x1 = min(p, q), max(p, q)
+			p, q := a.X+max(0, y0-best-a.Y)*slope, b.X-max(0, b.Y-y1-best)*slope
+			x0, x1 = max(x0, min(p, q)), min(x1, max(p, q))
 		}
 		c0 := max(0, int(math.Floor((x0-best-w.lo.X)/w.h)))
 		c1 := min(w.s.Columns-1, int(math.Floor((x1+best-w.lo.X)/w.h)))
-		best = w.row(a, b, row, c0, c1, gap, best)
+		best = w.row(a, b, row, c0, c1, x0, x1, gap, best)
 	}
 	return best
 }
 
-// row looks at the solid cells of a row from column c0 to c1. gap is how near any of
-// them may be.
-func (w *walker) row(a, b geom.Point, row, c0, c1 int, gap, best float64) float64 {
-	for c := c0; c <= c1; {
-		bx := c / floor.BlockSize
-		word := uint64(0)
-		if blk := w.block(bx, row/floor.BlockSize); blk != nil {
-			word = blk[row%floor.BlockSize] >> (c % floor.BlockSize) << (c % floor.BlockSize)
+// row looks at the solid cells of a row from column c0 to c1. From x0 to x1 is the part of ab
+// that is nearer than best to the row; gap is how near any of the cells may be.
+func (w *walker) row(a, b geom.Point, row, c0, c1 int, x0, x1, gap, best float64) float64 {
+	const size = floor.BlockSize
+	y := w.lo.Y + float64(row)*w.h
+	for bx := c0 / size; bx <= c1/size; bx++ {
+		blk := w.block(bx, row/size)
+		if blk == &empty {
+			continue
 		}
-		end := min(c1, bx*floor.BlockSize+floor.BlockSize-1)
-		for word != 0 {
-			col := bx*floor.BlockSize + bits.TrailingZeros64(word)
-			word &= word - 1
-			if col > end {
-				break
+		word := blk[row%size]
+		if skip := c0 - bx*size; skip > 0 {
+			word = word >> skip << skip
+		}
+		if over := bx*size + size - 1 - c1; over > 0 {
+			word = word << over >> over
+		}
+		for word != 0 { // by runs of cells that make one box
+			from := bits.TrailingZeros64(word)
+			n := bits.TrailingZeros64(^(word >> from))
+			word &^= (math.MaxUint64 >> (size - n)) << from
+			l := w.lo.X + float64(bx*size+from)*w.h
+			r := l + float64(n)*w.h
+			if side := max(0, l-x1, x0-r); side*side+gap*gap >= best*best {
+				continue
 			}
-			x, y := w.lo.X+float64(col)*w.h, w.lo.Y+float64(row)*w.h
-			best = min(best, boxDistance(x, y, x+w.h, y+w.h, a, b))
+			best = min(best, boxDistance(l, y, r, y+w.h, a, b))
 			if gap >= best {
 				return best
 			}
 		}
-		c = end + 1
 	}
 	return best
 }
 
-// block is the solid cells of a block, nil when there are none.
-func (w *walker) block(bx, by int) *[floor.BlockSize]uint64 {
-	key := by<<20 | bx
-	b, ok := w.blocks[key]
-	if !ok {
-		var words [floor.BlockSize]uint64
-		if any, _ := w.m.SolidBits(bx, by, &words); any {
-			b = &words
-		}
-		w.blocks[key] = b
-	}
-	return b
-}
-
 // enters is the first closed zone nearer to ab than radius.
 func (w *walker) enters(a, b geom.Point, radius float64) string {
-	lo, hi := extent([]geom.Point{a, b})
+	lo, hi := extent(a, b)
 	for i := range w.closed {
 		o := &w.closed[i]
 		if o.apart(lo, hi) < radius && shapeDistance(o.f.Shape, a, b) < radius-SlackUm {
@@ -251,7 +297,7 @@ func (w *walker) enters(a, b geom.Point, radius float64) string {
 
 // against is the first one-way zone in which ab goes backward.
 func (w *walker) against(a, b geom.Point) string {
-	lo, hi := extent([]geom.Point{a, b})
+	lo, hi := extent(a, b)
 	for i := range w.oneWay {
 		o := &w.oneWay[i]
 		ahead := (b.X-a.X)*math.Cos(o.f.Heading) + (b.Y-a.Y)*math.Sin(o.f.Heading)

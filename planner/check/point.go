@@ -108,7 +108,7 @@ func (w *walker) touched(a, b geom.Point, outlines []outline, cells bool) (place
 			add(geom.Point{X: (x0 + x1) / 2, Y: (y0 + y1) / 2})
 		})
 	}
-	lo, hi := extent([]geom.Point{a, b})
+	lo, hi := extent(a, b)
 	for i := range outlines {
 		o := &outlines[i]
 		if o.apart(lo, hi) > SlackUm {
@@ -149,7 +149,7 @@ func (w *walker) cellsAbout(a, b geom.Point, do func(x0, y0, x1, y1 float64)) {
 		first, last := max(0, column(min(x0, x1)-SlackUm)), min(w.s.Columns-1, column(max(x0, x1)+SlackUm))
 		for bx := first / floor.BlockSize; bx <= last/floor.BlockSize; bx++ {
 			blk := w.block(bx, r/floor.BlockSize)
-			if blk == nil {
+			if blk == &empty {
 				continue
 			}
 			word := blk[r%floor.BlockSize]
