@@ -280,6 +280,53 @@ func TestOutsidePolylineStandsOffByAtMostTheError(t *testing.T) {
 	}
 }
 
+// TestSimplifiedIsBetweenTwoRadii: it holds all that is grown by r, and nothing that is
+// not within r + error of a solid.
+func TestSimplifiedIsBetweenTwoRadii(t *testing.T) {
+	const seed = 13
+	t.Logf("seed %d", seed)
+	less := 0
+	for k := range 60 {
+		rng := rand.New(rand.NewPCG(seed, uint64(k)))
+		f := randomFloor(t, rng, 20+rng.IntN(60), 20+rng.IntN(60))
+		field, err := clearance.Build(context.Background(), f)
+		if err != nil {
+			t.Fatal(err)
+		}
+		const r, most = 217_345, 75_000
+		exact := outline(t, f, r)
+		o, err := Simplified(context.Background(), f, roadmap.Need{ClearanceUm: r}, most)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if o.AreaUm2 < exact.AreaUm2-exact.PerimeterUm*SlackUm {
+			t.Fatalf("case %d: %v m², %v before", k, o.AreaUm2/1e12, exact.AreaUm2/1e12)
+		}
+		pieces := func(o *Outline) (n int) {
+			for _, l := range o.Loops {
+				n += len(l.Pieces)
+			}
+			return n
+		}
+		if pieces(o) < pieces(exact) {
+			less++
+		}
+		for _, l := range o.Loops {
+			for _, p := range l.Outside(1) {
+				if !f.Bounds().Contains(p) {
+					continue
+				}
+				if um := field.At(p).Um; um < r-4*SlackUm || um > r+most+1 {
+					t.Fatalf("case %d: %v is %v µm clear, at %d", k, p, um, int64(r))
+				}
+			}
+		}
+	}
+	if less < 8 { // most have no gap or notch of that size
+		t.Errorf("only %d of 60 outlines have fewer pieces", less)
+	}
+}
+
 func BenchmarkRandomClutter(b *testing.B) {
 	f, err := plainfloor.Random(rand.New(rand.NewPCG(1, 2)), 512, 512, 0.2).Floor()
 	if err != nil {

@@ -100,7 +100,7 @@ func (g *Graph) carry(from *Graph, i, k int32, was, now, fresh []int32, touched 
 			}
 		}
 		slices.SortFunc(out, func(a, b link) int { return cmp.Compare(a.to, b.to) })
-		g.links[node].Store(&out)
+		g.keep(node, out)
 	}
 	return again
 }

@@ -38,10 +38,10 @@ func (a *arc) wide() float64 {
 	return a.radius + slackUm
 }
 
-// place is the place at an angle along the arc.
+// place is the place at an angle along the arc, on its wider circle.
 func (a *arc) place(t float64) geom.Point {
 	s, c := math.Sincos(a.from + t)
-	return geom.Point{X: a.c.X + float64(a.radius*c), Y: a.c.Y + float64(a.radius*s)}
+	return geom.Point{X: a.c.X + float64(a.wide()*c), Y: a.c.Y + float64(a.wide()*s)}
 }
 
 // holds says whether the unit vector v points to the arc.

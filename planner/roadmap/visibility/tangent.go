@@ -127,8 +127,15 @@ func (g *Graph) linksOf(node int32, j *judge.Judge) []link {
 			out = append(out, g.link(node, to, t))
 		}
 	}
-	g.links[node].CompareAndSwap(nil, &out)
+	g.keep(node, out)
 	return out
+}
+
+// keep remembers a node's tangents, unless there is no room left.
+func (g *Graph) keep(node int32, l []link) {
+	if n := int64(len(l)); g.kept.Add(n) > MaxKept || !g.links[node].CompareAndSwap(nil, &l) {
+		g.kept.Add(-n)
+	}
 }
 
 // sight is the same for a tangent and its reverse, bit for bit.

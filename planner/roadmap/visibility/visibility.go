@@ -50,6 +50,10 @@ const MaxArcs = 20_000
 // MaxDescribed is how many arcs a graph may have for Describe to give its edges too.
 const MaxDescribed = 4_000
 
+// MaxKept is how many tangents a graph remembers, each in either direction; beyond it they
+// are found anew for each search.
+const MaxKept = 8_000_000
+
 // ArcErrorUm is how far, in micrometres, a way's polyline stands off from the arcs it goes
 // along, outward.
 const ArcErrorUm = 50.0
@@ -68,6 +72,7 @@ type Graph struct {
 	errUm float64 // of the raster's outline
 	arcs  []arc
 	links []atomic.Pointer[[]link] // by node: arc and sense
+	kept  atomic.Int64             // in all of links
 }
 
 var _ roadmap.Roadmap = (*Graph)(nil)
@@ -119,8 +124,8 @@ func (g *Graph) judge() *judge.Judge {
 	return judge.New(g.field, g.rules, g.need.ClearanceUm, g.need.ZoneUm)
 }
 
-// Complete finds all tangents now rather than when they are first asked for. The error is
-// ctx's.
+// Complete finds all tangents, up to MaxKept, now rather than when they are first asked for. The
+// error is ctx's.
 func (g *Graph) Complete(ctx context.Context) error {
 	return parallel.Each(ctx, 0, len(g.links), func() func(int) {
 		j := g.judge()
@@ -136,7 +141,7 @@ func (g *Graph) Describe() roadmap.Description {
 	d := roadmap.Description{Bytes: int64(len(g.arcs)) * (arcBytes + 16)}
 	for i := range g.arcs {
 		a := &g.arcs[i]
-		at := a.place(a.long / 2)
+		at := a.place(a.long / 2) // outside of the circle by slackUm, so that rounding down gives its radius
 		d.Nodes = append(d.Nodes, roadmap.Node{At: at, ClearanceUm: int64(g.field.At(at).Um)})
 	}
 	d.Notes = append(d.Notes,
@@ -147,9 +152,10 @@ func (g *Graph) Describe() roadmap.Description {
 		return d
 	}
 	_ = g.Complete(context.Background()) // nothing ends it
+	j := g.judge()
 	for k := range g.links {
 		node := int32(k)
-		for _, l := range *g.links[k].Load() {
+		for _, l := range g.linksOf(node, j) {
 			d.Bytes += linkBytes
 			if l.to>>1 < node>>1 {
 				continue // the same tangent the other way
