@@ -120,6 +120,12 @@ func (c *curve) toward(s float64) vec {
 	return c.u
 }
 
+// tiny says whether the curve from s0 to s1 is so short that it is nothing. Where it
+// is steep its parameters tell less than its length.
+func (c *curve) tiny(s0, s1 float64) bool {
+	return s1-s0 < joinUm/8 && (s1-s0)*c.toward((s0+s1)/2).length() < joinUm/8
+}
+
 // param is the s of the place next to p across u.
 func (c *curve) param(p vec) float64 { return p.sub(c.o).dot(c.u) }
 

@@ -183,3 +183,11 @@ func TestGates(t *testing.T) {
 		}
 	}
 }
+
+// A steep hyperbola and the parabola that it goes over into at the corner of a cell: what is
+// cut off as nothing is told by its length, not by its parameters.
+func TestSteepCurvesJoin(t *testing.T) {
+	m := newFloor(t, 64, 130, 2_000_000, false, paint(33, 112, 34, 113, floor.Occupied),
+		put("disc", floor.NewDisc(geom.Point{X: 1_531_581, Y: 5_281_843}, 385_557, 0)))
+	graphOf(t, m, Need{MostUm: 1_000_000}).checkEnds(t, 0)
+}

@@ -231,7 +231,7 @@ func (t *tracer) pair(b box, ids []int32, i, j int32, c *curve, free bool) {
 	t.splits = sp
 	for n := 1; n < len(sp); n++ {
 		s0, s1 := sp[n-1], sp[n]
-		if s1-s0 < joinUm/8 {
+		if c.tiny(s0, s1) {
 			continue
 		}
 		m := (s0 + s1) / 2
@@ -297,7 +297,7 @@ func (t *tracer) span(ids []int32, i, j int32, c *curve, s0, s1 float64, free bo
 	t.inner = sp
 	for n := 1; n < len(sp); n++ {
 		a, b := sp[n-1], sp[n]
-		if a < s0 || b > s1 || b-a < joinUm/8 {
+		if a < s0 || b > s1 || c.tiny(a, b) {
 			continue
 		}
 		p := c.at((a + b) / 2)
