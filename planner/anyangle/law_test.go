@@ -148,6 +148,30 @@ func TestLaw4CornersJustBeyondABlock(t *testing.T) {
 	}
 }
 
+// TestLaw4RunsThatGrowBeyondReach: cells far from a block lengthen a run of cells that ends in
+// it.
+func TestLaw4RunsThatGrowBeyondReach(t *testing.T) {
+	at := func(x0, y0, x1, y1 int) floor.Edit {
+		return floor.Edit{Kind: floor.PaintRect, Fill: floor.Occupied, Rect: floor.CellRect{X0: x0, Y0: y0, X1: x1, Y1: y1}}
+	}
+	before := newMask(2*blockCells, 30).floor(t, true)
+	before, err := before.Apply([]floor.Edit{at(blockCells-17, 0, blockCells+9, 20)})
+	if err != nil {
+		t.Fatal(err)
+	}
+	after, err := before.Apply([]floor.Edit{at(blockCells-20, 1, blockCells-17, 7)})
+	if err != nil {
+		t.Fatal(err)
+	}
+	a, err := build(t, before, 0).Advance(context.Background(), after, floor.Diff(before, after))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if b := build(t, after, 0); !reflect.DeepEqual(a.blocks, b.blocks) {
+		t.Error("patched differs from rebuilt")
+	}
+}
+
 func randomEdits(rng *rand.Rand, f *floor.Map) []floor.Edit {
 	s := f.Settings()
 	var out []floor.Edit

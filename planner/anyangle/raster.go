@@ -59,6 +59,17 @@ func beyond(bits *[floor.BlockSize]uint64, cols, rows int, on bool) {
 	}
 }
 
+// clip clears the columns before from and from to on.
+func (w *window) clip(from, to int) {
+	for i := range w.words {
+		keep := ^uint64(0) << min(max(from-i*64, 0), 64)
+		keep &^= ^uint64(0) << min(max(to-i*64, 0), 64)
+		for k := i; k < len(w.solid); k += w.words {
+			w.solid[k] &= keep
+		}
+	}
+}
+
 // run is a stretch of cells in one row.
 type run struct{ from, to int }
 
@@ -138,7 +149,8 @@ func (z *rasterizer) pieces(m *floor.Map, bx, by int, lo, hi pt) []piece {
 	z.steps.reset()
 	c0, r0 := k*floor.BlockSize, k*floor.BlockSize
 	cols, rows := int(hi.x/z.h), int(hi.y/z.h)
-	// Only rows within reach matter; columns are cut by bounds.
+	// Only what is within reach matters: how runs are joined must not depend on more.
+	z.win.clip(c0-reach, c0+cols+reach)
 	from, to := max(0, r0-reach), min(z.win.rows, r0+rows+reach)
 	z.bodies(from, to, c0, r0)
 	if z.r > 0 {
