@@ -58,7 +58,7 @@
 //	                                  carried over but for changed      0.3 µs a node opened, few nodes
 //	                                  blocks of 128x128
 //	can an old shortest be undercut   what was taken away, by ellipses  about 0.1 µs a run of cells or an edge
-//	is the route right                check.Way: cells and features     cells along the route
+//	is the route right                check.Index: cells and features   cells along the route
 //
 // One-way zones are no part of the regions: a goal they shut off is found out by searching
 // all that can be reached. A refusal's time goes into the widest way: it looks at what

@@ -295,7 +295,7 @@ func (t *task) route(ctx context.Context, c *course) (*Route, error) {
 
 // check compares a route with what code apart from search and field makes of it.
 func (t *task) check(r *Route) error {
-	f := check.Way(t.w.m, pointsOf(r), t.j.NeedUm, t.q.Body.RadiusUm)
+	f := t.w.check.Way(pointsOf(r), t.j.NeedUm, t.q.Body.RadiusUm)
 	switch {
 	case f.Problem != "":
 		return &CheckError{f.Problem}

@@ -7,6 +7,7 @@ import (
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/check"
 	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/mask"
 	"example.com/wideberth/planner/internal/roadmap"
@@ -21,6 +22,7 @@ type World struct {
 	m     *floor.Map
 	field *clearance.Field
 	rules *rules.Rules
+	check *check.Index // for routes found; the search has no part in it
 	masks *mask.Set
 	ways  *ways
 	// classics are the roadmaps that engineers asked for by name.
@@ -40,7 +42,7 @@ func NewWorld(ctx context.Context, m *floor.Map) (*World, error) {
 		return nil, err
 	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, masks: mask.NewSet(f, r), ways: newWays(f, newMeshes(m)), classics: newClassics(f), frame: roadmap.FrameOf(m.Settings())}, nil
+	return &World{m: m, field: f, rules: r, check: check.Of(m), masks: mask.NewSet(f, r), ways: newWays(f, newMeshes(m)), classics: newClassics(f), frame: roadmap.FrameOf(m.Settings())}, nil
 }
 
 // Advance makes m ready from the world of an earlier (or later) version of the
@@ -67,7 +69,7 @@ func (w *World) Advance(ctx context.Context, m *floor.Map) (*World, error) {
 		return nil, err
 	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, masks: w.masks.Carry(f, r, closedBounds(change)), ways: g, classics: classics, frame: w.frame}, nil
+	return &World{m: m, field: f, rules: r, check: check.Of(m), masks: w.masks.Carry(f, r, closedBounds(change)), ways: g, classics: classics, frame: w.frame}, nil
 }
 
 // closedBounds are the bounds of the closed zones that differ, before and after.
