@@ -146,19 +146,18 @@ func (f *Field) pieces(a, b geom.Point, ss []stretch, need float64, do func(*sol
 // least 0, at most maxUm and never over-stated, short by at most about a
 // micrometre. 0 when the disc overlaps a solid where it stands.
 func (f *Field) Travel(p geom.Point, heading float64, radiusUm int64, maxUm int64) float64 {
-	if math.IsNaN(heading) || math.IsInf(heading, 0) || maxUm <= 0 || !f.SegmentClear(p, p, radiusUm) {
+	if math.IsNaN(heading) || math.IsInf(heading, 0) || maxUm <= 0 || radiusUm > f.cap {
 		return 0
 	}
-	ux, uy := math.Cos(heading), math.Sin(heading)
-	at := func(s float64) geom.Point {
-		return geom.Point{X: p.X + float64(s*ux), Y: p.Y + float64(s*uy)}
+	t := traveller{f: f, p: p, ux: math.Cos(heading), uy: math.Sin(heading), radius: float64(max(radiusUm, 0)), hi: float64(maxUm)}
+	if radiusUm > 0 && f.SegmentClear(p, t.at(t.hi), radiusUm) {
+		return t.hi
 	}
-	if f.SegmentClear(p, at(float64(maxUm)), radiusUm) {
-		return float64(maxUm)
+	guess, ok := t.trace()
+	if !ok {
+		return 0
 	}
-	t := traveller{f: f, p: p, ux: ux, uy: uy, radius: float64(radiusUm), lo: 0, hi: float64(maxUm)}
-	t.trace()
-	for guess := t.lo + f.h; t.hi-t.lo > 1; {
+	for t.hi-t.lo > 1 {
 		mid := guess
 		if !(mid > t.lo && mid < t.hi) {
 			mid = (t.lo + t.hi) / 2
@@ -181,15 +180,26 @@ func (t *traveller) at(s float64) geom.Point {
 	return geom.Point{X: t.p.X + float64(s*t.ux), Y: t.p.Y + float64(s*t.uy)}
 }
 
-// trace moves lo on by what clearance is left there, for as long as that is much.
-func (t *traveller) trace() {
+// trace moves lo on by what clearance is left there, for as long as there is some, and
+// gives a place beyond lo to ask about. It says no where the disc may not even stand.
+func (t *traveller) trace() (guess float64, ok bool) {
+	step := t.f.h
 	for range 16 {
-		surplus := t.f.At(t.at(t.lo)).Um - t.radius - roundSlack
-		if surplus < t.f.h/4 || t.lo+surplus >= t.hi {
-			return
+		um := t.f.At(t.at(t.lo)).Um
+		if t.lo == 0 && (um < t.radius || um <= 0) {
+			return 0, false
 		}
-		t.lo += surplus
+		surplus := um - t.radius - roundSlack
+		if surplus <= 0.25 {
+			step = 0.75
+			break
+		}
+		if t.lo += surplus; t.lo >= t.hi {
+			t.lo = t.hi
+			break
+		}
 	}
+	return t.lo + step, true
 }
 
 // try asks whether the disc may go on from lo to s, and gives the next place to ask
