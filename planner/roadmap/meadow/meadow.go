@@ -51,7 +51,7 @@ type Roadmap struct {
 	edges   int64
 }
 
-var _ roadmap.Roadmap = (*Roadmap)(nil)
+var _ roadmap.Windowed = (*Roadmap)(nil)
 
 // Build makes the roadmap of field f's version from scratch. The error is ctx's, wraps
 // roadmap.ErrTooLarge or names the part of need that is out of range.
@@ -171,52 +171,4 @@ func (r *Roadmap) ring(region int32) []geom.Point {
 		}
 	}
 	return out
-}
-
-// Describe is the relational graph and the regions that have an area.
-func (r *Roadmap) Describe() roadmap.Description {
-	f := r.s.Field()
-	along := func(a, b geom.Point) float64 { return f.Segment(a, b).Um }
-	d := roadmap.Description{Bytes: r.bytes()}
-	for _, w := range r.borders {
-		p := r.s.Mid(w)
-		d.Nodes = append(d.Nodes, roadmap.Node{At: p, ClearanceUm: int64(f.At(p).Um)})
-	}
-	flat := 0
-	for i, list := range r.at {
-		for k, a := range list {
-			for _, b := range list[k+1:] {
-				p, q := d.Nodes[a].At, d.Nodes[b].At
-				d.Edges = append(d.Edges, roadmap.Edge{A: a, B: b, Points: []geom.Point{p, q},
-					LengthUm: geom.Dist(p, q), ClearanceUm: int64(along(p, q))})
-			}
-		}
-		if ring := r.ring(int32(i)); ring != nil {
-			d.Cells = append(d.Cells, roadmap.Cell{Ring: ring, ClearanceUm: cells.Smallest(along, ring)})
-		} else {
-			flat++
-		}
-	}
-	area := 0.0
-	for i := range r.s.Cells {
-		area += r.s.Cells[i].Area()
-	}
-	d.Notes = []roadmap.Note{
-		{Name: "outline error", Value: geom.Metres(OutlineErrorUm), Unit: "m"},
-		{Name: "regions", Value: float64(len(r.regions))},
-		{Name: "regions without width or height", Value: float64(flat)},
-		{Name: "trapezoids merged", Value: float64(len(r.s.Cells))},
-		{Name: "shared borders", Value: float64(len(r.borders))},
-		{Name: "area of regions", Value: area / (geom.UmPerMetre * geom.UmPerMetre), Unit: "m²"},
-	}
-	return d
-}
-
-// bytes is about how much memory the roadmap takes, without the field.
-func (r *Roadmap) bytes() int64 {
-	n := r.s.Bytes() + 4*int64(cap(r.of)+cap(r.borders)) + 24*int64(cap(r.regions)+cap(r.at))
-	for i, l := range r.regions {
-		n += 4 * int64(cap(l)+cap(r.at[i]))
-	}
-	return n
 }

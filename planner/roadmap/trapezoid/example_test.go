@@ -41,7 +41,14 @@ func TestWorkedExample(t *testing.T) {
 	if len(d.Nodes) != 10 || len(d.Edges) != 10 {
 		t.Errorf("%d nodes and %d edges, wanted a node each for cells and walls, and two edges a wall", len(d.Nodes), len(d.Edges))
 	}
+	if got, want := r.Size(), d.Size(); got != want {
+		t.Errorf("size %+v, the description has %+v", got, want)
+	}
 	o := m.Settings().Vertex(0, 0)
+	right := geom.BoundsOf(geom.Point{X: o.X + 8e6, Y: o.Y + 2e6}) // in R alone
+	if d, err := r.DescribeIn(context.Background(), right); err != nil || len(d.Cells) != 1 || len(d.Nodes) != 3 || len(d.Edges) != 2 {
+		t.Errorf("%d cells, %d nodes, %d edges (%v), wanted 1, 3 and 2", len(d.Cells), len(d.Nodes), len(d.Edges), err)
+	}
 	at := map[string]geom.Point{"L": {X: 1e6, Y: 2e6}, "A": {X: 4e6, Y: 4e6}, "B": {X: 6e6, Y: 4e6}, "C": {X: 5e6, Y: 1e6}, "R": {X: 8e6, Y: 2e6}}
 	name := map[int32]string{}
 	for n, p := range at {

@@ -18,6 +18,7 @@ package trapezoid
 
 import (
 	"context"
+	"fmt"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -39,7 +40,7 @@ const MaxCells = cells.MaxCells
 // Roadmap is the exact cells of one version for one Need.
 type Roadmap struct{ s *cells.Space }
 
-var _ roadmap.Roadmap = (*Roadmap)(nil)
+var _ roadmap.Windowed = (*Roadmap)(nil)
 
 // Build makes the roadmap of field f's version from scratch. The error is ctx's, wraps
 // roadmap.ErrTooLarge or names the part of need that is out of range.
@@ -101,40 +102,103 @@ func (r *Roadmap) Search(ctx context.Context, s, t geom.Point) (w roadmap.Way, o
 	return w, true, nil
 }
 
-// Describe is the graph and the cells that have an area.
+// Describe is the graph and the cells that have an area, cut off at roadmap.MaxWindow nodes.
 func (r *Roadmap) Describe() roadmap.Description {
+	d, _ := r.describe(context.Background(), r.s.Field().Bounds())
+	return d
+}
+
+// DescribeIn describes the cells whose bounds meet area, their nodes and edges. The error is
+// ctx's or wraps roadmap.ErrTooLarge.
+func (r *Roadmap) DescribeIn(ctx context.Context, area geom.Rect) (roadmap.Description, error) {
+	return r.describe(ctx, area)
+}
+
+// Size counts all of the roadmap.
+func (r *Roadmap) Size() roadmap.Size {
+	n, w := int64(len(r.s.Cells)), int64(len(r.s.Walls))
+	return roadmap.Size{Nodes: n + w, Edges: 2 * w, Cells: n - r.flat(), Bytes: r.s.Bytes()}
+}
+
+func (r *Roadmap) flat() (n int64) {
+	for i := range r.s.Cells {
+		if r.s.Cells[i].Flat() {
+			n++
+		}
+	}
+	return n
+}
+
+// describe gives what it has so far with an error.
+func (r *Roadmap) describe(ctx context.Context, within geom.Rect) (d roadmap.Description, err error) {
 	f := r.s.Field()
-	d := roadmap.Description{Bytes: r.s.Bytes()}
-	n, area, flat := int32(len(r.s.Cells)), 0.0, 0
-	node := func(p geom.Point) { d.Nodes = append(d.Nodes, roadmap.Node{At: p, ClearanceUm: int64(f.At(p).Um)}) }
+	d = roadmap.Description{Bytes: r.s.Bytes(), Notes: r.notes()}
 	along := func(a, b geom.Point) float64 { return f.Segment(a, b).Um }
-	for i := range n {
-		node(r.s.Centroid(i))
-		c := &r.s.Cells[i]
-		area += c.Area()
-		if c.Flat() {
-			flat++
+	node := func(p geom.Point) int32 {
+		if len(d.Nodes) == roadmap.MaxWindow {
+			err = fmt.Errorf("%w: more than %d nodes in this area", roadmap.ErrTooLarge, roadmap.MaxWindow)
+			return -1
+		}
+		d.Nodes = append(d.Nodes, roadmap.Node{At: p, ClearanceUm: int64(f.At(p).Um)})
+		return int32(len(d.Nodes) - 1)
+	}
+	places := make(map[int32]int32)
+	for i := range r.s.Cells {
+		if i%256 == 0 && ctx.Err() != nil {
+			return d, ctx.Err()
+		}
+		k := int32(i)
+		ring := r.s.Ring(k)
+		if geom.BoundsOf(ring...).Intersect(within).IsEmpty() {
 			continue
 		}
-		ring := r.s.Ring(i)
-		d.Cells = append(d.Cells, roadmap.Cell{Ring: ring, ClearanceUm: cells.Smallest(along, ring)})
+		if places[k] = node(r.s.Centroid(k)); err != nil {
+			return d, err
+		}
+		if !r.s.Cells[i].Flat() {
+			d.Cells = append(d.Cells, roadmap.Cell{Ring: ring, ClearanceUm: cells.Smallest(along, ring)})
+		}
 	}
 	for i, w := range r.s.Walls {
+		if i%256 == 0 && ctx.Err() != nil {
+			return d, ctx.Err()
+		}
+		a, okA := places[w.A]
+		b, okB := places[w.B]
+		if !okA && !okB {
+			continue
+		}
 		mid := r.s.Mid(int32(i))
-		node(mid)
-		for _, c := range [2]int32{w.A, w.B} {
-			m := r.s.Centroid(c)
-			d.Edges = append(d.Edges, roadmap.Edge{A: c, B: n + int32(i), Points: []geom.Point{m, mid},
+		n := node(mid)
+		if err != nil {
+			return d, err
+		}
+		for _, c := range [2]struct {
+			at int32
+			ok bool
+		}{{a, okA}, {b, okB}} {
+			if !c.ok {
+				continue
+			}
+			m := d.Nodes[c.at].At
+			d.Edges = append(d.Edges, roadmap.Edge{A: c.at, B: n, Points: []geom.Point{m, mid},
 				LengthUm: geom.Dist(m, mid), ClearanceUm: int64(along(m, mid))})
 		}
 	}
-	d.Notes = []roadmap.Note{
+	return d, nil
+}
+
+func (r *Roadmap) notes() []roadmap.Note {
+	area := 0.0
+	for i := range r.s.Cells {
+		area += r.s.Cells[i].Area()
+	}
+	return []roadmap.Note{
 		{Name: "outline error", Value: geom.Metres(OutlineErrorUm), Unit: "m"},
-		{Name: "cells", Value: float64(n)},
-		{Name: "cells without width or height", Value: float64(flat)},
+		{Name: "cells", Value: float64(len(r.s.Cells))},
+		{Name: "cells without width or height", Value: float64(r.flat())},
 		{Name: "shared walls", Value: float64(len(r.s.Walls))},
 		{Name: "area of cells", Value: area / (geom.UmPerMetre * geom.UmPerMetre), Unit: "m²"},
 		{Name: "strips swept", Value: float64(r.s.Strips())},
 	}
-	return d
 }

@@ -13,7 +13,7 @@ type mark struct {
 
 // slits adds, as cells of no width, what is free on the upright line at x between
 // outlines that end there and outlines that begin there: passages exactly as wide as the body.
-func (s *sweeper) slits(x int64, uprights []edge) {
+func (s *sweeper) slits(x int64, uprights []int32) {
 	s.marks = s.marks[:0]
 	put := func(y int64, over, ends, from int) {
 		s.marks = append(s.marks, mark{min(max(y, s.y0), s.y1), over, ends, from})
@@ -26,11 +26,8 @@ func (s *sweeper) slits(x int64, uprights []edge) {
 	if some[1] {
 		from = 1
 	}
-	for i := range uprights {
-		e := &uprights[i]
-		if e.a.x != x {
-			continue
-		}
+	for _, i := range uprights {
+		e := &s.uprights[i]
 		if e.rise < 0 {
 			some[0] = true
 			put(e.a.y, 0, 1, 0)

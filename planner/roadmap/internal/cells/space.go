@@ -208,6 +208,11 @@ func (s *Space) thin() bool {
 // to the next, and lists their walls.
 func (s *Space) assemble() {
 	s.ids = make([][]int32, len(s.strips))
+	traps, links := 0, 0
+	for _, t := range s.strips {
+		traps, links = traps+len(t.traps), links+len(t.links)+len(t.last)+len(t.first)
+	}
+	s.Cells, s.Walls = make([]Cell, 0, traps), make([]Wall, 0, links)
 	var left *strip
 	var leftIDs []int32
 	for i, t := range s.strips {

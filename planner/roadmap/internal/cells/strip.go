@@ -56,13 +56,15 @@ func (p *stripper) make(ctx context.Context, sp *Space, i int, features []*floor
 	*s = sweeper{edges: append(p.o.edges, edge{pt{x0 - 1, y0}, pt{x1 + 1, y0}, -1, Source{}}, edge{pt{x0 - 1, y1}, pt{x1 + 1, y1}, 1, Source{}}),
 		uprights: p.o.uprights, x0: x0, x1: x1, y0: y0, y1: y1, left: x0 == sp.low.x, right: x1 == sp.high.x,
 		thin: sp.thin(), most: sp.most, stop: func() bool { return ctx.Err() != nil },
-		items: s.items[:0], second: s.second[:0], spare: s.spare}
+		order: s.order, upOrder: s.upOrder, items: s.items[:0], second: s.second[:0], reach: s.reach, spare: s.spare,
+		traps: s.traps[:0], links: s.links[:0], first: s.first[:0], pend: s.pend, next: s.next[:0], front: s.front[:0], walls: s.walls, marks: s.marks}
 	s.run()
 	p.o.edges = s.edges
 	if len(s.traps) > sp.most || ctx.Err() != nil {
 		return nil
 	}
-	t.traps, t.links, t.first, t.last = s.traps, s.links, s.first, append([]int32(nil), s.front...)
+	t.traps, t.links = append(t.traps, s.traps...), append(t.links, s.links...)
+	t.first, t.last = append(t.first, s.first...), append(t.last, s.front...)
 	t.keep(s.edges)
 	return t
 }
@@ -70,22 +72,20 @@ func (p *stripper) make(ctx context.Context, sp *Space, i int, features []*floor
 // keep keeps the edges that bound cells, level ones as far as the strip: where
 // they end beyond it is not its business.
 func (t *strip) keep(edges []edge) {
-	place := make(map[int32]int32)
+	place := make([]int32, len(edges)) // plus one
 	put := func(e *int32) {
 		if *e == none {
 			return
 		}
-		at, ok := place[*e]
-		if !ok {
-			at = int32(len(t.edges))
-			place[*e] = at
+		if place[*e] == 0 {
+			place[*e] = int32(len(t.edges)) + 1
 			k := edges[*e]
 			if k.a.y == k.b.y {
 				k.a.x, k.b.x = max(k.a.x, t.x0), min(k.b.x, t.x1)
 			}
 			t.edges = append(t.edges, k)
 		}
-		*e = at
+		*e = place[*e] - 1
 	}
 	for i := range t.traps {
 		put(&t.traps[i].bottom)

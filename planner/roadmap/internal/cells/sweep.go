@@ -46,8 +46,8 @@ type item struct {
 // sweeper finds the free space between two upright lines: it goes through the slabs
 // between the corners of all outlines from left to right.
 type sweeper struct {
-	edges       []edge // not upright, by their left ends
-	uprights    []edge // by x
+	edges       []edge // not upright
+	uprights    []edge
 	x0, x1      int64
 	y0, y1      int64
 	left, right bool // x0, x1 is an end of the floor
@@ -64,16 +64,16 @@ type sweeper struct {
 	next  []int32
 	walls []wall
 
-	items, second []item
-	reach         []int32
-	spare         [][]gap
-	marks         []mark
+	order, upOrder []int32
+	items, second  []item
+	reach          []int32
+	spare          [][]gap
+	marks          []mark
 }
 
 // run sweeps from x0 to x1. It stops early when there are too many cells.
 func (s *sweeper) run() {
-	slices.SortStableFunc(s.edges, func(a, b edge) int { return cmp.Compare(a.a.x, b.a.x) })
-	slices.SortStableFunc(s.uprights, func(a, b edge) int { return cmp.Compare(a.a.x, b.a.x) })
+	s.order, s.upOrder = byX(s.order, s.edges), byX(s.upOrder, s.uprights)
 	xs := []int64{s.x0, s.x1}
 	for i := range s.edges {
 		for _, x := range [2]int64{s.edges[i].a.x, s.edges[i].b.x} {
@@ -90,32 +90,44 @@ func (s *sweeper) run() {
 			return
 		}
 		if i == 0 {
-			for ; next < len(s.edges) && s.edges[next].a.x < x; next++ {
-				s.items = append(s.items, item{e: int32(next), rise: s.edges[next].rise})
+			for ; next < len(s.order) && s.edges[s.order[next]].a.x < x; next++ {
+				s.take(s.order[next])
 			}
 		}
-		for up < len(s.uprights) && s.uprights[up].a.x < x {
+		for up < len(s.upOrder) && s.uprights[s.upOrder[up]].a.x < x {
 			up++
 		}
 		here := up
-		for up < len(s.uprights) && s.uprights[up].a.x == x {
+		for up < len(s.upOrder) && s.uprights[s.upOrder[up]].a.x == x {
 			up++
 		}
 		s.slit = s.slit[:0]
 		// A line between two strips is the right one's.
 		if s.thin && up > here && (i < len(xs)-1 || s.right) {
-			s.slits(x, s.uprights[here:up])
+			s.slits(x, s.upOrder[here:up])
 		}
 		if i == len(xs)-1 {
 			return
 		}
 		s.items = slices.DeleteFunc(s.items, func(it item) bool { return s.edges[it.e].b.x <= x })
-		for ; next < len(s.edges) && s.edges[next].a.x == x; next++ {
-			s.items = append(s.items, item{e: int32(next), rise: s.edges[next].rise})
+		for ; next < len(s.order) && s.edges[s.order[next]].a.x == x; next++ {
+			s.take(s.order[next])
 		}
 		s.slab(x, xs[i+1])
 	}
 }
+
+// byX are the numbers of edges in the order of their left ends.
+func byX(order []int32, edges []edge) []int32 {
+	order = order[:0]
+	for i := range edges {
+		order = append(order, int32(i))
+	}
+	slices.SortFunc(order, func(i, j int32) int { return cmp.Or(cmp.Compare(edges[i].a.x, edges[j].a.x), cmp.Compare(i, j)) })
+	return order
+}
+
+func (s *sweeper) take(e int32) { s.items = append(s.items, item{e: e, rise: s.edges[e].rise}) }
 
 // slab cuts the space between two upright lines that no outline has a corner between.
 // Each connected free part of it is convex: where the same edges are below a gap at
