@@ -12,6 +12,9 @@ import (
 	"example.com/wideberth/planner/roadmap"
 	"example.com/wideberth/planner/roadmap/cellgrid"
 	"example.com/wideberth/planner/roadmap/gvg"
+	"example.com/wideberth/planner/roadmap/meadow"
+	"example.com/wideberth/planner/roadmap/trapezoid"
+	"example.com/wideberth/planner/roadmap/visibility"
 )
 
 const (
@@ -22,6 +25,9 @@ const (
 	// classicIdle is for how many versions one is brought up to date without being asked for.
 	classicIdle = 4
 )
+
+// classical is roadmap.Roadmap, by a name that does not clash with the searches over cells.
+type classical = roadmap.Roadmap
 
 // classicKey is a roadmap for a body.
 type classicKey struct {
@@ -47,6 +53,12 @@ func buildClassic(ctx context.Context, f *clearance.Field, k classicKey) (r road
 		r, err = cellgrid.Build(ctx, f, k.need(), cellgrid.Grid8)
 	case Quadtree:
 		r, err = cellgrid.Build(ctx, f, k.need(), cellgrid.Quadtree)
+	case VisibilityGraph:
+		r, err = visibility.Build(ctx, f, k.need())
+	case MeadowMap:
+		r, err = meadow.Build(ctx, f, k.need())
+	case ExactCells:
+		r, err = trapezoid.Build(ctx, f, k.need())
 	case VoronoiGraph:
 		r, err = gvg.Build(ctx, f, k.need())
 	default:
@@ -87,10 +99,25 @@ func (w *World) Field() *clearance.Field { return w.field }
 
 func (o *Options) classic() bool { return o.Roadmap >= VisibilityGraph }
 
+// PlanOver is Plan over a roadmap of this version that the caller has, made for the
+// request's body, whatever kind the options name.
+func (w *World) PlanOver(ctx context.Context, r roadmap.Roadmap, q Request) (Answer, error) {
+	t, err := w.task(q)
+	if err != nil {
+		return Answer{}, err
+	}
+	t.over = r
+	a, err := t.plan(ctx)
+	return t.finish(ctx, a, err)
+}
+
 // classic asks a classical roadmap; nil when it has no way, or one that goes against a
 // one-way zone, which t.barred then tells of.
 func (t *task) classic(ctx context.Context) (*course, error) {
-	r, err := t.w.classics.get(ctx, classicKey{t.q.Options.Roadmap, t.j.NeedUm, t.j.RadiusUm})
+	r, err := t.over, error(nil)
+	if r == nil {
+		r, err = t.w.classics.get(ctx, classicKey{t.q.Options.Roadmap, t.j.NeedUm, t.j.RadiusUm})
+	}
 	if errors.Is(err, roadmap.ErrTooLarge) {
 		return nil, &RequestError{"options.roadmap", err.Error()}
 	}
@@ -103,7 +130,10 @@ func (t *task) classic(ctx context.Context) (*course, error) {
 	if err != nil || !ok {
 		return nil, err
 	}
-	c := &course{pts: way.Points, kind: RoadmapOptimum, roadmap: way.LengthUm, bias: meshBias}
+	c := &course{pts: way.Points, kind: RoadmapOptimum, roadmap: way.LengthUm}
+	if t.q.Options.classic() {
+		c.bias = meshBias
+	}
 	for i := 1; i < len(c.pts); i++ {
 		if z := t.w.rules.Against(c.pts[i-1], c.pts[i], rules.BackwardSlackUm); z != nil {
 			_, at := z.Shape.SegmentDist(c.pts[i-1], c.pts[i])

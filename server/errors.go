@@ -19,6 +19,7 @@ import (
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/journal"
 	"example.com/wideberth/planner"
+	"example.com/wideberth/planner/roadmap"
 )
 
 // errorDomain is ErrorInfo.domain of every failure.
@@ -222,6 +223,8 @@ func describe(ctx context.Context, err error, about subject) failure {
 		f := fail(codes.FailedPrecondition, "REQUEST_ID_REUSED", "request_id: was used for another request, wanted a new one")
 		return unmet(f, "REQUEST_ID", "floors/"+about.floor)
 
+	case errors.Is(err, roadmap.ErrTooLarge):
+		return unmet(fail(codes.FailedPrecondition, "ROADMAP_TOO_LARGE", cut(err.Error(), maxMessageText-64)+"; ask for a smaller area, or another roadmap"), "ROADMAP", "floors/"+about.floor)
 	case errors.Is(err, errOverloaded):
 		return later(fail(codes.ResourceExhausted, "OVERLOADED", "all planners are busy"), retryShed)
 	case errors.Is(err, errPreparing):

@@ -19,6 +19,7 @@ func requests() []proto.Message {
 		&pb.ListVersionsRequest{}, &pb.GetVersionRequest{}, &pb.CompareVersionsRequest{}, &pb.RestoreVersionRequest{},
 		&pb.ReadFloorRequest{}, &pb.WatchVersionsRequest{}, &pb.PlanRequest{}, &pb.ReplanRequest{},
 		&pb.GuideRequest{}, &pb.GuideOnceRequest{}, &pb.PlanManyRequest{},
+		&pb.ShowRoadmapRequest{}, &pb.CompareRoadmapsRequest{}, &pb.ShowGrownSolidsRequest{},
 	}
 }
 

@@ -68,6 +68,7 @@ func New(ctx context.Context, cfg Config, log zerolog.Logger) (*Server, error) {
 	pb.RegisterFloorServiceServer(s.grpc, floorService{s: s})
 	pb.RegisterRouteServiceServer(s.grpc, routeService{s: s})
 	pb.RegisterGuideServiceServer(s.grpc, guideService{s: s})
+	pb.RegisterRoadmapServiceServer(s.grpc, roadmapService{s: s})
 	s.health = health.NewServer()
 	s.serving(healthpb.HealthCheckResponse_NOT_SERVING)
 	healthpb.RegisterHealthServer(s.grpc, s.health)

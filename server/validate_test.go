@@ -291,7 +291,7 @@ func TestAllFaultsTogether(t *testing.T) {
 // none is refused.
 func TestEveryRequestHasAValidator(t *testing.T) {
 	n := 0
-	for _, file := range []protoreflect.FileDescriptor{pb.File_wideberth_v1_floor_service_proto, pb.File_wideberth_v1_route_service_proto, pb.File_wideberth_v1_guide_service_proto} {
+	for _, file := range []protoreflect.FileDescriptor{pb.File_wideberth_v1_floor_service_proto, pb.File_wideberth_v1_route_service_proto, pb.File_wideberth_v1_guide_service_proto, pb.File_wideberth_v1_roadmap_service_proto} {
 		for i := range file.Services().Len() {
 			methods := file.Services().Get(i).Methods()
 			for j := range methods.Len() {

@@ -1257,17 +1257,18 @@ func (x *GrownOutline) GetPerimeterM() float64 {
 	return 0
 }
 
-// A straight piece or an arc of an outline.
+// A straight piece or an arc of an outline. Arcs turn counter-clockwise.
 type GrownPiece struct {
 	state protoimpl.MessageState `protogen:"open.v1"`
-	// Where it begins; it ends where the next one begins.
+	// Where it begins; it ends where the next one begins, the last where the first does.
 	From *Point `protobuf:"bytes,1,opt,name=from,proto3" json:"from,omitempty"`
 	// The middle of the arc's circle; not set for a straight piece.
 	Center *Point `protobuf:"bytes,2,opt,name=center,proto3" json:"center,omitempty"`
-	// The arc's radius; 0 for a straight piece.
+	// The arc's radius; 0 for a straight piece. The only piece of an outline may be an
+	// arc: it is a whole circle.
 	RadiusM float64 `protobuf:"fixed64,3,opt,name=radius_m,json=radiusM,proto3" json:"radius_m,omitempty"`
-	// Whether the arc turns clockwise.
-	Clockwise     bool `protobuf:"varint,4,opt,name=clockwise,proto3" json:"clockwise,omitempty"`
+	// Whether it bounds a grown closed zone rather than a solid.
+	Zone          bool `protobuf:"varint,4,opt,name=zone,proto3" json:"zone,omitempty"`
 	unknownFields protoimpl.UnknownFields
 	sizeCache     protoimpl.SizeCache
 }
@@ -1323,9 +1324,9 @@ func (x *GrownPiece) GetRadiusM() float64 {
 	return 0
 }
 
-func (x *GrownPiece) GetClockwise() bool {
+func (x *GrownPiece) GetZone() bool {
 	if x != nil {
-		return x.Clockwise
+		return x.Zone
 	}
 	return false
 }
@@ -1339,10 +1340,13 @@ type GrownSummary struct {
 	Body *Body `protobuf:"bytes,2,opt,name=body,proto3" json:"body,omitempty"`
 	// How far solids are grown: the body's radius and margin.
 	GrownByM float64 `protobuf:"fixed64,3,opt,name=grown_by_m,json=grownByM,proto3" json:"grown_by_m,omitempty"`
-	// Square metres of the floor that the body's centre must stay out of.
+	// Square metres grown over. Where the border is closed: what of the floor is not
+	// free; else the grown solids, also beyond the floor.
 	AreaM2 float64 `protobuf:"fixed64,4,opt,name=area_m2,json=areaM2,proto3" json:"area_m2,omitempty"`
 	// Metres of outline.
 	PerimeterM float64 `protobuf:"fixed64,5,opt,name=perimeter_m,json=perimeterM,proto3" json:"perimeter_m,omitempty"`
+	// Square metres of the floor that are free; 0 where the border is open, not told.
+	FreeAreaM2 float64 `protobuf:"fixed64,7,opt,name=free_area_m2,json=freeAreaM2,proto3" json:"free_area_m2,omitempty"`
 	// How many outlines were sent.
 	OutlineCount  int64 `protobuf:"varint,6,opt,name=outline_count,json=outlineCount,proto3" json:"outline_count,omitempty"`
 	unknownFields protoimpl.UnknownFields
@@ -1410,6 +1414,13 @@ func (x *GrownSummary) GetAreaM2() float64 {
 func (x *GrownSummary) GetPerimeterM() float64 {
 	if x != nil {
 		return x.PerimeterM
+	}
+	return 0
+}
+
+func (x *GrownSummary) GetFreeAreaM2() float64 {
+	if x != nil {
+		return x.FreeAreaM2
 	}
 	return 0
 }
@@ -1612,13 +1623,13 @@ const file_wideberth_v1_roadmap_service_proto_rawDesc = "" +
 	"\x06pieces\x18\x01 \x03(\v2\x18.wideberth.v1.GrownPieceR\x06pieces\x12\x17\n" +
 	"\aarea_m2\x18\x02 \x01(\x01R\x06areaM2\x12\x1f\n" +
 	"\vperimeter_m\x18\x03 \x01(\x01R\n" +
-	"perimeterM\"\x9b\x01\n" +
+	"perimeterM\"\x91\x01\n" +
 	"\n" +
 	"GrownPiece\x12'\n" +
 	"\x04from\x18\x01 \x01(\v2\x13.wideberth.v1.PointR\x04from\x12+\n" +
 	"\x06center\x18\x02 \x01(\v2\x13.wideberth.v1.PointR\x06center\x12\x19\n" +
-	"\bradius_m\x18\x03 \x01(\x01R\aradiusM\x12\x1c\n" +
-	"\tclockwise\x18\x04 \x01(\bR\tclockwise\"\xe5\x01\n" +
+	"\bradius_m\x18\x03 \x01(\x01R\aradiusM\x12\x12\n" +
+	"\x04zone\x18\x04 \x01(\bR\x04zone\"\x87\x02\n" +
 	"\fGrownSummary\x120\n" +
 	"\x05stamp\x18\x01 \x01(\v2\x1a.wideberth.v1.VersionStampR\x05stamp\x12&\n" +
 	"\x04body\x18\x02 \x01(\v2\x12.wideberth.v1.BodyR\x04body\x12\x1c\n" +
@@ -1626,7 +1637,9 @@ const file_wideberth_v1_roadmap_service_proto_rawDesc = "" +
 	"grown_by_m\x18\x03 \x01(\x01R\bgrownByM\x12\x17\n" +
 	"\aarea_m2\x18\x04 \x01(\x01R\x06areaM2\x12\x1f\n" +
 	"\vperimeter_m\x18\x05 \x01(\x01R\n" +
-	"perimeterM\x12#\n" +
+	"perimeterM\x12 \n" +
+	"\ffree_area_m2\x18\a \x01(\x01R\n" +
+	"freeAreaM2\x12#\n" +
 	"\routline_count\x18\x06 \x01(\x03R\foutlineCount\"\x92\x01\n" +
 	"\x17ShowGrownSolidsResponse\x126\n" +
 	"\aoutline\x18\x01 \x01(\v2\x1a.wideberth.v1.GrownOutlineH\x00R\aoutline\x126\n" +
