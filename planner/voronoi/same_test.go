@@ -30,7 +30,7 @@ func (g *Graph) lacks(o *Graph, um float64) (at geom.Point, lacking bool) {
 func TestSameFromIsWhatLookingAtAllPlacesSays(t *testing.T) {
 	const seed = 81
 	t.Logf("seed %d", seed)
-	cases, same, other, careful := 120, 0, 0, 0
+	cases, same, other, careful := 50, 0, 0, 0
 	if slow() {
 		cases = 3000
 	}
