@@ -48,18 +48,12 @@ type outline struct {
 	pieces []piece
 }
 
-func (t *task) outline(c *course) *outline {
-	pts := c.pts
+func (t *task) outline(pts []geom.Point) *outline {
 	o := &outline{t: t, below: float64(t.q.Options.TightBelowUm), pieces: make([]piece, 0, len(pts)+2)}
 	for i := 1; i < len(pts); i++ {
-		w := piece{a: pts[i-1], b: pts[i]}
-		if c.near != nil {
-			w.near = c.near[i-1]
-		} else {
-			w.near = t.j.Segment(w.a, w.b)
-		}
+		a, b := pts[i-1], pts[i]
+		w := piece{a, b, t.j.Segment(a, b)}
 		o.pieces = append(o.pieces, w)
-		a, b := w.a, w.b
 		cuts := t.w.rules.SpeedCuts(nil, a, b)
 		if w.tight(o.below) {
 			for _, s := range t.j.Tight(a, b, o.below-roundingUm) {
@@ -191,7 +185,7 @@ func (o *outline) space(most float64) {
 
 // describe turns a course into a route.
 func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
-	o := t.outline(c)
+	o := t.outline(c.pts)
 	o.markSmallest()
 	if most := t.q.Options.MaxSpacingUm; most > 0 {
 		long := 0.0

@@ -51,11 +51,13 @@ func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *co
 	}
 	pts := slices.Clone(old)
 	for i := 1; i+1 < len(pts); {
-		if d, _ := geom.SegmentDist(pts[i], pts[i-1], pts[i+1]); d <= onRouteUm && t.j.Sight(pts[i-1], pts[i+1]) {
-			pts = slices.Delete(pts, i, i+1)
-		} else {
-			i++
+		if d, _ := geom.SegmentDist(pts[i], pts[i-1], pts[i+1]); d <= onRouteUm {
+			if _, ok := t.j.Drive(pts[i-1], pts[i+1]); ok {
+				pts = slices.Delete(pts, i, i+1)
+				continue
+			}
 		}
+		i++
 	}
 	g, err := t.w.ways.meshes.get(ctx, t.needed())
 	if err != nil || !g.Contains(pts[0]) || !g.Contains(pts[len(pts)-1]) {

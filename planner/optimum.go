@@ -7,7 +7,6 @@ import (
 
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/anyangle"
-	"example.com/wideberth/planner/clearance"
 )
 
 // joinReach is how far, in micrometres, an end may be from a mesh and still be joined to
@@ -64,13 +63,10 @@ func (t *task) optimum(ctx context.Context) (c *course, apart bool, err error) {
 	if len(pts) > 2 && from != start && t.j.Sight(start, pts[2]) {
 		pts = slices.Delete(pts, 1, 2)
 	}
-	c.near = make([]clearance.Nearest, 0, len(pts))
 	for i := 1; i < len(pts); i++ {
-		near, ok := t.j.Drive(pts[i-1], pts[i])
-		if !ok {
+		if _, ok := t.j.Drive(pts[i-1], pts[i]); !ok {
 			return nil, false, nil
 		}
-		c.near = append(c.near, near)
 	}
 	c.pts = pts
 	return c, false, nil

@@ -8,7 +8,6 @@ import (
 
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/check"
-	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/judge"
 	"example.com/wideberth/planner/internal/mask"
 	"example.com/wideberth/planner/internal/pull"
@@ -142,7 +141,6 @@ func (t *task) between(ctx context.Context) (Answer, error) {
 // course is a way from start to goal, found but not described yet.
 type course struct {
 	pts  []geom.Point
-	near []clearance.Nearest // by piece, where it was measured already; else nil
 	kind BoundKind
 	// roadmap is the cost of the best path over the roadmap, each cell judged as a
 	// whole; +Inf when none was found, 0 when the course itself is the best path.

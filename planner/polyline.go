@@ -55,7 +55,7 @@ func clearFor(j *judge.Judge, pts []geom.Point) (s float64, all bool) {
 	for i := 1; i < len(pts); i++ {
 		a, b := pts[i-1], pts[i]
 		long := geom.Dist(a, b)
-		if j.Sight(a, b) {
+		if _, ok := j.Drive(a, b); ok {
 			s += long
 			continue
 		}

@@ -159,7 +159,7 @@ func (t *task) trim(q *ReplanRequest) (pts []geom.Point, cause ReplanCause, cutS
 	if pose == goal {
 		return []geom.Point{pose, goal}, 0, 0
 	}
-	if t.j.Sight(pose, rest[0]) {
+	if _, ok := t.j.Drive(pose, rest[0]); ok {
 		return append([]geom.Point{pose}, rest...), 0, 0
 	}
 	for near := range rounded(on.at) {

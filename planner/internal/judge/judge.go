@@ -31,6 +31,9 @@ type Judge struct {
 
 	ends [4]clearance.Nearest // of places asked about last; see end
 	next int
+
+	driven []driven // see Drive
+	ask    int
 }
 
 // New makes a judge for a body's required clearance and radius.
@@ -63,20 +66,54 @@ func (j *Judge) At(p geom.Point) clearance.Nearest {
 // Segment is the field's answer, counted. Where nothing is nearer than the cap, both
 // places are a.
 func (j *Judge) Segment(a, b geom.Point) clearance.Nearest {
+	if n := j.known(a, b); n != nil {
+		return *n
+	}
 	na, nb := j.end(a), j.end(b)
 	j.Exacts++
 	return placed(j.Field.SegmentBetween(a, b, na, nb), a)
 }
 
-// Drive is Sight and Segment in one.
+// Drive is Sight and Segment in one. Pieces that may be driven are remembered, for who asks
+// about them once more.
 func (j *Judge) Drive(a, b geom.Point) (near clearance.Nearest, ok bool) {
+	if n := j.known(a, b); n != nil {
+		return *n, n.Um >= float64(j.NeedUm)
+	}
 	near = j.Segment(a, b)
 	if j.NeedUm == 0 || j.RadiusUm == 0 {
-		return near, j.Sight(a, b)
+		ok = j.Sight(a, b)
+	} else {
+		j.Sights++
+		r := j.Field.Bounds()
+		ok = near.Um >= float64(j.NeedUm) && r.Contains(a) && r.Contains(b) && j.Allowed(a, b)
 	}
-	j.Sights++
-	r := j.Field.Bounds()
-	return near, near.Um >= float64(j.NeedUm) && r.Contains(a) && r.Contains(b) && j.Allowed(a, b)
+	if ok && len(j.driven) < mostDriven {
+		j.driven = append(j.driven, driven{a, b, near})
+	}
+	return near, ok
+}
+
+// driven is a piece that may be driven. mostDriven bounds how many are remembered.
+type driven struct {
+	a, b geom.Point
+	near clearance.Nearest
+}
+
+const mostDriven = 256
+
+// known is the smallest clearance along a piece driven before; nil when it was not. Pieces
+// are asked for again mostly in the order they came.
+func (j *Judge) known(a, b geom.Point) *clearance.Nearest {
+	for range j.driven {
+		if j.ask++; j.ask >= len(j.driven) {
+			j.ask = 0
+		}
+		if d := &j.driven[j.ask]; d.a == a && d.b == b {
+			return &d.near
+		}
+	}
+	return nil
 }
 
 func placed(n clearance.Nearest, p geom.Point) clearance.Nearest {
