@@ -10,8 +10,9 @@ import (
 type at struct{ block, cell int32 }
 
 // locate adds the cells that hold p, borders included, from the lowest block and cell
-// on. tolerance is how far outside a cell p may be.
+// on. tolerance is how far outside a cell p, once settled, may be.
 func (g *Mesh) locate(out []at, p geom.Point, tolerance float64) []at {
+	p = g.settled(p)
 	x, y := p.X-g.o.X, p.Y-g.o.Y
 	bx0, by0, bx1, by1, ok := g.blocksOf(geom.Rect{Min: p, Max: p}, tolerance)
 	if !ok {
@@ -54,6 +55,30 @@ func (c *cut) holds(id int32, x, y, tolerance float64) bool {
 	l := float64(a.l) + float64(float64(b.l-a.l)*t)
 	r := float64(a.r) + float64(float64(b.r-a.r)*t)
 	return x >= l-tolerance && x <= r+tolerance
+}
+
+// covers says, exactly, whether a cell holds (x, y).
+func (c *cut) covers(id int32, x, y float64) bool {
+	if c.turned {
+		x, y = y, x
+	}
+	rows := c.rowsOf(id)
+	first, last := rows[0], rows[len(rows)-1]
+	if y < float64(first.y) || y > float64(last.y) {
+		return false
+	}
+	if len(rows) == 1 {
+		return x >= float64(first.l) && x <= float64(first.r)
+	}
+	p := geom.Point{X: x, Y: y}
+	at := func(x, y int32) geom.Point { return geom.Point{X: float64(x), Y: float64(y)} }
+	for i := 1; i < len(rows); i++ {
+		a, b := rows[i-1], rows[i]
+		if geom.Orient(at(a.l, a.y), at(b.l, b.y), p) > 0 || geom.Orient(at(a.r, a.y), at(b.r, b.y), p) < 0 {
+			return false
+		}
+	}
+	return true
 }
 
 // Nearest is the place of the mesh nearest to p, at most within away; p itself when

@@ -25,6 +25,9 @@ func (s *search) expand(n *node) {
 		c.urx, c.ury = (n.rx-c.rx)/dr, (n.ry-c.ry)/dr
 		c.ulx, c.uly = (n.lx-c.lx)/dl, (n.ly-c.ly)/dl
 	}
+	if n.fromBlock == none {
+		c.loose = !b.covers(n.cell, c.rx-ox, c.ry-oy)
+	}
 	portals := b.portals[of.first : of.first+of.count]
 	for i := range portals {
 		p := &portals[i]
@@ -74,6 +77,11 @@ type look struct {
 	ax, ay, bx, by     float64 // the portal, from right to left
 	turns              uint8
 
+	pastRight, pastLeft bool // see portal
+	// loose says that the start is outside its cell, by rounding: what lies along a
+	// side of the cell is then seen at an angle, and a way may have to bend at any end.
+	loose bool
+
 	right, left           int32 // roots at the node's ends, once asked for
 	askedRight, askedLeft bool
 }
@@ -108,11 +116,16 @@ func (c *look) portal() {
 	la := float64(c.ulx*(c.ay-c.ly)) - float64(c.uly*(c.ax-c.lx))
 	lb := float64(c.ulx*(c.by-c.ly)) - float64(c.uly*(c.bx-c.lx))
 	var tr, tl float64 // shares of the way from a to b at which the rays meet it
+	// An end of the portal on a ray, within rounding, is seen. When it is past the ray by
+	// however little, though, what follows may be past it by more: the way has to bend.
+	c.pastRight, c.pastLeft = false, false
 	switch {
 	case rb <= c.eps: // first, as a portal seen from behind has its ends swapped
 		tr = 1
 	case ra >= -c.eps:
 		tr = 0
+		c.pastRight = ra < c.eps && c.n.flags&turnR != 0 &&
+			geom.Orient(geom.Point{X: c.rx, Y: c.ry}, geom.Point{X: c.n.rx, Y: c.n.ry}, geom.Point{X: c.ax, Y: c.ay}) < 0
 	default:
 		tr = ra / (ra - rb)
 	}
@@ -121,6 +134,8 @@ func (c *look) portal() {
 		tl = 0
 	case lb <= c.eps:
 		tl = 1
+		c.pastLeft = lb > -c.eps && c.n.flags&turnL != 0 &&
+			geom.Orient(geom.Point{X: c.lx, Y: c.ly}, geom.Point{X: c.n.lx, Y: c.n.ly}, geom.Point{X: c.bx, Y: c.by}) > 0
 	default:
 		tl = la / (la - lb)
 	}
@@ -150,14 +165,14 @@ func (c *look) portal() {
 // seen from the node's ends, if from anywhere.
 func (c *look) seen(t0, t1 float64) {
 	n := node{rootR: none, rootL: none, apex: c.n.apex}
-	if t0 > 0 {
+	if t0 > 0 || c.pastRight {
 		if r := c.atRight(); r != none {
 			n.rootR, t0 = r, 0
 		} else {
 			n.rootR = c.n.rootR
 		}
 	}
-	if t1 < 1 {
+	if t1 < 1 || c.pastLeft {
 		if l := c.atLeft(); l != none {
 			n.rootL, t1 = l, 1
 		} else {
@@ -297,12 +312,12 @@ func (c *look) stretch(n node, t0, t1 float64) {
 	dx, dy := c.bx-c.ax, c.by-c.ay
 	if t0 > 0 {
 		n.rx, n.ry = c.ax+float64(t0*dx), c.ay+float64(t0*dy)
-	} else if c.turns&turnA != 0 {
+	} else if c.turns&turnA != 0 || c.loose {
 		n.flags |= turnR
 	}
 	if t1 < 1 {
 		n.lx, n.ly = c.ax+float64(t1*dx), c.ay+float64(t1*dy)
-	} else if c.turns&turnB != 0 {
+	} else if c.turns&turnB != 0 || c.loose {
 		n.flags |= turnL
 	}
 	if t0 > 0 || t1 < 1 {
@@ -384,6 +399,7 @@ func (s *search) way(n *node) Way {
 		put(s.roots[r].x, s.roots[r].y)
 	}
 	slices.Reverse(w.Points)
+	w.Points[0], w.Points[len(w.Points)-1] = s.start, s.goal
 	for i := 1; i < len(w.Points); i++ {
 		w.LengthUm += geom.Dist(w.Points[i-1], w.Points[i])
 	}

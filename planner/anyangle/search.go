@@ -70,8 +70,8 @@ const (
 // search is the scratch of one search.
 type search struct {
 	g                 *Mesh
-	tx                float64 // the goal
-	ty                float64
+	start, goal       geom.Point // as asked for
+	tx, ty            float64    // the goal, settled
 	goals             []at
 	open              []at  // dead ends that lead to the goal
 	openLow, openHigh int32 // their blocks
@@ -108,19 +108,21 @@ func (s *search) none() Way { return Way{Expanded: s.expanded, Queued: s.queued}
 
 func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way, bool, error) {
 	s.g = g
-	s.tx, s.ty = goal.X-g.o.X, goal.Y-g.o.Y
+	s.start, s.goal = start, goal
+	from, to := g.settled(start), g.settled(goal)
+	s.tx, s.ty = to.X-g.o.X, to.Y-g.o.Y
 	s.roots, s.nodes, s.spare = s.roots[:0], s.nodes[:0], s.spare[:0]
 	s.queue.reset()
 	s.table.reset()
 	s.visited.reset()
 	s.best = s.best[:0]
 	s.expanded, s.queued, s.gaveUp = 0, 0, false
-	s.goals = g.locate(s.goals[:0], goal, g.eps)
+	s.goals = g.locate(s.goals[:0], to, g.eps)
 	if len(s.goals) == 0 {
 		return Way{}, false, nil
 	}
-	starts := g.locate(nil, start, g.eps)
-	sx, sy := start.X-g.o.X, start.Y-g.o.Y
+	starts := g.locate(nil, from, g.eps)
+	sx, sy := from.X-g.o.X, from.Y-g.o.Y
 	s.roots = append(s.roots, root{x: sx, y: sy, parent: none})
 	s.table.find(sx, sy)
 	s.best = append(s.best, 0)
@@ -192,6 +194,16 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 			return s.none(), false, ErrTooLarge
 		}
 	}
+}
+
+// settled is an end that is on whole micrometres but for rounding put there: corners are
+// on whole micrometres, and from beside one a search would look past it.
+func (g *Mesh) settled(p geom.Point) geom.Point {
+	q := geom.Point{X: math.Round(p.X), Y: math.Round(p.Y)}
+	if math.Abs(p.X-q.X) <= g.eps && math.Abs(p.Y-q.Y) <= g.eps {
+		return q
+	}
+	return p
 }
 
 // trim takes off n what is seen from roots to which a better way is known by now.
