@@ -236,8 +236,13 @@ func TestRelaxationShortens(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			// 1e-9 relative is what the mesh promises.
-			if !ok || w.LengthUm < best.LengthUm*(1-1e-9) {
+			// 1e-9 relative is what the mesh promises. At 0 there is no mesh at less: its outline error
+			// times the turning, of which few ways have more than 10 radians.
+			slack := 1e-9 * best.LengthUm
+			if um == 0 {
+				slack += 10 * anyangle.DeltaUm
+			}
+			if !ok || w.LengthUm < best.LengthUm-slack {
 				t.Fatalf("case %d: %v µm relaxed, the optimum has %v (%v)", k, w.LengthUm, best.LengthUm, ok)
 			}
 			if best.LengthUm > 0 {
