@@ -60,7 +60,8 @@ const ArcErrorUm = 50.0
 
 // slackUm is how much wider than the clearance, in micrometres, arcs are taken, so that
 // the rounding of oblique tangents does not bring them nearer. Tangents along x and y are
-// exact, and go without.
+// exact, and go without. A passage that only oblique ones lead through must be wider by twice
+// that.
 const slackUm = 1.0 / 64
 
 // Graph is the visibility graph of one version of a floor. It never changes but for

@@ -1,11 +1,13 @@
 package visibility
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"math"
 	"math/rand/v2"
 	"reflect"
+	"slices"
 	"testing"
 
 	"example.com/wideberth/mapstore/floor"
@@ -224,20 +226,22 @@ func TestVisibilityEdgesEqualABruteForceTwin(t *testing.T) {
 			return geom.Orient(v.p, q, v.before)*geom.Orient(v.p, q, v.after) >= 0
 		}
 		enters := func(p, q geom.Point) bool {
-			mid := geom.Point{X: (p.X + q.X) / 2, Y: (p.Y + q.Y) / 2}
+			on := []geom.Point{p, q} // corners along it: between two it is inside or not
 			for _, c := range rings {
 				for i, a := range c {
-					b := c[(i+1)%len(c)]
-					if geom.SegmentsCross(p, q, a, b) {
+					if geom.SegmentsCross(p, q, a, c[(i+1)%len(c)]) {
 						return true
 					}
+					if geom.OnSegment(a, p, q) {
+						on = append(on, a)
+					}
 				}
-				if d, _ := geom.BorderDist([][]geom.Point{c}, mid); d > 1e-3 && geom.InPolygon([][]geom.Point{c}, mid) {
-					return true
-				}
-				for i, a := range c { // through a corner into the inside
-					v := corner{c[(i+len(c)-1)%len(c)], a, c[(i+1)%len(c)]}
-					if a != p && a != q && geom.OnSegment(a, p, q) && geom.Orient(p, q, v.before)*geom.Orient(p, q, v.after) < 0 {
+			}
+			slices.SortFunc(on, func(a, b geom.Point) int { return cmp.Compare(geom.Dist(p, a), geom.Dist(p, b)) })
+			for i := 1; i < len(on); i++ {
+				mid := geom.Point{X: (on[i-1].X + on[i].X) / 2, Y: (on[i-1].Y + on[i].Y) / 2}
+				for _, c := range rings {
+					if d, _ := geom.BorderDist([][]geom.Point{c}, mid); d > 1e-3 && geom.InPolygon([][]geom.Point{c}, mid) {
 						return true
 					}
 				}
