@@ -14,6 +14,7 @@ import (
 	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/plainfloor"
 	"example.com/wideberth/planner/roadmap"
+	"example.com/wideberth/planner/roadmap/internal/gen"
 	"example.com/wideberth/planner/roadmap/internal/solids"
 )
 
@@ -35,23 +36,23 @@ func at(x, y float64) geom.Point { return geom.Point{X: x * 1e6, Y: y * 1e6} }
 // "Über parallele Flächen", 1840); for the unit square and r = 0.5 m 3.785398163 m²
 // and 7.141592654 m.
 func TestConvexSolidsGrowAsSteinerSays(t *testing.T) {
-	f := emptyFloor(t, 200, 200, true)
+	f := gen.Empty(t, 200, 200, true)
 	square := floor.NewPolygon([][]geom.Point{{at(4, 4), at(5, 4), at(5, 5), at(4, 5)}}, 0)
 	const r = 500_000
 	for name, c := range map[string]struct {
 		f    *floor.Map
 		a, p float64 // of the solid, m² and m
 	}{
-		"polygon":   {put(t, f, square), 1, 4},
-		"clockwise": {put(t, f, floor.NewPolygon([][]geom.Point{{at(4, 5), at(5, 5), at(5, 4), at(4, 4)}}, 0)), 1, 4},
-		"cells":     {apply(t, f, paint(80, 80, 100, 100)), 1, 4},
-		"both":      {put(t, apply(t, f, paint(80, 80, 100, 100)), square, square), 1, 4},
-		"in pieces": {put(t, f, square, floor.NewPolygon([][]geom.Point{{at(5, 4), at(6, 4), at(6, 5), at(5, 5)}}, 0)), 2, 6},
-		"triangle":  {put(t, f, floor.NewPolygon([][]geom.Point{{at(1, 1), at(4, 1), at(4, 5)}}, 0)), 6, 12},
-		"segment":   {put(t, f, floor.NewPolyline([]geom.Point{at(2, 2), at(5, 6)}, 200_000, 0)), 2*5*0.1 + math.Pi*0.01, 10 + 2*math.Pi*0.1},
-		"there and back": {put(t, f, floor.NewPolyline([]geom.Point{at(2, 2), at(5, 6), at(2, 2), at(3.5, 4)}, 200_000, 0)),
+		"polygon":   {gen.Put(t, f, square), 1, 4},
+		"clockwise": {gen.Put(t, f, floor.NewPolygon([][]geom.Point{{at(4, 5), at(5, 5), at(5, 4), at(4, 4)}}, 0)), 1, 4},
+		"cells":     {gen.Apply(t, f, gen.Paint(80, 80, 100, 100)), 1, 4},
+		"both":      {gen.Put(t, gen.Apply(t, f, gen.Paint(80, 80, 100, 100)), square, square), 1, 4},
+		"in pieces": {gen.Put(t, f, square, floor.NewPolygon([][]geom.Point{{at(5, 4), at(6, 4), at(6, 5), at(5, 5)}}, 0)), 2, 6},
+		"triangle":  {gen.Put(t, f, floor.NewPolygon([][]geom.Point{{at(1, 1), at(4, 1), at(4, 5)}}, 0)), 6, 12},
+		"segment":   {gen.Put(t, f, floor.NewPolyline([]geom.Point{at(2, 2), at(5, 6)}, 200_000, 0)), 2*5*0.1 + math.Pi*0.01, 10 + 2*math.Pi*0.1},
+		"there and back": {gen.Put(t, f, floor.NewPolyline([]geom.Point{at(2, 2), at(5, 6), at(2, 2), at(3.5, 4)}, 200_000, 0)),
 			2*5*0.1 + math.Pi*0.01, 10 + 2*math.Pi*0.1},
-		"disc": {put(t, f, floor.NewDisc(at(5, 5), 1_000_000, 0)), math.Pi, 2 * math.Pi},
+		"disc": {gen.Put(t, f, floor.NewDisc(at(5, 5), 1_000_000, 0)), math.Pi, 2 * math.Pi},
 	} {
 		for _, um := range []float64{r, 1, 0} {
 			o := outline(t, c.f, int64(um))
@@ -62,7 +63,7 @@ func TestConvexSolidsGrowAsSteinerSays(t *testing.T) {
 			}
 		}
 	}
-	o := outline(t, put(t, f, square), r)
+	o := outline(t, gen.Put(t, f, square), r)
 	if math.Abs(o.AreaUm2/1e12-3.785398163) > 1e-9 || math.Abs(o.PerimeterUm/1e6-7.141592654) > 1e-9 {
 		t.Errorf("the unit square grown by 0.5 m: %v m², %v m", o.AreaUm2/1e12, o.PerimeterUm/1e6)
 	}
@@ -72,8 +73,8 @@ func TestConvexSolidsGrowAsSteinerSays(t *testing.T) {
 // the area 2 pi R² less that of the lens, 2R² acos(d/2R) - d/2 sqrt(4R² - d²)
 // (elementary), and a hole shrinks by P r - 4 r² for a square one.
 func TestTwoDiscsMeetInALens(t *testing.T) {
-	f := emptyFloor(t, 400, 400, true)
-	o := outline(t, put(t, f, floor.NewDisc(at(5, 5), 500_000, 0), floor.NewDisc(at(6.5, 7), 500_000, 0)), 1_000_000)
+	f := gen.Empty(t, 400, 400, true)
+	o := outline(t, gen.Put(t, f, floor.NewDisc(at(5, 5), 500_000, 0), floor.NewDisc(at(6.5, 7), 500_000, 0)), 1_000_000)
 	const R, d = 1.5, 2.5
 	area := 2*math.Pi*R*R - (2*R*R*math.Acos(d/2/R) - d/2*math.Sqrt(4*R*R-d*d))
 	length := 2 * R * (2*math.Pi - 2*math.Acos(d/2/R))
@@ -83,12 +84,12 @@ func TestTwoDiscsMeetInALens(t *testing.T) {
 	frame := floor.NewPolygon([][]geom.Point{
 		{at(2, 2), at(8, 2), at(8, 8), at(2, 8)}, {at(3, 3), at(7, 3), at(7, 7), at(3, 7)},
 	}, 0)
-	o = outline(t, put(t, f, frame), 500_000)
+	o = outline(t, gen.Put(t, f, frame), 500_000)
 	if len(o.Loops) != 2 || !near(o.Loops[1].AreaUm2, -9e12) || !near(o.Loops[1].PerimeterUm, 12e6) || !near(o.Loops[0].AreaUm2, (36+12+math.Pi/4)*1e12) {
 		t.Errorf("a frame: %+v", o.Loops)
 	}
 	// A closed floor of 20 m with nothing on it leaves a square of 19 m.
-	o = outline(t, emptyFloor(t, 400, 400, false), 500_000)
+	o = outline(t, gen.Empty(t, 400, 400, false), 500_000)
 	if len(o.Loops) != 1 || !near(o.FreeUm2, 361e12) || !near(o.AreaUm2, 39e12) {
 		t.Errorf("an empty hall: %v free, %v not", o.FreeUm2, o.AreaUm2)
 	}
@@ -96,7 +97,7 @@ func TestTwoDiscsMeetInALens(t *testing.T) {
 
 // TestPassagesOfExactlyTwiceTheRadiusStayOpen: as the planner's ways take them.
 func TestPassagesOfExactlyTwiceTheRadiusStayOpen(t *testing.T) {
-	f := apply(t, emptyFloor(t, 200, 200, false), paint(100, 0, 104, 91), paint(100, 109, 104, 200))
+	f := gen.Apply(t, gen.Empty(t, 200, 200, false), gen.Paint(100, 0, 104, 91), gen.Paint(100, 109, 104, 200))
 	for r, loops := range map[int64]int{449_000: 1, 450_000: 1, 450_001: 2} {
 		if o := outline(t, f, r); len(o.Loops) != loops {
 			t.Errorf("a door of 0.9 m at %d µm: %d loops, wanted %d", r, len(o.Loops), loops)
@@ -139,12 +140,12 @@ func TestRandomFloorsHaveTheAreaThatIsSampled(t *testing.T) {
 	const seed = 11
 	t.Logf("seed %d", seed)
 	cases := 150
-	if slow() {
+	if gen.Slow() {
 		cases = 1500
 	}
 	for k := range cases {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
-		f := randomFloor(t, rng, 10+rng.IntN(60), 10+rng.IntN(60))
+		f := gen.Floor(t, rng, 10+rng.IntN(60), 10+rng.IntN(60))
 		field, err := clearance.Build(context.Background(), f)
 		if err != nil {
 			t.Fatal(err)
@@ -188,14 +189,14 @@ func TestUnionAgreesWithSimplefeatures(t *testing.T) {
 	const seed = 12
 	t.Logf("seed %d", seed)
 	cases := 12
-	if slow() {
+	if gen.Slow() {
 		cases = 200
 	}
 	for k := range cases {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
-		f := emptyFloor(t, 40, 40, true)
+		f := gen.Empty(t, 40, 40, true)
 		for range 1 + rng.IntN(6) {
-			f = put(t, f, randomShape(rng, f.Bounds()))
+			f = gen.Put(t, f, gen.Shape(rng, f.Bounds()))
 		}
 		r := []int64{50_000, 217_345}[rng.IntN(2)]
 		o := outline(t, f, r)
@@ -255,7 +256,7 @@ func capsule(a, b geom.Point, radius float64, sides int) []geom.Point {
 
 // TestOutsidePolylineStandsOffByAtMostTheError: and never lies inside.
 func TestOutsidePolylineStandsOffByAtMostTheError(t *testing.T) {
-	f := put(t, apply(t, emptyFloor(t, 200, 200, false), paint(50, 50, 70, 52)), floor.NewDisc(at(6, 6), 700_000, 0),
+	f := gen.Put(t, gen.Apply(t, gen.Empty(t, 200, 200, false), gen.Paint(50, 50, 70, 52)), floor.NewDisc(at(6, 6), 700_000, 0),
 		floor.NewPolygon([][]geom.Point{{at(2, 7), at(3, 6.5), at(3.5, 8)}}, 0))
 	field, err := clearance.Build(context.Background(), f)
 	if err != nil {
@@ -288,7 +289,7 @@ func TestSimplifiedIsBetweenTwoRadii(t *testing.T) {
 	less := 0
 	for k := range 60 {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
-		f := randomFloor(t, rng, 20+rng.IntN(60), 20+rng.IntN(60))
+		f := gen.Floor(t, rng, 20+rng.IntN(60), 20+rng.IntN(60))
 		field, err := clearance.Build(context.Background(), f)
 		if err != nil {
 			t.Fatal(err)

@@ -12,6 +12,7 @@ import (
 	"example.com/wideberth/planner/check"
 	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/roadmap"
+	"example.com/wideberth/planner/roadmap/internal/gen"
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
 	"example.com/wideberth/testdata"
 )
@@ -84,7 +85,7 @@ func hallPairs(f *clearance.Field, n int, um float64) (out [][2]geom.Point) {
 	rng := rand.New(rand.NewPCG(31, 0))
 	var p []geom.Point
 	for len(p) < 2*n {
-		if q := within(rng, f.Bounds()); f.At(q).Um >= um {
+		if q := gen.Within(rng, f.Bounds()); f.At(q).Um >= um {
 			p = append(p, q)
 		}
 	}
@@ -157,7 +158,7 @@ func BenchmarkAdvanceVsRebuild(b *testing.B) {
 	if err := g.Complete(ctx); err != nil {
 		b.Fatal(err)
 	}
-	next := apply(b, f, paint(1340, 1000, 1360, 1020))
+	next := gen.Apply(b, f, gen.Paint(1340, 1000, 1360, 1020))
 	change := floor.Diff(f, next)
 	if fd, err = fd.Advance(ctx, next, change); err != nil {
 		b.Fatal(err)

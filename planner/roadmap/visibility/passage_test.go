@@ -10,6 +10,7 @@ import (
 	"example.com/wideberth/planner/check"
 	"example.com/wideberth/planner/internal/plainfloor"
 	"example.com/wideberth/planner/roadmap"
+	"example.com/wideberth/planner/roadmap/internal/gen"
 )
 
 // TestPassagesOfKnownWidth: none is let through that is too narrow. None is lost that has the
@@ -20,7 +21,7 @@ func TestPassagesOfKnownWidth(t *testing.T) {
 	const seed = 41
 	t.Logf("seed %d", seed)
 	cases := 12
-	if slow() {
+	if gen.Slow() {
 		cases = 300
 	}
 	lost := 0
@@ -70,7 +71,7 @@ func TestPassagesOfKnownWidth(t *testing.T) {
 // TestManySearchesAtOnce give what they give one after the other.
 func TestManySearchesAtOnce(t *testing.T) {
 	rng := rand.New(rand.NewPCG(42, 0))
-	f := randomFloor(t, rng, 90, 90)
+	f := gen.Floor(t, rng, 90, 90)
 	g, alone := build(t, f, 100_000), build(t, f, 100_000)
 	pairs := hallPairs(g.field, 40, 100_000)
 	got := make([]roadmap.Way, len(pairs))

@@ -17,6 +17,7 @@ import (
 	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/plainfloor"
 	"example.com/wideberth/planner/roadmap"
+	"example.com/wideberth/planner/roadmap/internal/gen"
 )
 
 func at(x, y float64) geom.Point { return geom.Point{X: x * 1e6, Y: y * 1e6} }
@@ -56,11 +57,11 @@ func square(x0, y0, x1, y1 float64) floor.Shape {
 // r, and past two blocks, all by elementary geometry; figures to 1e-12 of the worked
 // examples that the project checks itself against.
 func TestAnalyticShortestWays(t *testing.T) {
-	f := emptyFloor(t, 480, 480, false) // 24 m, the examples about (12, 12)
+	f := gen.Empty(t, 480, 480, false) // 24 m, the examples about (12, 12)
 	p := func(x, y float64) geom.Point { return at(12+x, 12+y) }
 	block := func(x0, y0, x1, y1 float64) floor.Shape { return square(12+x0, 12+y0, 12+x1, 12+y1) }
 	cells := func(x0, y0, x1, y1 float64) floor.Edit {
-		return paint(int((12+x0)*20), int((12+y0)*20), int((12+x1)*20), int((12+y1)*20))
+		return gen.Paint(int((12+x0)*20), int((12+y0)*20), int((12+x1)*20), int((12+y1)*20))
 	}
 	for name, c := range map[string]struct {
 		f    *floor.Map
@@ -68,17 +69,17 @@ func TestAnalyticShortestWays(t *testing.T) {
 		s, e geom.Point
 		want float64
 	}{
-		"disc 1":        {put(t, f, floor.NewDisc(p(0, 0), 1_000_000, 0)), 0, p(-2, 0), p(2, 0), 2*math.Sqrt(3) + math.Pi/3},
-		"disc 1, by r":  {put(t, f, floor.NewDisc(p(0, 0), 600_000, 0)), 400_000, p(-2, 0), p(2, 0), 4.511299166334},
-		"disc 1.5":      {put(t, f, floor.NewDisc(p(0, 0), 1_000_000, 0)), 500_000, p(-5, 0), p(5, 0), 10.453469976216},
-		"square, point": {put(t, f, block(-1, -1, 1, 1)), 0, p(-5, 0), p(5, 0), 10.246211251235},
-		"square 0.5":    {put(t, f, block(-1, -1, 1, 1)), 500_000, p(-5, 0), p(5, 0), 10.551898456870},
-		"square 0.25":   {put(t, f, block(-1, -1, 1, 1)), 250_000, p(-5, 0), p(5, 0), 10.383863708635},
-		"cells, point":  {apply(t, f, cells(-1, -1, 1, 1)), 0, p(-5, 0), p(5, 0), 10.246211251235},
-		"cells 0.5":     {apply(t, f, cells(-1, -1, 1, 1)), 500_000, p(-5, 0), p(5, 0), 10.551898456870},
-		"two blocks":    {put(t, f, block(-3, -1, -1, 3), block(1, -3, 3, 1)), 0, p(-5, 0), p(5, 0), 11.300563079746},
-		"two blocks a":  {put(t, f, block(-3, -1, -1, 2), block(1, -2, 3, 1)), 0, p(-5, 0), p(5, 0), 11.187600727864},
-		"two in cells":  {apply(t, f, cells(-3, -1, -1, 3), cells(1, -3, 3, 1)), 0, p(-5, 0), p(5, 0), 11.300563079746},
+		"disc 1":        {gen.Put(t, f, floor.NewDisc(p(0, 0), 1_000_000, 0)), 0, p(-2, 0), p(2, 0), 2*math.Sqrt(3) + math.Pi/3},
+		"disc 1, by r":  {gen.Put(t, f, floor.NewDisc(p(0, 0), 600_000, 0)), 400_000, p(-2, 0), p(2, 0), 4.511299166334},
+		"disc 1.5":      {gen.Put(t, f, floor.NewDisc(p(0, 0), 1_000_000, 0)), 500_000, p(-5, 0), p(5, 0), 10.453469976216},
+		"square, point": {gen.Put(t, f, block(-1, -1, 1, 1)), 0, p(-5, 0), p(5, 0), 10.246211251235},
+		"square 0.5":    {gen.Put(t, f, block(-1, -1, 1, 1)), 500_000, p(-5, 0), p(5, 0), 10.551898456870},
+		"square 0.25":   {gen.Put(t, f, block(-1, -1, 1, 1)), 250_000, p(-5, 0), p(5, 0), 10.383863708635},
+		"cells, point":  {gen.Apply(t, f, cells(-1, -1, 1, 1)), 0, p(-5, 0), p(5, 0), 10.246211251235},
+		"cells 0.5":     {gen.Apply(t, f, cells(-1, -1, 1, 1)), 500_000, p(-5, 0), p(5, 0), 10.551898456870},
+		"two blocks":    {gen.Put(t, f, block(-3, -1, -1, 3), block(1, -3, 3, 1)), 0, p(-5, 0), p(5, 0), 11.300563079746},
+		"two blocks a":  {gen.Put(t, f, block(-3, -1, -1, 2), block(1, -2, 3, 1)), 0, p(-5, 0), p(5, 0), 11.187600727864},
+		"two in cells":  {gen.Apply(t, f, cells(-3, -1, -1, 3), cells(1, -3, 3, 1)), 0, p(-5, 0), p(5, 0), 11.300563079746},
 	} {
 		w, ok := find(t, build(t, c.f, c.r), c.s, c.e)
 		// 1e-6 relative: what the examples are given for, and less than what ArcErrorUm amounts to:
@@ -101,13 +102,13 @@ func TestAgainstTheAnyAngleOptimum(t *testing.T) {
 	const seed = 21
 	t.Logf("seed %d", seed)
 	cases := 120
-	if slow() {
+	if gen.Slow() {
 		cases = 2000
 	}
 	ways, none, short := 0, 0, 0
 	for k := range cases {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
-		f := randomFloor(t, rng, 20+rng.IntN(80), 20+rng.IntN(80))
+		f := gen.Floor(t, rng, 20+rng.IntN(80), 20+rng.IntN(80))
 		r := []int64{0, 30_000, 50_000, 150_000, 217_345, 333_333}[rng.IntN(6)]
 		g := build(t, f, r)
 		mesh := func(r int64) *anyangle.Mesh {
@@ -123,7 +124,7 @@ func TestAgainstTheAnyAngleOptimum(t *testing.T) {
 			closer = mesh(r - anyangle.DeltaUm) // no longer than the true optimum at r
 		}
 		for range 3 {
-			s, e := within(rng, f.Bounds()), within(rng, f.Bounds())
+			s, e := gen.Within(rng, f.Bounds()), gen.Within(rng, f.Bounds())
 			w, ok := find(t, g, s, e)
 			if ok {
 				ways++
@@ -164,10 +165,10 @@ func TestAgainstTheAnyAngleOptimum(t *testing.T) {
 
 // corners of a floor of polygons for the brute-force twin.
 func polygonFloor(t testing.TB, rng *rand.Rand) (*floor.Map, [][]geom.Point) {
-	f := emptyFloor(t, 100, 100, true)
+	f := gen.Empty(t, 100, 100, true)
 	var rings [][]geom.Point
 	for len(rings) < 2+rng.IntN(5) {
-		s := randomShape(rng, f.Bounds().Grow(-200_000))
+		s := gen.Shape(rng, f.Bounds().Grow(-200_000))
 		if s.Kind != floor.Polygon {
 			continue
 		}
@@ -186,7 +187,7 @@ func polygonFloor(t testing.TB, rng *rand.Rand) (*floor.Map, [][]geom.Point) {
 			}
 		}
 		rings = append(rings, c)
-		f = put(t, f, floor.NewPolygon([][]geom.Point{c}, 0))
+		f = gen.Put(t, f, floor.NewPolygon([][]geom.Point{c}, 0))
 	}
 	return f, rings
 }
@@ -199,7 +200,7 @@ func TestVisibilityEdgesEqualABruteForceTwin(t *testing.T) {
 	const seed = 22
 	t.Logf("seed %d", seed)
 	cases := 60
-	if slow() {
+	if gen.Slow() {
 		cases = 1000
 	}
 	type pair struct{ a, b geom.Point }
@@ -279,12 +280,12 @@ func TestPatchedEqualsRebuilt(t *testing.T) {
 	const seed = 23
 	t.Logf("seed %d", seed)
 	cases := 25
-	if slow() {
+	if gen.Slow() {
 		cases = 400
 	}
 	for k := range cases {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
-		f := randomFloor(t, rng, 20+rng.IntN(50), 20+rng.IntN(50))
+		f := gen.Floor(t, rng, 20+rng.IntN(50), 20+rng.IntN(50))
 		need := roadmap.Need{ClearanceUm: []int64{0, 60_000, 150_000}[rng.IntN(3)], Zones: true, ZoneUm: 100_000}
 		fd := field(t, f)
 		g, err := Build(context.Background(), fd, need)
@@ -297,16 +298,16 @@ func TestPatchedEqualsRebuilt(t *testing.T) {
 					t.Fatal(err)
 				}
 			} else {
-				find(t, g, within(rng, f.Bounds()), within(rng, f.Bounds()))
+				find(t, g, gen.Within(rng, f.Bounds()), gen.Within(rng, f.Bounds()))
 			}
 			x, y := rng.IntN(f.Settings().Columns), rng.IntN(f.Settings().Rows)
-			e := []floor.Edit{paint(x, y, x+1, y+1)}
+			e := []floor.Edit{gen.Paint(x, y, x+1, y+1)}
 			switch rng.IntN(3) {
 			case 0:
 				e[0].Fill = floor.Free
 			case 1:
 				kind := []floor.FeatureKind{floor.Solid, floor.ClosedZone}[rng.IntN(2)]
-				s := randomShape(rng, f.Bounds())
+				s := gen.Shape(rng, f.Bounds())
 				if kind == floor.ClosedZone && s.Kind != floor.Polygon {
 					kind = floor.Solid
 				}
@@ -316,7 +317,7 @@ func TestPatchedEqualsRebuilt(t *testing.T) {
 				}
 				describeWidths(e[0].Feature)
 			}
-			next := apply(t, f, e...)
+			next := gen.Apply(t, f, e...)
 			change := floor.Diff(f, next)
 			fd, err = fd.Advance(context.Background(), next, change)
 			if err != nil {
@@ -331,7 +332,7 @@ func TestPatchedEqualsRebuilt(t *testing.T) {
 				t.Fatal(err)
 			}
 			g, f = r.(*Graph), next
-			s, e2 := within(rng, f.Bounds()), within(rng, f.Bounds())
+			s, e2 := gen.Within(rng, f.Bounds()), gen.Within(rng, f.Bounds())
 			w1, ok1 := find(t, g, s, e2)
 			w2, ok2 := find(t, fresh, s, e2)
 			if ok1 != ok2 || !reflect.DeepEqual(w1.Points, w2.Points) {
@@ -359,12 +360,12 @@ func describeWidths(f *floor.Feature) {
 // outlines, a passage of 2 r lets a body of r through and none a micrometre wider, also
 // one that turns in it.
 func TestPassagesOfExactlyTwiceTheRadius(t *testing.T) {
-	f := emptyFloor(t, 200, 200, false)
+	f := gen.Empty(t, 200, 200, false)
 	for name, m := range map[string]*floor.Map{
-		"cells":         apply(t, f, paint(100, 0, 104, 91), paint(100, 109, 104, 200)),
-		"outlines":      put(t, f, square(5, 0, 5.2, 4.55), square(5, 5.45, 5.2, 10)),
-		"two corners":   put(t, f, square(5, 0, 5.2, 4.55), square(4.8, 5.45, 5, 10)),
-		"corner to arc": put(t, f, square(5, 0, 5.2, 4.55), square(5, 5.95, 5.2, 10), floor.NewDisc(at(5.1, 5.95), 500_000, 0)),
+		"cells":         gen.Apply(t, f, gen.Paint(100, 0, 104, 91), gen.Paint(100, 109, 104, 200)),
+		"outlines":      gen.Put(t, f, square(5, 0, 5.2, 4.55), square(5, 5.45, 5.2, 10)),
+		"two corners":   gen.Put(t, f, square(5, 0, 5.2, 4.55), square(4.8, 5.45, 5, 10)),
+		"corner to arc": gen.Put(t, f, square(5, 0, 5.2, 4.55), square(5, 5.95, 5.2, 10), floor.NewDisc(at(5.1, 5.95), 500_000, 0)),
 	} {
 		for _, ends := range [][2]geom.Point{{at(1, 5), at(9, 5)}, {at(1, 9), at(9, 9)}, {at(4, 1), at(6.3, 9)}} {
 			for r, want := range map[int64]bool{449_999: true, 450_000: true, 450_001: false} {
@@ -385,7 +386,7 @@ func TestPassagesOfExactlyTwiceTheRadius(t *testing.T) {
 // TestClosedZonesHaveCornersOfTheirOwn: a way keeps the zone's radius from a zone, which
 // is less than the clearance.
 func TestClosedZonesHaveCornersOfTheirOwn(t *testing.T) {
-	f := apply(t, emptyFloor(t, 200, 200, false), floor.Edit{Kind: floor.PutFeature, Feature: &floor.Feature{
+	f := gen.Apply(t, gen.Empty(t, 200, 200, false), floor.Edit{Kind: floor.PutFeature, Feature: &floor.Feature{
 		Name: "z", Kind: floor.ClosedZone, Shape: square(4, 4, 6, 6)}})
 	for zone, want := range map[int64]float64{0: 2*math.Hypot(3, 1) + 2, 250_000: 0} {
 		g, err := Build(context.Background(), field(t, f), roadmap.Need{ClearanceUm: 500_000, Zones: true, ZoneUm: zone})

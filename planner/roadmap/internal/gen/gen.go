@@ -1,4 +1,6 @@
-package visibility
+// Package gen makes random floors of cells and solids of every kind for tests, much of which
+// touches or coincides. Nothing served uses it.
+package gen
 
 import (
 	"fmt"
@@ -11,9 +13,11 @@ import (
 	"example.com/wideberth/mapstore/geom"
 )
 
-func slow() bool { return os.Getenv("WIDEBERTH_SLOW") == "1" }
+// Slow says whether the long variants are asked for.
+func Slow() bool { return os.Getenv("WIDEBERTH_SLOW") == "1" }
 
-func emptyFloor(t testing.TB, w, h int, open bool) *floor.Map {
+// Empty is a floor of w by h free cells of 50 mm.
+func Empty(t testing.TB, w, h int, open bool) *floor.Map {
 	t.Helper()
 	f, err := floor.New(floor.Settings{ResolutionUm: 50_000, Columns: w, Rows: h, CapUm: 5_000_000, OpenBorder: open})
 	if err != nil {
@@ -22,7 +26,8 @@ func emptyFloor(t testing.TB, w, h int, open bool) *floor.Map {
 	return f
 }
 
-func put(t testing.TB, f *floor.Map, shapes ...floor.Shape) *floor.Map {
+// Put adds solids.
+func Put(t testing.TB, f *floor.Map, shapes ...floor.Shape) *floor.Map {
 	t.Helper()
 	var edits []floor.Edit
 	for i, s := range shapes {
@@ -37,10 +42,11 @@ func put(t testing.TB, f *floor.Map, shapes ...floor.Shape) *floor.Map {
 		}
 		edits = append(edits, floor.Edit{Kind: floor.PutFeature, Feature: ft})
 	}
-	return apply(t, f, edits...)
+	return Apply(t, f, edits...)
 }
 
-func apply(t testing.TB, f *floor.Map, edits ...floor.Edit) *floor.Map {
+// Apply carries out edits.
+func Apply(t testing.TB, f *floor.Map, edits ...floor.Edit) *floor.Map {
 	t.Helper()
 	f, err := f.Apply(edits)
 	if err != nil {
@@ -49,18 +55,20 @@ func apply(t testing.TB, f *floor.Map, edits ...floor.Edit) *floor.Map {
 	return f
 }
 
-func paint(x0, y0, x1, y1 int) floor.Edit {
+// Paint makes cells occupied.
+func Paint(x0, y0, x1, y1 int) floor.Edit {
 	return floor.Edit{Kind: floor.PaintRect, Rect: floor.CellRect{X0: x0, Y0: y0, X1: x1, Y1: y1}, Fill: floor.Occupied}
 }
 
-func within(rng *rand.Rand, b geom.Rect) geom.Point {
+// Within is a random place on whole micrometres.
+func Within(rng *rand.Rand, b geom.Rect) geom.Point {
 	return geom.Point{X: math.Floor(b.Min.X + rng.Float64()*b.Width()), Y: math.Floor(b.Min.Y + rng.Float64()*b.Height())}
 }
 
-// randomShape is on whole micrometres, or on the cells' lattice, where much coincides.
-func randomShape(rng *rand.Rand, b geom.Rect) floor.Shape {
+// Shape is on whole micrometres, or on the cells' lattice, where much coincides.
+func Shape(rng *rand.Rand, b geom.Rect) floor.Shape {
 	grid := []float64{1, 50_000}[rng.IntN(2)]
-	at := within(rng, b)
+	at := Within(rng, b)
 	clip := func(x, y float64) geom.Point {
 		return b.Nearest(geom.Point{X: math.Round((at.X+x)/grid) * grid, Y: math.Round((at.Y+y)/grid) * grid})
 	}
@@ -76,7 +84,7 @@ func randomShape(rng *rand.Rand, b geom.Rect) floor.Shape {
 			}
 		}
 		if len(pts) < 2 {
-			return randomShape(rng, b)
+			return Shape(rng, b)
 		}
 		return floor.NewPolyline(pts, 2*(1+rng.Int64N(100_000)), 0)
 	case 2:
@@ -88,7 +96,7 @@ func randomShape(rng *rand.Rand, b geom.Rect) floor.Shape {
 			ring = append(ring, clip(k[0]*c-k[1]*s, k[0]*s+k[1]*c))
 		}
 		if geom.CheckPolygon([][]geom.Point{ring}) != nil {
-			return randomShape(rng, b)
+			return Shape(rng, b)
 		}
 		return floor.NewPolygon([][]geom.Point{ring}, 0)
 	}
@@ -100,26 +108,26 @@ func randomShape(rng *rand.Rand, b geom.Rect) floor.Shape {
 		ring = append(ring, clip(l*c, l*s))
 	}
 	if geom.CheckPolygon([][]geom.Point{ring}) != nil {
-		return randomShape(rng, b)
+		return Shape(rng, b)
 	}
 	return floor.NewPolygon([][]geom.Point{ring}, int64(rng.IntN(2)*rng.IntN(30_000)))
 }
 
-// randomFloor has cells and solids of every kind; some are put twice.
-func randomFloor(t testing.TB, rng *rand.Rand, w, h int) *floor.Map {
-	f := emptyFloor(t, w, h, rng.IntN(3) == 0)
+// Floor has cells and solids of every kind; some are put twice.
+func Floor(t testing.TB, rng *rand.Rand, w, h int) *floor.Map {
+	f := Empty(t, w, h, rng.IntN(3) == 0)
 	var edits []floor.Edit
 	for range rng.IntN(5) {
 		x, y := rng.IntN(w), rng.IntN(h)
-		edits = append(edits, paint(x, y, min(w, x+1+rng.IntN(8)), min(h, y+1+rng.IntN(8))))
+		edits = append(edits, Paint(x, y, min(w, x+1+rng.IntN(8)), min(h, y+1+rng.IntN(8))))
 	}
 	for range rng.IntN(10) {
 		x, y := rng.IntN(w), rng.IntN(h)
-		edits = append(edits, paint(x, y, x+1, y+1))
+		edits = append(edits, Paint(x, y, x+1, y+1))
 	}
 	var shapes []floor.Shape
 	for range rng.IntN(6) {
-		s := randomShape(rng, f.Bounds())
+		s := Shape(rng, f.Bounds())
 		shapes = append(shapes, s)
 		if rng.IntN(4) == 0 {
 			shapes = append(shapes, s)
@@ -128,5 +136,5 @@ func randomFloor(t testing.TB, rng *rand.Rand, w, h int) *floor.Map {
 			edits = append(edits, floor.Edit{Kind: floor.PaintPolygon, Fill: floor.Occupied, Shape: floor.NewPolygon(s.Chains, 0)})
 		}
 	}
-	return put(t, apply(t, f, edits...), shapes...)
+	return Put(t, Apply(t, f, edits...), shapes...)
 }
