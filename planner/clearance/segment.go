@@ -162,7 +162,10 @@ func (f *Field) Travel(p geom.Point, heading float64, radiusUm int64, maxUm int6
 		if !(mid > t.lo && mid < t.hi) {
 			mid = (t.lo + t.hi) / 2
 		}
-		guess = t.try(mid)
+		before := t.hi - t.lo
+		if guess = t.try(mid); t.hi-t.lo > before/2 && mid != t.lo+before/2 {
+			guess = -1 // halve by turns, since guesses may come nearer little by little
+		}
 	}
 	return math.Floor(t.lo)
 }
@@ -214,10 +217,15 @@ func (t *traveller) try(s float64) (next float64) {
 	t.hi = s
 	x, y := n.At.X-t.p.X, n.At.Y-t.p.Y
 	along, off := float64(x*t.ux)+float64(y*t.uy), float64(x*t.uy)-float64(y*t.ux)
-	if n.Um == 0 || math.Abs(off) >= t.radius {
+	if n.Um == 0 {
+		off = 0 // At is on the way
+	} else if math.Abs(off) >= t.radius {
 		return -1
 	}
 	meets := along - math.Sqrt(float64(t.radius*t.radius)-float64(off*off))
+	if meets >= s {
+		return -1
+	}
 	t.hi = min(t.hi, max(meets, t.lo)+0.5)
 	return meets - 0.25
 }
