@@ -91,7 +91,7 @@ func inside(ring []geom.Point, p geom.Point, d float64) bool {
 func TestRegionsAreConvexDisjointAndAll(t *testing.T) {
 	const seed = 3
 	t.Logf("seed %d", seed)
-	cases, merged := 60, 0
+	cases, merged := 40, 0
 	if testfloor.Slow() {
 		cases = 2000
 	}
@@ -146,7 +146,7 @@ func TestRegionsAreConvexDisjointAndAll(t *testing.T) {
 func TestFewRegionsAroundPolygons(t *testing.T) {
 	const seed = 8
 	t.Logf("seed %d", seed)
-	for k := range 100 {
+	for k := range 50 {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
 		m := testfloor.New(t, 240, 160, false)
 		inner := 0
@@ -185,7 +185,7 @@ func TestFewRegionsAroundPolygons(t *testing.T) {
 func TestRelaxationShortens(t *testing.T) {
 	const seed = 17
 	t.Logf("seed %d", seed)
-	cases, found, shorter, worst, sum := 80, 0, 0, 1.0, 0.0
+	cases, found, shorter, worst, sum := 50, 0, 0, 1.0, 0.0
 	if testfloor.Slow() {
 		cases = 3000
 	}

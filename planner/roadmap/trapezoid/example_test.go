@@ -202,7 +202,7 @@ func plain(rings [][]geom.Point, b geom.Rect) (cells, walls int, areaUm float64)
 func TestCountsAgainstBruteForce(t *testing.T) {
 	const seed = 5
 	t.Logf("seed %d", seed)
-	cases, segments := 60, 0
+	cases, segments := 40, 0
 	if testfloor.Slow() {
 		cases = 3000
 	}

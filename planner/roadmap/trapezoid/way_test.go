@@ -22,7 +22,7 @@ import (
 func TestWaysKeepTheirClearance(t *testing.T) {
 	const seed = 12
 	t.Logf("seed %d", seed)
-	cases, found, none := 80, 0, 0
+	cases, found, none := 50, 0, 0
 	if testfloor.Slow() {
 		cases = 3000
 	}
@@ -144,7 +144,7 @@ func TestWallFollowingRoundABox(t *testing.T) {
 func TestPassageAsWideAsTheBody(t *testing.T) {
 	const seed = 6
 	t.Logf("seed %d", seed)
-	for k := range 60 {
+	for k := range 36 {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
 		const side = 150 * testfloor.CellUm
 		r := int64(1 + rng.IntN(700_000))
