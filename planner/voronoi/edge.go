@@ -22,6 +22,9 @@ type End struct {
 	At          geom.Point
 	ClearanceUm float64
 	Kind        EndKind
+	// Node is the same for all ends at one place, and for no others. Each end's own At may be off
+	// the others' by rounding.
+	Node int32
 }
 
 // Gate is a narrowest place: X and Y are nearest places of two pieces of solid with
@@ -146,7 +149,7 @@ func (g *Graph) describe(e *Edge, at []int32, from, to int32) {
 		if upper {
 			p, um = a.curve.at(a.s1), a.um1
 		}
-		v := End{At: g.place(s.block, p), ClearanceUm: um, Kind: Branch}
+		v := End{At: g.place(s.block, p), ClearanceUm: um, Kind: Branch, Node: n}
 		switch {
 		case at[n+1]-at[n] != 1:
 		case um <= max(leastUm, float64(g.need.LeastUm))+joinUm:

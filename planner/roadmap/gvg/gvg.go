@@ -117,12 +117,12 @@ func (g *Graph) Describe() roadmap.Description {
 	var d roadmap.Description
 	capUm := float64(g.graph.Field().Cap())
 	down := func(um float64) int64 { return int64(math.Floor(min(um+roundingUm, capUm))) }
-	ids := map[geom.Point]int32{}
+	ids := map[int32]int32{}
 	node := func(e voronoi.End) int32 {
-		id, ok := ids[e.At]
+		id, ok := ids[e.Node]
 		if !ok {
 			id = int32(len(d.Nodes))
-			ids[e.At] = id
+			ids[e.Node] = id
 			d.Nodes = append(d.Nodes, roadmap.Node{At: e.At, ClearanceUm: down(e.ClearanceUm)})
 		}
 		return id
