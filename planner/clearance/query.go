@@ -60,6 +60,9 @@ func (f *Field) Bracket(p geom.Point) (least, most float64) {
 // nearestFeature searches rings of buckets about p outwards.
 func (f *Field) nearestFeature(p geom.Point, n *Nearest) {
 	bx, by, _, _ := f.bucketRange(geom.Rect{Min: p, Max: p})
+	if f.bounds.Contains(p) && bx < f.pyramid[0].nx && by < f.pyramid[0].ny && !f.pyramid[0].at(bx, by).near {
+		return
+	}
 	for k := 0; ; k++ {
 		x0, y0, x1, y1 := max(0, bx-k), max(0, by-k), min(f.buckets.nx-1, bx+k), min(f.buckets.ny-1, by+k)
 		for y := y0; y <= y1; y++ {

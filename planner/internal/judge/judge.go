@@ -45,8 +45,8 @@ func New(f *clearance.Field, r *rules.Rules, requiredUm, radiusUm int64) *Judge 
 func (j *Judge) Place(p geom.Point) clearance.Nearest { return j.end(p) }
 
 func (j *Judge) end(p geom.Point) clearance.Nearest {
-	for i := range j.ends {
-		if j.ends[i].On == p && j.ends[i].Um > 0 {
+	for i := range min(j.next, len(j.ends)) {
+		if j.ends[i].On == p {
 			return j.ends[i]
 		}
 	}
@@ -81,18 +81,18 @@ func (j *Judge) Drive(a, b geom.Point) (near clearance.Nearest, ok bool) {
 		return *n, n.Um >= float64(j.NeedUm)
 	}
 	near = j.Segment(a, b)
-	if j.NeedUm == 0 || j.RadiusUm == 0 {
-		ok = j.Sight(a, b)
-	} else {
-		j.Sights++
-		r := j.Field.Bounds()
-		ok = near.Um >= float64(j.NeedUm) && r.Contains(a) && r.Contains(b) && j.Allowed(a, b)
-	}
+	j.Sights++
+	r := j.Field.Bounds()
+	ok = near.Um >= float64(j.NeedUm) && r.Contains(a) && r.Contains(b) &&
+		(j.NeedUm > 0 && j.RadiusUm > 0 || j.keepsPoint(a, b, near.Um >= 1)) && j.Allowed(a, b)
 	if ok && len(j.driven) < mostDriven {
 		j.driven = append(j.driven, driven{a, b, near})
 	}
 	return near, ok
 }
+
+// Forget drops what is remembered, for who is about to ask for other pieces.
+func (j *Judge) Forget() { j.driven, j.ask = j.driven[:0], 0 }
 
 // driven is a piece that may be driven. mostDriven bounds how many are remembered.
 type driven struct {
@@ -105,16 +105,17 @@ const mostDriven = 256
 // known is the smallest clearance along a piece driven before; nil when it was not. Pieces
 // are asked for again mostly in the order they came.
 func (j *Judge) known(a, b geom.Point) *clearance.Nearest {
-	for range j.driven {
-		if j.ask++; j.ask >= len(j.driven) {
-			j.ask = 0
-		}
-		if d := &j.driven[j.ask]; d.a == a && d.b == b {
+	for i := j.ask; i < len(j.driven) && i < j.ask+alike; i++ {
+		if d := &j.driven[i]; d.a == a && d.b == b {
+			j.ask = i + 1
 			return &d.near
 		}
 	}
 	return nil
 }
+
+// alike is how many pieces from the one expected known looks at.
+const alike = 8
 
 func placed(n clearance.Nearest, p geom.Point) clearance.Nearest {
 	if n.Feature == nil && !n.Border && !n.Cell {
@@ -150,13 +151,14 @@ func (j *Judge) Keeps(a, b geom.Point, least float64) bool {
 	r := j.Field.Bounds()
 	need := max(j.NeedUm, int64(math.Floor(min(least, float64(j.Field.Cap())))))
 	return r.Contains(a) && r.Contains(b) && (need == 0 || j.Field.SegmentClear(a, b, need)) &&
-		(need > 0 && j.RadiusUm > 0 || j.keepsPoint(a, b)) && j.Allowed(a, b)
+		(need > 0 && j.RadiusUm > 0 || j.keepsPoint(a, b, need > 0 || j.Field.SegmentClear(a, b, 1))) && j.Allowed(a, b)
 }
 
 // keepsPoint says whether solids, where NeedUm is 0, and closed zones, where RadiusUm
-// is 0, let a point go from a to b, and on from there unless it is one of Ends.
-func (j *Judge) keepsPoint(a, b geom.Point) bool {
-	if (j.NeedUm > 0 || j.Field.SegmentClear(a, b, 1)) && (j.RadiusUm > 0 || !j.Rules.HasClosed()) {
+// is 0, let a point go from a to b, and on from there unless it is one of Ends. apart says that
+// no solid is touched, as need not be known where NeedUm is more.
+func (j *Judge) keepsPoint(a, b geom.Point, apart bool) bool {
+	if (j.NeedUm > 0 || apart) && (j.RadiusUm > 0 || !j.Rules.HasClosed()) {
 		return true
 	}
 	s := j.solids(a, b)
