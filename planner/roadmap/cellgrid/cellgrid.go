@@ -205,9 +205,16 @@ func (c *Cells) moves(ctx context.Context, r geom.Rect, d *roadmap.Description) 
 	return nil
 }
 
-// leaves lists the leaves of a quadtree, and as nodes the middles of shared borders.
+// maxWindowEdges bounds the edges of a window on a quadtree; a grid has at most four a
+// node.
+const maxWindowEdges = 5 * roadmap.MaxWindow
+
+// leaves lists the leaves of a quadtree, as nodes the middles of shared borders, and as
+// edges the straight lines between those of one leaf.
 func (c *Cells) leaves(ctx context.Context, r geom.Rect, d *roadmap.Description) error {
 	lo, hi := c.window(r)
+	id := map[geom.Point]int32{}
+	var of []int32 // nodes of a leaf
 	for by := lo.Row &^ (floor.BlockSize - 1); by <= hi.Row; by += floor.BlockSize {
 		if ctx.Err() != nil {
 			return context.Cause(ctx)
@@ -225,11 +232,29 @@ func (c *Cells) leaves(ctx context.Context, r geom.Rect, d *roadmap.Description)
 					}
 				}
 				d.Cells = append(d.Cells, roadmap.Cell{Ring: ring, ClearanceUm: smallest})
+				of = of[:0]
 				for _, p := range search.Borders(c.frame, c.free, l) {
-					if len(d.Nodes) == roadmap.MaxWindow {
-						return tooMany()
+					k, ok := id[p]
+					if !ok {
+						if len(d.Nodes) == roadmap.MaxWindow {
+							return tooMany()
+						}
+						k = int32(len(d.Nodes))
+						id[p] = k
+						d.Nodes = append(d.Nodes, roadmap.Node{At: p, ClearanceUm: c.down(c.field.At(p).Um)})
 					}
-					d.Nodes = append(d.Nodes, roadmap.Node{At: p, ClearanceUm: c.down(c.field.At(p).Um)})
+					of = append(of, k)
+				}
+				if len(d.Edges)+len(of)*(len(of)-1)/2 > maxWindowEdges {
+					return fmt.Errorf("%w: more than %d edges in this area", roadmap.ErrTooLarge, maxWindowEdges)
+				}
+				for i, k := range of {
+					for _, j := range of[:i] {
+						a, b := d.Nodes[j].At, d.Nodes[k].At
+						d.Edges = append(d.Edges, roadmap.Edge{
+							A: j, B: k, Points: []geom.Point{a, b}, LengthUm: geom.Dist(a, b), ClearanceUm: c.down(c.field.Segment(a, b).Um),
+						})
+					}
 				}
 				return nil
 			})
