@@ -2,6 +2,7 @@ package anyangle
 
 import (
 	"cmp"
+	"context"
 	"slices"
 )
 
@@ -32,8 +33,13 @@ type trap struct {
 	merged             bool
 }
 
-// cutter makes cuts. It may be used again but not by two at once.
+// levelsPolled is how many heights pass between looks at the context.
+const levelsPolled = 64
+
+// cutter makes cuts. It may be used again but not by two at once. Once ctx has ended
+// what it makes is not to be used.
 type cutter struct {
+	ctx   context.Context
 	w, h  int64
 	thin  bool // passages of no width count
 	edges []edge
@@ -136,6 +142,9 @@ func (c *cutter) cutRows(w, h int64, pieces []piece, thin bool) *cut {
 	c.sorted = c.sorted[:0]
 	next := 0
 	for i := 0; i+1 < len(levels); i++ {
+		if i%levelsPolled == 0 && c.ctx.Err() != nil {
+			break // nobody will look at the cut
+		}
 		y0, y1 := levels[i], levels[i+1]
 		c.straddle = c.straddle[:0]
 		for _, p := range c.sorted {

@@ -47,6 +47,7 @@ type Mesh struct {
 	o      geom.Point // the floor's lower left corner
 	side   float64    // of a whole block
 	eps    float64    // distances below it count as none
+	crowd  int        // pieces about a block above which they are thinned out
 
 	base []int32 // of each block's components among all
 	comp []int32 // leader of each
@@ -62,15 +63,20 @@ func Build(ctx context.Context, m *floor.Map, need Need) (*Mesh, error) {
 		return nil, err
 	}
 	g := newMesh(m, need)
-	g.lean = newMesh(m, need)
+	if err := g.buildAll(ctx); err != nil {
+		return nil, err
+	}
+	return g, nil
+}
+
+// buildAll fills a mesh from scratch.
+func (g *Mesh) buildAll(ctx context.Context) error {
+	g.lean = newMesh(g.m, g.need)
 	all := make([]int, len(g.blocks))
 	for i := range all {
 		all[i] = i
 	}
-	if err := g.fill(ctx, make([]*cut, len(all)), make([]*cut, len(all)), all, all); err != nil {
-		return nil, err
-	}
-	return g, nil
+	return g.fill(ctx, make([]*cut, len(all)), make([]*cut, len(all)), all, all)
 }
 
 // Need is what the mesh is for.
@@ -92,7 +98,7 @@ func (n Need) check() error {
 func newMesh(m *floor.Map, need Need) *Mesh {
 	s := m.Settings()
 	g := &Mesh{
-		m: m, need: need,
+		m: m, need: need, crowd: crowd,
 		bx:   (s.Columns + blockCells - 1) / blockCells,
 		by:   (s.Rows + blockCells - 1) / blockCells,
 		o:    s.Vertex(0, 0),
@@ -168,7 +174,7 @@ func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []i
 	thin := g.need.ClearanceUm > 0
 	err := parallel.Each(ctx, 0, len(fresh), func() func(int) {
 		z := newRasterizer(g.need.ClearanceUm, g.m.Settings().ResolutionUm)
-		c := &cutter{}
+		c := &cutter{ctx: ctx}
 		return func(k int) {
 			i := fresh[k]
 			w, h := g.size(i)
@@ -178,6 +184,9 @@ func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []i
 				if p.touches(o.x, o.y, o.x+w, o.y+h) {
 					all = append(all, p.moved(o))
 				}
+			}
+			if thin && len(all) > g.crowd {
+				all = z.thinOut(all, w, h)
 			}
 			fills := z.fills(all, w, h)
 			cuts[i] = c.cut(w, h, all, thin)
@@ -191,6 +200,9 @@ func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []i
 			}
 		}
 	})
+	if err == nil {
+		err = ctx.Err() // a cut may have been left half done
+	}
 	if err != nil {
 		return err
 	}
