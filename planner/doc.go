@@ -13,24 +13,38 @@
 // # How a plan is made
 //
 // The two ends are judged exactly (clearance.Field.At, zones). If the straight way is
-// clear and nothing can be cheaper, it is the route. Shortest is the any-angle optimum,
-// found over a mesh of convex cells (package anyangle; optimum.go), as long as that goes
-// against no one-way zone. Else, and for balanced, a roadmap is searched whose nodes are
-// cells, or quadtree leaves of cells, that keep the required clearance as a whole; ends join it by straight pieces that are clear. Auto is then the 8-connected grid. The
-// path found is straightened by exact lines of sight (package pull): bends are
-// pulled to corners, and a corner is cut as often as that saves a fiftieth of a cell.
-// Tight stretches of balanced routes then go to the middle between what is on their sides
-// (path relaxation; pull.Relax), as long as the whole costs no more than the roadmap's path.
+// clear and nothing can be cheaper, it is the route. Else, with no roadmap named:
 //
-// Balanced counts a metre the more, up to 1 + TightWeight times, the less clearance there is
-// below the preferred one (Route.CostUm). The search judges a cell by the least clearance
-// in it; CostUm counts what is true of the route itself, and is never more.
+//   - Shortest is the any-angle optimum over a mesh of convex cells (package anyangle;
+//     optimum.go).
+//   - Balanced joins any-angle ways where there is the preferred clearance with Voronoi edges
+//     where there is less (package voronoi; roads.go, roomy.go).
+//   - Clearest does so with the floor's cap for the preferred clearance, along edges of the
+//     largest bottleneck there is.
 //
+// What comes of it goes to whole micrometres where every piece stays as clear as it was,
+// by exact lines of sight, and where it was open stays that.
+//
+// What breaks it: a one-way zone that the way goes against; an end that touches a solid or, in
+// a wedge, is within anyangle.DeltaUm of too near; a point body that prefers nothing; a
+// passage exactly as wide as the body where a bent edge's chords would cut into it; a floor too
+// large for a search (anyangle.ErrTooLarge). Then, and where a roadmap is named, cells are
+// searched that keep the required clearance as a whole (Auto: the 8-connected grid; for
+// clearest at a few clearances in turn), balanced taking a cell for tight as a whole. Ends
+// join them by straight pieces that are clear, and the path is straightened (package pull):
+// bends are pulled to corners, and a corner is cut as often as that saves a fiftieth of a cell.
 // Whole cells miss passages up to 2·sqrt 2 cells wider than the body needs
-// (Bound.WidthBiasUm). With Auto and straightening, a search that finds nothing goes on to
-// the widest chain of cells joined by exactly clear pieces and takes it when it is wide
-// enough; a named roadmap keeps its bias, and its refusal then shows a Bottleneck
-// no narrower than needed.
+// (Bound.WidthBiasUm).
+//
+// When nothing is found and no roadmap is named, the widest way over Voronoi edges says
+// why, exactly (gate.go): the gate, or the zone that closes what is wide enough; and when
+// it is wide enough after all, it is the route. Where edges cannot tell (ends that touch
+// solids, point bodies), and for named grids, a search over cells does (bottleneck.go): a named
+// roadmap keeps its bias, and its Bottleneck is no narrower than needed.
+//
+// A plan whose time budget is spent gives the best it knows (stopgap.go). Structures in
+// the making go on being made, two of each kind that nobody waits for; each ends after
+// seconds at most, whether its World is still used or not.
 //
 // A required clearance of 0 means a point: it may touch solids, slide along them and turn at
 // their corners, but not pass between two that touch (package touch).
@@ -53,31 +67,42 @@
 //	the same on a grid that was named D* Lite, kept in a Session        half as much again; mending, several
 //	                                                                    times that a cell, of few cells
 //	the same where halls are wide     A* over quadtree leaves           about 1 µs a node opened
-//	how wide the widest way is        best first by clearance           about 1 µs a cell opened
+//	the same where edges cannot tell  best first over cells             about 1 µs a cell opened
 //	the shortest way in any direction anyangle.Mesh: convex cells,      once a version and body; then about
 //	                                  carried over but for changed      0.3 µs a node opened, few nodes
 //	                                  blocks of 128x128
-//	can an old shortest be undercut   what was taken away, by ellipses  about 0.1 µs a run of cells or an edge
+//	the middle between solids         voronoi.Graph: edges up to the    once a version and margin, carried
+//	                                  floor's cap, by block of 64x64    over but for changed blocks
+//	balanced, clearest                voronoi.Roads over a mesh and a   once a version, margin and preferred
+//	                                  graph                             clearance; then a few ways over the
+//	                                                                    mesh, and about 0.1 µs an edge opened
+//	the gate of the widest way        a spanning tree of the roads      a few µs
+//	can a kept route be undercut      what changed, by ellipses         about 0.1 µs a run of cells or an edge
 //	is the route right                check.Index: cells and features   cells along the route
 //
-// One-way zones are no part of the regions: a goal they shut off is found out by searching
-// all that can be reached. A refusal's time goes into the widest way: it looks at what
-// is shut in with the end that has fewer cells about it.
+// One-way zones are no part of meshes, edges or regions: a goal they shut off is found out by
+// searching all cells that can be reached.
 //
-// Measured, CPU time of one plan in milliseconds, one run on a shared machine; the hall has 2400 by
-// 1600 cells, the route 79 m and 270,000 to 320,000 cells opened:
+// Measured, milliseconds for one plan, the best of 40 on a machine with much else to do; the
+// hall has 2400 by 1600 cells, the route is 77 to 89 m, 10,000 nodes of the mesh or 255,000
+// cells are opened. First is with nothing made yet for such a body on that version,
+// which Advance spares the next one: 50 ms for all structures of this table together
+// after a change of 1 m².
 //
-//	balanced                          63, of which searching 33
-//	shortest, any angle               6, of which searching 2
-//	shortest, 8-connected grid        31, of which searching 29 (by A*)
-//	shortest, quadtree                58
-//	no passage, with its bottleneck   190
+//	                                  again   first
+//	shortest, any angle               2.8     610
+//	balanced                          2.4     1,500
+//	clearest                          8.2     700, the graph being there
+//	no passage, with its gate         0.02    960, the graph without zones being made
+//	shortest, 8-connected grid        34      200
+//	shortest, quadtree                38      80
 //
 // # Reading the source
 //
-// plan.go is the way through; optimum.go answers shortest on meshes that meshes.go keeps,
-// and keep.go knows when an old answer stands; ends.go joins ends to roadmaps,
-// bottleneck.go explains refusals, describe.go makes legs and points, replan.go keeps or replaces old routes,
+// plan.go is the way through; optimum.go answers shortest, roomy.go balanced and clearest, on
+// structures that shelf.go keeps (meshes.go, roads.go); keep.go knows when an old answer
+// stands; ends.go joins ends to cells, gate.go and bottleneck.go explain refusals, stopgap.go
+// answers in time, describe.go makes legs and points, replan.go keeps or replaces old routes,
 // session.go keeps a named grid's search for the next answer (package dstar),
 // advise.go guides. Beneath: internal/judge decides exactly and says what a metre costs,
 // internal/touch knows points, internal/mask holds free cells, internal/roadmap searches,

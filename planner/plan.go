@@ -176,7 +176,7 @@ func (t *task) course(ctx context.Context) (*course, error) {
 		apart = no
 	}
 	if o.roomy() {
-		if c, err := t.roomy(ctx); c != nil || err != nil {
+		if c, none, err := t.roomy(ctx); c != nil || none || err != nil {
 			return c, err
 		}
 		apart = true
@@ -242,9 +242,8 @@ const clearSteps = 4
 func (t *task) clearCells(ctx context.Context) (*course, error) {
 	most := min(t.j.At(t.q.Start.At).Um, t.j.At(t.q.Goal.At).Um, t.j.Open())
 	for k := clearSteps; k >= 0; k-- {
-		n := *t
-		j := *t.j
-		n.j, n.q.Options.Preference = &j, Shortest
+		n, j := *t, t.j.Again()
+		n.j, n.q.Options.Preference = j, Shortest
 		j.NeedUm += (int64(most) - t.j.NeedUm) * int64(k) / clearSteps
 		j.RadiusUm, j.WideUm = max(0, j.NeedUm-t.q.Body.MarginUm), 0
 		if k == 0 {

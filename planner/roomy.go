@@ -20,18 +20,21 @@ func (t *task) roadsFor() roadKey {
 }
 
 // roomy finds the way of least cost over tight Voronoi edges and the open floor, or the
-// clearest; nil when a roadmap must be searched instead: there is no way, it goes against a
-// one-way zone, an end touches a solid, a point body asks for an open floor of no
-// width, or rounding puts a piece of it too near to something (a passage exactly as wide
-// as the body, with a corner to one side).
-func (t *task) roomy(ctx context.Context) (*course, error) {
+// clearest; nil when a roadmap must be searched instead: it goes against a one-way zone, an
+// end touches a solid, a point body asks for an open floor of no width, or rounding puts a
+// piece of it too near to something (a passage exactly as wide as the body, with a
+// corner to one side). none says that there is no way whatever.
+func (t *task) roomy(ctx context.Context) (c *course, none bool, err error) {
 	w, err := t.roads(ctx)
 	if err != nil {
-		return nil, unlessUnfit(err)
+		return nil, false, unlessUnfit(err)
 	}
 	var p voronoi.Path
-	var ok bool
 	s, g := t.q.Start.At, t.q.Goal.At
+	b, ok := w.Between(s, g)
+	if ok && b.ClearanceUm < float64(t.j.NeedUm-leastGapUm) {
+		return nil, true, nil
+	}
 	if t.q.Options.Preference == Clearest {
 		p, _, ok, err = w.Roomiest(ctx, s, g, t.j.NeedUm)
 	} else {
@@ -40,13 +43,13 @@ func (t *task) roomy(ctx context.Context) (*course, error) {
 	t.search.Expanded += p.Expanded
 	t.search.Queued += p.Queued
 	if err != nil || !ok {
-		return nil, unlessUnfit(err)
+		return nil, false, unlessUnfit(err)
 	}
 	pts := t.settle(&p)
 	if pts == nil {
-		return nil, nil
+		return nil, false, nil
 	}
-	return &course{pts: pts, kind: RoadmapOptimum, bias: meshBias}, nil
+	return &course{pts: pts, kind: RoadmapOptimum, bias: meshBias}, false, nil
 }
 
 // piecemeal is a polyline, with the clearance that each of its pieces is to keep.
@@ -79,6 +82,9 @@ func (t *task) settle(p *voronoi.Path) []geom.Point {
 		return nil
 	}
 	c.merge()
+	if q := c.roundAll(); q != nil {
+		return q
+	}
 	if !c.round() {
 		return nil
 	}
@@ -110,6 +116,29 @@ func (c *piecemeal) straight(from, to int) bool {
 		}
 	}
 	return c.t.j.Keeps(c.pts[from], c.pts[to], c.least[from])
+}
+
+// roundAll puts all points between the ends on the nearest whole micrometres; nil when a piece
+// is not clear then, or not open any more.
+func (c *piecemeal) roundAll() []geom.Point {
+	last := len(c.pts) - 1
+	out := make([]geom.Point, 1, last+1)
+	out[0] = c.pts[0]
+	for i := 1; i <= last; i++ {
+		p := c.pts[i]
+		if i < last {
+			p.X, p.Y = math.Round(p.X), math.Round(p.Y)
+		}
+		from := out[len(out)-1]
+		if p == from && (i < last || len(out) > 1) {
+			continue
+		}
+		if near, ok := c.t.j.Drive(from, p); !ok || near.Um < c.least[i-1] {
+			return nil
+		}
+		out = append(out, p)
+	}
+	return out
 }
 
 // round puts the points between the ends on whole micrometres, one after another, each

@@ -186,7 +186,7 @@ func TestTimeBudgetGivesTheBestKnown(t *testing.T) {
 			t.Fatalf("%+v, %v", a, err)
 		}
 		if b := a.Route.Bound; b.CutShort {
-			if a.Route.LengthUm > best.LengthUm*(1+1e-9) || b.GapShare < 0 || a.Route.CostUm > b.LowerUm*(1+b.GapShare)*(1+1e-9) {
+			if a.Route.LengthUm > best.LengthUm*(1+1e-9) || b.GapShare < 0 || a.Route.CostUm > best.LengthUm*(1+b.GapShare)*(1+1e-9) {
 				t.Errorf("%+v for %f µm; the shortest has %f", b, a.Route.CostUm, best.LengthUm)
 			}
 		}

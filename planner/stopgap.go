@@ -4,6 +4,8 @@ import (
 	"context"
 	"errors"
 	"time"
+
+	"example.com/wideberth/planner/anyangle"
 )
 
 // lateSearch bounds what a plan whose time budget is spent, with nothing found, still looks
@@ -33,8 +35,7 @@ type stopgap struct {
 // twin is a task for the same question, with counters of its own, that waits for nothing.
 func (t *task) twin() *task {
 	n := *t
-	j := *t.j
-	n.j, n.hasty, n.session, n.stopgap = &j, true, nil, nil
+	n.j, n.hasty, n.session, n.stopgap = t.j.Again(), true, nil, nil
 	n.search.Expanded, n.search.Queued = 0, 0
 	return &n
 }
@@ -88,6 +89,9 @@ func (t *task) late(ctx context.Context) (*Route, error) {
 		return nil, err
 	}
 	r.cutShort(t.stopgap.lowerUm)
+	if t.stopgap.lowerUm > 0 {
+		r.Bound.OptimumWithinUm = anyangle.DeltaUm
+	}
 	return r, nil
 }
 
@@ -96,9 +100,8 @@ func (t *task) late(ctx context.Context) (*Route, error) {
 func (r *Route) cutShort(lowerUm float64) {
 	b := &r.Bound
 	b.CutShort = true
-	b.LowerUm = max(b.LowerUm, min(lowerUm, r.LengthUm))
-	if b.LowerUm > 0 {
-		b.GapShare = max(0, r.CostUm/b.LowerUm-1)
+	if lower := max(b.LowerUm, lowerUm); lower > 0 {
+		b.GapShare = max(0, r.CostUm/lower-1)
 	}
 }
 

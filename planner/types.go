@@ -32,9 +32,15 @@ type Preference uint8
 
 // The preferences.
 const (
-	Balanced Preference = iota // metres below the preferred clearance cost more
-	Shortest                   // as short as the required clearance allows
-	Clearest                   // the largest smallest clearance there is, then the shortest
+	// Balanced: metres below the preferred clearance cost more, and are driven in the middle,
+	// along Voronoi edges. An end with less goes straight away from its nearest solid first.
+	Balanced Preference = iota
+	// Shortest: as short as the required clearance allows.
+	Shortest
+	// Clearest: the largest smallest clearance there is, up to the floor's cap, then the shortest
+	// along Voronoi edges and where there is the cap. What the ends themselves leave is not
+	// counted. By no named roadmap.
+	Clearest
 )
 
 // Roadmap is which roadmap is searched.
@@ -60,8 +66,8 @@ type Options struct {
 	Preference      Preference
 	Roadmap         Roadmap
 	KeepRoadmapPath bool // no straightening
-	// TightWeight is what a metre of a balanced route costs more where clearance is
-	// hardly what is required; see CostUm.
+	// TightWeight is what a metre of a balanced route costs more where clearance is below the
+	// preferred one.
 	TightWeight  float64
 	TightBelowUm int64 // a leg is tight where clearance is below this
 	MaxSpacingUm int64 // most distance between two route points; 0: no bound
@@ -120,7 +126,10 @@ type BoundKind uint8
 
 // The kinds of bound.
 const (
-	RoadmapOptimum       BoundKind = iota + 1 // its cost is the least over the searched roadmap
+	// RoadmapOptimum: its cost is the least over the searched roadmap; for balanced over
+	// Voronoi edges and the open floor, bent edges being drawn by chords, which are up to
+	// 3.4e-4 shorter. Clearest: its smallest clearance is the largest, its length the least.
+	RoadmapOptimum       BoundKind = iota + 1
 	AtMostRoadmapOptimum                      // straightened: at most that
 	Straight                                  // the straight line: nothing is shorter
 	AnyAngleOptimum                           // no way that keeps OptimumWithinUm more from solids and closed zones is shorter
@@ -132,9 +141,10 @@ type Bound struct {
 	LowerUm          float64 // no route whatever is shorter
 	WidthBiasUm      int64   // a passage up to this much wider than 2·Required may be missed
 	ClearanceShortUm int64   // reported clearances are at most this much below the truth
-	OptimumWithinUm  int64   // AnyAngleOptimum; else 0
+	OptimumWithinUm  int64   // AnyAngleOptimum, and where the gap is from one; else 0
 	// CutShort is set when the time budget ran out and this is the best checked route by
-	// then. No route costs less than CostUm / (1 + GapShare).
+	// then. No route that keeps OptimumWithinUm more costs less than CostUm / (1 + GapShare);
+	// how much more room a clearest one might have is not said.
 	CutShort bool
 	GapShare float64
 }
@@ -145,9 +155,9 @@ type Route struct {
 	Legs        []Leg
 	LengthUm    float64
 	DurationS   float64
-	// CostUm is what the preference minimises. Shortest: the length. Balanced: a metre costs
-	// 1 + TightWeight·k/4 where clearance is below k of the four steps PreferredUm,
-	// and down from there to, not including, Required by quarters of the way.
+	// CostUm is what the preference minimises. Shortest and clearest: the length. Balanced: a
+	// metre costs 1 + TightWeight where clearance is below PreferredUm, told apart
+	// to a millimetre (judge.TightResolution), else 1.
 	CostUm     float64
 	SmallestUm int64
 	SmallestAt geom.Point

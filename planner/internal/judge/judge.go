@@ -41,6 +41,13 @@ func New(f *clearance.Field, r *rules.Rules, requiredUm, radiusUm int64) *Judge 
 	return &Judge{Field: f, Rules: r, NeedUm: requiredUm, RadiusUm: radiusUm}
 }
 
+// Again is a judge of the same question that has counted nothing and remembers nothing.
+func (j *Judge) Again() *Judge {
+	n := New(j.Field, j.Rules, j.NeedUm, j.RadiusUm)
+	n.WideUm, n.Weight, n.Ends = j.WideUm, j.Weight, j.Ends
+	return n
+}
+
 // Place is At for the ends of pieces, of which one after another is often the same.
 func (j *Judge) Place(p geom.Point) clearance.Nearest { return j.end(p) }
 
