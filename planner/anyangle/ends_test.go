@@ -86,8 +86,8 @@ func awkwardEnd(rng *rand.Rand, corners []geom.Point, b geom.Rect) geom.Point {
 		p.X = math.Nextafter(p.X, float64(rng.IntN(3)-1)*1e18)
 		p.Y = math.Nextafter(p.Y, float64(rng.IntN(3)-1)*1e18)
 	case 1:
-		p.X += (rng.Float64() - 0.5) * 4e-4
-		p.Y += (rng.Float64() - 0.5) * 4e-4
+		p.X += (rng.Float64() - 0.5) * 2e-3
+		p.Y += (rng.Float64() - 0.5) * 2e-3
 	case 2:
 		q := corners[rng.IntN(len(corners))]
 		p = geom.Point{X: (p.X + q.X) / 2, Y: (p.Y + q.Y) / 2}

@@ -200,7 +200,7 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 // on whole micrometres, and from beside one a search would look past it.
 func (g *Mesh) settled(p geom.Point) geom.Point {
 	q := geom.Point{X: math.Round(p.X), Y: math.Round(p.Y)}
-	if math.Abs(p.X-q.X) <= g.eps && math.Abs(p.Y-q.Y) <= g.eps {
+	if math.Abs(p.X-q.X) <= 4*g.eps && math.Abs(p.Y-q.Y) <= 4*g.eps {
 		return q
 	}
 	return p
