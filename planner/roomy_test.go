@@ -1,8 +1,6 @@
 package planner_test
 
 import (
-	"context"
-	"fmt"
 	"math/rand/v2"
 	"os"
 	"testing"
@@ -165,34 +163,6 @@ func TestRoomyHeedsOneWayZones(t *testing.T) {
 		r := mustRoute(t, w, planner.Request{Body: b, Start: pose(2, 7), Goal: pose(8, 7), Options: planner.Options{Preference: pref, TightWeight: 1}})
 		if r.Bound.Kind != planner.AtMostRoadmapOptimum || geom.Metres(r.LengthUm) < 20 {
 			t.Errorf("preference %d: %f long, %+v", pref, r.LengthUm, r.Bound)
-		}
-	}
-}
-
-// Asked while nothing is made ready yet, with no time: what is known is given and said to be
-// cut short; once made, the whole answer.
-func TestTimeBudgetGivesTheBestKnown(t *testing.T) {
-	w := newWorld(t, rackHall(t, 600))
-	for _, pref := range []planner.Preference{planner.Balanced, planner.Clearest} {
-		q := hallRequest(600, planner.Auto, pref)
-		short := q
-		short.Options.Preference = planner.Shortest
-		best := mustRoute(t, w, short)
-		// The mesh is there, the roads are not: the making takes longer than a millisecond.
-		ctx, cancel := context.WithTimeoutCause(context.Background(), 2*time.Millisecond, planner.ErrTimeBudget)
-		a, err := w.Plan(ctx, q)
-		cancel()
-		if err != nil || a.Route == nil {
-			t.Fatalf("%+v, %v", a, err)
-		}
-		if b := a.Route.Bound; b.CutShort {
-			if a.Route.LengthUm > best.LengthUm*(1+1e-9) || b.GapShare < 0 || a.Route.CostUm > best.LengthUm*(1+b.GapShare)*(1+1e-9) {
-				t.Errorf("%+v for %f µm; the shortest has %f", b, a.Route.CostUm, best.LengthUm)
-			}
-		}
-		full := mustRoute(t, w, q)
-		if full.Bound.CutShort || full.CostUm > a.Route.CostUm && pref == planner.Balanced {
-			t.Errorf("%s: costs %f after %f", fmt.Sprint(pref), full.CostUm, a.Route.CostUm)
 		}
 	}
 }

@@ -130,9 +130,9 @@ const (
 	// Voronoi edges and the open floor, bent edges being drawn by chords, which are up to
 	// 3.4e-4 shorter. Clearest: its smallest clearance is the largest, its length the least.
 	RoadmapOptimum       BoundKind = iota + 1
-	AtMostRoadmapOptimum                      // straightened: at most that
-	Straight                                  // the straight line: nothing is shorter
-	AnyAngleOptimum                           // no way that keeps OptimumWithinUm more from solids and closed zones is shorter
+	AtMostRoadmapOptimum           // straightened: at most that
+	Straight                       // the straight line: nothing is shorter
+	AnyAngleOptimum                // no way that keeps OptimumWithinUm more from solids and closed zones is shorter
 )
 
 // Bound says how good a route is and what the roadmap may have missed.
