@@ -39,7 +39,7 @@ const (
 	Shortest
 	// Clearest: the largest smallest clearance there is, up to the floor's cap, then the shortest
 	// along Voronoi edges and where there is the cap. What the ends themselves leave is not
-	// counted. By no named roadmap.
+	// counted; closed zones are, as solids that are the margin farther off. By no named roadmap.
 	Clearest
 )
 
