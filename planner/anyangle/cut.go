@@ -9,6 +9,9 @@ import (
 // none stands for the border of the block where an edge is wanted.
 const none = -1
 
+// gapHere stands for a gap in a section's chain.
+const gapHere = -2
+
 // gap is a free stretch of a horizontal line, closed, and the edges that end it.
 type gap struct {
 	lo, hi   int64
@@ -22,6 +25,11 @@ type section struct {
 	gaps []gap
 	rank []int32
 	left []int32 // how many obstacles are left of each gap
+	// What covers the rest, from the left border to the right one (none): each obstacle
+	// begins within the one before it, but for those that have gapHere between them.
+	// lo and hi are where all obstacles begin and end.
+	chain  []int32
+	lo, hi []int64
 }
 
 // trap is a trapezoid between two heights.
@@ -220,9 +228,10 @@ func (c *cutter) newSection() *section {
 		s := c.free[n-1]
 		c.free = c.free[:n-1]
 		s.gaps, s.rank, s.left = s.gaps[:0], s.rank[:0], s.left[:0]
+		s.chain, s.lo, s.hi = append(s.chain[:0], none), s.lo[:0], s.hi[:0]
 		return s
 	}
-	return &section{}
+	return &section{chain: []int32{none}}
 }
 
 // sweep finds the gaps between the active obstacles at height y, just above it or
@@ -233,8 +242,10 @@ func (c *cutter) sweep(y int64, active []int32, up bool) *section {
 	for i, p := range active {
 		k := &c.span[p]
 		el, er := c.edgeAt(k.l0, k.l1, y, up), c.edgeAt(k.r0, k.r1, y, up)
-		c.ivs = append(c.ivs, interval{c.edges[el].floorAt(y), c.edges[er].ceilAt(y), el, er, int32(i)})
+		v := interval{c.edges[el].floorAt(y), c.edges[er].ceilAt(y), el, er, int32(i)}
+		c.ivs = append(c.ivs, v)
 		s.rank = append(s.rank, 0)
+		s.lo, s.hi = append(s.lo, v.lo), append(s.hi, v.hi)
 	}
 	sortIntervals(c.ivs)
 	cur, el := int64(0), int32(none)
@@ -249,15 +260,19 @@ func (c *cutter) sweep(y int64, active []int32, up bool) *section {
 		}
 		if v.lo >= cur {
 			s.gaps = append(s.gaps, gap{lo: cur, hi: v.lo, el: el, er: v.el})
+			s.chain = append(s.chain, gapHere)
 		}
 		s.rank[v.at] = int32(len(s.gaps))
 		if v.hi > cur {
 			cur, el = v.hi, v.er
+			s.chain = append(s.chain, v.at)
 		}
 	}
 	if cur <= c.w {
+		s.chain = append(s.chain, gapHere)
 		s.gaps = append(s.gaps, gap{lo: cur, hi: c.w, el: el, er: none, twoSided: beyond < len(c.ivs) && c.ivs[beyond].lo == c.w})
 	}
+	s.chain = append(s.chain, none)
 	for _, v := range c.ivs[beyond:] {
 		s.rank[v.at] = int32(len(s.gaps))
 	}

@@ -28,6 +28,9 @@ func (c *cutter) slab(y0, y1 int64, s0, s1 *section) {
 		}
 	}
 	if split < 0 {
+		split = c.pocket(y0, y1, s0, s1)
+	}
+	if split < 0 {
 		c.advance(y0, c.fresh[mark:])
 		c.fresh = c.fresh[:mark]
 		c.free = append(c.free, s0, s1)
@@ -40,6 +43,54 @@ func (c *cutter) slab(y0, y1 int64, s0, s1 *section) {
 	below, above := c.sweep(split, c.active, false), c.sweep(split, c.active, true)
 	c.slab(y0, split, s0, below)
 	c.slab(split, y1, above, s1)
+}
+
+// leastPocketUm is how high, in micrometres, free space must be that shows at neither end of
+// a slab to be looked for: as little as cells' sides may be off anyway.
+const leastPocketUm = 2 * snapUm
+
+// pocket is a height within a slab at which there may be free space that shows at neither
+// end; negative when there is none. Sides are straight within a slab, so what covers a
+// stretch between gaps at one end covers it as long as its obstacles, one after the other,
+// overlap.
+func (c *cutter) pocket(y0, y1 int64, s0, s1 *section) int64 {
+	if y1-y0 <= leastPocketUm {
+		return none
+	}
+	up, down := c.holds(s0, s1), c.holds(s1, s0)
+	h := float64(y1 - y0)
+	if from, to := up*h, h-down*h; to-from > leastPocketUm {
+		return min(max(y0+int64((from+to)/2), y0+1), y1-1)
+	}
+	return none
+}
+
+// holds is for how much of the way from section a to section b of a slab the chain of a
+// covers what it does.
+func (c *cutter) holds(a, b *section) float64 {
+	share := 1.0
+	for i := 1; i < len(a.chain); i++ {
+		p, q := a.chain[i-1], a.chain[i]
+		if p == gapHere || q == gapHere {
+			continue
+		}
+		// By how much q begins within p, at either end.
+		var in0, in1 int64
+		switch {
+		case p == none && q == none:
+			continue
+		case p == none:
+			in0, in1 = -a.lo[q], -b.lo[q]
+		case q == none:
+			in0, in1 = a.hi[p]-c.w, b.hi[p]-c.w
+		default:
+			in0, in1 = a.hi[p]-a.lo[q], b.hi[p]-b.lo[q]
+		}
+		if in1 < 0 {
+			share = min(share, float64(in0)/float64(in0-in1))
+		}
+	}
+	return share
 }
 
 // closing is the height at which to halve a slab for a gap at its bottom (or at
