@@ -53,6 +53,9 @@ const ServiceConfig = `{
       {"service": "wideberth.v1.RouteService", "method": "Plan"},
       {"service": "wideberth.v1.RouteService", "method": "Replan"},
       {"service": "wideberth.v1.RouteService", "method": "PlanMany"},
+      {"service": "wideberth.v1.RoadmapService", "method": "ShowRoadmap"},
+      {"service": "wideberth.v1.RoadmapService", "method": "CompareRoadmaps"},
+      {"service": "wideberth.v1.RoadmapService", "method": "ShowGrownSolids"},
       {"service": "wideberth.v1.GuideService", "method": "GuideOnce"}
     ],
     "retryPolicy": {
@@ -67,11 +70,12 @@ const ServiceConfig = `{
 
 // Client speaks to one wideberth service. It is safe for concurrent use.
 type Client struct {
-	conn   *grpc.ClientConn
-	cfg    config
-	floors wideberthv1.FloorServiceClient
-	routes wideberthv1.RouteServiceClient
-	guides wideberthv1.GuideServiceClient
+	conn     *grpc.ClientConn
+	cfg      config
+	floors   wideberthv1.FloorServiceClient
+	routes   wideberthv1.RouteServiceClient
+	guides   wideberthv1.GuideServiceClient
+	roadmaps wideberthv1.RoadmapServiceClient
 }
 
 // Dial makes a Client for the service at addr, "host:port" or "unix:/path". It
@@ -122,6 +126,7 @@ func Dial(addr string, opts ...Option) (*Client, error) {
 	c.floors = wideberthv1.NewFloorServiceClient(c.conn)
 	c.routes = wideberthv1.NewRouteServiceClient(c.conn)
 	c.guides = wideberthv1.NewGuideServiceClient(c.conn)
+	c.roadmaps = wideberthv1.NewRoadmapServiceClient(c.conn)
 	return c, nil
 }
 

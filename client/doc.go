@@ -14,6 +14,7 @@
 //   - streams that are taken up again where they broke: Watch and Guide,
 //   - whole floors put together and checked: ReadFloor,
 //   - many routes at once, each pair answered: PlanMany,
+//   - roadmaps and grown solids put together: ShowRoadmap, ShowGrownSolids,
 //   - how long a route may still be acted on: Validity.
 //
 // Errors are gRPC statuses, wrapped: status.Code and ReasonOf read them. What a

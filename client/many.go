@@ -12,8 +12,8 @@ import (
 	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
 )
 
-// defaultManyBudgetS is what a time_budget_s of 0 in a PlanManyRequest asks for, from
-// the contract.
+// defaultManyBudgetS is what a time_budget_s of 0 in a PlanManyRequest and in a
+// CompareRoadmapsRequest asks for, from the contract.
 const defaultManyBudgetS = 60
 
 // ManyAnswer is the answer for one pair of a PlanMany.

@@ -15,13 +15,14 @@ type Timeouts struct {
 	// GetVersion, CompareVersions and GuideOnce. Default 10 s. What a
 	// VersionSelector asks to wait comes on top.
 	Read time.Duration
-	// Plan bounds Plan, Replan and PlanMany. Default 15 s. The request's time budget
-	// (PlanMany: the one for all pairs, 60 s where there is none) and what its
+	// Plan bounds Plan, Replan, PlanMany and CompareRoadmaps. Default 15 s. The request's
+	// time budget (the latter two: the one for all, 60 s where there is none) and what its
 	// VersionSelector asks to wait come on top.
 	Plan time.Duration
 	// Push bounds CreateFloor, PushPatch and RestoreVersion. Default 30 s.
 	Push time.Duration
-	// Content bounds ReadFloor and Stations, from the first message to the last. Default 2 min.
+	// Content bounds ReadFloor, Stations, ShowRoadmap and ShowGrownSolids, from the first
+	// message to the last. Default 2 min.
 	Content time.Duration
 }
 

@@ -193,6 +193,9 @@ func (c *Client) timeout(req any) time.Duration {
 	case *wideberthv1.PlanManyRequest:
 		budget := seconds(cmp.Or(m.GetTimeBudgetS(), defaultManyBudgetS))
 		return t.Plan + budget + seconds(m.GetVersion().GetMaxWaitS())
+	case *wideberthv1.CompareRoadmapsRequest:
+		budget := seconds(cmp.Or(m.GetTimeBudgetS(), defaultManyBudgetS))
+		return t.Plan + budget + seconds(m.GetVersion().GetMaxWaitS())
 	case *wideberthv1.GetVersionRequest:
 		return t.Read + seconds(m.GetVersion().GetMaxWaitS())
 	case *wideberthv1.CreateFloorRequest, *wideberthv1.PushPatchRequest, *wideberthv1.RestoreVersionRequest:

@@ -244,6 +244,7 @@ func TestServiceConfigNamesEveryMethodThatMayBeSentAgain(t *testing.T) {
 		wideberthv1.File_wideberth_v1_floor_service_proto,
 		wideberthv1.File_wideberth_v1_route_service_proto,
 		wideberthv1.File_wideberth_v1_guide_service_proto,
+		wideberthv1.File_wideberth_v1_roadmap_service_proto,
 	} {
 		for i := range file.Services().Len() {
 			svc := file.Services().Get(i)

@@ -139,6 +139,8 @@ func (s *Server) bound(m any) time.Duration {
 		if r.Options != nil {
 			d = prepareGrace + s.cfg.PlanWait + s.budget(r.Options).Duration
 		}
+	case *pb.CompareRoadmapsRequest:
+		d = prepareGrace + s.cfg.PlanWait + compareBudget(r)
 	}
 	if r, ok := m.(interface{ GetVersion() *pb.VersionSelector }); ok {
 		d += seconds(r.GetVersion().GetMaxWaitS())

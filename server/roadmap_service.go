@@ -270,11 +270,15 @@ var shownRoadmaps = []pb.Roadmap{
 	pb.Roadmap_ROADMAP_VORONOI_GRAPH, pb.Roadmap_ROADMAP_EXACT_CELLS,
 }
 
-func (v roadmapService) CompareRoadmaps(ctx context.Context, r *pb.CompareRoadmapsRequest) (*pb.CompareRoadmapsResponse, error) {
-	budget := defaultManyBudget
+// compareBudget is how long a comparison may take.
+func compareBudget(r *pb.CompareRoadmapsRequest) time.Duration {
 	if r.TimeBudgetS > 0 {
-		budget = seconds(r.TimeBudgetS)
+		return seconds(r.TimeBudgetS)
 	}
+	return defaultManyBudget
+}
+
+func (v roadmapService) CompareRoadmaps(ctx context.Context, r *pb.CompareRoadmapsRequest) (*pb.CompareRoadmapsResponse, error) {
 	var c comparison
 	p, about, err := v.workplace(ctx, r.Floor, r.Version, r.Body, func(snap *mapstore.Snapshot, f *faults) (err error) {
 		if c.start, err = placeOn(r.Start, snap, root.at("start"), f); err == nil {
@@ -286,7 +290,7 @@ func (v roadmapService) CompareRoadmaps(ctx context.Context, r *pb.CompareRoadma
 		return nil, statusOf(ctx, err, about)
 	}
 	defer p.leave()
-	ctx, cancel := timed(ctx, budget, planner.ErrTimeBudget)
+	ctx, cancel := timed(ctx, compareBudget(r), planner.ErrTimeBudget)
 	defer cancel()
 	c.roadmapService, c.workplace = v, p
 	out, err := c.run(ctx, r.Roadmaps)

@@ -17,6 +17,7 @@ type drawing struct {
 	room     room
 	change   change
 	patterns int
+	plotted  plotted // of the roadmap, what the plan has
 	coarse   float64 // side in metres of a raster cell as drawn
 }
 
@@ -48,6 +49,9 @@ func newDrawing(s Scene) *drawing {
 // sheet draws everything.
 func (d *drawing) sheet() {
 	plan := planFrame(d.area)
+	if d.scene.Roadmap != nil {
+		d.plotted = plot(d.scene.Roadmap, plan)
+	}
 	panels := d.panels(plan.top + plan.height() + panelGap)
 	height := panels.bottom + 66
 	d.out.raw(`<?xml version="1.0" encoding="UTF-8"?>`)
@@ -89,6 +93,9 @@ func (d *drawing) plan(f frame, zoom float64) {
 			d.zone(f, ft.GetZone())
 		}
 	}
+	if d.scene.Grown != nil {
+		d.out.path(grownPath(f, d.scene), "grown", "")
+	}
 	unknown := cellRects(d.scene.Floor, f, unknownCell(d.scene.Floor))
 	d.out.path(boxesPath(f, unknown.rects), "unknown", "")
 	occupied := cellRects(d.scene.Floor, f, solidCell(d.scene.Floor))
@@ -103,6 +110,12 @@ func (d *drawing) plan(f frame, zoom float64) {
 	}
 	if d.scene.Before != nil {
 		d.changes(f)
+	}
+	if d.scene.Grown != nil {
+		d.out.path(grownPath(f, d.scene), "grown-line", "")
+	}
+	if d.scene.Roadmap != nil {
+		d.roadmap(f, zoom)
 	}
 	d.routeLines(f, zoom)
 	if zoom == 1 {

@@ -42,10 +42,15 @@ func (d *drawing) signs() []sign {
 		})
 	}
 	if d.scene.Route != nil || d.scene.Start != nil || d.scene.Goal != nil {
-		add("start, goal", func(o *svg, x, y float64) {
-			o.circle(x+8, y, 6, "end", "")
-			o.circle(x+signWidth-8, y, 7.5, "goal", "")
-			o.circle(x+signWidth-8, y, 3, "floor", "")
+		add("start, goal", startGoal)
+	}
+	if d.scene.Roadmap != nil {
+		d.roadmapSigns(add)
+	}
+	if d.scene.Grown != nil {
+		add("grown: no place for the centre", func(o *svg, x, y float64) {
+			o.rect(x, y-7, signWidth, 14, "grown", "")
+			o.rect(x, y-7, signWidth, 14, "grown-line", "")
 		})
 	}
 	if d.scene.Before != nil {
@@ -84,6 +89,12 @@ func (d *drawing) signs() []sign {
 		})
 	}
 	return out
+}
+
+func startGoal(o *svg, x, y float64) {
+	o.circle(x+8, y, 6, "end", "")
+	o.circle(x+signWidth-8, y, 7.5, "goal", "")
+	o.circle(x+signWidth-8, y, 3, "floor", "")
 }
 
 // kinds is which kinds of thing are on the drawn part of the floor.

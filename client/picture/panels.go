@@ -54,6 +54,9 @@ func (d *drawing) panels(top float64) panels {
 			left: sheetWidth - sheetMargin - detailWidth, top: top + 24, k: detailWidth / w, id: "detail",
 		}
 	}
+	if b, ok := d.extract(); ok {
+		p.detail = &frame{area: b, left: sheetWidth - sheetMargin - detailWidth, top: top + 24, k: detailWidth / b.width(), id: "detail"}
+	}
 	rows := max(float64(len(p.signs)), float64(len(p.facts)))
 	p.bottom = top + 58 + rows*lineHeight
 	if p.detail != nil {
@@ -88,7 +91,9 @@ func (d *drawing) drawPanels(p panels, plan frame) {
 	}
 	if p.detail != nil {
 		head := "Enlarged: the smallest clearance"
-		if d.scene.Route == nil {
+		if d.scene.Roadmap != nil {
+			head = "Enlarged: at the tightest node"
+		} else if d.scene.Route == nil {
 			head = "Enlarged: where it does not fit"
 		}
 		d.out.text(p.detail.left, p.top+14, "head", "", head)
@@ -102,7 +107,8 @@ func (d *drawing) drawPanels(p panels, plan frame) {
 // factsWidth is how wide the words may be.
 func (d *drawing) factsWidth() float64 {
 	w := planWidth - legendWidth - panelGap
-	if _, ok := d.focus(); ok {
+	_, enlarged := d.extract()
+	if _, ok := d.focus(); ok || enlarged {
 		w -= detailWidth + panelGap
 	}
 	return w
@@ -138,12 +144,13 @@ func (d *drawing) detailLabels(f frame) {
 	p := d.placer(f)
 	paper := f.paper()
 	p.taken = append(p.taken, box{paper.maxX - f.width()/3 - 30, paper.maxY - 40, paper.maxX, paper.maxY}) // the scale bar's
-	o, _ := d.focus()
-	mark := o.radius
-	if b := d.body(); b != nil {
-		mark = max(mark, b.GetRadiusM()+b.GetMarginM())
+	if o, ok := d.focus(); ok {
+		mark := o.radius
+		if b := d.body(); b != nil {
+			mark = max(mark, b.GetRadiusM()+b.GetMarginM())
+		}
+		p.add(label{at: f.at(o.at), gap: mark*f.k + 6, class: "figure", size: figureSize, lines: []string{o.short}})
 	}
-	p.add(label{at: f.at(o.at), gap: mark*f.k + 6, class: "figure", size: figureSize, lines: []string{o.short}})
 	near := f.area
 	wanted := d.wantedNames()
 	for _, ft := range d.scene.Floor.Features {
@@ -229,6 +236,12 @@ func (d *drawing) facts() []fact {
 		for _, l := range d.changeLines() {
 			say(l)
 		}
+	}
+	if d.scene.Roadmap != nil {
+		d.roadmapFacts(head, say)
+	}
+	if d.scene.Grown != nil {
+		grownFacts(d.scene.Grown, head, say)
 	}
 	if len(out) == 0 {
 		st := d.scene.Floor.Settings

@@ -46,6 +46,12 @@ type Scene struct {
 	Body        *wideberthv1.Body
 	Start, Goal *wideberthv1.Pose
 
+	// Roadmap is drawn over the floor, as far as it can be read: see the words that the
+	// sheet has about it. Its header's body is the sheet's.
+	Roadmap *client.Roadmap
+	// Grown is drawn about the solids.
+	Grown *client.Grown
+
 	// Part is the part of the floor to draw. Nil means all.
 	Part *wideberthv1.Area
 }
@@ -101,6 +107,16 @@ func (s *Scene) validate() error {
 		route *wideberthv1.Route
 	}{{"route", s.Route}, {"previous", s.Previous}} {
 		if err := checkRoute(r.name, r.route); err != nil {
+			return err
+		}
+	}
+	if s.Roadmap != nil {
+		if err := checkRoadmap(s.Roadmap); err != nil {
+			return err
+		}
+	}
+	if s.Grown != nil {
+		if err := checkGrown(s.Grown); err != nil {
 			return err
 		}
 	}

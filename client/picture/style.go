@@ -77,6 +77,20 @@ const styleSheet = `text{font-family:` + fontFamily + `;fill:` + inkColour + `;f
 .removed-cells{fill:url(#removed)}
 .added-line{fill:none;stroke:` + addedColour + `;stroke-width:1.6}
 .removed{fill:url(#removed);stroke:` + removedColour + `;stroke-width:1.6;stroke-dasharray:6 3;fill-rule:evenodd}
+.roadmap-cell{fill:none;stroke:#7d8790;stroke-width:0.7;stroke-linejoin:round}
+.roadmap-thin{fill:#e3e6e9;stroke:none}
+.roadmap-node{fill:` + inkColour + `;stroke:none}
+.step-0{fill:none;stroke:#b0400a;stroke-linejoin:round}
+.step-1{fill:none;stroke:` + tightColour + `;stroke-linejoin:round}
+.step-2{fill:none;stroke:#2a9db0;stroke-linejoin:round}
+.step-3{fill:none;stroke:` + openColour + `;stroke-linejoin:round}
+.step-0-area{fill:#e58a55}
+.step-1-area{fill:#f6cfa6}
+.step-2-area{fill:#cdebf0}
+.step-3-area{fill:#8fb4da}
+.blind{fill:none;stroke:#d79ad3;stroke-width:7;stroke-linejoin:round;stroke-linecap:butt;stroke-dasharray:5 4}
+.grown{fill:` + bandTight + `;fill-rule:evenodd;stroke:none}
+.grown-line{fill:none;stroke:` + barColour + `;stroke-width:1.2}
 .plate{fill:` + paperColour + `;opacity:0.88}
 .scale{fill:` + inkColour + `}
 .rule{stroke:#c9c6bd;stroke-width:1}`

@@ -28,16 +28,19 @@ func numbers(text string) ([]float64, error) {
 
 // place reads an end of a route: a station's name, or x,y or x,y,heading in metres
 // and radians. Stations' names have no comma.
-func place(flag, text string) (*wideberthv1.Place, error) {
+func place(flag, text string) (*wideberthv1.Place, error) { return placeArg("--"+flag, text) }
+
+// placeArg is place for what name stands for on the command line.
+func placeArg(name, text string) (*wideberthv1.Place, error) {
 	if text == "" {
-		return nil, usagef("--%s is missing: a station, or x,y or x,y,heading", flag)
+		return nil, usagef("%s is missing: a station, or x,y or x,y,heading", name)
 	}
 	if !strings.Contains(text, ",") {
 		return &wideberthv1.Place{Where: &wideberthv1.Place_Station{Station: text}}, nil
 	}
 	v, err := numbers(text)
 	if err != nil || len(v) > 3 {
-		return nil, usagef("--%s is %q, want a station, or x,y or x,y,heading", flag, text)
+		return nil, usagef("%s is %q, want a station, or x,y or x,y,heading", name, text)
 	}
 	pose := &wideberthv1.Pose{XM: v[0], YM: v[1]}
 	if len(v) == 3 {
@@ -71,8 +74,12 @@ func choice(flag, text, prefix string, values map[string]int32, want string) (in
 // preferenceNames are what --preference takes.
 const preferenceNames = "shortest, balanced or clearest"
 
-// roadmapNames are what --roadmap takes.
-const roadmapNames = "auto, grid4, grid8, quadtree or convex-cells"
+const (
+	// roadmapNames are what plan's --roadmap takes.
+	roadmapNames = "auto, grid4, grid8, quadtree, convex-cells, visibility-graph, meadow-map, voronoi-graph or exact-cells"
+	// shownNames are the roadmaps that can be shown and compared.
+	shownNames = "grid4, grid8, quadtree, visibility-graph, meadow-map, voronoi-graph or exact-cells"
+)
 
 // roadmap reads --roadmap; auto leaves it to the service.
 func roadmap(text string) (wideberthv1.Roadmap, error) {
@@ -81,6 +88,32 @@ func roadmap(text string) (wideberthv1.Roadmap, error) {
 	}
 	v, err := choice("roadmap", strings.ReplaceAll(text, "-", "_"), "ROADMAP_", wideberthv1.Roadmap_value, roadmapNames)
 	return wideberthv1.Roadmap(v), err
+}
+
+// shown reads the name of a roadmap that can be shown.
+func shown(text string) (wideberthv1.Roadmap, error) {
+	if text == "" {
+		return 0, usagef("--roadmap is missing: %s", shownNames)
+	}
+	v, err := choice("roadmap", strings.ReplaceAll(text, "-", "_"), "ROADMAP_", wideberthv1.Roadmap_value, shownNames)
+	if wideberthv1.Roadmap(v) == wideberthv1.Roadmap_ROADMAP_CONVEX_CELLS {
+		return 0, usagef("--roadmap is %q, want %s", text, shownNames)
+	}
+	return wideberthv1.Roadmap(v), err
+}
+
+// roadmapWord is a roadmap's name as --roadmap takes it.
+func roadmapWord(k wideberthv1.Roadmap) string {
+	return strings.ReplaceAll(word(k, "ROADMAP_"), " ", "-")
+}
+
+// areaOf reads a rectangle, min_x,min_y,max_x,max_y in metres.
+func areaOf(text string) (*wideberthv1.Area, error) {
+	v, err := numbers(text)
+	if err != nil || len(v) != 4 || v[0] >= v[2] || v[1] >= v[3] {
+		return nil, usagef("--area is %q, want min_x,min_y,max_x,max_y in metres, min below max", text)
+	}
+	return &wideberthv1.Area{MinXM: v[0], MinYM: v[1], MaxXM: v[2], MaxYM: v[3]}, nil
 }
 
 // splitPath gives a file's folder and name.

@@ -21,11 +21,17 @@ type planFlags struct {
 
 // questionFlags are for what body a route is, what it should be, and on which version.
 type questionFlags struct {
-	body, preference, roadmap              string
-	radius, margin, preferred, tightWeight float64
-	budget, spacing                        float64
-	shortest, balanced, clearest, keep     bool
-	version                                int64
+	bodyFlags
+	preference, roadmap                string
+	tightWeight, budget, spacing       float64
+	shortest, balanced, clearest, keep bool
+}
+
+// bodyFlags are a body and the version it is on.
+type bodyFlags struct {
+	body                               string
+	radius, margin, preferred, sensing float64
+	version                            int64
 }
 
 func (a *app) plan() *cobra.Command {
@@ -83,22 +89,57 @@ func (a *app) plan() *cobra.Command {
 
 // add gives a command the flags.
 func (p *questionFlags) add(cmd *cobra.Command) {
+	p.bodyFlags.add(cmd, "plan on this `version`; default the head")
 	f := cmd.Flags()
-	f.StringVar(&p.body, "body", "", "read the body from this `file`")
-	f.Float64Var(&p.radius, "radius", 0, "half the body's width, load included, in `metres`")
-	f.Float64Var(&p.margin, "margin", 0, "kept free beyond the radius, in `metres`")
-	f.Float64Var(&p.preferred, "preferred", 0, "clearance to keep where the floor allows, in `metres`")
 	f.StringVar(&p.preference, "preference", "balanced", "what the route should be: "+preferenceNames)
 	f.BoolVar(&p.shortest, "shortest", false, "the same as --preference shortest")
 	f.BoolVar(&p.balanced, "balanced", false, "the same as --preference balanced")
 	f.BoolVar(&p.clearest, "clearest", false, "the same as --preference clearest")
 	f.Float64Var(&p.tightWeight, "tight-weight", 0, "balanced: how much more a metre below the preferred clearance costs; 0 asks for 1")
-	f.StringVar(&p.roadmap, "roadmap", "auto", "which roadmap to search: "+roadmapNames+"; convex-cells for --shortest alone, auto alone for --clearest")
+	f.StringVar(&p.roadmap, "roadmap", "auto", "which roadmap to search: "+roadmapNames+"; convex-cells and those after it for --shortest alone, auto alone for --clearest")
 	f.BoolVar(&p.keep, "keep-roadmap-path", false, "the roadmap's own path, without straightening")
 	f.Float64Var(&p.spacing, "max-spacing", 0, "the most `metres` between two points; 0 sends points where they matter")
 	f.Float64Var(&p.budget, "time-budget", 0, "how many `seconds` the answer may take; when they run out it is the best route found by then; 0 asks for the server's own bound")
-	f.Int64Var(&p.version, "version", 0, "plan on this `version`; default the head")
 	cmd.MarkFlagsMutuallyExclusive("shortest", "balanced", "clearest", "preference")
+}
+
+// add gives a command the flags.
+func (p *bodyFlags) add(cmd *cobra.Command, version string) {
+	f := cmd.Flags()
+	f.StringVar(&p.body, "body", "", "read the body from this `file`")
+	f.Float64Var(&p.radius, "radius", 0, "half the body's width, load included, in `metres`")
+	f.Float64Var(&p.margin, "margin", 0, "kept free beyond the radius, in `metres`")
+	f.Float64Var(&p.preferred, "preferred", 0, "clearance to keep where the floor allows, in `metres`")
+	f.Int64Var(&p.version, "version", 0, version)
+}
+
+// read gives the body and the version that the flags name; a nil selector for the head.
+func (p *bodyFlags) read(cmd *cobra.Command) (body *wideberthv1.Body, version *wideberthv1.VersionSelector, err error) {
+	given := cmd.Flags().Changed
+	body = &wideberthv1.Body{}
+	if p.body != "" {
+		if body, err = readBody(p.body); err != nil {
+			return nil, nil, err
+		}
+	} else if !given("radius") {
+		return nil, nil, usagef("--radius or --body is missing: it is for a body")
+	}
+	for _, f := range []struct {
+		name string
+		from float64
+		to   *float64
+	}{{"radius", p.radius, &body.RadiusM}, {"margin", p.margin, &body.MarginM}, {"preferred", p.preferred, &body.PreferredClearanceM}, {"sensing", p.sensing, &body.SensingRangeM}} {
+		if given(f.name) {
+			*f.to = f.from
+		}
+	}
+	if given("version") {
+		if p.version < 1 {
+			return nil, nil, usagef("--version is %d, want 1 or more", p.version)
+		}
+		version = client.Pinned(p.version)
+	}
+	return body, version, nil
 }
 
 // caution says beside every answer what it is not.
@@ -142,30 +183,9 @@ func (p *questionFlags) question(cmd *cobra.Command, floor string) (*wideberthv1
 	if err != nil {
 		return nil, err
 	}
-	given := cmd.Flags().Changed
-	body := &wideberthv1.Body{}
-	if p.body != "" {
-		if body, err = readBody(p.body); err != nil {
-			return nil, err
-		}
-	} else if !given("radius") {
-		return nil, usagef("--radius or --body is missing: a route is for a body")
-	}
-	for _, f := range []struct {
-		name string
-		from float64
-		to   *float64
-	}{{"radius", p.radius, &body.RadiusM}, {"margin", p.margin, &body.MarginM}, {"preferred", p.preferred, &body.PreferredClearanceM}} {
-		if given(f.name) {
-			*f.to = f.from
-		}
-	}
-	var version *wideberthv1.VersionSelector
-	if given("version") {
-		if p.version < 1 {
-			return nil, usagef("--version is %d, want 1 or more", p.version)
-		}
-		version = client.Pinned(p.version)
+	body, version, err := p.bodyFlags.read(cmd)
+	if err != nil {
+		return nil, err
 	}
 	return &wideberthv1.PlanRequest{
 		Floor: floor, Version: version, Body: body,

@@ -76,7 +76,7 @@ func (a *app) root() *cobra.Command {
 	f.BoolVar(&a.plaintext, "plaintext", false, "speak without TLS to a server that is not on this machine")
 	f.StringVar(&a.ca, "ca", "", "speak TLS and trust the certificates in this PEM `file`")
 	root.MarkFlagsMutuallyExclusive("plaintext", "ca")
-	root.AddCommand(a.floors(), a.push(), a.versions(), a.compare(), a.restore(), a.watch(), a.plan(), a.reach(), a.trial(), a.version())
+	root.AddCommand(a.floors(), a.push(), a.versions(), a.compare(), a.restore(), a.watch(), a.plan(), a.reach(), a.roadmap(), a.compareRoadmaps(), a.grown(), a.trial(), a.version())
 	return root
 }
 
