@@ -83,7 +83,13 @@ func (p *workplace) area(a *pb.Area) geom.Rect {
 func (v roadmapService) ShowRoadmap(r *pb.ShowRoadmapRequest, stream grpc.ServerStreamingServer[pb.ShowRoadmapResponse]) error {
 	ctx, cancel := timed(stream.Context(), roadmapTimeout, context.DeadlineExceeded)
 	defer cancel()
-	p, about, err := v.workplace(ctx, r.Floor, r.Version, r.Body, nil)
+	p, about, err := v.workplace(ctx, r.Floor, r.Version, r.Body, func(snap *mapstore.Snapshot, f *faults) error {
+		if b := snap.Map.Bounds(); r.Area != nil && !wire.AreaIn(r.Area).Intersects(b) {
+			f.add(root.at("area"), "is off the floor, wanted an area that meets its bounds, x %v to %v and y %v to %v",
+				geom.Metres(b.Min.X), geom.Metres(b.Max.X), geom.Metres(b.Min.Y), geom.Metres(b.Max.Y))
+		}
+		return nil
+	})
 	if err != nil {
 		return statusOf(ctx, err, about)
 	}

@@ -136,6 +136,9 @@ func (c *Cells) Describe() roadmap.Description {
 
 // DescribeIn describes what meets area.
 func (c *Cells) DescribeIn(ctx context.Context, area geom.Rect) (roadmap.Description, error) {
+	if c.kind != Quadtree && c.crowded(area) {
+		return roadmap.Description{}, tooMany()
+	}
 	d, err := c.describe(ctx, area)
 	if errors.Is(err, roadmap.ErrTooLarge) || err == nil {
 		return d, err
@@ -163,6 +166,24 @@ func (c *Cells) window(r geom.Rect) (lo, hi search.Cell) {
 	lo, _ = c.frame.CellAt(r.Min)
 	hi, _ = c.frame.CellAt(r.Max)
 	return lo, hi
+}
+
+// crowded tells, before anything is described, whether a grid has too many nodes in area.
+func (c *Cells) crowded(area geom.Rect) bool {
+	r := area.Intersect(c.field.Bounds())
+	if r.IsEmpty() {
+		return false
+	}
+	lo, hi := c.window(r)
+	n := 0
+	for y := lo.Row; y <= hi.Row && n <= roadmap.MaxWindow; y++ {
+		for x := lo.Col; x <= hi.Col; x++ {
+			if c.free.Free(x, y) {
+				n++
+			}
+		}
+	}
+	return n > roadmap.MaxWindow
 }
 
 func tooMany() error {
