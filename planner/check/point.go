@@ -96,16 +96,22 @@ func (w *walker) touched(a, b geom.Point, outlines []outline, cells bool) (place
 		}
 		return max(0, min(long, ((p.X-a.X)*(b.X-a.X)+(p.Y-a.Y)*(b.Y-a.Y))/long))
 	}
-	add := func(p geom.Point) { places = append(places, at(p)) }
+	add := func(p geom.Point) float64 {
+		s := at(p)
+		places = append(places, s)
+		return s
+	}
 	if cells {
 		w.cellsAbout(a, b, func(x0, y0, x1, y1 float64) {
 			if boxDistance(x0+SlackUm, y0+SlackUm, x1-SlackUm, y1-SlackUm, a, b) == 0 {
 				through = "a cell"
 			}
+			from, to := math.Inf(1), math.Inf(-1)
 			for _, c := range [4]geom.Point{{X: x0, Y: y0}, {X: x1, Y: y0}, {X: x1, Y: y1}, {X: x0, Y: y1}} {
-				add(c)
+				s := add(c)
+				from, to = min(from, s), max(to, s)
 			}
-			add(geom.Point{X: (x0 + x1) / 2, Y: (y0 + y1) / 2})
+			places = append(places, (from+to)/2) // where the way runs along a side
 		})
 	}
 	lo, hi := extent(a, b)
@@ -123,9 +129,8 @@ func (w *walker) touched(a, b geom.Point, outlines []outline, cells bool) (place
 		}
 		for _, c := range s.Chains {
 			for k, p := range c {
-				add(p)
-				q := c[(k+1)%len(c)]
-				add(geom.Point{X: (p.X + q.X) / 2, Y: (p.Y + q.Y) / 2})
+				from, to := add(p), at(c[(k+1)%len(c)])
+				places = append(places, (from+to)/2) // where the way runs along the edge
 			}
 		}
 	}
