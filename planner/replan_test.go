@@ -70,7 +70,20 @@ func TestLaw7ReplanNeverDearer(t *testing.T) {
 		case got.Route == nil || want.Route == nil:
 			return
 		}
-		if got.Route.CostUm > want.Route.CostUm*(1+1e-9) {
+		if q.Request.Options.Preference == planner.Clearest {
+			// Room comes first. Rounding to whole micrometres may take two off it.
+			room, fresh := w.RoomOf(q.Request, points(got.Route)), w.RoomOf(q.Request, points(want.Route))
+			if room < fresh-2 {
+				t.Fatalf("%f µm of room, a fresh plan has %f", room, fresh)
+			}
+			if room > fresh {
+				return
+			}
+		}
+		// A pose counts as on a route up to 1.5 µm off it, and a kept route's middle line as drawn
+		// from another end.
+		slack := 1e-9*want.Route.CostUm + 2*1.5*(1+q.Request.Options.TightWeight)
+		if got.Route.CostUm > want.Route.CostUm+slack {
 			t.Fatalf("costs %f, a fresh plan %f", got.Route.CostUm, want.Route.CostUm)
 		}
 		if got.Kept {
