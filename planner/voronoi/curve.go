@@ -33,7 +33,7 @@ type curve struct {
 	focal      float64 // not linear: half the distance of the foci; parabola: h/2
 }
 
-// Thresholds below which two sites have no curve between them.
+// Thresholds below which two sites have no curve between them, and what is steep.
 const (
 	// leastFocusUm: the outline of one touches the other's from inside; their nearest
 	// places agree wherever they are equally far.
@@ -41,6 +41,8 @@ const (
 	// leastTurn is the least angle, in radians, between two sides that tells them from
 	// one side.
 	leastTurn = 1e-9
+	// steep is how far a steep curve goes for a micrometre of its parameter.
+	steep = 16
 )
 
 // bisector is the curve between two sites. mid is a place near what is wanted of it.
@@ -129,6 +131,24 @@ func (c *curve) tiny(s0, s1 float64) bool {
 // param is the s of the place next to p across u.
 func (c *curve) param(p vec) float64 { return p.sub(c.o).dot(c.u) }
 
+// settle takes Newton steps along a steep curve from s, a place that sites i, one of the
+// curve's own, and k are as far from: there a rounded place says little about its parameter.
+func (c *curve) settle(s float64, i, k *site) float64 {
+	for range 2 {
+		g := c.toward(s)
+		if g.dot(g) < steep*steep {
+			return s
+		}
+		p := c.at(s)
+		rate := k.away(p).sub(i.away(p)).dot(g)
+		if math.Abs(rate) < leastTurn*g.length() {
+			return s
+		}
+		s -= (k.dist(p) - i.dist(p)) / rate
+	}
+	return s
+}
+
 // clearance is the distance from the curve's two sites at s.
 func (c *curve) clearance(s float64) float64 {
 	switch {
@@ -169,13 +189,20 @@ func (c *curve) crossings(out []float64, n vec, off float64) []float64 {
 	case parabola:
 		return quadratic(out, n.dot(c.w)/(2*c.h), k1, k0)
 	case hyperbola:
-		// (k0 + k1 s)² = m² (1 + s²/b²), m = a w·n, where k0 + k1 s = -m sqrt(...)
+		// (k0 + k1 s)² = m² (1 + s²/b²), m = a w·n, where k0 + k1 s = -m sqrt(...). The
+		// discriminant is worked out by hand: where the line is across the hyperbola's axis, m is
+		// 0 or nearly, and both roots are one.
 		m := c.a * n.dot(c.w)
+		bb, cc := float64(c.b*c.b), float64((k0-m)*(k0+m))
+		q := float64(k1*k1) + cc/bb
+		if q < 0 {
+			return out
+		}
 		from := len(out)
-		out = quadratic(out, float64(k1*k1)-float64(m*m)/float64(c.b*c.b), 2*float64(k0*k1), float64(k0*k0)-float64(m*m))
+		out = roots(out, float64(k1*k1)-float64(m*m)/bb, 2*float64(k0*k1), cc, 2*math.Abs(m)*math.Sqrt(q))
 		kept := out[:from]
 		for _, s := range out[from:] {
-			if (k0+float64(k1*s))*m <= 0 {
+			if math.Abs(k0+float64(k1*s)) <= tieUm || (k0+float64(k1*s))*m <= 0 {
 				kept = append(kept, s)
 			}
 		}
@@ -193,9 +220,14 @@ func quadratic(out []float64, a, b, c float64) []float64 {
 	if d < 0 {
 		return out
 	}
+	return roots(out, a, b, c, math.Sqrt(d))
+}
+
+// roots is quadratic for a known root of the discriminant.
+func roots(out []float64, a, b, c, root float64) []float64 {
 	// The root of larger size first, the other from the product of both: no digits
 	// cancel (Press et al., Numerical Recipes, §5.6).
-	q := -(b + math.Copysign(math.Sqrt(d), b)) / 2
+	q := -(b + math.Copysign(root, b)) / 2
 	if q != 0 {
 		out = append(out, c/q)
 	}

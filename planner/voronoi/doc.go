@@ -27,15 +27,16 @@
 // # What is exact
 //
 // Clearance along an edge is right to about 1e-5 µm, the place of a branch point to joinUm,
-// on floors of a few hundred metres with cells of centimetres. Edges are traced where
+// on floors of a few hundred metres with cells of centimetres. Where outlines have sides of a few
+// micrometres, too short to be told from their ends at a distance, edges may have gaps of that size. Edges are traced where
 // clearance is from leastUm to Need.MostUm (and a millimetre more); ends within joinUm of
 // one another are one. Graph.Advance gives the very same edges as Build, and Roads.Advance
 // the very same roads as NewRoads, down to the numbers of their nodes.
 //
 // # Reading the source
 //
-// site.go and curve.go have the elements, triple.go the branch points, trace.go a
-// block's edges, block.go and join.go their topology, graph.go and advance.go the whole,
+// site.go and curve.go have the elements, outline.go those of a feature, triple.go the branch
+// points, trace.go and hidden.go a block's edges, block.go and join.go their topology, graph.go and advance.go the whole,
 // same.go what two versions have in common. On them are edge.go (edges and gates for the
 // reader), pave.go and roads.go (edges and the open floor for one preferred clearance, by
 // block and together), widest.go (bottlenecks), enter.go (how ends get there), path.go,

@@ -215,7 +215,7 @@ func boxDist(b box, s *site) float64 {
 // the old block that it holds, that one is kept.
 func (g *Graph) trace(ctx context.Context, list []int, may func(i int) *block) error {
 	return parallel.Each(ctx, 0, len(list), func() func(int) {
-		t := &tracer{}
+		t := &tracer{ctx: ctx}
 		return func(n int) {
 			i := list[n]
 			near := g.gather(i)
@@ -255,10 +255,27 @@ func (g *Graph) traceBlock(t *tracer, i int, near []site) *block {
 		}
 		return false
 	}
+	t.buried = func(mid vec, rad float64) bool {
+		q := geom.Point{X: g.o.X + o.x + mid.x, Y: g.o.Y + o.y + mid.y}
+		if !t.inside(mid) {
+			return false
+		}
+		last := ""
+		for k := range near {
+			if name := near[k].name; name != last {
+				last = name
+				if ft, ok := g.f.Map().Feature(name); ok && depth(&ft.Shape, q) > rad {
+					return true
+				}
+			}
+		}
+		return false
+	}
 	ids := make([]int32, len(near))
 	for k := range ids {
 		ids[k] = int32(k)
 	}
-	t.square(b, ids, false)
+	t.boxes, t.levels, t.missed = 0, t.levels[:0], 0
+	t.square(b, ids, false, 0, 0)
 	return finish(near, b, t.merge(), t.mid, t.rimAt)
 }

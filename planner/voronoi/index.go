@@ -192,53 +192,6 @@ func (p *padded) read(m *floor.Map, f *frame, bx, by int) bool {
 	return anySolid && (anyFree || !closed)
 }
 
-// featureSites are the elements of a solid's or closed zone's outline, from the
-// floor's corner.
-func (f *frame) featureSites(ft *floor.Feature) []site {
-	grow, from := ft.Shape.Grow, ofFeature
-	switch {
-	case ft.Kind == floor.Solid:
-	case ft.Kind == floor.ClosedZone && f.need.Zones:
-		grow, from = grow-float64(f.need.MarginUm), ofZone
-	default:
-		return nil
-	}
-	local := func(p geom.Point) vec { return vec{p.X - f.o.X, p.Y - f.o.Y} }
-	var out []site
-	add := func(s site) {
-		s.from, s.name = from, ft.Name
-		out = append(out, s)
-	}
-	if ft.Shape.Kind != floor.Polygon {
-		chain := ft.Shape.Chains[0]
-		for i, p := range chain {
-			add(cornerSite(local(p), grow))
-			if i > 0 && p != chain[i-1] {
-				add(sideSite(local(chain[i-1]), local(p), grow))
-				add(sideSite(local(p), local(chain[i-1]), grow))
-			}
-		}
-		return out
-	}
-	for k, ring := range ft.Shape.Chains {
-		// Solid on the left of every side: outer rings counter-clockwise, holes clockwise.
-		flip := (geom.Ring(ring).SignedArea() < 0) == (k == 0)
-		n := len(ring)
-		for i, p := range ring {
-			q, before := ring[(i+1)%n], ring[(i+n-1)%n]
-			if flip {
-				add(sideSite(local(q), local(p), grow))
-			} else {
-				add(sideSite(local(p), local(q), grow))
-			}
-			if turn := geom.Orient(before, p, q); turn > 0 != flip && turn != 0 {
-				add(cornerSite(local(p), grow))
-			}
-		}
-	}
-	return out
-}
-
 // borderSites are the sides of a closed border, from the floor's corner.
 func (f *frame) borderSites() []site {
 	if f.set.OpenBorder {

@@ -2,6 +2,7 @@ package voronoi
 
 import (
 	"cmp"
+	"context"
 	"math"
 	"slices"
 )
@@ -29,6 +30,14 @@ func (b box) holds(p vec) bool {
 const (
 	// leafSites is how many sites a box may have before it is cut in four.
 	leafSites = 6
+	// tiedSites is how many it may have where cutting on is of no use: when stuckCuts cuts have
+	// not made them fewer, since sites that touch or share a line tie for long, or when
+	// levelBoxes have run out.
+	tiedSites = 16
+	stuckCuts = 3
+	// levelBoxes is how many boxes of one size there may be in a block; see square for those
+	// beyond.
+	levelBoxes = 1 << 15
 	// tieUm is by how much two distances must differ to be told apart: far above the
 	// rounding of distances within a block's reach (1e-9 µm for 10 m), far below a micrometre.
 	tieUm = 1e-6
@@ -59,7 +68,12 @@ type tracer struct {
 	rims        [4]bool // sides of the block that are an open border
 	rimAt       box
 	inside      func(vec) bool
+	buried      func(mid vec, rad float64) bool // whether one solid or zone has all within rad in it
 
+	ctx    context.Context
+	boxes  int   // so far
+	levels []int // of them, by how often they were cut
+	missed int   // boxes beyond levelBoxes
 	pieces []piece
 	cands  []cand
 	ids    []int32 // stack of the sites of the boxes that are being cut
@@ -78,8 +92,20 @@ type cand struct {
 }
 
 // square cuts box b down to boxes with few sites (those listed in ids, in rising order)
-// and traces the arcs in these. free says whether all of b is known to be free.
-func (t *tracer) square(b box, ids []int32, free bool) {
+// and traces the arcs in these. free says whether all of b is known to be free, depth how
+// often it has been cut, stuck how many of the last cuts left the sites the same.
+//
+// The boxes of one size do not number more than levelBoxes, so that the work ends whatever the solids are. A
+// box beyond them that has more than tiedSites sites gets no edges. It takes tens of solids that make steps of micrometres:
+// their edges run side by side, micrometres apart, for metres.
+func (t *tracer) square(b box, ids []int32, free bool, depth, stuck int) {
+	if t.boxes++; t.boxes%1024 == 0 && t.ctx.Err() != nil {
+		return
+	}
+	for len(t.levels) <= depth {
+		t.levels = append(t.levels, 0)
+	}
+	t.levels[depth]++
 	mid, rad := b.mid(), b.radius()
 	from := len(t.cands)
 	best, outline := -1, math.Inf(1)
@@ -90,6 +116,9 @@ func (t *tracer) square(b box, ids []int32, free bool) {
 			f := mid.sub(s.a).dot(s.t)
 			if f < -rad-tieUm || f > s.l+rad+tieUm {
 				continue
+			}
+			if mid.sub(s.a).dot(s.n) < -rad-tieUm {
+				continue // seen from behind: solid, or the other side of a polyline speaks
 			}
 			c.flat = f >= rad && f <= s.l-rad
 		}
@@ -132,21 +161,38 @@ func (t *tracer) square(b box, ids []int32, free bool) {
 		if c.d-near.d-float64(rad*c.away.sub(near.away).length())-bend > tieUm {
 			continue
 		}
+		// Of two corners the directions differ by no more than their distance over theirs.
+		if r := min(c.core, near.core) - rad; r > 0 && !t.near[c.id].straight && !t.near[near.id].straight &&
+			c.d-near.d-rad*t.near[c.id].a.sub(t.near[near.id].a).length()/r > tieUm {
+			continue
+		}
 		t.ids = append(t.ids, c.id)
 	}
-	kept := t.ids[low:]
 	t.cands = t.cands[:from]
+	kept := t.ids[low:]
+	if stuck++; len(kept) < len(ids) {
+		stuck = 0
+	}
+	if worthHiding(len(kept), depth, stuck) {
+		kept = t.unhidden(kept, mid, rad)
+		t.ids = t.ids[:low+len(kept)]
+	}
+	over := t.levels[depth] > levelBoxes
 	switch {
-	case len(kept) <= leafSites:
+	case len(kept) <= leafSites, len(kept) <= tiedSites && (over || stuck >= stuckCuts):
 		if len(kept) > 1 || t.rims != [4]bool{} {
 			t.leaf(b, kept, free)
 		}
+	case over:
+		t.missed++
+	case !free && depth >= 6 && t.buried(mid, rad):
+		// Outlines of other solids in it do not matter.
 	case rad < joinUm/4:
 		// Many sites are equally far here: what comes in from all sides is joined.
 	default:
 		x, y := cutAt(b.x0, b.x1), cutAt(b.y0, b.y1)
 		for _, q := range [4]box{{b.x0, b.y0, x, y}, {x, b.y0, b.x1, y}, {b.x0, y, x, b.y1}, {x, y, b.x1, b.y1}} {
-			t.square(q, kept, free)
+			t.square(q, kept, free, depth+1, stuck)
 		}
 	}
 }
@@ -290,7 +336,7 @@ func (t *tracer) span(ids []int32, i, j int32, c *curve, s0, s1 float64, free bo
 		slices.Sort(v[:])
 		t.places = triple(t.places[:0], &t.near[v[0]], &t.near[v[1]], &t.near[v[2]])
 		for _, p := range t.places {
-			sp = append(sp, c.param(p))
+			sp = append(sp, c.settle(c.param(p), si, sk))
 		}
 	}
 	slices.Sort(sp)
