@@ -17,7 +17,7 @@ import (
 func TestLaw4PatchedEqualsRebuilt(t *testing.T) {
 	const seed = 4444
 	t.Logf("seed %d", seed)
-	routes, refusals := 0, 0
+	routes, refusals := map[planner.Preference]int{}, 0
 	for k := range plainfloor.Sequences() / 10 {
 		s := plainfloor.NewSequence(seed, uint64(k))
 		set, b := s.Map.Settings(), s.Map.Bounds()
@@ -29,7 +29,9 @@ func TestLaw4PatchedEqualsRebuilt(t *testing.T) {
 		body := planner.Body{RadiusUm: s.Rng.Int64N(min(4*set.ResolutionUm, set.CapUm)), MaxSpeed: 1, Braking: 0.5, Reaction: 0.3}
 		body.PreferredUm = body.RadiusUm + s.Rng.Int64N(set.CapUm-body.RadiusUm+1)
 		ask := func() planner.Request {
-			return shortest(body, at(), at())
+			q := shortest(body, at(), at())
+			q.Options.Preference = []planner.Preference{planner.Shortest, planner.Balanced, planner.Clearest}[s.Rng.IntN(3)]
+			return q
 		}
 		w := newWorld(t, s.Map)
 		for step := range 3 {
@@ -49,14 +51,14 @@ func TestLaw4PatchedEqualsRebuilt(t *testing.T) {
 					t.Fatalf("sequence %d, step %d, %+v:\nadvanced %+v %+v\nrebuilt  %+v %+v", k, step, q, got.Route, got.Refusal, want.Route, want.Refusal)
 				}
 				if got.Route != nil {
-					routes++
+					routes[q.Options.Preference]++
 				} else {
 					refusals++
 				}
 			}
 		}
 	}
-	if t.Logf("%d routes, %d refusals", routes, refusals); routes == 0 || refusals == 0 {
+	if t.Logf("routes by preference %v, %d refusals", routes, refusals); len(routes) < 3 || refusals == 0 {
 		t.Error("the sequences do not try both answers")
 	}
 }

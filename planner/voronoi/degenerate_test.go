@@ -127,7 +127,7 @@ func TestSolidsThatShareOutlines(t *testing.T) {
 		"a side of many pieces":   {put("a", floor.NewPolyline(steps(3000), 30_000, 0)), put("b", floor.NewPolygon([][]geom.Point{append(steps(3000), at(1_001_500, 2e6))}, 0))},
 	} {
 		for _, open := range []bool{false, true} {
-sound(t, name, newFloor(t, 64, 64, 1_500_000, open, edits...), false)
+			sound(t, name, newFloor(t, 64, 64, 1_500_000, open, edits...), false)
 			var zones []floor.Edit
 			for k, e := range edits {
 				zones = append(zones, e)
