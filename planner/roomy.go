@@ -195,14 +195,17 @@ func (t *task) roomOf(pts []geom.Point) float64 {
 			piece[i-1] = t.j.Segment(pts[i-1], pts[i]).Um
 		}
 	}
-	from, to := 0, n
-	for from < n && at[from+1] >= at[from] && piece[from] >= at[from]-dipUm {
+	from, high := 0, at[0]
+	for from < n && min(at[from+1], piece[from]) >= high-dipUm {
 		from++
+		high = max(high, at[from])
 	}
-	for to > from && at[to-1] >= at[to] && piece[to-1] >= at[to]-dipUm {
+	to, top := n, at[n]
+	for to > from && min(at[to-1], piece[to-1]) >= top-dipUm {
 		to--
+		top = max(top, at[to])
 	}
-	room := min(at[from], at[to])
+	room := min(high, top)
 	for i := from; i < to; i++ {
 		room = min(room, piece[i])
 	}
