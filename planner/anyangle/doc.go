@@ -34,6 +34,6 @@
 // and sharing the others.
 //
 // Read mesh.go first, then cut.go and slab.go for the cells, join.go for portals,
-// search.go and look.go for the search, bridge.go for the lean mesh, taut.go and corner.go
+// search.go, look.go and undercut.go for the search, bridge.go for the lean mesh, taut.go and corner.go
 // for the bends.
 package anyangle

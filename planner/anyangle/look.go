@@ -29,6 +29,7 @@ func (s *search) expand(n *node) {
 		c.loose = !b.covers(n.cell, c.rx-ox, c.ry-oy)
 	}
 	portals := b.portals[of.first : of.first+of.count]
+	first := s.portals(n.block) + of.first
 	for i := range portals {
 		p := &portals[i]
 		c.block = n.block + int32(g.step(p.dir))
@@ -43,6 +44,7 @@ func (s *search) expand(n *node) {
 		c.ax, c.ay = ox+float64(p.ax), oy+float64(p.ay)
 		c.bx, c.by = ox+float64(p.bx), oy+float64(p.by)
 		c.turns = p.turns
+		c.portalAt = first + int32(i)
 		switch {
 		case n.flags&point != 0:
 			c.fromPoint()
@@ -76,6 +78,7 @@ type look struct {
 	block, cell        int32
 	ax, ay, bx, by     float64 // the portal, from right to left
 	turns              uint8
+	portalAt           int32 // in the search's list
 
 	pastRight, pastLeft bool // see portal
 	// loose says that the start is outside its cell, by rounding: what lies along a
@@ -324,6 +327,11 @@ func (c *look) stretch(n node, t0, t1 float64) {
 		if ex, ey := n.lx-n.rx, n.ly-n.ry; float64(ex*ex)+float64(ey*ey) <= float64(c.eps*c.eps) {
 			return
 		}
+	}
+	n.portal = c.portalAt
+	c.measure(&n, t0, t1)
+	if c.s.undercut(&n) {
+		return
 	}
 	c.put(n, c.s.estimate(&n))
 }

@@ -10,8 +10,8 @@ import (
 )
 
 // MaxNodes bounds the nodes, and the bends, that a search may keep at once. A node
-// takes 88 bytes with its place in the queue, a bend 72 with its place in the
-// table, so a search takes at most about 640 MB; it is cut short only in clutter
+// takes 104 bytes with its place in the queue, a bend 72 with its place in the
+// table, so a search takes at most about 700 MB; it is cut short only in clutter
 // over more than a hundred million cells.
 const MaxNodes = 4_000_000
 
@@ -24,6 +24,10 @@ var ErrTooLarge = errors.New("anyangle: the search came to its bound of nodes")
 
 // pollEvery is how many expansions pass between looks at the context.
 const pollEvery = 1024
+
+// maxSteps is how many cells a search goes on, where there is but one way on, before the node
+// waits in the queue: most cells are such, and four spare most of the queueing.
+const maxSteps = 4
 
 // tieUm is the difference of two path lengths that counts as none, in
 // micrometres: above the rounding of sums of a kilometre's length, and 1e-11 of
@@ -58,7 +62,9 @@ type node struct {
 	rootR, rootL, apex  int32
 	block, cell         int32 // the cell to look into
 	fromBlock, fromCell int32 // where the way comes from; none at the start
+	portal              int32 // in the search's list of portals
 	flags               uint8
+	least               float64 // no point of the stretch is reached by a shorter way over the fan
 }
 
 const (
@@ -80,9 +86,12 @@ type search struct {
 	nodes   []node
 	spare   []int32
 	queue   queue
-	table   table   // numbers places
-	best    []int32 // the best root at each place
-	visited table   // roots with cells that they lie on, queued before
+	table   table     // numbers places
+	best    []int32   // the best root at each place
+	visited table     // roots with cells that they lie on, queued before
+	within  []float64 // for a portal, all points of it are reached by ways as short
+	base    []reached // for a block, its first portal in that list
+	stamp   uint32
 	out     []node
 	fs      []float64
 
@@ -116,6 +125,7 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 	s.table.reset()
 	s.visited.reset()
 	s.best = s.best[:0]
+	s.resetPortals()
 	s.expanded, s.queued, s.gaveUp = 0, 0, false
 	s.goals = g.locate(s.goals[:0], to, g.eps)
 	if len(s.goals) == 0 {
@@ -153,7 +163,8 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 		}
 		n := s.nodes[i]
 		s.spare = append(s.spare, i)
-		for s.trim(&n, &f) {
+		steps := 0
+		for s.trim(&n, &f) && !s.undercut(&n) {
 			if f > s.most {
 				s.gaveUp = true
 				return s.none(), false, nil
@@ -170,7 +181,8 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 				}
 			}
 			s.expand(&n)
-			// The best successor is looked into at once when it would be the next.
+			// The best successor is looked into at once when it would be the next, or when it is
+			// the only one, for some steps.
 			best := -1
 			for k := range s.out {
 				if best < 0 || s.fs[k] < s.fs[best] {
@@ -178,7 +190,10 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 				}
 			}
 			if best >= 0 && !(s.fs[best] < s.queue.least()) {
-				best = -1
+				steps++
+				if len(s.out) > 1 || steps > maxSteps || s.fs[best] > s.most || s.isGoal(s.out[0].block, s.out[0].cell) {
+					best = -1
+				}
 			}
 			for k := range s.out {
 				if k != best {

@@ -88,3 +88,19 @@ func TestNoWayIsFoundWithoutASearch(t *testing.T) {
 		t.Errorf("nearest to %v: %v, %v", near, p, ok)
 	}
 }
+
+// TestLooksAtPortalsFewTimes holds searches of a hall, where many ways lead to each aisle, to
+// fewer expansions than there are portals, of which each is looked through both ways.
+func TestLooksAtPortalsFewTimes(t *testing.T) {
+	g := build(t, hallFloor(t, 2048, 0, false), 450_000)
+	portals := 0
+	for _, b := range g.blocks {
+		portals += len(b.portals)
+	}
+	for _, y := range []int{80, 1000, 2000} {
+		way, ok, err := g.Shortest(context.Background(), at50(15, 15), at50(2030, y))
+		if err != nil || !ok || way.Expanded > int64(portals) {
+			t.Errorf("%v, %v: %d expansions, wanted at most %d", ok, err, way.Expanded, portals)
+		}
+	}
+}
