@@ -7,6 +7,7 @@ import (
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/join"
 	"example.com/wideberth/planner/internal/judge"
 	"example.com/wideberth/planner/internal/roadmap"
 )
@@ -140,53 +141,7 @@ func inward(p geom.Point, r geom.Rect) geom.Point {
 	return geom.Point{X: in(p.X, r.Min.X, r.Max.X), Y: in(p.Y, r.Min.Y, r.Max.Y)}
 }
 
-// The bounds of connecting an end to the roadmap.
-const (
-	// connectReach is how many cells away, in columns or rows, a node may be.
-	connectReach = 12
-	// connectMore is how many rings beyond the first that holds one are looked at.
-	connectMore = 2
-	// connectLinks is how many nodes an end is joined to at most.
-	connectLinks = 32
-)
-
-// connect joins an end to the roadmap: straight pieces that may be driven, from p to
-// middles of free cells near it, or to p for a goal. An end in the middle of a
-// free cell is that cell's node; in a quadtree an end in a free cell is in that
-// leaf.
+// connect joins an end to a roadmap over cells.
 func (t *task) connect(p geom.Point, goal bool) []roadmap.Link {
-	own, ok := t.w.frame.CellAt(p)
-	if !ok {
-		return nil
-	}
-	if t.free.Free(own.Col, own.Row) && (p == t.w.frame.Centre(own) || t.q.Options.Roadmap == Quadtree) {
-		return []roadmap.Link{{Cell: own, At: p}}
-	}
-	var links []roadmap.Link
-	last := connectReach
-	for k := 0; k <= last && len(links) < connectLinks; k++ {
-		for dr := -k; dr <= k; dr++ {
-			step := 1
-			if dr > -k && dr < k {
-				step = 2 * k
-			}
-			for dc := -k; dc <= k; dc += step {
-				c := roadmap.Cell{Col: own.Col + dc, Row: own.Row + dr}
-				if !t.free.Free(c.Col, c.Row) || len(links) == connectLinks {
-					continue
-				}
-				a, b := p, t.w.frame.Centre(c)
-				if goal {
-					a, b = b, a
-				}
-				if !t.j.Sight(a, b) {
-					continue
-				}
-				cost, _ := t.j.Weigh(a, b)
-				links = append(links, roadmap.Link{Cell: c, At: t.w.frame.Centre(c), CostUm: cost})
-				last = min(last, k+connectMore)
-			}
-		}
-	}
-	return links
+	return join.Links(t.j, t.free, t.w.frame, p, goal, t.q.Options.Roadmap == Quadtree)
 }

@@ -25,10 +25,12 @@ type Need struct {
 }
 
 // Way is a way from start to goal over a roadmap, as straight pieces that keep the Need's
-// clearance, its two ends included. LengthUm is the polyline's.
+// clearance, its two ends included. LengthUm is the polyline's; ExactUm, where the roadmap
+// has arcs that the polyline keeps outside of, the length along these, else 0.
 type Way struct {
 	Points           []geom.Point
 	LengthUm         float64
+	ExactUm          float64
 	Expanded, Queued int64
 }
 

@@ -73,7 +73,7 @@ func (g *Graph) Search(ctx context.Context, s, t geom.Point) (roadmap.Way, bool,
 		return roadmap.Way{}, false, nil
 	}
 	if j.Sight(s, t) {
-		return roadmap.Way{Points: []geom.Point{s, t}, LengthUm: geom.Dist(s, t)}, true, nil
+		return roadmap.Way{Points: []geom.Point{s, t}, LengthUm: geom.Dist(s, t), ExactUm: geom.Dist(s, t)}, true, nil
 	}
 	q := &search{g: g, judge: j, goal: t, goals: g.outOf(t, j), best: map[int32][]*label{}}
 	for _, p := range g.outOf(s, j) {
@@ -93,7 +93,7 @@ func (g *Graph) Search(ctx context.Context, s, t geom.Point) (roadmap.Way, bool,
 			if !ok {
 				continue // another way may do
 			}
-			w.Points, w.Queued = pts, q.queued
+			w.Points, w.Queued, w.ExactUm = pts, q.queued, l.cost
 			for i := 1; i < len(pts); i++ {
 				w.LengthUm += geom.Dist(pts[i-1], pts[i])
 			}

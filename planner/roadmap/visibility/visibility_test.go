@@ -87,6 +87,9 @@ func TestAnalyticShortestWays(t *testing.T) {
 		if got := w.LengthUm / 1e6; !ok || math.Abs(got-c.want) > 1e-6*c.want && got-c.want > 60e-6 || got < c.want*(1-1e-9) {
 			t.Errorf("%s: %.12f m, wanted %.12f", name, w.LengthUm/1e6, c.want)
 		}
+		if math.Abs(w.ExactUm/1e6-c.want) > 1e-6*c.want {
+			t.Errorf("%s: %.12f m along the arcs, wanted %.12f", name, w.ExactUm/1e6, c.want)
+		}
 		if ok {
 			if v := check.Way(c.f, w.Points, c.r, c.r); v.Problem != "" {
 				t.Errorf("%s: %s", name, v.Problem)
