@@ -32,7 +32,7 @@ func (s *search) expand(n *node) {
 	first := s.portals(n.block) + of.first
 	for i := range portals {
 		p := &portals[i]
-		c.block = n.block + int32(g.step(p.dir))
+		c.block = n.block + s.step[p.dir]
 		c.cell = p.to
 		if c.cell == n.fromCell && c.block == n.fromBlock {
 			continue

@@ -79,8 +79,9 @@ type search struct {
 	start, goal       geom.Point // as asked for
 	tx, ty            float64    // the goal, settled
 	goals             []at
-	open              []at  // dead ends that lead to the goal
-	openLow, openHigh int32 // their blocks
+	step              [downward + 1]int32 // Mesh.step
+	open              []at                // dead ends that lead to the goal
+	openLow, openHigh int32               // their blocks
 
 	roots   []root
 	nodes   []node
@@ -126,6 +127,9 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 	s.visited.reset()
 	s.best = s.best[:0]
 	s.resetPortals()
+	for dir := range s.step {
+		s.step[dir] = int32(g.step(uint8(dir)))
+	}
 	s.expanded, s.queued, s.gaveUp = 0, 0, false
 	s.goals = g.locate(s.goals[:0], to, g.eps)
 	if len(s.goals) == 0 {
