@@ -25,15 +25,19 @@ type fakeService struct {
 	wideberthv1.UnimplementedFloorServiceServer
 	wideberthv1.UnimplementedRouteServiceServer
 	wideberthv1.UnimplementedGuideServiceServer
+	wideberthv1.UnimplementedRoadmapServiceServer
 
-	getFloor func(context.Context, *wideberthv1.GetFloorRequest) (*wideberthv1.GetFloorResponse, error)
-	push     func(context.Context, *wideberthv1.PushPatchRequest) (*wideberthv1.PushPatchResponse, error)
-	list     func(context.Context, *wideberthv1.ListFloorsRequest) (*wideberthv1.ListFloorsResponse, error)
-	plan     func(context.Context, *wideberthv1.PlanRequest) (*wideberthv1.PlanResponse, error)
-	planMany func(*wideberthv1.PlanManyRequest, grpc.ServerStreamingServer[wideberthv1.PlanManyResponse]) error
-	read     func(*wideberthv1.ReadFloorRequest, grpc.ServerStreamingServer[wideberthv1.ReadFloorResponse]) error
-	watch    func(*wideberthv1.WatchVersionsRequest, grpc.ServerStreamingServer[wideberthv1.WatchVersionsResponse]) error
-	guide    func(grpc.BidiStreamingServer[wideberthv1.GuideRequest, wideberthv1.GuideResponse]) error
+	getFloor        func(context.Context, *wideberthv1.GetFloorRequest) (*wideberthv1.GetFloorResponse, error)
+	push            func(context.Context, *wideberthv1.PushPatchRequest) (*wideberthv1.PushPatchResponse, error)
+	list            func(context.Context, *wideberthv1.ListFloorsRequest) (*wideberthv1.ListFloorsResponse, error)
+	plan            func(context.Context, *wideberthv1.PlanRequest) (*wideberthv1.PlanResponse, error)
+	planMany        func(*wideberthv1.PlanManyRequest, grpc.ServerStreamingServer[wideberthv1.PlanManyResponse]) error
+	read            func(*wideberthv1.ReadFloorRequest, grpc.ServerStreamingServer[wideberthv1.ReadFloorResponse]) error
+	watch           func(*wideberthv1.WatchVersionsRequest, grpc.ServerStreamingServer[wideberthv1.WatchVersionsResponse]) error
+	showRoadmap     func(*wideberthv1.ShowRoadmapRequest, grpc.ServerStreamingServer[wideberthv1.ShowRoadmapResponse]) error
+	showGrown       func(*wideberthv1.ShowGrownSolidsRequest, grpc.ServerStreamingServer[wideberthv1.ShowGrownSolidsResponse]) error
+	compareRoadmaps func(context.Context, *wideberthv1.CompareRoadmapsRequest) (*wideberthv1.CompareRoadmapsResponse, error)
+	guide           func(grpc.BidiStreamingServer[wideberthv1.GuideRequest, wideberthv1.GuideResponse]) error
 }
 
 func (f *fakeService) GetFloor(ctx context.Context, r *wideberthv1.GetFloorRequest) (*wideberthv1.GetFloorResponse, error) {
@@ -68,6 +72,18 @@ func (f *fakeService) Guide(s grpc.BidiStreamingServer[wideberthv1.GuideRequest,
 	return f.guide(s)
 }
 
+func (f *fakeService) ShowRoadmap(r *wideberthv1.ShowRoadmapRequest, s grpc.ServerStreamingServer[wideberthv1.ShowRoadmapResponse]) error {
+	return f.showRoadmap(r, s)
+}
+
+func (f *fakeService) ShowGrownSolids(r *wideberthv1.ShowGrownSolidsRequest, s grpc.ServerStreamingServer[wideberthv1.ShowGrownSolidsResponse]) error {
+	return f.showGrown(r, s)
+}
+
+func (f *fakeService) CompareRoadmaps(ctx context.Context, r *wideberthv1.CompareRoadmapsRequest) (*wideberthv1.CompareRoadmapsResponse, error) {
+	return f.compareRoadmaps(ctx, r)
+}
+
 // serve runs the fake on loopback and gives a client with short waits. Both go when
 // the test ends.
 func serve(t *testing.T, f *fakeService, opts ...Option) *Client {
@@ -80,6 +96,7 @@ func serve(t *testing.T, f *fakeService, opts ...Option) *Client {
 	wideberthv1.RegisterFloorServiceServer(s, f)
 	wideberthv1.RegisterRouteServiceServer(s, f)
 	wideberthv1.RegisterGuideServiceServer(s, f)
+	wideberthv1.RegisterRoadmapServiceServer(s, f)
 	served := make(chan struct{})
 	go func() { defer close(served); _ = s.Serve(lis) }()
 	t.Cleanup(func() { s.Stop(); <-served })
