@@ -3,7 +3,7 @@
 //
 // Data goes to stdout, everything else to stderr; nothing is coloured. With
 // --output json every command prints protobuf's JSON mapping of the contract's
-// messages, watch and reach one object a line, and trial and version an object of their own.
+// messages, watch, reach, roadmap and grown one object a line, and trial and version an object of their own.
 //
 // Exit codes, which scripts may rely on:
 //
@@ -13,7 +13,8 @@
 //	3  rejected by validation: a file, a field or the floor's state does not allow it
 //	4  version conflict: the base is stale, look at the new head and push again
 //	5  the server cannot be reached, or did not answer in time
-//	6  refused: there is no route (plan), or not for every pair (reach)
+//	6  refused: there is no route (plan), not for every pair (reach), or over no roadmap
+//	   (compare-roadmaps)
 package main
 
 import (

@@ -44,7 +44,8 @@ func (a *app) root() *cobra.Command {
 		Long: "wideberth is the operator's tool of a wideberth service.\n\n" +
 			"Data goes to stdout, everything else to stderr. Exit codes: 0 done, 1 failed,\n" +
 			"2 wrong command line, 3 rejected by validation, 4 version conflict, 5 server\n" +
-			"unreachable or too late, 6 refused: no route (reach: not to every place).",
+			"unreachable or too late, 6 refused: no route (reach: not to every place;\n" +
+			"compare-roadmaps: over none).",
 		Args:          cobra.NoArgs,
 		SilenceErrors: true,
 		SilenceUsage:  true,
