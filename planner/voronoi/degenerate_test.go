@@ -2,12 +2,10 @@ package voronoi
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"math"
 	"math/rand/v2"
 	"testing"
-	"time"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -93,7 +91,7 @@ func TestSolidsThatShareOutlines(t *testing.T) {
 		})
 	}
 	mid := at(1_600_000, 1_600_000)
-	for name, edits := range map[string][]floor.Edit{
+	floors := map[string][]floor.Edit{
 		"two polygons with an edge in common": {put("a", rectUm(1e6, 1e6, 2e6, 2e6)), put("b", rectUm(2e6, 1e6, 2_500_001, 2e6))},
 		"a polygon in the corner of another":  {put("a", rectUm(1e6, 1e6, 2e6, 2e6)), put("b", rectUm(1e6, 1e6, 1_500_001, 1_300_000))},
 		"rectangles from one corner": many(40, func(k int) floor.Shape {
@@ -124,8 +122,12 @@ func TestSolidsThatShareOutlines(t *testing.T) {
 		"spokes to one place":     ring(40, mid, 900_000, func(p geom.Point, _ int) floor.Shape { return floor.NewPolyline([]geom.Point{p, mid}, 30_000, 0) }),
 		"a polyline of one place": {put("a", floor.NewPolyline([]geom.Point{mid, mid, mid}, 300_000, 0)), put("b", floor.NewDisc(mid, 150_000, 0))},
 		"a polyline with stops":   {put("a", floor.NewPolyline([]geom.Point{mid, mid, at(2e6, 2e6), at(2e6, 2e6), at(2e6, 2e6), mid, at(1e6, 2e6), at(1e6, 2e6)}, 30_000, 0))},
-		"a side of many pieces":   {put("a", floor.NewPolyline(steps(3000), 30_000, 0)), put("b", floor.NewPolygon([][]geom.Point{append(steps(3000), at(1_001_500, 2e6))}, 0))},
-	} {
+		"a side of many pieces":   {put("a", floor.NewPolyline(steps(1500), 30_000, 0)), put("b", floor.NewPolygon([][]geom.Point{append(steps(1500), at(1_000_700, 2e6))}, 0))},
+	}
+	if !slow() {
+		delete(floors, "more posts in a ring")
+	}
+	for name, edits := range floors {
 		for _, open := range []bool{false, true} {
 			sound(t, name, newFloor(t, 64, 64, 1_500_000, open, edits...), false)
 			var zones []floor.Edit
@@ -136,6 +138,9 @@ func TestSolidsThatShareOutlines(t *testing.T) {
 					z.Kind, z.Name = floor.ClosedZone, fmt.Sprint("z", k)
 					zones = append(zones, floor.Edit{Kind: floor.PutFeature, Feature: &z})
 				}
+			}
+			if open || len(zones) == len(edits) {
+				continue
 			}
 			sound(t, name+", zones too", newFloor(t, 64, 64, 1_500_000, open, zones...), true)
 		}
@@ -157,11 +162,15 @@ func TestStepsOfMicrometresEnd(t *testing.T) {
 	for k := range 40 {
 		edits = append(edits, put(fmt.Sprint(k), rectUm(1e6, 1e6, 1_500_000+float64(k), 1_300_000-float64(k))))
 	}
-	m := newFloor(t, 64, 64, 1_500_000, false, edits...)
+	m := newFloor(t, 64, 64, 350_000, false, edits...)
 	o := plainOf(m)
 	tr := &tracer{ctx: context.Background()}
-	g := graphOf(t, m, Need{MostUm: 1_500_000})
-	if g.traceBlock(tr, 0, g.blocks[0].near); tr.missed == 0 {
+	g := newGraph(fieldOf(t, m), Need{MostUm: 350_000})
+	for ft := range m.Features() {
+		g.enter(ft)
+	}
+	g.blocks[0] = g.traceBlock(tr, 0, g.gather(0))
+	if tr.missed == 0 {
 		t.Error("no box was given up: the floor tries nothing")
 	}
 	g.every(1, func(_ *arc, p geom.Point, um float64) {
@@ -169,10 +178,11 @@ func TestStepsOfMicrometresEnd(t *testing.T) {
 			t.Fatalf("clearance %v at %v, said to be %v", d, p, um)
 		}
 	})
-	ctx, cancel := context.WithTimeout(context.Background(), 20*time.Millisecond)
-	defer cancel()
-	if _, err := Build(ctx, g.f, g.need); !errors.Is(err, context.DeadlineExceeded) {
-		t.Errorf("within 20 ms: %v, wanted the context's error", err)
+	ctx, cancel := context.WithCancel(context.Background())
+	cancel()
+	tr = &tracer{ctx: ctx}
+	if g.traceBlock(tr, 0, g.gather(0)); tr.boxes > 3*1024 {
+		t.Errorf("%d boxes after the context had ended", tr.boxes)
 	}
 }
 

@@ -16,6 +16,14 @@ import (
 // slow says whether the long variants run: WIDEBERTH_SLOW=1.
 func slow() bool { return os.Getenv("WIDEBERTH_SLOW") == "1" }
 
+// scaled is how often to try: fast, or many times with WIDEBERTH_SLOW=1.
+func scaled(fast, many int) int {
+	if slow() {
+		return many
+	}
+	return fast
+}
+
 const testCell = 50_000
 
 func newFloor(t testing.TB, w, h int, capUm int64, open bool, edits ...floor.Edit) *floor.Map {

@@ -255,21 +255,18 @@ func (g *Graph) traceBlock(t *tracer, i int, near []site) *block {
 		}
 		return false
 	}
+	var shapes []*floor.Feature // of the sites, when first asked for
 	t.buried = func(mid vec, rad float64) bool {
 		q := geom.Point{X: g.o.X + o.x + mid.x, Y: g.o.Y + o.y + mid.y}
 		if !t.inside(mid) {
 			return false
 		}
-		last := ""
-		for k := range near {
-			if name := near[k].name; name != last {
-				last = name
-				if ft, ok := g.f.Map().Feature(name); ok && depth(&ft.Shape, q) > rad {
-					return true
-				}
-			}
+		if shapes == nil {
+			shapes = g.shapesOf(near)
 		}
-		return false
+		return slices.ContainsFunc(shapes, func(ft *floor.Feature) bool {
+			return ft.Bounds().Contains(q) && depth(&ft.Shape, q) > rad
+		})
 	}
 	ids := make([]int32, len(near))
 	for k := range ids {
@@ -278,4 +275,19 @@ func (g *Graph) traceBlock(t *tracer, i int, near []site) *block {
 	t.boxes, t.levels, t.missed = 0, t.levels[:0], 0
 	t.square(b, ids, false, 0, 0)
 	return finish(near, b, t.merge(), t.mid, t.rimAt)
+}
+
+// shapesOf are the features that sites belong to.
+func (g *Graph) shapesOf(near []site) []*floor.Feature {
+	out := []*floor.Feature{}
+	seen := map[string]bool{"": true}
+	for k := range near {
+		if name := near[k].name; !seen[name] {
+			seen[name] = true
+			if ft, ok := g.f.Map().Feature(name); ok {
+				out = append(out, ft)
+			}
+		}
+	}
+	return out
 }

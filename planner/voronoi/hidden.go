@@ -63,6 +63,9 @@ func (s *site) hides(o *site, mid vec, rad float64) bool {
 
 // spans says whether side s is at least all of side o in the box of radius rad about mid.
 func (s *site) spans(o *site, mid vec, rad float64) bool {
+	if s.n.dot(o.n) < 0.5 {
+		return false // the common case
+	}
 	p, q := mid.sub(s.a), mid.sub(o.a)
 	if math.Abs(p.dot(s.n)-s.grow-q.dot(o.n)+o.grow) > tieUm/2 || rad*s.n.sub(o.n).length() > tieUm/4 {
 		return false
@@ -75,13 +78,17 @@ func (s *site) spans(o *site, mid vec, rad float64) bool {
 // a line are a micrometre apart.
 func (s *site) passes(o *site) bool {
 	d := o.a.sub(s.a)
+	if math.Abs(d.dot(s.n)) > tieUm || o.grow > s.grow {
+		return false
+	}
 	f := d.dot(s.t)
-	return o.grow <= s.grow && f > 0.25 && f < s.l-0.25 && math.Abs(d.dot(s.n)) <= tieUm
+	return f > 0.25 && f < s.l-0.25
 }
 
 // holds says whether corner s, grown, has all of o in it.
 func (s *site) holds(o *site) bool {
-	return o.grow <= s.grow && o.a.sub(s.a).length() <= s.grow-o.grow+leastFocusUm
+	most := s.grow - o.grow + leastFocusUm
+	return o.grow <= s.grow && math.Abs(o.a.x-s.a.x) <= most && o.a.sub(s.a).length() <= most
 }
 
 // depth is how far p is within a shape at least; below 0 where it may be outside.

@@ -76,7 +76,7 @@ func TestEndsGoStraightAway(t *testing.T) {
 	const seed = 14
 	t.Logf("seed %d", seed)
 	road, open := 0, 0
-	for k := range 60 {
+	for k := range scaled(25, 600) {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
 		m := randomFloor(t, rng, 40+rng.IntN(100), 40+rng.IntN(100))
 		o := plainOf(m)
@@ -131,7 +131,7 @@ func TestOtherFrames(t *testing.T) {
 	const seed = 15
 	t.Logf("seed %d", seed)
 	found := 0
-	for k := range 24 {
+	for k := range scaled(12, 240) {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
 		h := []int64{1_000, 7_777, 1_000_000, 10_000_000}[k%4]
 		n := 40 + rng.IntN(60)

@@ -174,7 +174,7 @@ func freePoint(rng *rand.Rand, o *plain, r float64) (geom.Point, bool) {
 func TestBalancedEqualsDijkstra(t *testing.T) {
 	const seed = 5
 	t.Logf("seed %d", seed)
-	cases, found, none, mixed := 60, 0, 0, 0
+	cases, found, none, mixed := 35, 0, 0, 0
 	if slow() {
 		cases = 500
 	}

@@ -71,6 +71,7 @@ type tracer struct {
 	buried      func(mid vec, rad float64) bool // whether one solid or zone has all within rad in it
 
 	ctx    context.Context
+	ended  bool  // ctx has
 	boxes  int   // so far
 	levels []int // of them, by how often they were cut
 	missed int   // boxes beyond levelBoxes
@@ -99,8 +100,11 @@ type cand struct {
 // box beyond them that has more than tiedSites sites gets no edges. It takes tens of solids that make steps of micrometres:
 // their edges run side by side, micrometres apart, for metres.
 func (t *tracer) square(b box, ids []int32, free bool, depth, stuck int) {
-	if t.boxes++; t.boxes%1024 == 0 && t.ctx.Err() != nil {
-		return
+	if t.boxes++; t.boxes%1024 == 0 {
+		t.ended = t.ctx.Err() != nil
+	}
+	if t.ended {
+		return // what there is goes nowhere
 	}
 	for len(t.levels) <= depth {
 		t.levels = append(t.levels, 0)

@@ -123,7 +123,7 @@ func (g *Graph) every(n int, f func(a *arc, p geom.Point, um float64)) {
 func TestPlacesOfEdgesHaveTwoNearestPlaces(t *testing.T) {
 	const seed = 1
 	t.Logf("seed %d", seed)
-	cases := 12
+	cases := 8
 	if slow() {
 		cases = 600
 	}
@@ -164,7 +164,7 @@ func TestPlacesOfEdgesHaveTwoNearestPlaces(t *testing.T) {
 func TestEveryJumpIsOnAnEdge(t *testing.T) {
 	const seed = 2
 	t.Logf("seed %d", seed)
-	cases := 4
+	cases := 3
 	if slow() {
 		cases = 300
 	}

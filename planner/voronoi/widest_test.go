@@ -73,7 +73,7 @@ func (w *wide) Pop() any          { v := (*w)[len(*w)-1]; *w = (*w)[:len(*w)-1];
 func TestClearestHasTheLargestBottleneck(t *testing.T) {
 	const seed = 8
 	t.Logf("seed %d", seed)
-	cases, tight, none := 40, 0, 0
+	cases, tight, none := 20, 0, 0
 	if slow() {
 		cases = 400
 	}
@@ -138,7 +138,7 @@ func TestGatesAreGabrielPairs(t *testing.T) {
 	const seed = 9
 	t.Logf("seed %d", seed)
 	gates := 0
-	for k := range 150 {
+	for k := range scaled(60, 1500) {
 		rng := rand.New(rand.NewPCG(seed, uint64(k)))
 		m := randomFloor(t, rng, 40+rng.IntN(100), 40+rng.IntN(100))
 		g := graphOf(t, m, Need{MostUm: 2_000_000})
