@@ -19,7 +19,10 @@ type Comparison struct {
 	Body *wideberthv1.Body
 	// OptimumM is the length of the shortest way of all; 0 where there is none.
 	OptimumM float64
-	Panels   []Panel
+	// Start and Goal are drawn in each panel, also in one without a route; nil where that
+	// is not said.
+	Start, Goal *wideberthv1.Pose
+	Panels      []Panel
 }
 
 // Panel is one route of a comparison.
@@ -27,7 +30,8 @@ type Panel struct {
 	Name    string
 	Figures []string // lines below it
 	Route   *wideberthv1.Route
-	Missing string // why there is no route
+	Missing string               // why there is no route
+	Refusal *wideberthv1.Refusal // draws where it does not fit; may be nil
 }
 
 // MaxPanels is how many panels a sheet may have.
@@ -125,7 +129,7 @@ func (d *drawing) comparison(c Comparison) {
 		top := planTop + 8 + float64(i/columns)*pitch
 		f := first
 		f.left, f.top, f.id = left, top+panelHead, fmt.Sprint("panel-", i)
-		d.panel(f, wide, p)
+		d.panel(f, wide, p, c.Start, c.Goal)
 	}
 	for i, s := range signs {
 		x := sheetMargin + float64(i%signColumns)*planWidth/signColumns
@@ -151,15 +155,19 @@ func (c *Comparison) caption() string {
 }
 
 // panel draws one route.
-func (d *drawing) panel(f frame, wide float64, p Panel) {
+func (d *drawing) panel(f frame, wide float64, p Panel, start, goal *wideberthv1.Pose) {
 	d.out.text(f.left, f.top-8, "head", "", cut(p.Name, bodySize*1.1, wide))
 	d.out.raw(`<clipPath id="clip-%s"><rect x="%s" y="%s" width="%s" height="%s"/></clipPath>`,
 		f.id, num(f.left), num(f.top), num(f.width()), num(f.height()))
 	d.out.raw(`<g id="%s" clip-path="url(#clip-%s)">`, f.id, f.id)
 	d.out.raw(`<use xlink:href="#base" href="#base" x="%s" y="%s"/>`, num(f.left), num(f.top))
-	one := &drawing{scene: Scene{Floor: d.scene.Floor, Route: p.Route}, area: d.area, legs: legs(p.Route)}
+	one := &drawing{scene: Scene{Floor: d.scene.Floor, Route: p.Route, Start: start, Goal: goal}, area: d.area, legs: legs(p.Route)}
 	one.routeLines(f, 0.7)
 	one.ends(f)
+	if p.Route == nil && p.Refusal != nil {
+		one.scene.Refusal = p.Refusal
+		one.focusMark(f, 1)
+	}
 	d.out.buf.Write(one.out.buf.Bytes())
 	d.out.raw("</g>")
 	d.out.rect(f.left, f.top, f.width(), f.height(), "frame", "")
@@ -178,13 +186,29 @@ func (d *drawing) panel(f frame, wide float64, p Panel) {
 
 // comparisonSigns are the legend's rows.
 func (d *drawing) comparisonSigns(c Comparison) []sign {
-	out := []sign{
-		{"route", func(o *svg, x, y float64) { o.line(x, y, x+signWidth, y, "open", `stroke-width="2.4"`) }},
-		{"tight leg: below the preferred clearance", func(o *svg, x, y float64) {
+	routes, tight, focus := false, false, false
+	for _, p := range c.Panels {
+		routes = routes || p.Route != nil
+		focus = focus || p.Route == nil && (p.Refusal.GetBottleneck().GetExists() || p.Refusal.GetBlockedEnd().GetAt() != nil)
+		for _, l := range legs(p.Route) {
+			tight = tight || l.tight
+		}
+	}
+	var out []sign
+	if routes {
+		out = append(out, sign{"route", func(o *svg, x, y float64) { o.line(x, y, x+signWidth, y, "open", `stroke-width="2.4"`) }})
+	}
+	if tight {
+		out = append(out, sign{"tight leg: below the preferred clearance", func(o *svg, x, y float64) {
 			o.line(x, y, x+signWidth, y, "tight", `stroke-width="4.6"`)
 			o.line(x, y, x+signWidth, y, "bars", `stroke-width="4.6" stroke-dasharray="1.5 4.1"`)
-		}},
-		{"start, goal", startGoal},
+		}})
+	}
+	if focus {
+		out = append(out, sign{"where it does not fit", func(o *svg, x, y float64) { o.circle(x+signWidth/2, y, 8, "smallest", "") }})
+	}
+	if routes || c.Start != nil || c.Goal != nil {
+		out = append(out, sign{"start, goal", startGoal})
 	}
 	return append(out, d.signs()...)
 }

@@ -152,7 +152,8 @@ func TestComparisonHasAPanelForEach(t *testing.T) {
 	c := Comparison{Title: "dock to cold", Floor: before, Body: tug, OptimumM: 81.5, Panels: []Panel{
 		{Name: "first", Route: routeOver(before, tug, toColdRoom...), Figures: []string{"81.6 m", "fast"}},
 		{Name: "second", Missing: "unfit: too large for <this> floor"},
-	}}
+		{Name: "third", Missing: "no passage", Refusal: &wideberthv1.Refusal{Bottleneck: &wideberthv1.Bottleneck{Exists: true, At: at(60, 50), WidthM: 0.9}}},
+	}, Start: &wideberthv1.Pose{XM: 40, YM: 10}, Goal: &wideberthv1.Pose{XM: 70, YM: 70}}
 	var b bytes.Buffer
 	if err := DrawComparison(&b, c); err != nil {
 		t.Fatal(err)
@@ -164,14 +165,28 @@ func TestComparisonHasAPanelForEach(t *testing.T) {
 			t.Errorf("no %q in\n%s", want, said)
 		}
 	}
-	lines := map[string]int{}
+	lines, ends, marks := map[string]int{}, map[string]int{}, map[string]int{}
 	for _, e := range es {
 		if e.attr["data-leg"] != "" {
 			lines[e.group]++
 		}
+		switch e.attr["class"] {
+		case "end", "goal":
+			ends[e.group]++
+		case "smallest":
+			marks[e.group]++
+		}
 	}
 	if lines["panel-0"] == 0 || lines["panel-1"] != 0 {
 		t.Errorf("legs by panel: %v", lines)
+	}
+	for _, p := range []string{"panel-0", "panel-1", "panel-2"} {
+		if ends[p] != 2 {
+			t.Errorf("%s: %d ends drawn", p, ends[p])
+		}
+	}
+	if marks["panel-2"] != 1 || marks["panel-1"] != 0 {
+		t.Errorf("places that do not fit, by panel: %v", marks)
 	}
 	for _, bad := range []Comparison{{Floor: before}, {Panels: c.Panels}, {Floor: before, Panels: make([]Panel, MaxPanels+1)}} {
 		if err := DrawComparison(&b, bad); err == nil {

@@ -183,9 +183,10 @@ func (a *app) drawComparison(cmd *cobra.Command, c *client.Client, file string, 
 	if err != nil {
 		return err
 	}
-	s := picture.Comparison{Title: args[0] + ": " + args[1] + " to " + args[2], Floor: content, Body: resp.GetBody(), OptimumM: resp.GetOptimumM()}
+	s := picture.Comparison{Title: args[0] + ": " + args[1] + " to " + args[2], Floor: content, Body: resp.GetBody(), OptimumM: resp.GetOptimumM(),
+		Start: poseOf(content, req.GetStart()), Goal: poseOf(content, req.GetGoal())}
 	for _, r := range resp.GetRows() {
-		panel := picture.Panel{Name: roadmapWord(r.GetRoadmap()), Route: r.GetRoute(), Missing: outcome(r)}
+		panel := picture.Panel{Name: roadmapWord(r.GetRoadmap()), Route: r.GetRoute(), Missing: outcome(r), Refusal: r.GetRefusal()}
 		if route := r.GetRoute(); route != nil {
 			panel.Figures = append(panel.Figures,
 				fmt.Sprintf("%s m, %.4f of the shortest", metres(route.GetLengthM()), r.GetLengthRatio()),
