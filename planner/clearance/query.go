@@ -246,6 +246,10 @@ func (w *rower) row(r int) {
 	x0, x1 = xWithin(w.p, w.q, lowY-w.limit, highY+w.limit)
 	first := max(lowest, f.cellAt(x0-w.limit-roundSlack-f.ox, 0, f.cols))
 	last := f.cellAt(x1+w.limit+roundSlack-f.ox, 0, f.cols)
+	// How far along x a cell may be from that part and still count; most that come up here
+	// are known by that to be too far.
+	reach := math.Sqrt(float64(w.limit*w.limit)-float64(away*away)) + roundSlack
+	from, to := x0-reach, x1+reach
 	// Rounding of x0 and x1 may shift a cell from one group to the next, no more.
 	if c := f.nextSolid(max(lowest, c0), min(c1, f.cols-1), r); c >= 0 {
 		if w.try(c, r) > away {
@@ -254,10 +258,10 @@ func (w *rower) row(r int) {
 			}
 		}
 	}
-	if c := f.prevSolid(min(c0-1, f.cols-1), first, r); c >= 0 {
+	if c := f.prevSolid(min(c0-1, f.cols-1), first, r); c >= 0 && f.ox+float64(float64(c+1)*f.h) >= from {
 		w.try(c, r)
 	}
-	if c := f.nextSolid(max(lowest, c1+1), last, r); c >= 0 {
+	if c := f.nextSolid(max(lowest, c1+1), last, r); c >= 0 && f.ox+float64(float64(c)*f.h) <= to {
 		w.try(c, r)
 	}
 }
