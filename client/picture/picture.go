@@ -9,6 +9,9 @@
 // enlarged; and below it a legend, the figures in words, a scale bar, the
 // version and its digest.
 //
+// For engineers a sheet shows a roadmap over the floor, thinned out to what can be read,
+// or the solids grown for a body; and DrawComparison several routes side by side.
+//
 // The same scene always gives the same bytes. The band is worked out here from
 // the floor's content for drawing alone; every figure in words is the service's.
 package picture
