@@ -44,7 +44,7 @@ func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *co
 		return nil
 	}
 	if q.OldBound == RoadmapOptimum && t.q.Options.roomy() {
-		return t.keptRoomy(before, old)
+		return t.keptRoomy(ctx, before, old)
 	}
 	if q.OldBound != AnyAngleOptimum || !t.anyAngle() {
 		return nil
@@ -93,7 +93,7 @@ func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *co
 // A fresh plan may be the cheaper one by how differently it draws what it shares with
 // T: the pose may be off the edge by half a millimetre, where chords are, and these
 // may be shorter than others by 3e-4. One-way zones need no regard, as for kept.
-func (t *task) keptRoomy(before *floor.Map, pts []geom.Point) *course {
+func (t *task) keptRoomy(ctx context.Context, before *floor.Map, pts []geom.Point) *course {
 	now, p := t.w.m, t.j.Open()
 	d := detour{from: pts[0], to: pts[len(pts)-1], long: t.costOf(pts)}
 	grown := standing{p + meshStandsOff, p - float64(t.q.Body.MarginUm) + meshStandsOff}
@@ -114,8 +114,10 @@ func (t *task) keptRoomy(before *floor.Map, pts []geom.Point) *course {
 		}
 	}
 	if t.q.Options.Preference == Clearest {
-		w, ok := t.w.ways.roads.peek(t.roadsFor())
-		if !ok {
+		// A search would wait for them just the same, and the answer must not tell whether
+		// they were there.
+		w, err := t.roads(ctx)
+		if err != nil {
 			return nil
 		}
 		if b, ok := w.Between(d.from, d.to); !ok || b.ClearanceUm > t.roomOf(pts)+onRouteUm {

@@ -6,6 +6,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"os"
+	"reflect"
 	"testing"
 
 	"example.com/wideberth/mapstore/floor"
@@ -70,6 +71,29 @@ func TestReplanKeepsWithoutASearch(t *testing.T) {
 		r.OldBound = 0
 		if got := replan(t, v, r); c.kept && got.Counters.Expanded == 0 {
 			t.Errorf("%s: kept without a search although nothing was known of the route", c.name)
+		}
+	}
+}
+
+// Whether a version was made from the one before, with all that was in use, or from scratch
+// does not show in what a replan answers, kept without a search or not.
+func TestLaw8ReplanDoesNotTellWhatWasThere(t *testing.T) {
+	before := newMap(t, settings(0, 0, 40, 10, 0.05), solidBox("rack", 8, 2, 9, 10), solidBox("crate", 38, 9, 39, 9.5))
+	w := newWorld(t, before)
+	for pref := range planner.Clearest + 1 {
+		q := shortest(body(0.3), pose(2, 5), pose(15, 5))
+		q.Options.Preference, q.Options.TightWeight = pref, 1
+		old := mustRoute(t, w, q)
+		for _, edit := range []floor.Edit{{Kind: floor.RemoveFeature, Name: "crate"}, {Kind: floor.RemoveFeature, Name: "rack"}} {
+			after := newMapFrom(t, before, []floor.Edit{edit})
+			v, err := w.Advance(context.Background(), after)
+			if err != nil {
+				t.Fatal(err)
+			}
+			r := again(old, before, q, along(old, 0.25))
+			if got, want := replan(t, v, r), replan(t, newWorld(t, after), r); !reflect.DeepEqual(got, want) {
+				t.Errorf("preference %d, without %s: %+v, bound %+v; from scratch %+v, bound %+v", pref, edit.Name, got, got.Route.Bound, want, want.Route.Bound)
+			}
 		}
 	}
 }

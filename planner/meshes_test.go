@@ -132,6 +132,55 @@ func TestWhatIsInTheMakingIsCarriedOn(t *testing.T) {
 	}
 }
 
+// What could not be made of one version says nothing of the next: whoever asks for it there
+// is answered as on a version that nothing was asked of before.
+func TestWhatFailsInTheMakingIsNotCarriedOn(t *testing.T) {
+	release := make(chan struct{})
+	s := &shelf[int, int]{limit: 4, make: func(context.Context, int) (int, error) { <-release; return 0, errors.New("too large") }}
+	n := &shelf[int, int]{limit: 4, make: func(context.Context, int) (int, error) { return 7, nil }}
+	s.find(5)
+	if err := s.carry(context.Background(), n, func(context.Context, int, int) (int, error) { return 8, nil }); err != nil {
+		t.Fatal(err)
+	}
+	close(release)
+	if got, err := n.get(context.Background(), 5); err != nil || got != 7 {
+		t.Errorf("%d, %v", got, err)
+	}
+}
+
+// Bodies of more margins than there is room for graphs do not make versions slow to get
+// ready: roads whose graph was dropped are made when they are asked for, not with the version.
+func TestRoadsWithoutTheirGraphAreNotCarriedOn(t *testing.T) {
+	ctx := context.Background()
+	m, err := plainfloor.Maze(20, 4).Floor()
+	if err != nil {
+		t.Fatal(err)
+	}
+	w, err := NewWorld(ctx, m)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for k := range int64(GraphLimit + 3) {
+		if _, err := w.ways.roads.get(ctx, roadKey{60_000, graphKey{k, true}}); err != nil {
+			t.Fatal(err)
+		}
+	}
+	next, err := m.Apply([]floor.Edit{{Kind: floor.PaintRect, Fill: floor.Occupied, Rect: floor.CellRect{X0: 10, Y0: 10, X1: 11, Y1: 11}}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	v, err := w.Advance(ctx, next)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for k := range int64(GraphLimit + 3) {
+		key := graphKey{k, true}
+		if got, want := v.ways.roads.has(roadKey{60_000, key}), k >= 3; got != want || v.ways.graphs.has(key) != want {
+			t.Errorf("margin %d: roads %v, graph %v; want %v", k, got, v.ways.graphs.has(key), want)
+		}
+	}
+}
+
 // Makings go on when nobody waits any more, but not any number of them.
 func TestMakingsThatNobodyWaitsForAreBounded(t *testing.T) {
 	ended := make(chan int, 10)

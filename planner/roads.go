@@ -93,6 +93,11 @@ func (w *ways) carry(ctx context.Context, f *clearance.Field, change floor.Chang
 		return nil, err
 	}
 	return n, w.roads.carry(ctx, n.roads, func(ctx context.Context, k roadKey, old *voronoi.Roads) (*voronoi.Roads, error) {
+		// Where more kinds of bodies are asked for than there is room, what roads rest on may
+		// have gone; making it anew for each version would keep all waiting for the version.
+		if !n.graphs.has(k.graphKey) || !n.meshes.has(k.mesh()) {
+			return nil, errLeftOut
+		}
 		graph, open, err := n.under(ctx, k)
 		if err != nil {
 			return nil, err

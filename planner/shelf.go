@@ -2,6 +2,7 @@ package planner
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"slices"
 	"sync"
@@ -102,6 +103,13 @@ func (s *shelf[K, V]) thin() {
 	}
 }
 
+// has says whether the structure for k is there or in the making.
+func (s *shelf[K, V]) has(k K) bool {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	return s.held(k) != nil
+}
+
 func (s *shelf[K, V]) held(k K) *kept[K, V] {
 	if i := slices.IndexFunc(s.kept, func(e *kept[K, V]) bool { return e.key == k }); i >= 0 {
 		return s.kept[i]
@@ -178,9 +186,14 @@ func (s *shelf[K, V]) drop(e *kept[K, V]) {
 	s.kept = slices.DeleteFunc(s.kept, func(o *kept[K, V]) bool { return o == e })
 }
 
+// errLeftOut is for what is not worth carrying to another version.
+var errLeftOut = errors.New("planner: left out")
+
 // carry fills n, the shelf of another version, from what is made and in use here. What
-// is still in the making is carried on once it is made, in the background. The error is
-// ctx's.
+// is still in the making is carried on once it is made, in the background, or made from
+// scratch when that fails: what could not be made of one version says nothing of another.
+// What advance wants left out (errLeftOut) is made when it is next asked for. The error
+// is ctx's.
 func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(context.Context, K, V) (V, error)) error {
 	var ready []*kept[K, V]
 	s.mu.Lock()
@@ -192,10 +205,16 @@ func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(co
 			e.waiters++
 			n.begin(e.key, func(ctx context.Context) (V, error) {
 				v, err := s.wait(ctx, e)
-				if err != nil {
+				if err == nil {
+					v, err = advance(ctx, e.key, v)
+					if !errors.Is(err, errLeftOut) {
+						return v, err
+					}
+				}
+				if ctx.Err() != nil {
 					return v, err
 				}
-				return advance(ctx, e.key, v)
+				return n.make(ctx, e.key)
 			}).idle = e.idle + 1
 		default:
 			ready = append(ready, e)
@@ -205,6 +224,9 @@ func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(co
 	s.mu.Unlock()
 	for _, e := range ready {
 		v, err := advance(ctx, e.key, e.val)
+		if errors.Is(err, errLeftOut) {
+			continue
+		}
 		if err != nil {
 			return err
 		}
