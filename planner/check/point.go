@@ -35,9 +35,10 @@ func (w *walker) point(pts []geom.Point, solids, zones bool) string {
 	if len(outlines) == 0 && !solids {
 		return ""
 	}
+	var buf near
 	for i := 1; i < len(pts); i++ {
 		a, b := pts[i-1], pts[i]
-		places, through := w.touched(a, b, outlines, solids)
+		places, through := w.touched(&buf, a, b, outlines, solids)
 		if through != "" {
 			return fmt.Sprintf("piece %d goes through %s", i-1, through)
 		}
@@ -46,18 +47,24 @@ func (w *walker) point(pts []geom.Point, solids, zones bool) string {
 		for _, s := range slices.Compact(places) {
 			if s > 2*SlackUm && s < long-2*SlackUm {
 				p := geom.Point{X: a.X + s/long*(b.X-a.X), Y: a.Y + s/long*(b.Y-a.Y)}
-				if x, y := between(w.facings(p, outlines, solids), minus(a, b), minus(b, a)); x != "" {
+				if x, y := between(w.facings(&buf, p, outlines, solids), minus(a, b), minus(b, a)); x != "" {
 					return fmt.Sprintf("piece %d passes between %s and %s, which touch", i-1, x, y)
 				}
 			}
 		}
 		if i+1 < len(pts) && a != b && pts[i+1] != b {
-			if x, y := between(w.facings(b, outlines, solids), minus(a, b), minus(pts[i+1], b)); x != "" {
+			if x, y := between(w.facings(&buf, b, outlines, solids), minus(a, b), minus(pts[i+1], b)); x != "" {
 				return fmt.Sprintf("the bend after piece %d passes between %s and %s, which touch", i-1, x, y)
 			}
 		}
 	}
 	return ""
+}
+
+// near is room for what is touched.
+type near struct {
+	places []float64
+	fs     []facing
 }
 
 func minus(p, q geom.Point) geom.Point { return geom.Point{X: p.X - q.X, Y: p.Y - q.Y} }
@@ -73,8 +80,9 @@ func between(fs []facing, u, v geom.Point) (left, right string) {
 		}
 		return t
 	}
+	leave := angle(v)
 	for _, f := range fs {
-		if angle(f.in) > angle(v) {
+		if angle(f.in) > leave {
 			left = f.name
 		} else {
 			right = f.name
@@ -88,7 +96,9 @@ func between(fs []facing, u, v geom.Point) (left, right string) {
 
 // touched gives places, micrometres along ab, that between them meet everything that is
 // touched, and what is entered, "" for nothing.
-func (w *walker) touched(a, b geom.Point, outlines []outline, cells bool) (places []float64, through string) {
+func (w *walker) touched(buf *near, a, b geom.Point, outlines []outline, cells bool) (places []float64, through string) {
+	places = buf.places[:0]
+	defer func() { buf.places = places }()
 	long := math.Hypot(b.X-a.X, b.Y-a.Y)
 	at := func(p geom.Point) float64 {
 		if long == 0 {
@@ -137,7 +147,8 @@ func (w *walker) touched(a, b geom.Point, outlines []outline, cells bool) (place
 	return places, through
 }
 
-// cellsAbout calls do with the solid cells that the segment touches.
+// cellsAbout calls do with the solid cells that the segment touches, those next to one another
+// in a row as one.
 func (w *walker) cellsAbout(a, b geom.Point, do func(x0, y0, x1, y1 float64)) {
 	if b.Y < a.Y {
 		a, b = b, a
@@ -161,13 +172,17 @@ func (w *walker) cellsAbout(a, b geom.Point, do func(x0, y0, x1, y1 float64)) {
 			if skip := first - bx*floor.BlockSize; skip > 0 {
 				word = word >> skip << skip
 			}
-			for ; word != 0; word &= word - 1 {
-				c := bx*floor.BlockSize + bits.TrailingZeros64(word)
-				if c > last {
-					break
-				}
-				if x := w.lo.X + float64(c)*w.h; boxDistance(x, y, x+w.h, y+w.h, a, b) <= SlackUm {
-					do(x, y, x+w.h, y+w.h)
+			if over := bx*floor.BlockSize + floor.BlockSize - 1 - last; over > 0 {
+				word = word << over >> over
+			}
+			for word != 0 {
+				from := bits.TrailingZeros64(word)
+				n := bits.TrailingZeros64(^(word >> from))
+				word &^= (math.MaxUint64 >> (floor.BlockSize - n)) << from
+				x0 := w.lo.X + float64(bx*floor.BlockSize+from)*w.h
+				x1 := x0 + float64(n)*w.h
+				if boxDistance(x0, y, x1, y+w.h, a, b) <= SlackUm {
+					do(x0, y, x1, y+w.h)
 				}
 			}
 		}
@@ -175,8 +190,9 @@ func (w *walker) cellsAbout(a, b geom.Point, do func(x0, y0, x1, y1 float64)) {
 }
 
 // facings are the things touched at p.
-func (w *walker) facings(p geom.Point, outlines []outline, cells bool) []facing {
-	var fs []facing
+func (w *walker) facings(buf *near, p geom.Point, outlines []outline, cells bool) []facing {
+	fs := buf.fs[:0]
+	defer func() { buf.fs = fs }()
 	if cells {
 		w.cellsAbout(p, p, func(x0, y0, x1, y1 float64) {
 			fs = append(fs, facing{geom.Point{X: (x0+x1)/2 - p.X, Y: (y0+y1)/2 - p.Y}, "a cell"})

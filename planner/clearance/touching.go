@@ -7,12 +7,13 @@ import (
 	"example.com/wideberth/mapstore/geom"
 )
 
-// Touching collects what may touch the closed segment ab: the squares of the solid cells
-// that do, and the solid features whose outlines come within roundSlack of it or
+// Touching collects what may touch the closed segment ab: solid cells that do, those next to
+// one another in a row as one box, appended to cells; and the solid features whose outlines come within roundSlack of it or
 // may hold it. Time is linear in the cells and pieces along ab.
-func (f *Field) Touching(a, b geom.Point) (cells []geom.Rect, features []*floor.Feature) {
+func (f *Field) Touching(cells []geom.Rect, a, b geom.Point) ([]geom.Rect, []*floor.Feature) {
+	var features []*floor.Feature
 	if !finite(a) || !finite(b) {
-		return nil, nil
+		return cells, nil
 	}
 	lo, hi := a, b
 	if lo.Y > hi.Y {
@@ -22,10 +23,17 @@ func (f *Field) Touching(a, b geom.Point) (cells []geom.Rect, features []*floor.
 		y := f.oy + float64(r)*f.h
 		x0, x1 := xWithin(lo, hi, y-roundSlack, y+f.h+roundSlack)
 		last := min(f.cols-1, f.cellAt(x1-f.ox, 0, f.cols)+1)
-		for c := f.nextSolid(max(0, f.cellAt(x0-f.ox, 0, f.cols)-1), last, r); c >= 0; c = f.nextSolid(c+1, last, r) {
-			if q := f.cellRect(c, r); geom.RectTouchesSegment(q, a, b) {
+		for c := f.nextSolid(max(0, f.cellAt(x0-f.ox, 0, f.cols)-1), last, r); c >= 0; {
+			q := f.cellRect(c, r)
+			next := f.nextSolid(c+1, last, r)
+			for ; next == c+1; next = f.nextSolid(c+1, last, r) {
+				c = next
+			}
+			q.Max.X = f.cellRect(c, r).Max.X
+			if geom.RectTouchesSegment(q, a, b) {
 				cells = append(cells, q)
 			}
+			c = next
 		}
 	}
 	add := func(ft *floor.Feature) {

@@ -34,6 +34,8 @@ type Judge struct {
 
 	driven []driven // see Drive
 	ask    int
+
+	near touch.Solids // see solids
 }
 
 // New makes a judge for a body's required clearance and radius.
@@ -107,7 +109,7 @@ type driven struct {
 	near clearance.Nearest
 }
 
-const mostDriven = 256
+const mostDriven = 4096
 
 // known is the smallest clearance along a piece driven before; nil when it was not. Pieces
 // are asked for again mostly in the order they came.
@@ -184,13 +186,14 @@ func (j *Judge) keepsPoint(a, b geom.Point, apart bool) bool {
 }
 
 // solids are the things along ab that matter to a point: solids where NeedUm is 0, and
-// closed zones where RadiusUm is.
+// closed zones where RadiusUm is. They are good until the next are asked for.
 func (j *Judge) solids(a, b geom.Point) *touch.Solids {
-	s := &touch.Solids{Bounds: j.Field.Bounds()}
+	s := &j.near
+	s.Bounds, s.Cells, s.Shapes = j.Field.Bounds(), s.Cells[:0], s.Shapes[:0]
 	if j.NeedUm == 0 {
 		s.Shut = !j.Field.Map().Settings().OpenBorder
-		cells, features := j.Field.Touching(a, b)
-		s.Cells = cells
+		var features []*floor.Feature
+		s.Cells, features = j.Field.Touching(s.Cells, a, b)
 		for _, f := range features {
 			s.Shapes = append(s.Shapes, &f.Shape)
 		}

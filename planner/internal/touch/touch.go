@@ -25,8 +25,10 @@ const RoundSlackUm = 1e-3
 type Solids struct {
 	Bounds geom.Rect      // of the floor
 	Shut   bool           // the border is solid
-	Cells  []geom.Rect    // solid cells
+	Cells  []geom.Rect    // solid cells, or boxes of such
 	Shapes []*floor.Shape // polygons, discs, thick polylines
+
+	contacts []contact
 }
 
 // side of a segment: +1 left, -1 right.
@@ -65,7 +67,8 @@ func (s *Solids) Clear(a, b geom.Point) bool {
 			return false
 		}
 	}
-	w := walk{a: a, b: b}
+	w := walk{a: a, b: b, contacts: s.contacts[:0]}
+	defer func() { s.contacts = w.contacts }()
 	for _, c := range s.Cells {
 		if !w.cell(c) {
 			return false
@@ -141,8 +144,12 @@ func (w *walk) cell(c geom.Rect) bool {
 	if EntersRect(c, w.a, w.b) {
 		return false
 	}
+	if !c.Intersects(geom.BoundsOf(w.a, w.b)) {
+		return true
+	}
 	side := 0
-	var on []geom.Point
+	var room [4]geom.Point
+	on := room[:0]
 	for _, p := range c.Corners() {
 		switch o := geom.Orient(w.a, w.b, p); {
 		case o == 0:
@@ -158,7 +165,7 @@ func (w *walk) cell(c geom.Rect) bool {
 			return true // only ahead of an end
 		}
 	}
-	if len(on) > 0 && c.Intersects(geom.BoundsOf(w.a, w.b)) {
+	if len(on) > 0 {
 		w.add(side, on[0], on[len(on)-1], 0)
 	}
 	return true
