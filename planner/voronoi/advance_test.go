@@ -63,7 +63,7 @@ func sameRoads(a, b *Roads) string {
 // do answers.
 func TestLaw4PatchedEqualsRebuilt(t *testing.T) {
 	const seed = 44
-	sequences := 250
+	sequences := 500
 	if slow() {
 		sequences = 10_000
 	}
