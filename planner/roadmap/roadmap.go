@@ -70,6 +70,13 @@ type Windowed interface {
 	Size() Size
 }
 
+// Preparing is a Roadmap whose Describe would take long were it not prepared for.
+type Preparing interface {
+	Roadmap
+	// Prepare does ahead what Describe needs. The error is ctx's.
+	Prepare(ctx context.Context) error
+}
+
 // MaxWindow is how many nodes a Windowed roadmap describes at most.
 const MaxWindow = 200_000
 
@@ -116,5 +123,5 @@ type Cell struct {
 type Note struct {
 	Name  string
 	Value float64
-	Unit  string
+	Unit  string // "m", "m2", or "1" for a number
 }

@@ -50,6 +50,16 @@ type set struct {
 	grid grid
 }
 
+// sides is how many sides solids have.
+func sides(all []solids.Solid) (n int) {
+	for i := range all {
+		for _, c := range all[i].Chains {
+			n += len(c)
+		}
+	}
+	return n
+}
+
 // add takes in all solids.
 func (s *set) add(need roadmap.Need, all []solids.Solid) {
 	outward := need.ClearanceUm == 0

@@ -112,11 +112,15 @@ func Of(ctx context.Context, m *floor.Map, need roadmap.Need) (*Outline, error) 
 func Simplified(ctx context.Context, m *floor.Map, need roadmap.Need, errUm float64) (*Outline, error) {
 	s := &set{m: m, origin: m.Bounds().Min, h: float64(m.Settings().ResolutionUm), slack: slackOf(m.Bounds())}
 	r := float64(need.ClearanceUm)
-	s.add(need, solids.Of(m, need.Zones, solids.Simplification{
+	all, ok := solids.Of(m, need.Zones, solids.Simplification{
 		GapCells: int(2 * math.Sqrt(errUm/6*(2*r+errUm/6)) / s.h),
 		// What is filled must be within the radius of the chord over it.
 		NotchUm: min(errUm*2/3, r-1-s.slack),
-	}))
+	})
+	if n := sides(all); !ok || n > MaxPieces {
+		return nil, fmt.Errorf("more than %d sides and corners: %w", MaxPieces, roadmap.ErrTooLarge)
+	}
+	s.add(need, all)
 	if err := s.drop(ctx); err != nil {
 		return nil, err
 	}

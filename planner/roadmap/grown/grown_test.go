@@ -2,8 +2,10 @@ package grown
 
 import (
 	"context"
+	"errors"
 	"math"
 	"math/rand/v2"
+	"runtime"
 	"slices"
 	"testing"
 
@@ -328,6 +330,25 @@ func TestSimplifiedIsBetweenTwoRadii(t *testing.T) {
 	}
 }
 
+// A floor that is noise all over is refused before its outline fills the memory: 9 million
+// cells have some 4.5 million turns, and a side of the outline takes hundreds of bytes.
+func TestNoiseIsRefusedInLittleMemory(t *testing.T) {
+	m, err := plainfloor.Random(rand.New(rand.NewPCG(1, 2)), 3000, 3000, 0.5).Floor()
+	if err != nil {
+		t.Fatal(err)
+	}
+	var before, after runtime.MemStats
+	runtime.ReadMemStats(&before)
+	_, err = Of(context.Background(), m, roadmap.Need{ClearanceUm: 100_000})
+	runtime.ReadMemStats(&after)
+	if !errors.Is(err, roadmap.ErrTooLarge) {
+		t.Errorf("error %v, wanted too large", err)
+	}
+	if mb := (after.TotalAlloc - before.TotalAlloc) >> 20; mb > 20 {
+		t.Errorf("%d MiB taken to find that out", mb)
+	}
+}
+
 func BenchmarkRandomClutter(b *testing.B) {
 	f, err := plainfloor.Random(rand.New(rand.NewPCG(1, 2)), 512, 512, 0.2).Floor()
 	if err != nil {
@@ -336,5 +357,6 @@ func BenchmarkRandomClutter(b *testing.B) {
 	for b.Loop() {
 		outline(b, f, 100_000)
 	}
-	b.ReportMetric(float64(len(solids.Of(f, false, solids.Simplification{})[0].Chains)), "chains")
+	all, _ := solids.Of(f, false, solids.Simplification{})
+	b.ReportMetric(float64(len(all[0].Chains)), "chains")
 }

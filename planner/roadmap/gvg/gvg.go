@@ -24,7 +24,7 @@ import (
 	"example.com/wideberth/planner/voronoi"
 )
 
-// MaxEdges is how many edges a graph has at most.
+// MaxEdges is how many edges Describe gives at most.
 const MaxEdges = 1_000_000
 
 // Graph is the generalized Voronoi graph of one version, for one Need.
@@ -129,6 +129,7 @@ func (g *Graph) Describe() roadmap.Description {
 	}
 	for e := range g.graph.Edges {
 		if len(d.Edges) == MaxEdges {
+			d.Notes = append(d.Notes, roadmap.Note{Name: "edges up to which the graph is listed", Value: MaxEdges, Unit: "1"})
 			break
 		}
 		pts, um := e.Points()

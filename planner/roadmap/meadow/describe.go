@@ -83,11 +83,11 @@ func (r *Roadmap) notes() []roadmap.Note {
 	}
 	return []roadmap.Note{
 		{Name: "outline error", Value: geom.Metres(OutlineErrorUm), Unit: "m"},
-		{Name: "regions", Value: float64(len(r.regions))},
-		{Name: "regions without width or height", Value: float64(r.flat())},
-		{Name: "trapezoids merged", Value: float64(len(r.s.Cells))},
-		{Name: "shared borders", Value: float64(len(r.borders))},
-		{Name: "area of regions", Value: area / (geom.UmPerMetre * geom.UmPerMetre), Unit: "m²"},
+		{Name: "regions", Value: float64(len(r.regions)), Unit: "1"},
+		{Name: "regions without width or height", Value: float64(r.flat()), Unit: "1"},
+		{Name: "trapezoids merged", Value: float64(len(r.s.Cells)), Unit: "1"},
+		{Name: "shared borders", Value: float64(len(r.borders)), Unit: "1"},
+		{Name: "area of regions", Value: area / (geom.UmPerMetre * geom.UmPerMetre), Unit: "m2"},
 	}
 }
 

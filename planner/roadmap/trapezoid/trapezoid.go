@@ -195,10 +195,10 @@ func (r *Roadmap) notes() []roadmap.Note {
 	}
 	return []roadmap.Note{
 		{Name: "outline error", Value: geom.Metres(OutlineErrorUm), Unit: "m"},
-		{Name: "cells", Value: float64(len(r.s.Cells))},
-		{Name: "cells without width or height", Value: float64(r.flat())},
-		{Name: "shared walls", Value: float64(len(r.s.Walls))},
-		{Name: "area of cells", Value: area / (geom.UmPerMetre * geom.UmPerMetre), Unit: "m²"},
-		{Name: "strips swept", Value: float64(r.s.Strips())},
+		{Name: "cells", Value: float64(len(r.s.Cells)), Unit: "1"},
+		{Name: "cells without width or height", Value: float64(r.flat()), Unit: "1"},
+		{Name: "shared walls", Value: float64(len(r.s.Walls)), Unit: "1"},
+		{Name: "area of cells", Value: area / (geom.UmPerMetre * geom.UmPerMetre), Unit: "m2"},
+		{Name: "strips swept", Value: float64(r.s.Strips()), Unit: "1"},
 	}
 }

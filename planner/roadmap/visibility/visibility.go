@@ -76,7 +76,7 @@ type Graph struct {
 	kept  atomic.Int64             // in all of links
 }
 
-var _ roadmap.Roadmap = (*Graph)(nil)
+var _ roadmap.Preparing = (*Graph)(nil)
 
 // Build makes the graph of f's version. The error is ctx's, or wraps roadmap.ErrTooLarge
 // beyond MaxArcs, or says that the clearance is above the floor's cap. Time is that of
@@ -134,6 +134,15 @@ func (g *Graph) Complete(ctx context.Context) error {
 	})
 }
 
+// Prepare finds the tangents that Describe gives, which takes seconds for MaxDescribed
+// arcs. The error is ctx's.
+func (g *Graph) Prepare(ctx context.Context) error {
+	if len(g.arcs) > MaxDescribed {
+		return ctx.Err()
+	}
+	return g.Complete(ctx)
+}
+
 // Describe is the graph as data: a node in the middle of each arc, an edge for each
 // tangent, from where it leaves one arc to where it meets the other. Edges are left out
 // beyond MaxDescribed arcs. An edge's clearance is that required of it: it touches arcs
@@ -149,7 +158,7 @@ func (g *Graph) Describe() roadmap.Description {
 		roadmap.Note{Name: "outline error", Value: g.errUm / 1e6, Unit: "m"},
 		roadmap.Note{Name: "arc error", Value: ArcErrorUm / 1e6, Unit: "m"})
 	if len(g.arcs) > MaxDescribed {
-		d.Notes = append(d.Notes, roadmap.Note{Name: "corners up to which edges are listed", Value: MaxDescribed})
+		d.Notes = append(d.Notes, roadmap.Note{Name: "corners up to which edges are listed", Value: MaxDescribed, Unit: "1"})
 		return d
 	}
 	_ = g.Complete(context.Background()) // nothing ends it

@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"sync/atomic"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -179,9 +180,18 @@ func (s *Space) fill(ctx context.Context, list []int) error {
 			}
 		}
 	}
+	var made atomic.Int64 // so that far too large a floor does not fill the memory first
 	err := parallel.Each(ctx, 0, len(list), func() func(int) {
 		p := &stripper{}
-		return func(k int) { s.strips[list[k]] = p.make(ctx, s, list[k], near[list[k]]) }
+		return func(k int) {
+			i := list[k]
+			if s.strips[i] = nil; made.Load() > int64(s.most) {
+				return
+			}
+			if s.strips[i] = p.make(ctx, s, i, near[i]); s.strips[i] != nil {
+				made.Add(int64(len(s.strips[i].traps)))
+			}
+		}
 	})
 	if err != nil {
 		return err

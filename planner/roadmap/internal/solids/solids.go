@@ -31,13 +31,18 @@ type Simplification struct {
 	NotchUm  float64 // see Simplify; 0: none
 }
 
+// MaxCorners is how many turns of the raster's outline Of follows.
+const MaxCorners = 4_000_000
+
 // Of collects the solids of m, closed zones too when zones is set. The raster comes
-// first, simplified, then features by name. Time is linear in the cells' bits and in the
-// outlines.
-func Of(m *floor.Map, zones bool, simple Simplification) []Solid {
-	var out []Solid
+// first, simplified, then features by name. ok is false beyond MaxCorners. Time is linear
+// in the cells' bits and in the outlines.
+func Of(m *floor.Map, zones bool, simple Simplification) (out []Solid, ok bool) {
 	r := ReadRaster(m)
 	r.FillGaps(simple.GapCells)
+	if r.turns() > MaxCorners {
+		return nil, false
+	}
 	loops := r.Trace()
 	if simple.NotchUm > 0 {
 		for i := range loops {
@@ -50,7 +55,7 @@ func Of(m *floor.Map, zones bool, simple Simplification) []Solid {
 			out = appendFeature(out, f)
 		}
 	}
-	return out
+	return out, true
 }
 
 // appendFeature adds a feature's solids: each segment of a polyline is one of its own.

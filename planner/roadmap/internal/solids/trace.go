@@ -2,7 +2,6 @@ package solids
 
 import (
 	"math/bits"
-	"slices"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -79,8 +78,30 @@ func (r *Raster) Trace() [][]geom.Point {
 
 // corners lists the turns of the outline row by row.
 func (r *Raster) corners() []corner {
+	out := make([]corner, 0, r.turns())
+	r.eachTurn(func(y, w int, turn, lb, b, la, a uint64) {
+		for ; turn != 0; turn &= turn - 1 {
+			i := bits.TrailingZeros64(turn)
+			x := w*floor.BlockSize + i
+			if x > r.cols {
+				break
+			}
+			out = appendCorner(out, int32(x), int32(y), lb>>i&1 != 0, b>>i&1 != 0, la>>i&1 != 0, a>>i&1 != 0)
+		}
+	})
+	return out
+}
+
+// turns is how many corners there are, a pinch counted once.
+func (r *Raster) turns() (n int) {
+	r.eachTurn(func(_, _ int, turn, _, _, _, _ uint64) { n += bits.OnesCount64(turn) })
+	return n
+}
+
+// eachTurn goes through the rows of vertices, 64 vertices at a time: those where the outline
+// turns, and the cells around them: below and above, to the left and to the right.
+func (r *Raster) eachTurn(do func(y, w int, turn, lb, b, la, a uint64)) {
 	outside := r.beyond()
-	var out []corner
 	below := r.outside()
 	row := func(y int, above []uint64) {
 		carryB, carryA := outside&1, outside&1
@@ -88,15 +109,7 @@ func (r *Raster) corners() []corner {
 			b, a := below[w], above[w]
 			lb, la := b<<1|carryB, a<<1|carryA // the cells to the left of each vertex
 			carryB, carryA = b>>63, a>>63
-			turn := (b ^ lb ^ a ^ la) | (b^lb)&(b^a)&(lb^la) // an odd number, or two opposite ones
-			for ; turn != 0; turn &= turn - 1 {
-				i := bits.TrailingZeros64(turn)
-				x := w*floor.BlockSize + i
-				if x > r.cols {
-					break
-				}
-				out = appendCorner(out, int32(x), int32(y), lb>>i&1 != 0, b>>i&1 != 0, la>>i&1 != 0, a>>i&1 != 0)
-			}
+			do(y, w, (b^lb^a^la)|(b^lb)&(b^a)&(lb^la), lb, b, la, a) // an odd number, or two opposite ones
 		}
 		below = above
 	}
@@ -104,7 +117,6 @@ func (r *Raster) corners() []corner {
 		row(y, above)
 	}
 	row(r.rows, r.outside())
-	return slices.Clip(out)
 }
 
 // appendCorner adds the turn at (x, y) among its four cells, two for a pinch: one about
