@@ -107,6 +107,11 @@ func TestShowRoadmap(t *testing.T) {
 			if h := all.header; h.NodeCount != int64(len(all.nodes)) || h.EdgeCount != int64(len(all.edges)) || h.CellCount != int64(len(all.cells)) || len(all.nodes) == 0 || len(all.edges) == 0 {
 				t.Errorf("header %v, %d nodes, %d edges, %d cells came", h, len(all.nodes), len(all.edges), len(all.cells))
 			}
+			for _, n := range all.header.Notes {
+				if n.Name == "" || !slices.Contains([]string{"m", "m2", "1"}, n.Unit) {
+					t.Errorf("note %v, wanted a name and one of the contract's units", n)
+				}
+			}
 			for i, e := range all.edges {
 				a, b := all.nodes[e.FromNode], all.nodes[e.ToNode]
 				n := len(e.Points)

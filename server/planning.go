@@ -13,7 +13,7 @@ import (
 
 const (
 	// prepareGrace is how long a plan waits for its version to be made ready,
-	// beside what the search itself may take.
+	// beside what the search itself may take; a budget that was asked for counts instead.
 	prepareGrace = 5 * time.Second
 	// answerShare is the part of a time budget, and of the caller's remaining time, that
 	// is kept back for describing and sending the answer, so that it arrives in time;
@@ -65,7 +65,11 @@ func (s *Server) search(ctx context.Context, snap *mapstore.Snapshot, b budget, 
 		ctx, cancel = timed(ctx, beforeAnswer(b.Duration), planner.ErrTimeBudget)
 		defer cancel()
 	}
-	world, err := s.world(ctx, snap)
+	wait := prepareGrace
+	if b.asked {
+		wait = b.Duration
+	}
+	world, err := s.worldWithin(ctx, snap, wait)
 	if b.asked && errors.Is(err, errPreparing) {
 		*answer = planner.Answer{Refusal: &planner.Refusal{Reason: planner.OutOfTime}}
 		return nil
@@ -88,8 +92,12 @@ func (s *Server) search(ctx context.Context, snap *mapstore.Snapshot, b budget, 
 
 // world is a version's world. The error is errPreparing when it takes too long.
 func (s *Server) world(ctx context.Context, snap *mapstore.Snapshot) (*planner.World, error) {
+	return s.worldWithin(ctx, snap, prepareGrace)
+}
+
+func (s *Server) worldWithin(ctx context.Context, snap *mapstore.Snapshot, d time.Duration) (*planner.World, error) {
 	s.worlds.follow(snap.Info.Floor)
-	wait, cancel := timed(ctx, prepareGrace, errPreparing)
+	wait, cancel := timed(ctx, d, errPreparing)
 	defer cancel()
 	world, err := s.worlds.get(wait, snap)
 	if cause := context.Cause(wait); err != nil && (errors.Is(cause, errPreparing) || errors.Is(cause, planner.ErrTimeBudget)) {

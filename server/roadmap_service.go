@@ -13,6 +13,7 @@ import (
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner"
+	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/roadmap"
 	"example.com/wideberth/planner/roadmap/grown"
 	pb "example.com/wideberth/proto/wideberth/v1"
@@ -114,15 +115,20 @@ func (v roadmapService) ShowRoadmap(r *pb.ShowRoadmapRequest, stream grpc.Server
 		NodeCount: size.Nodes, EdgeCount: size.Edges, CellCount: size.Cells, MemoryBytes: size.Bytes,
 		Notes: notesOut(d.Notes), NodeLimit: roadmap.MaxWindow,
 	}
-	if err := stream.Send(&pb.ShowRoadmapResponse{Piece: &pb.ShowRoadmapResponse_Header{Header: header}}); err != nil {
-		return err
+	if d = clip(d, p.area(r.Area)); len(d.Nodes) > roadmap.MaxWindow {
+		return statusOf(ctx, fmt.Errorf("%w: more than %d nodes in this area", roadmap.ErrTooLarge, roadmap.MaxWindow), about)
 	}
-	d = clip(d, p.area(r.Area))
-	if err := sendDescription(&d, p.body.SensingUm, stream); err != nil {
-		return err
+	send := func(m *pb.ShowRoadmapResponse) error {
+		return patiently(stream.Context(), sendPatience, func() error { return stream.Send(m) })
+	}
+	if err := send(&pb.ShowRoadmapResponse{Piece: &pb.ShowRoadmapResponse_Header{Header: header}}); err != nil {
+		return statusOf(stream.Context(), err, about)
+	}
+	if err := sendDescription(&d, p.body.SensingUm, send); err != nil {
+		return statusOf(stream.Context(), err, about)
 	}
 	end := &pb.RoadmapEnd{NodeCount: int64(len(d.Nodes)), EdgeCount: int64(len(d.Edges)), CellCount: int64(len(d.Cells))}
-	return stream.Send(&pb.ShowRoadmapResponse{Piece: &pb.ShowRoadmapResponse_End{End: end}})
+	return statusOf(stream.Context(), send(&pb.ShowRoadmapResponse{Piece: &pb.ShowRoadmapResponse_End{End: end}}), about)
 }
 
 // describeIn is the roadmap as data, in an area where it can be had in parts.
@@ -130,7 +136,12 @@ func describeIn(ctx context.Context, rm roadmap.Roadmap, area geom.Rect) (roadma
 	if w, ok := rm.(roadmap.Windowed); ok {
 		return w.DescribeIn(ctx, area)
 	}
-	return rm.Describe(), nil
+	if p, ok := rm.(roadmap.Preparing); ok {
+		if err := p.Prepare(ctx); err != nil {
+			return roadmap.Description{}, err
+		}
+	}
+	return rm.Describe(), ctx.Err()
 }
 
 // clip leaves what meets the area: nodes in it, edges and cells whose bounds meet it, and
@@ -174,13 +185,13 @@ func clip(d roadmap.Description, area geom.Rect) roadmap.Description {
 }
 
 // sendDescription sends nodes, then edges, then cells.
-func sendDescription(d *roadmap.Description, sensingUm int64, stream grpc.ServerStreamingServer[pb.ShowRoadmapResponse]) error {
+func sendDescription(d *roadmap.Description, sensingUm int64, send func(*pb.ShowRoadmapResponse) error) error {
 	part, points := &pb.RoadmapPart{}, 0
 	flush := func() error {
 		if points == 0 {
 			return nil
 		}
-		err := stream.Send(&pb.ShowRoadmapResponse{Piece: &pb.ShowRoadmapResponse_Part{Part: part}})
+		err := send(&pb.ShowRoadmapResponse{Piece: &pb.ShowRoadmapResponse_Part{Part: part}})
 		part, points = &pb.RoadmapPart{}, 0
 		return err
 	}
@@ -246,6 +257,9 @@ func (v roadmapService) ShowGrownSolids(r *pb.ShowGrownSolidsRequest, stream grp
 	if err != nil {
 		return statusOf(ctx, err, about)
 	}
+	send := func(m *pb.ShowGrownSolidsResponse) error {
+		return patiently(stream.Context(), sendPatience, func() error { return stream.Send(m) })
+	}
 	for i := range o.Loops {
 		l := &o.Loops[i]
 		if len(l.Pieces) > outlinePieces {
@@ -259,14 +273,14 @@ func (v roadmapService) ShowGrownSolids(r *pb.ShowGrownSolidsRequest, stream grp
 			}
 			out.Pieces = append(out.Pieces, q)
 		}
-		if err := stream.Send(&pb.ShowGrownSolidsResponse{Piece: &pb.ShowGrownSolidsResponse_Outline{Outline: out}}); err != nil {
-			return err
+		if err := send(&pb.ShowGrownSolidsResponse{Piece: &pb.ShowGrownSolidsResponse_Outline{Outline: out}}); err != nil {
+			return statusOf(stream.Context(), err, about)
 		}
 	}
-	return stream.Send(&pb.ShowGrownSolidsResponse{Piece: &pb.ShowGrownSolidsResponse_Summary{Summary: &pb.GrownSummary{
+	return statusOf(stream.Context(), send(&pb.ShowGrownSolidsResponse{Piece: &pb.ShowGrownSolidsResponse_Summary{Summary: &pb.GrownSummary{
 		Stamp: stampOut(p.snap.Info), Body: bodyOut(p.body), GrownByM: wire.Metres(p.body.Required()),
 		AreaM2: o.AreaUm2 / 1e12, PerimeterM: geom.Metres(o.PerimeterUm), FreeAreaM2: o.FreeUm2 / 1e12, OutlineCount: int64(len(o.Loops)),
-	}}})
+	}}}), about)
 }
 
 // shownRoadmaps are the roadmaps that CompareRoadmaps compares when none is named.
@@ -309,7 +323,7 @@ type comparison struct {
 	workplace
 	start, goal planner.Pose
 	optimumUm   float64
-	trial       *planner.World // the version with the trial solid; nil without
+	trial       *clearance.Field // of the version with the trial solid; nil without
 	change      floor.Change
 }
 
@@ -346,7 +360,7 @@ func (c *comparison) run(ctx context.Context, kinds []pb.Roadmap) (*pb.CompareRo
 	return out, nil
 }
 
-// tryOut makes the version with the trial solid, in the middle of the shortest way.
+// tryOut makes the field of the version with the trial solid, in the middle of the shortest way.
 func (c *comparison) tryOut(ctx context.Context, r *planner.Route) error {
 	at := middle(r)
 	b := c.snap.Map.Bounds()
@@ -359,7 +373,7 @@ func (c *comparison) tryOut(ctx context.Context, r *planner.Route) error {
 		return nil // a floor that is full, say: nothing is measured then
 	}
 	c.change = floor.Diff(c.snap.Map, m)
-	c.trial, err = c.world.Advance(ctx, m)
+	c.trial, err = c.world.Field().Advance(ctx, m, c.change)
 	return err
 }
 
@@ -400,7 +414,7 @@ func (c *comparison) row(ctx context.Context, k pb.Roadmap) (*pb.RoadmapComparis
 	}
 	if c.trial != nil {
 		t0 = time.Now()
-		_, err := rm.Advance(ctx, c.trial.Field(), c.change)
+		_, err := rm.Advance(ctx, c.trial, c.change)
 		if row.UpdateS = time.Since(t0).Seconds(); err != nil {
 			return fail(err)
 		}
@@ -420,7 +434,9 @@ func (c *comparison) row(ctx context.Context, k pb.Roadmap) (*pb.RoadmapComparis
 		size = w.Size()
 		d, _ = w.DescribeIn(ctx, geom.Rect{Min: c.start.At, Max: c.start.At})
 	} else {
-		d = rm.Describe()
+		if d, err = describeIn(ctx, rm, geom.Rect{}); err != nil {
+			return fail(err)
+		}
 		size = d.Size()
 	}
 	row.NodeCount, row.EdgeCount, row.CellCount, row.MemoryBytes = size.Nodes, size.Edges, size.Cells, size.Bytes

@@ -14,7 +14,7 @@ import (
 const (
 	// defaultManyBudget is PlanManyRequest.time_budget_s where it is 0.
 	defaultManyBudget = time.Minute
-	// sendPatience is how long a PlanMany client may leave a message unread before the
+	// sendPatience is how long a client of PlanMany or RoadmapService may leave a message unread before the
 	// call is ended, so that one that stopped reading keeps nobody else out.
 	sendPatience = 30 * time.Second
 )
@@ -155,12 +155,16 @@ func summaryOut(r *pb.Route) *pb.RouteSummary {
 	}
 }
 
-// send sends a message unless the client lets it lie too long: then nothing may be sent
-// any more, and the stream's end lets go of the message.
 func (c *manyCall) send(ctx context.Context, m *pb.PlanManyResponse) error {
+	return patiently(ctx, c.patience, func() error { return c.stream.Send(m) })
+}
+
+// patiently sends a message unless the client lets it lie too long: then nothing may be sent
+// any more, and the stream's end lets go of the message.
+func patiently(ctx context.Context, patience time.Duration, send func() error) error {
 	sent := make(chan error, 1)
-	go func() { sent <- c.stream.Send(m) }()
-	timer := time.NewTimer(c.patience)
+	go func() { sent <- send() }()
+	timer := time.NewTimer(patience)
 	defer timer.Stop()
 	select {
 	case err := <-sent:
