@@ -50,6 +50,7 @@ type outline struct {
 
 func (t *task) outline(pts []geom.Point) *outline {
 	o := &outline{t: t, below: float64(t.q.Options.TightBelowUm), pieces: make([]piece, 0, len(pts)+2)}
+	t.j.Rewind()
 	for i := 1; i < len(pts); i++ {
 		a, b := pts[i-1], pts[i]
 		w := piece{a, b, t.j.Segment(a, b)}
@@ -229,6 +230,7 @@ func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
 func (t *task) points(o *outline) []RoutePoint {
 	n := len(o.pieces)
 	pts := make([]RoutePoint, n+1)
+	t.j.Rewind()
 	for i := range pts {
 		p := &pts[i]
 		if i < n {

@@ -63,7 +63,7 @@ func (t *task) optimum(ctx context.Context) (c *course, apart bool, err error) {
 	if len(pts) > 2 && from != start && t.j.Sight(start, pts[2]) {
 		pts = slices.Delete(pts, 1, 2)
 	}
-	t.j.Forget()
+	t.j.Forget(len(pts))
 	for i := 1; i < len(pts); i++ {
 		if _, ok := t.j.Drive(pts[i-1], pts[i]); !ok {
 			return nil, false, nil

@@ -228,7 +228,13 @@ func (w *walker) cells(a, b geom.Point, reach float64) float64 {
 	if b.Y > a.Y {
 		slope = (b.X - a.X) / (b.Y - a.Y)
 	}
+	lo, hi := extent(a, b)
+	left := max(0, int(math.Floor((lo.X-reach-w.lo.X)/w.h)))
+	right := min(w.s.Columns-1, int(math.Floor((hi.X+reach-w.lo.X)/w.h)))
 	for row := max(0, first); row <= min(w.s.Rows-1, last); row++ {
+		if !w.any(row, left, right) {
+			continue
+		}
 		y0 := w.lo.Y + float64(row)*w.h
 		y1 := y0 + w.h
 		gap := max(y0-b.Y, a.Y-y1, 0)
@@ -246,6 +252,25 @@ func (w *walker) cells(a, b geom.Point, reach float64) float64 {
 		best = w.row(a, b, row, c0, c1, x0, x1, gap, best)
 	}
 	return best
+}
+
+// any says whether a row has a solid cell from column c0 to c1.
+func (w *walker) any(row, c0, c1 int) bool {
+	const size = floor.BlockSize
+	for bx := c0 / size; bx <= c1/size; bx++ {
+		word := w.block(bx, row/size)[row%size]
+		if skip := c0 - bx*size; skip > 0 {
+			word >>= skip
+			word <<= skip
+		}
+		if over := bx*size + size - 1 - c1; over > 0 {
+			word <<= over
+		}
+		if word != 0 {
+			return true
+		}
+	}
+	return false
 }
 
 // row looks at the solid cells of a row from column c0 to c1. From x0 to x1 is the part of ab

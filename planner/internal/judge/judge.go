@@ -4,6 +4,7 @@ package judge
 
 import (
 	"math"
+	"slices"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -29,11 +30,10 @@ type Judge struct {
 
 	Sights, Exacts int64 // lines of sight tried, distances evaluated
 
-	ends [4]clearance.Nearest // of places asked about last; see end
-	next int
-
 	driven []driven // see Drive
 	ask    int
+	ends   []clearance.Nearest // of ends of pieces; see end
+	askEnd int
 
 	near touch.Solids // see solids
 }
@@ -50,19 +50,28 @@ func (j *Judge) Again() *Judge {
 	return n
 }
 
-// Place is At for the ends of pieces, of which one after another is often the same.
+// Place is At for the ends of pieces. They are remembered as pieces are.
 func (j *Judge) Place(p geom.Point) clearance.Nearest { return j.end(p) }
 
 func (j *Judge) end(p geom.Point) clearance.Nearest {
-	for i := range min(j.next, len(j.ends)) {
+	n := len(j.ends)
+	for i := n - 1; i >= max(0, n-alike); i-- { // one piece ends where the next begins
 		if j.ends[i].On == p {
 			return j.ends[i]
 		}
 	}
-	n := j.At(p)
-	j.ends[j.next%len(j.ends)] = n
-	j.next++
-	return n
+	for i := j.askEnd; i < min(n, j.askEnd+alike); i++ {
+		if j.ends[i].On == p {
+			j.askEnd = i + 1
+			return j.ends[i]
+		}
+	}
+	if n >= mostDriven {
+		j.ends, j.askEnd = j.ends[:0], 0
+	}
+	near := j.At(p)
+	j.ends = append(j.ends, near)
+	return near
 }
 
 // At is the field's answer, counted. Where nothing is nearer than the cap, the nearest
@@ -100,10 +109,18 @@ func (j *Judge) Drive(a, b geom.Point) (near clearance.Nearest, ok bool) {
 	return near, ok
 }
 
-// Forget drops what is remembered, for who is about to ask for other pieces.
-func (j *Judge) Forget() { j.driven, j.ask = j.driven[:0], 0 }
+// Forget drops what is remembered, for who is about to ask for other pieces, some n.
+func (j *Judge) Forget(n int) {
+	n = min(n+8, mostDriven)
+	j.driven, j.ask = slices.Grow(j.driven[:0], n), 0
+	j.ends, j.askEnd = slices.Grow(j.ends[:0], n), 0
+}
 
-// driven is a piece that may be driven. mostDriven bounds how many are remembered.
+// Rewind is for who goes over the same pieces once more, from the first on.
+func (j *Judge) Rewind() { j.ask, j.askEnd = 0, 0 }
+
+// driven is a piece that may be driven. mostDriven bounds how many are remembered, and how many
+// ends.
 type driven struct {
 	a, b geom.Point
 	near clearance.Nearest
