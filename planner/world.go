@@ -27,7 +27,10 @@ type World struct {
 	ways  *ways
 	// classics are the roadmaps that engineers asked for by name.
 	classics *shelf[classicKey, roadmaps.Roadmap]
-	frame    roadmap.Frame
+	// turn is held while one of classics is brought up to date, one at a time in all versions
+	// of a floor: plans come first.
+	turn  chan struct{}
+	frame roadmap.Frame
 }
 
 // ErrTimeBudget is the cause to set on a context whose deadline is the request's own
@@ -42,7 +45,7 @@ func NewWorld(ctx context.Context, m *floor.Map) (*World, error) {
 		return nil, err
 	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, check: check.Of(m), masks: mask.NewSet(f, r), ways: newWays(f, newMeshes(m)), classics: newClassics(f), frame: roadmap.FrameOf(m.Settings())}, nil
+	return &World{m: m, field: f, rules: r, check: check.Of(m), masks: mask.NewSet(f, r), ways: newWays(f, newMeshes(m)), classics: newClassics(f), turn: make(chan struct{}, 1), frame: roadmap.FrameOf(m.Settings())}, nil
 }
 
 // Advance makes m ready from the world of an earlier (or later) version of the
@@ -63,13 +66,19 @@ func (w *World) Advance(ctx context.Context, m *floor.Map) (*World, error) {
 	}
 	classics := newClassics(f)
 	err = w.classics.carry(ctx, classics, func(ctx context.Context, _ classicKey, r roadmaps.Roadmap) (roadmaps.Roadmap, error) {
-		return r.Advance(ctx, f, change)
+		select {
+		case w.turn <- struct{}{}:
+			defer func() { <-w.turn }()
+			return r.Advance(ctx, f, change)
+		case <-ctx.Done():
+			return nil, ctx.Err()
+		}
 	})
 	if err != nil {
 		return nil, err
 	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, check: check.Of(m), masks: w.masks.Carry(f, r, closedBounds(change)), ways: g, classics: classics, frame: w.frame}, nil
+	return &World{m: m, field: f, rules: r, check: check.Of(m), masks: w.masks.Carry(f, r, closedBounds(change)), ways: g, classics: classics, turn: w.turn, frame: w.frame}, nil
 }
 
 // closedBounds are the bounds of the closed zones that differ, before and after.

@@ -39,11 +39,14 @@ type RoadmapServiceClient interface {
 	// The roadmap itself, in parts. The first message is the header, the last the end
 	// mark; a stream without it is incomplete. FAILED_PRECONDITION when the roadmap would be
 	// larger than the server makes, or the area holds more than the header's limit: ask for
-	// a smaller area.
+	// a smaller area. DEADLINE_EXCEEDED when it takes more than a minute to make and
+	// describe; it is made to its end all the same, for whoever asks again. A client
+	// that leaves a message unread for 30 s is let go.
 	ShowRoadmap(ctx context.Context, in *ShowRoadmapRequest, opts ...grpc.CallOption) (grpc.ServerStreamingClient[ShowRoadmapResponse], error)
 	// Each roadmap's own way between two places, and what it costs to have.
 	CompareRoadmaps(ctx context.Context, in *CompareRoadmapsRequest, opts ...grpc.CallOption) (*CompareRoadmapsResponse, error)
-	// The outline of everything a body's centre must stay out of.
+	// The outline of everything a body's centre must stay out of. Errors are as for
+	// ShowRoadmap; nothing is kept.
 	ShowGrownSolids(ctx context.Context, in *ShowGrownSolidsRequest, opts ...grpc.CallOption) (grpc.ServerStreamingClient[ShowGrownSolidsResponse], error)
 }
 
@@ -118,11 +121,14 @@ type RoadmapServiceServer interface {
 	// The roadmap itself, in parts. The first message is the header, the last the end
 	// mark; a stream without it is incomplete. FAILED_PRECONDITION when the roadmap would be
 	// larger than the server makes, or the area holds more than the header's limit: ask for
-	// a smaller area.
+	// a smaller area. DEADLINE_EXCEEDED when it takes more than a minute to make and
+	// describe; it is made to its end all the same, for whoever asks again. A client
+	// that leaves a message unread for 30 s is let go.
 	ShowRoadmap(*ShowRoadmapRequest, grpc.ServerStreamingServer[ShowRoadmapResponse]) error
 	// Each roadmap's own way between two places, and what it costs to have.
 	CompareRoadmaps(context.Context, *CompareRoadmapsRequest) (*CompareRoadmapsResponse, error)
-	// The outline of everything a body's centre must stay out of.
+	// The outline of everything a body's centre must stay out of. Errors are as for
+	// ShowRoadmap; nothing is kept.
 	ShowGrownSolids(*ShowGrownSolidsRequest, grpc.ServerStreamingServer[ShowGrownSolidsResponse]) error
 	mustEmbedUnimplementedRoadmapServiceServer()
 }

@@ -1346,7 +1346,8 @@ type Bound struct {
 	// Clearances in the answer are at most this much below the true distance.
 	ClearanceShortM float64 `protobuf:"fixed64,4,opt,name=clearance_short_m,json=clearanceShortM,proto3" json:"clearance_short_m,omitempty"`
 	// With BOUND_KIND_ANY_ANGLE_OPTIMUM, the clearance beyond the required one from
-	// which on no route is shorter; else 0.
+	// which on no route is shorter. Where gap_share goes by such an optimum: that from which
+	// on it holds. Else 0.
 	OptimumWithinM float64 `protobuf:"fixed64,5,opt,name=optimum_within_m,json=optimumWithinM,proto3" json:"optimum_within_m,omitempty"`
 	// Whether the time budget ran out: this is then the best checked route found by
 	// then, and gap_share says how good.
