@@ -81,13 +81,23 @@ func (o *outline) cut(i int, at geom.Point) bool {
 	// Where it is clear that both sides will be tight, the first rounding will do.
 	both := was && o.t.j.At(at).Um < o.below-roundingReach
 	var spare *[2]piece
+	var put []geom.Point // tight themselves, and so no side of theirs is open
+	try := func(p geom.Point) (two [2]piece, ok bool) {
+		two = [2]piece{{a: w.a, b: p}, {a: p, b: w.b}}
+		for k := range two {
+			if two[k].near, ok = o.t.j.Drive(two[k].a, two[k].b); !ok {
+				break
+			}
+		}
+		return two, ok
+	}
 	for p := range rounded(at) {
-		two := [2]piece{{a: w.a, b: p}, {a: p, b: w.b}}
-		var ok bool
-		if two[0].near, ok = o.t.j.Drive(w.a, p); !ok {
+		if was && !both && p != at && o.t.j.Place(p).Um < o.below-roundingUm {
+			put = append(put, p)
 			continue
 		}
-		if two[1].near, ok = o.t.j.Drive(p, w.b); !ok {
+		two, ok := try(p)
+		if !ok {
 			continue
 		}
 		is0, is1 := two[0].tight(o.below), two[1].tight(o.below)
@@ -103,6 +113,11 @@ func (o *outline) cut(i int, at geom.Point) bool {
 		}
 		o.pieces = slices.Replace(o.pieces, i, i+1, two[0], two[1])
 		return true
+	}
+	for k := 0; spare == nil && k < len(put); k++ {
+		if two, ok := try(put[k]); ok {
+			spare = &two
+		}
 	}
 	if spare == nil {
 		return false
