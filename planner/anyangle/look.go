@@ -29,7 +29,7 @@ func (s *search) expand(n *node) {
 		c.loose = !b.covers(n.cell, c.rx-ox, c.ry-oy)
 	}
 	portals := b.portals[of.first : of.first+of.count]
-	first := s.portals(n.block) + of.first
+	first := s.portals(n.block, n.cell, of.count)
 	for i := range portals {
 		p := &portals[i]
 		c.block = n.block + s.step[p.dir]

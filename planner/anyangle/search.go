@@ -91,7 +91,8 @@ type search struct {
 	best    []int32   // the best root at each place
 	visited table     // roots with cells that they lie on, queued before
 	within  []float64 // for a portal, all points of it are reached by ways as short
-	base    []reached // for a block, its first portal in that list
+	cells   []int32   // for a cell, its first portal in that list
+	base    []reached // for a block, its first cell in that list
 	stamp   uint32
 	out     []node
 	fs      []float64

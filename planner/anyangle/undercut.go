@@ -9,7 +9,8 @@ import (
 // lead into it. A stretch all of whose points are reached by shorter ways is on no
 // shortest way, whatever comes of those. (Polyanya tells that of corners only.)
 
-// reached is the first portal of a block that a search has come to; stamp says which search.
+// reached is where the cells of a block that a search has come to begin in its list of cells;
+// stamp says which search.
 type reached struct {
 	first int32
 	stamp uint32
@@ -17,7 +18,7 @@ type reached struct {
 
 // resetPortals begins a search.
 func (s *search) resetPortals() {
-	s.within = s.within[:0]
+	s.within, s.cells = s.within[:0], s.cells[:0]
 	s.base = slices.Grow(s.base[:0], len(s.g.blocks))[:len(s.g.blocks)]
 	if s.stamp++; s.stamp == 0 {
 		clear(s.base[:cap(s.base)])
@@ -25,16 +26,24 @@ func (s *search) resetPortals() {
 	}
 }
 
-// portals is the number of a block's first portal in the search's list.
-func (s *search) portals(block int32) int32 {
+// portals is the number of the first of a cell's portals in the search's list, to which those
+// of a cell are added when it is first asked about: most cells of a large block never are.
+func (s *search) portals(block, cell, count int32) int32 {
 	e := &s.base[block]
 	if e.stamp != s.stamp {
-		*e = reached{int32(len(s.within)), s.stamp}
-		for range s.g.blocks[block].portals {
+		*e = reached{int32(len(s.cells)), s.stamp}
+		for range s.g.blocks[block].of {
+			s.cells = append(s.cells, none)
+		}
+	}
+	first := &s.cells[e.first+cell]
+	if *first == none {
+		*first = int32(len(s.within))
+		for range count {
 			s.within = append(s.within, math.Inf(1))
 		}
 	}
-	return e.first
+	return *first
 }
 
 // undercutUm is by how much a way must be the longer one, in micrometres, to be of no
