@@ -28,7 +28,7 @@
 // What breaks it: a one-way zone that the way goes against; an end that touches a solid or, in
 // a wedge, is within anyangle.DeltaUm of too near; a point body that prefers nothing; a
 // passage exactly as wide as the body where a bent edge's chords would cut into it; a floor too
-// large for a search (anyangle.ErrTooLarge). Then, and where a roadmap is named, cells are
+// large for a search or in clutter too large to keep (anyangle.ErrTooLarge, voronoi.ErrTooLarge). Then, and where a roadmap is named, cells are
 // searched that keep the required clearance as a whole (Auto: the 8-connected grid; for
 // clearest at a few clearances in turn), balanced taking a cell for tight as a whole. Ends
 // join them by straight pieces that are clear, and the path is straightened (package pull):

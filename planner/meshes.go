@@ -10,7 +10,8 @@ import (
 // MeshLimit is how many meshes a World keeps: three for each of a dozen kinds of body, at
 // the required clearance, the preferred one and the cap. One more drops the one asked for
 // longest ago, which costs the time to make it when it is asked for again and changes no
-// answer. A mesh takes up to a few megabytes for a hall of ten million cells.
+// answer. A mesh takes up to a few megabytes for a hall of ten million cells, and about
+// anyangle.MaxBytes at most.
 const MeshLimit = 36
 
 // meshKey is what a mesh is made for: a clearance, and what is kept from closed zones

@@ -13,7 +13,7 @@ import (
 const (
 	// GraphLimit is how many graphs of Voronoi edges a World keeps: one for each margin
 	// that bodies keep, and one without closed zones. A graph takes about 3 MB for a
-	// million cells of a cluttered floor.
+	// million cells of a cluttered floor, and never more than voronoi.MaxBytes and a fifth.
 	GraphLimit = 6
 	// RoadsLimit is how many joinings of edges and open floor a World keeps: three for
 	// each of a dozen kinds of body (preferred clearance, cap, without zones). They take a
@@ -113,7 +113,7 @@ func unlessUnfit(err error) error {
 	var graph *voronoi.NeedError
 	var arg *voronoi.RangeError
 	if errors.As(err, &mesh) || errors.As(err, &graph) || errors.As(err, &arg) ||
-		errors.Is(err, voronoi.ErrMesh) || errors.Is(err, anyangle.ErrTooLarge) {
+		errors.Is(err, voronoi.ErrMesh) || errors.Is(err, voronoi.ErrTooLarge) || errors.Is(err, anyangle.ErrTooLarge) {
 		return nil
 	}
 	return err

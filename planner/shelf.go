@@ -4,8 +4,13 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"runtime/debug"
 	"slices"
 	"sync"
+
+	"example.com/wideberth/planner/anyangle"
+	"example.com/wideberth/planner/roadmap"
+	"example.com/wideberth/planner/voronoi"
 )
 
 const (
@@ -144,7 +149,7 @@ func (s *shelf[K, V]) begin(k K, make func(context.Context) (V, error)) *kept[K,
 		v, err := guarded(ctx, make)
 		s.mu.Lock()
 		defer s.mu.Unlock()
-		if e.val, e.err = v, err; err != nil {
+		if e.val, e.err = v, err; err != nil && !unfit(err) {
 			s.drop(e)
 		}
 		s.making = slices.DeleteFunc(s.making, func(o *kept[K, V]) bool { return o == e })
@@ -170,15 +175,28 @@ func (s *shelf[K, V]) put(e *kept[K, V]) {
 	s.kept = append(s.kept, e)
 }
 
+// makeError is a panic in the making of a structure. Whoever logs it has the stack.
+type makeError struct{ fault, stack string }
+
+func (e *makeError) Error() string {
+	return "planner: making a structure: " + e.fault + "\n" + e.stack
+}
+
 // guarded makes a structure. It runs apart from any call, so a panic, a fault of this
 // program, becomes an error for those who wait rather than the process's end.
 func guarded[V any](ctx context.Context, make func(context.Context) (V, error)) (v V, err error) {
 	defer func() {
 		if p := recover(); p != nil {
-			err = fmt.Errorf("planner: making a structure: %v", p)
+			err = &makeError{fmt.Sprint(p), string(debug.Stack())}
 		}
 	}()
 	return make(ctx)
+}
+
+// unfit says whether what was made again would fail in the same way: it is too large for
+// the version. That is kept like a structure, so that a version finds it out once.
+func unfit(err error) bool {
+	return errors.Is(err, anyangle.ErrTooLarge) || errors.Is(err, voronoi.ErrTooLarge) || errors.Is(err, roadmap.ErrTooLarge)
 }
 
 // drop forgets e; s.mu is held.
@@ -192,7 +210,8 @@ var errLeftOut = errors.New("planner: left out")
 // carry fills n, the shelf of another version, from what is made and in use here. What
 // is still in the making is carried on once it is made, in the background, or made from
 // scratch when that fails: what could not be made of one version says nothing of another.
-// What advance wants left out (errLeftOut) is made when it is next asked for. The error
+// What advance wants left out (errLeftOut), and what is too large for either version, is made
+// when it is next asked for. The error
 // is ctx's.
 func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(context.Context, K, V) (V, error)) error {
 	var ready []*kept[K, V]
@@ -200,7 +219,7 @@ func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(co
 	n.mu.Lock()
 	for _, e := range s.kept {
 		switch {
-		case e.idle >= s.idleLimit():
+		case e.idle >= s.idleLimit(), e.ready() && e.err != nil:
 		case !e.ready() || s.behind:
 			e.waiters++
 			n.begin(e.key, func(ctx context.Context) (V, error) {
@@ -224,7 +243,7 @@ func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(co
 	s.mu.Unlock()
 	for _, e := range ready {
 		v, err := advance(ctx, e.key, e.val)
-		if errors.Is(err, errLeftOut) {
+		if errors.Is(err, errLeftOut) || unfit(err) {
 			continue
 		}
 		if err != nil {

@@ -9,7 +9,7 @@ import (
 // Advance makes the mesh of another version of the same floor, change being what
 // differs between this mesh's version and m. Blocks beyond the clearance (and a
 // block) of what changed are shared. The result equals Build's for m in every cell
-// and portal. The error is ctx's.
+// and portal. The error is ctx's, or ErrTooLarge as Build's would be.
 func (g *Mesh) Advance(ctx context.Context, m *floor.Map, change floor.Change) (*Mesh, error) {
 	n := newMesh(m, g.need)
 	if n.bx != g.bx || n.by != g.by || n.o != g.o || n.side != g.side {

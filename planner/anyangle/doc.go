@@ -31,9 +31,10 @@
 //
 // A block's cells depend on the solids near it alone. Advance makes the mesh of the next
 // version from the last by cutting the blocks within reach of the change again
-// and sharing the others.
+// and sharing the others. Noise over millions of cells makes meshes too large to keep; see
+// MaxBytes.
 //
-// Read mesh.go first, then cut.go and slab.go for the cells, join.go for portals,
+// Read mesh.go first (size.go has its limit), then cut.go and slab.go for the cells, join.go for portals,
 // search.go, look.go and undercut.go for the search, bridge.go for the lean mesh, taut.go and corner.go
 // for the bends.
 package anyangle

@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"sync/atomic"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -56,7 +57,7 @@ type Mesh struct {
 }
 
 // Build makes the mesh of a version from scratch, on all processors. The error is
-// ctx's or a *NeedError. Time is about proportional to the floor's area in blocks
+// ctx's, a *NeedError, or ErrTooLarge (by errors.Is) beyond MaxBytes. Time is about proportional to the floor's area in blocks
 // plus the outlines of its solids.
 func Build(ctx context.Context, m *floor.Map, need Need) (*Mesh, error) {
 	if err := need.check(); err != nil {
@@ -168,14 +169,27 @@ func (g *Mesh) blocksOf(r geom.Rect, d float64) (x0, y0, x1, y1 int, ok bool) {
 }
 
 // fill cuts the blocks listed in fresh, takes the others from cuts (and leanCuts), and
-// joins those listed in joins; g.blocks and g.lean.blocks hold the rest already.
+// joins those listed in joins; g.blocks and g.lean.blocks hold the rest already. The error
+// is ctx's or a *sizeError.
 func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []int) error {
 	near, rounds := g.pieces(fresh)
 	thin := g.need.ClearanceUm > 0
+	for _, i := range fresh {
+		cuts[i] = nil
+	}
+	var bytes atomic.Int64
+	for i, c := range cuts {
+		if c != nil {
+			bytes.Add(bytesOf(c, leanCuts[i]))
+		}
+	}
 	err := parallel.Each(ctx, 0, len(fresh), func() func(int) {
 		z := newRasterizer(g.need.ClearanceUm, g.m.Settings().ResolutionUm)
 		c := &cutter{ctx: ctx}
 		return func(k int) {
+			if bytes.Load() > maxBytes {
+				return
+			}
 			i := fresh[k]
 			w, h := g.size(i)
 			all := z.pieces(g.m, i%g.bx, i/g.bx, pt{0, 0}, pt{w, h})
@@ -198,10 +212,14 @@ func (g *Mesh) fill(ctx context.Context, cuts, leanCuts []*cut, fresh, joins []i
 				}
 				leanCuts[i] = c.cut(w, h, all, thin)
 			}
+			bytes.Add(bytesOf(cuts[i], leanCuts[i]))
 		}
 	})
 	if err == nil {
 		err = ctx.Err() // a cut may have been left half done
+	}
+	if err == nil && bytes.Load() > maxBytes {
+		err = &sizeError{maxBytes}
 	}
 	if err != nil {
 		return err

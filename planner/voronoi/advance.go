@@ -13,7 +13,7 @@ import (
 // reach of the change (Need.MostUm, and what the solids there leave of it) are looked
 // at, and those whose sites are the old ones are kept. The result equals Build's in
 // every edge and node. Beside that, time is about a millisecond per million nodes, for
-// numbering them. The error is ctx's.
+// numbering them. The error is ctx's or wraps ErrTooLarge, as Build's would.
 func (g *Graph) Advance(ctx context.Context, f *clearance.Field, change floor.Change) (*Graph, error) {
 	m := f.Map()
 	if m.Settings() != g.set {
@@ -68,6 +68,9 @@ func (g *Graph) Advance(ctx context.Context, f *clearance.Field, change floor.Ch
 				n.enter(c.After)
 			}
 		}
+	}
+	if n.sites() > maxSites {
+		return nil, tooManySites()
 	}
 	var list []int
 	for i := range stale {

@@ -103,7 +103,7 @@ func finish(near []site, b box, pieces []piece, mid vec, rimAt box) *block {
 			a.from = ids[i]
 		}
 	}
-	k.arcs = slices.DeleteFunc(k.arcs, func(a arc) bool { return a.from == a.to && a.length(a.s0, a.s1) < 8*joinUm })
+	k.arcs = slices.Clone(slices.DeleteFunc(k.arcs, func(a arc) bool { return a.from == a.to && a.length(a.s0, a.s1) < 8*joinUm }))
 	for i, n := range k.nodes {
 		if n.at.x-b.x0 < joinUm || b.x1-n.at.x < joinUm || n.at.y-b.y0 < joinUm || b.y1-n.at.y < joinUm {
 			k.border = append(k.border, int32(i))

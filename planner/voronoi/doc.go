@@ -33,9 +33,15 @@
 // one another are one. Graph.Advance gives the very same edges as Build, and Roads.Advance
 // the very same roads as NewRoads, down to the numbers of their nodes.
 //
+// # What is too large
+//
+// A graph takes some 500 bytes for each corner or side of the solids: 3 MB for a million
+// cells of a cluttered hall, 200 MB for as many of noise. Beyond MaxSites or MaxBytes there
+// is none (ErrTooLarge).
+//
 // # Reading the source
 //
-// site.go and curve.go have the elements, outline.go those of a feature, triple.go the branch
+// size.go has the limits, site.go and curve.go have the elements, outline.go those of a feature, triple.go the branch
 // points, trace.go and hidden.go a block's edges, block.go and join.go their topology, graph.go and advance.go the whole,
 // same.go what two versions have in common. On them are edge.go (edges and gates for the
 // reader), pave.go and roads.go (edges and the open floor for one preferred clearance, by

@@ -173,6 +173,22 @@ func (g *Graph) describe(e *Edge, at []int32, from, to int32) {
 	}
 }
 
+// Near says whether the edge may meet r: whether a block that it runs through does.
+func (e Edge) Near(r geom.Rect) bool {
+	for i, s := range e.arcs {
+		if i > 0 && e.arcs[i-1].block == s.block {
+			continue
+		}
+		o, b := e.g.corner(int(s.block)), e.g.box(int(s.block))
+		at := func(x, y float64) geom.Point { return geom.Point{X: e.g.o.X + o.x + x, Y: e.g.o.Y + o.y + y} }
+		// An arc is within its block but for rounding.
+		if (geom.Rect{Min: at(b.x0-1, b.y0-1), Max: at(b.x1+1, b.y1+1)}).Intersects(r) {
+			return true
+		}
+	}
+	return false
+}
+
 // Points draws the edge from From to To: a polyline off it by at most half a millimetre, with
 // a point wherever the nearest elements change and wherever clearance is least among its
 // neighbours, and the clearance at each point. Between points clearance is that of

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"sync/atomic"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -76,7 +77,7 @@ type link struct {
 }
 
 // Build traces the edges of a version from scratch, on all processors. The error is
-// ctx's or a *NeedError. Time is about proportional to the length of the edges and
+// ctx's, a *NeedError, or wraps ErrTooLarge. Time is about proportional to the length of the edges and
 // the number of sites, plus the floor's area in blocks.
 func Build(ctx context.Context, f *clearance.Field, need Need) (*Graph, error) {
 	if err := need.check(f.Cap()); err != nil {
@@ -88,14 +89,26 @@ func Build(ctx context.Context, f *clearance.Field, need Need) (*Graph, error) {
 	for i := range all {
 		all[i] = i
 	}
+	var sites atomic.Int64
 	err := parallel.Each(ctx, 0, n, func() func(int) {
-		return func(i int) { g.cells[i] = g.cellSites(f.Map(), i%g.nx, i/g.nx) }
+		return func(i int) {
+			if sites.Load() <= maxSites {
+				g.cells[i] = g.cellSites(f.Map(), i%g.nx, i/g.nx)
+				sites.Add(int64(len(g.cells[i])))
+			}
+		}
 	})
+	if err == nil && sites.Load() > maxSites {
+		err = tooManySites()
+	}
 	if err != nil {
 		return nil, err
 	}
 	for ft := range f.Map().Features() {
 		g.enter(ft)
+	}
+	if g.sites() > maxSites {
+		return nil, tooManySites()
 	}
 	if err := g.trace(ctx, all, nil); err != nil {
 		return nil, err
@@ -182,7 +195,7 @@ func (g *Graph) gather(i int) []site {
 		d, _, _ := s.closed(mid)
 		return d > least+2*rad+1
 	})
-	return sortSites(out)
+	return slices.Clone(sortSites(out)) // kept: without the room of those left out
 }
 
 // reach is the largest clearance in a block that matters.
@@ -212,22 +225,40 @@ func boxDist(b box, s *site) float64 {
 }
 
 // trace makes the blocks listed. Where may is given and a block's sites are those of
-// the old block that it holds, that one is kept.
+// the old block that it holds, that one is kept. The error is ctx's or wraps ErrTooLarge.
 func (g *Graph) trace(ctx context.Context, list []int, may func(i int) *block) error {
-	return parallel.Each(ctx, 0, len(list), func() func(int) {
+	for _, i := range list {
+		g.blocks[i] = nil
+	}
+	var bytes atomic.Int64
+	for _, b := range g.blocks {
+		if b != nil {
+			bytes.Add(b.bytes())
+		}
+	}
+	err := parallel.Each(ctx, 0, len(list), func() func(int) {
 		t := &tracer{ctx: ctx}
 		return func(n int) {
+			if bytes.Load() > maxBytes {
+				return
+			}
 			i := list[n]
 			near := g.gather(i)
 			if may != nil {
 				if old := may(i); old != nil && slices.Equal(old.near, near) {
 					g.blocks[i] = old
-					return
 				}
 			}
-			g.blocks[i] = g.traceBlock(t, i, near)
+			if g.blocks[i] == nil {
+				g.blocks[i] = g.traceBlock(t, i, near)
+			}
+			bytes.Add(g.blocks[i].bytes())
 		}
 	})
+	if err == nil && bytes.Load() > maxBytes {
+		err = tooManyBytes()
+	}
+	return err
 }
 
 func (g *Graph) traceBlock(t *tracer, i int, near []site) *block {

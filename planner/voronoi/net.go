@@ -17,10 +17,14 @@ type net struct {
 
 func (n *net) siblings(piece int32) []int32 { return n.list[n.begin[piece]:n.begin[piece+1]] }
 
+// The bounds of what nets are kept, the oldest going first. A net takes some 12 bytes a node.
+// One net is kept whatever its size.
 const (
 	// maxNets bounds the clearances whose nets are kept: those required, as many as there
 	// are kinds of bodies on a floor, and netLevels.
 	maxNets = 64
+	// maxNetNodes bounds their nodes, all nets of some Roads together: 100 MB.
+	maxNetNodes = 8 << 20
 	// netLevels is how many nets serve for all bottlenecks.
 	netLevels = 32
 )
@@ -38,12 +42,15 @@ func (w *Roads) netOf(r float64) *net {
 		}
 	}
 	n := w.makeNet(r)
-	if len(w.nets.list) == maxNets {
+	if len(w.nets.list) == netsKept(len(w.nodes)) {
 		w.nets.list = slices.Delete(w.nets.list, 0, 1)
 	}
 	w.nets.list = append(w.nets.list, keyed{r, n})
 	return n
 }
+
+// netsKept is how many nets of so many nodes are kept.
+func netsKept(nodes int) int { return min(maxNets, max(1, maxNetNodes/max(1, nodes))) }
 
 type keyed struct {
 	r float64

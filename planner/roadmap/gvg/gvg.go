@@ -14,7 +14,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"math"
+	"sync"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -24,19 +24,21 @@ import (
 	"example.com/wideberth/planner/voronoi"
 )
 
-// MaxEdges is how many edges Describe gives at most.
-const MaxEdges = 1_000_000
-
 // Graph is the generalized Voronoi graph of one version, for one Need.
 type Graph struct {
 	need  roadmap.Need
 	graph *voronoi.Graph
 	open  *anyangle.Mesh // where clearance is the cap
 	roads *voronoi.Roads
+	size  func() roadmap.Size
 }
 
+var _ roadmap.Windowed = (*Graph)(nil)
+
 // Build traces the graph from scratch; see voronoi.Build for what it costs. A clearance
-// of 0 is taken as 1 µm: an edge needs room on both sides.
+// of 0 is taken as 1 µm: an edge needs room on both sides. The error is ctx's, wraps
+// roadmap.ErrTooLarge beyond what packages voronoi and anyangle keep, or names the part of
+// need that is out of range.
 func Build(ctx context.Context, f *clearance.Field, need roadmap.Need) (*Graph, error) {
 	need.ClearanceUm = max(need.ClearanceUm, 1)
 	if !need.Zones {
@@ -48,11 +50,11 @@ func Build(ctx context.Context, f *clearance.Field, need roadmap.Need) (*Graph, 
 	}
 	g, err := voronoi.Build(ctx, f, voronoi.Need{LeastUm: need.ClearanceUm, MostUm: f.Cap(), Zones: need.Zones, MarginUm: margin})
 	if err != nil {
-		return nil, err
+		return nil, tooLarge(err)
 	}
 	open, err := anyangle.Build(ctx, f.Map(), anyangle.Need{ClearanceUm: f.Cap(), Zones: need.Zones, ZoneUm: f.Cap() - margin})
 	if err != nil {
-		return nil, err
+		return nil, tooLarge(err)
 	}
 	return join(ctx, need, g, open)
 }
@@ -62,7 +64,17 @@ func join(ctx context.Context, need roadmap.Need, g *voronoi.Graph, open *anyang
 	if err != nil {
 		return nil, err
 	}
-	return &Graph{need, g, open, roads}, nil
+	r := &Graph{need: need, graph: g, open: open, roads: roads}
+	r.size = sync.OnceValue(r.count)
+	return r, nil
+}
+
+// tooLarge says of what is too large for the packages below that it is so for a roadmap.
+func tooLarge(err error) error {
+	if errors.Is(err, voronoi.ErrTooLarge) || errors.Is(err, anyangle.ErrTooLarge) {
+		return fmt.Errorf("%w: %w", roadmap.ErrTooLarge, err)
+	}
+	return err
 }
 
 // Need is what the graph is for.
@@ -75,13 +87,17 @@ func (g *Graph) Advance(ctx context.Context, f *clearance.Field, change floor.Ch
 	}
 	graph, err := g.graph.Advance(ctx, f, change)
 	if err != nil {
-		return nil, err
+		return nil, tooLarge(err)
 	}
 	open, err := g.open.Advance(ctx, f.Map(), change)
 	if err != nil {
+		return nil, tooLarge(err)
+	}
+	n, err := join(ctx, g.need, graph, open)
+	if err != nil {
 		return nil, err
 	}
-	return join(ctx, g.need, graph, open)
+	return n, nil
 }
 
 // Search finds the shortest way along the edges, and over the floor where clearance is the
@@ -90,10 +106,7 @@ func (g *Graph) Advance(ctx context.Context, f *clearance.Field, change floor.Ch
 func (g *Graph) Search(ctx context.Context, s, t geom.Point) (roadmap.Way, bool, error) {
 	p, ok, err := g.roads.Balanced(ctx, s, t, g.need.ClearanceUm, 0)
 	if err != nil || !ok {
-		if errors.Is(err, anyangle.ErrTooLarge) {
-			err = fmt.Errorf("%w: %w", roadmap.ErrTooLarge, err)
-		}
-		return roadmap.Way{}, false, err
+		return roadmap.Way{}, false, tooLarge(err)
 	}
 	w := roadmap.Way{Expanded: p.Expanded, Queued: p.Queued}
 	for _, l := range p.Legs {
@@ -111,43 +124,3 @@ func (g *Graph) Search(ctx context.Context, s, t geom.Point) (roadmap.Way, bool,
 	}
 	return w, true, nil
 }
-
-// Describe is the graph as data. A closed edge has one node, where it begins and ends.
-func (g *Graph) Describe() roadmap.Description {
-	var d roadmap.Description
-	capUm := float64(g.graph.Field().Cap())
-	down := func(um float64) int64 { return int64(math.Floor(min(um+roundingUm, capUm))) }
-	ids := map[int32]int32{}
-	node := func(e voronoi.End) int32 {
-		id, ok := ids[e.Node]
-		if !ok {
-			id = int32(len(d.Nodes))
-			ids[e.Node] = id
-			d.Nodes = append(d.Nodes, roadmap.Node{At: e.At, ClearanceUm: down(e.ClearanceUm)})
-		}
-		return id
-	}
-	for e := range g.graph.Edges {
-		if len(d.Edges) == MaxEdges {
-			d.Notes = append(d.Notes, roadmap.Note{Name: "edges up to which the graph is listed", Value: MaxEdges, Unit: "1"})
-			break
-		}
-		pts, um := e.Points()
-		most := 0.0
-		for _, v := range um {
-			most = max(most, v)
-		}
-		d.Edges = append(d.Edges, roadmap.Edge{
-			A: node(e.From), B: node(e.To), Points: pts,
-			LengthUm: e.LengthUm, ClearanceUm: down(e.SmallestUm), WidestUm: down(most),
-		})
-		d.Bytes += edgeBytes
-	}
-	return d
-}
-
-// roundingUm is float64's rounding of clearances, with room to spare.
-const roundingUm = 1e-5
-
-// edgeBytes is about what an edge, an arc or two of it and its sites, takes in memory.
-const edgeBytes = 400

@@ -2,7 +2,9 @@ package gvg_test
 
 import (
 	"context"
+	"errors"
 	"fmt"
+	"maps"
 	"math"
 	"math/rand/v2"
 	"reflect"
@@ -157,5 +159,57 @@ func TestLawPatchedEqualsRebuilt(t *testing.T) {
 	}
 	if found < 20 {
 		t.Errorf("only %d ways found", found)
+	}
+}
+
+// TestWindow: what is described of an area is what of the whole meets it, as it is there, and the
+// size counts the whole.
+func TestWindow(t *testing.T) {
+	const seed = 11
+	t.Logf("seed %d", seed)
+	rng := rand.New(rand.NewPCG(seed, 1))
+	m, err := plainfloor.Random(rng, 300, 260, 0.004).Floor()
+	g := build(t, field(t, m, err), roadmap.Need{ClearanceUm: 100_000})
+	all := g.Describe()
+	if s := g.Size(); s.Nodes != int64(len(all.Nodes)) || s.Edges != int64(len(all.Edges)) || s.Cells != 0 || s.Bytes <= 0 {
+		t.Errorf("size %+v of %d nodes and %d edges", s, len(all.Nodes), len(all.Edges))
+	}
+	text := func(e roadmap.Edge) string {
+		return fmt.Sprint(e.Points, e.LengthUm, e.ClearanceUm, e.WidestUm)
+	}
+	b := m.Bounds()
+	for range 50 {
+		area := geom.Rect{Min: geom.Point{X: b.Min.X + rng.Float64()*(b.Max.X-b.Min.X), Y: b.Min.Y + rng.Float64()*(b.Max.Y-b.Min.Y)}}
+		area.Max = geom.Point{X: area.Min.X + rng.Float64()*5e6, Y: area.Min.Y + rng.Float64()*5e6}
+		d, err := g.DescribeIn(context.Background(), area)
+		if err != nil {
+			t.Fatal(err)
+		}
+		want := map[string]int{}
+		for _, e := range all.Edges {
+			for i := 1; i < len(e.Points); i++ {
+				if geom.BoundsOf(e.Points[i-1], e.Points[i]).Intersects(area) {
+					want[text(e)]++
+					break
+				}
+			}
+		}
+		got := map[string]int{}
+		for _, e := range d.Edges {
+			got[text(e)]++
+			// Nodes are placed by the first of their edges, give or take rounding.
+			n := len(e.Points) - 1
+			if geom.Dist(d.Nodes[e.A].At, e.Points[0]) > 0.1 || geom.Dist(d.Nodes[e.B].At, e.Points[n]) > 0.1 {
+				t.Fatalf("area %v: edge %+v from %v to %v", area, e, d.Nodes[e.A], d.Nodes[e.B])
+			}
+		}
+		if !maps.Equal(got, want) {
+			t.Fatalf("area %v: %d edges, wanted %d", area, len(got), len(want))
+		}
+	}
+	ctx, stop := context.WithCancel(context.Background())
+	stop()
+	if _, err := g.DescribeIn(ctx, b); len(all.Edges) > 256 && !errors.Is(err, context.Canceled) {
+		t.Errorf("ended: %v", err)
 	}
 }
