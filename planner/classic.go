@@ -2,7 +2,6 @@ package planner
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"math"
 
@@ -117,9 +116,6 @@ func (t *task) classic(ctx context.Context) (*course, error) {
 	r, err := t.over, error(nil)
 	if r == nil {
 		r, err = t.w.classics.get(ctx, classicKey{t.q.Options.Roadmap, t.j.NeedUm, t.j.RadiusUm})
-	}
-	if errors.Is(err, roadmap.ErrTooLarge) {
-		return nil, &RequestError{"options.roadmap", err.Error()}
 	}
 	if err != nil {
 		return nil, err

@@ -4,11 +4,13 @@ import (
 	"context"
 	"errors"
 	"math"
+	"math/rand/v2"
 	"reflect"
 	"testing"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/planner"
+	"example.com/wideberth/planner/roadmap"
 )
 
 var classics = []planner.Roadmap{planner.VisibilityGraph, planner.MeadowMap, planner.VoronoiGraph, planner.ExactCells}
@@ -97,6 +99,25 @@ func TestClassicRoadmapsRefuse(t *testing.T) {
 		if _, err := w.Plan(context.Background(), q); !errors.As(err, &bad) || bad.Field != "options.roadmap" {
 			t.Errorf("balanced over a meadow map: %v", err)
 		}
+	}
+}
+
+// TestClassicRoadmapTooLarge: a roadmap that is too large for the floor is no fault of the request.
+func TestClassicRoadmapTooLarge(t *testing.T) {
+	f := randomFloor(t, rand.New(rand.NewPCG(5, 6)), 300, 300, 0.1)
+	free := func(row int) planner.Pose { // the first free cell of a row from above
+		col := 0
+		for f.Solid(col, f.Settings().Rows-1-row) {
+			col++
+		}
+		return cellPose(f, row, col)
+	}
+	q := shortest(body(0.1), free(1), free(298))
+	q.Options.Roadmap = planner.VisibilityGraph
+	var bad *planner.RequestError
+	_, err := newWorld(t, f).Plan(context.Background(), q)
+	if !errors.Is(err, roadmap.ErrTooLarge) || errors.As(err, &bad) {
+		t.Errorf("%v, wanted roadmap.ErrTooLarge", err)
 	}
 }
 

@@ -20,8 +20,8 @@ type CheckError struct{ Problem string }
 
 func (e *CheckError) Error() string { return "planner: route failed its check: " + e.Problem }
 
-// Plan answers a request. The error is ctx's, a *RequestError or a *CheckError;
-// "no way" is a Refusal. When the deadline is ctx's own cause ErrTimeBudget and passes
+// Plan answers a request. The error is ctx's, a *RequestError or a *CheckError, or wraps
+// roadmap.ErrTooLarge when a roadmap that the options name is; "no way" is a Refusal. When the deadline is ctx's own cause ErrTimeBudget and passes
 // during the search, the best checked route known by then is given (Bound.CutShort), else
 // a Refusal with OutOfTime. What is done after that deadline: when no way is known
 // but the mesh for the shortest is there, 20 ms go to looking for it, and what was found is

@@ -45,7 +45,7 @@
 //	STALE_BASE          ABORTED              the base is below the head; metadata base_version, head_version, head_digest, conflicts
 //	BASE_ABOVE_HEAD     FAILED_PRECONDITION  the base is above the head; metadata head_version; PreconditionFailure HEAD
 //	REQUEST_ID_REUSED   FAILED_PRECONDITION  the request id was used for another request; PreconditionFailure REQUEST_ID
-//	ROADMAP_TOO_LARGE   FAILED_PRECONDITION  a roadmap, or what of it is in the area, is larger than the server makes or shows; PreconditionFailure ROADMAP
+//	ROADMAP_TOO_LARGE   FAILED_PRECONDITION  a roadmap, shown or planned over, or what of it is in the area, is larger than the server makes or shows; PreconditionFailure ROADMAP
 //	OVERLOADED          RESOURCE_EXHAUSTED   all planners are busy, or PlanMany calls are as many as may be; RetryInfo
 //	DEADLINE            DEADLINE_EXCEEDED    the caller's or the server's deadline passed first
 //	CANCELLED           CANCELLED            the caller gave up

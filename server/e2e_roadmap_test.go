@@ -392,6 +392,12 @@ func TestCompareRoadmapsSaysWhyNot(t *testing.T) {
 	if len(got.Rows) != 2 || !strings.Contains(got.Rows[0].GetUnfit(), "at most 20000") || got.Rows[1].GetRoute() == nil {
 		t.Errorf("rows %v, wanted an unfit one with the limit, then a route", got.Rows)
 	}
+	// A plan over it is refused as showing it is.
+	_, err = r.routes.Plan(r.ctx(), &pb.PlanRequest{Floor: "hall", Body: q.Body, Start: q.Start, Goal: q.Goal,
+		Options: &pb.PlanOptions{Preference: pb.Preference_PREFERENCE_SHORTEST, Roadmap: pb.Roadmap_ROADMAP_VISIBILITY_GRAPH}})
+	wantStatus(t, err, codes.FailedPrecondition, "ROADMAP_TOO_LARGE")
+	_, err = r.show(&pb.ShowRoadmapRequest{Floor: "hall", Body: q.Body, Roadmap: pb.Roadmap_ROADMAP_VISIBILITY_GRAPH})
+	wantStatus(t, err, codes.FailedPrecondition, "ROADMAP_TOO_LARGE")
 	q.Body.RadiusM = 0.5
 	q.Start = atPose(6, 6)
 	if got, err = r.roadmaps().CompareRoadmaps(r.ctx(), q); err != nil {

@@ -224,7 +224,7 @@ func describe(ctx context.Context, err error, about subject) failure {
 		return unmet(f, "REQUEST_ID", "floors/"+about.floor)
 
 	case errors.Is(err, roadmap.ErrTooLarge):
-		return unmet(fail(codes.FailedPrecondition, "ROADMAP_TOO_LARGE", cut(err.Error(), maxMessageText-64)+"; ask for a smaller area, or another roadmap"), "ROADMAP", "floors/"+about.floor)
+		return unmet(fail(codes.FailedPrecondition, "ROADMAP_TOO_LARGE", cut(err.Error(), maxMessageText-64)+"; ask for another roadmap, or to be shown a smaller area"), "ROADMAP", "floors/"+about.floor)
 	case errors.Is(err, errOverloaded):
 		return later(fail(codes.ResourceExhausted, "OVERLOADED", "all planners are busy"), retryShed)
 	case errors.Is(err, errPreparing):

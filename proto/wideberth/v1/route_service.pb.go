@@ -114,7 +114,8 @@ const (
 	// below are for PREFERENCE_SHORTEST alone (else INVALID_ARGUMENT), obey no one-way
 	// zone (a way that goes against one is refused with the zone named), and are
 	// described and compared by RoadmapService. With keep_roadmap_path the answer is the
-	// roadmap's own way, else that way straightened.
+	// roadmap's own way, else that way straightened. One that would be too large for the
+	// floor is FAILED_PRECONDITION (ROADMAP_TOO_LARGE), as in RoadmapService.
 	Roadmap_ROADMAP_VISIBILITY_GRAPH Roadmap = 5
 	// Convex regions, crossed at the middles of the borders they share; then path
 	// relaxation within the regions.
