@@ -9,8 +9,12 @@ import (
 	"example.com/wideberth/planner/roadmap/internal/cells"
 )
 
+// maxWindowEdges is how many edges are described at most; a region of many borders has one for
+// each pair of them.
+var maxWindowEdges = 1_000_000
+
 // Describe is the relational graph and the regions that have an area, cut off at
-// roadmap.MaxWindow nodes.
+// roadmap.MaxWindow nodes or a million edges.
 func (r *Roadmap) Describe() roadmap.Description {
 	d, _ := r.describe(context.Background(), r.s.Field().Bounds())
 	return d
@@ -45,7 +49,7 @@ func (r *Roadmap) describe(ctx context.Context, within geom.Rect) (roadmap.Descr
 	places := make(map[int32]int32)
 	for i, list := range r.at {
 		if ctx.Err() != nil {
-			return d, ctx.Err()
+			return d, context.Cause(ctx)
 		}
 		if r.bounds(int32(i)).Intersect(within).IsEmpty() {
 			continue
@@ -61,7 +65,13 @@ func (r *Roadmap) describe(ctx context.Context, within geom.Rect) (roadmap.Descr
 			places[b] = int32(len(d.Nodes))
 			d.Nodes = append(d.Nodes, roadmap.Node{At: p, ClearanceUm: int64(f.At(p).Um)})
 		}
+		if len(d.Edges)+len(list)*(len(list)-1)/2 > maxWindowEdges {
+			return d, fmt.Errorf("%w: more than %d edges in this area", roadmap.ErrTooLarge, maxWindowEdges)
+		}
 		for k, a := range list {
+			if ctx.Err() != nil {
+				return d, context.Cause(ctx)
+			}
 			for _, b := range list[k+1:] {
 				a, b := places[a], places[b]
 				p, q := d.Nodes[a].At, d.Nodes[b].At

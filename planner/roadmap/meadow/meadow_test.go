@@ -2,6 +2,7 @@ package meadow
 
 import (
 	"context"
+	"errors"
 	"math"
 	"math/rand/v2"
 	"reflect"
@@ -332,5 +333,40 @@ func TestDescribeInAnArea(t *testing.T) {
 	}
 	if !inside(d.Cells[0].Ring, at, 0) {
 		t.Errorf("%v is not in %v", at, d.Cells[0].Ring)
+	}
+}
+
+// TestWindowLimitsEdges: a room with posts along its walls has one region of many borders, each
+// pair of them an edge; more edges than a description may have are refused, and a window of
+// few is not.
+func TestWindowLimitsEdges(t *testing.T) {
+	defer func(old int) { maxWindowEdges = old }(maxWindowEdges)
+	var edits []floor.Edit
+	for x := 5; x < 195; x += 10 {
+		edits = append(edits, testfloor.Paint(x, 20, x+4, 24, floor.Occupied), testfloor.Paint(x, 70, x+4, 74, floor.Occupied))
+	}
+	r := build(t, testfloor.New(t, 200, 100, false, edits...), roadmap.Need{})
+	bounds := r.s.Field().Bounds()
+	d, err := r.DescribeIn(context.Background(), bounds)
+	if err != nil || int64(len(d.Edges)) != r.Size().Edges {
+		t.Fatalf("%d edges of %d, error %v", len(d.Edges), r.Size().Edges, err)
+	}
+	maxWindowEdges = len(d.Edges)
+	if _, err := r.DescribeIn(context.Background(), bounds); err != nil {
+		t.Errorf("as many edges as may be: %v", err)
+	}
+	maxWindowEdges--
+	cut, err := r.DescribeIn(context.Background(), bounds)
+	if !errors.Is(err, roadmap.ErrTooLarge) || len(cut.Edges) > maxWindowEdges {
+		t.Errorf("%d edges, at most %d: error %v", len(cut.Edges), maxWindowEdges, err)
+	}
+	part := geom.Rect{Min: bounds.Min, Max: geom.Point{X: bounds.Min.X + 100_000, Y: bounds.Min.Y + 100_000}}
+	if few, err := r.DescribeIn(context.Background(), part); err != nil || len(few.Edges) >= len(d.Edges) {
+		t.Errorf("%d edges in a corner, error %v", len(few.Edges), err)
+	}
+	ctx, stop := context.WithCancel(context.Background())
+	stop()
+	if _, err := r.DescribeIn(ctx, bounds); !errors.Is(err, context.Canceled) {
+		t.Errorf("ended: %v", err)
 	}
 }
