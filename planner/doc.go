@@ -28,7 +28,8 @@
 // What breaks it: a one-way zone that the way goes against; an end that touches a solid or, in
 // a wedge, is within anyangle.DeltaUm of too near; a point body that prefers nothing; a
 // passage exactly as wide as the body where a bent edge's chords would cut into it; a floor too
-// large for a search or in clutter too large to keep (anyangle.ErrTooLarge, voronoi.ErrTooLarge). Then, and where a roadmap is named, cells are
+// large for a search, or clutter that is too much to keep mesh or edges of
+// (anyangle.ErrTooLarge, voronoi.ErrTooLarge). Then, and where a roadmap is named, cells are
 // searched that keep the required clearance as a whole (Auto: the 8-connected grid; for
 // clearest at a few clearances in turn), balanced taking a cell for tight as a whole. Ends
 // join them by straight pieces that are clear, and the path is straightened (package pull):
@@ -100,13 +101,13 @@
 //
 // As halls grow, with the same 8 rows of racks crossed, a plan costs the same; making a version
 // ready from scratch costs its area, a patch what it changes (BenchmarkPlanAsHallGrows, body
-// of 0.45 m, medians of 60 plans; the other columns between two loaded runs):
+// of 0.45 m, medians of 60 plans, each the best of five; two processors):
 //
-//	cells          shortest   balanced   world built   first plan     push and first plan
-//	1 million      0.78 ms    0.48 ms    0.07-0.15 s   0.01-0.06 s    2-7 ms
-//	4 million      0.80 ms    0.76 ms    0.2-0.6 s     0.2-0.3 s      3-9 ms
-//	16 million     0.60 ms    0.52 ms    1.0-3.4 s     0.5-1.7 s      4-17 ms
-//	64 million     0.70 ms    0.62 ms    5-12 s        3-5 s          5-44 ms
+//	cells          shortest   balanced   world built   first plan   push and first plan   heap
+//	1 million      0.47 ms    0.32 ms    27 ms         7 ms         1.6 ms                5 MB
+//	4 million      0.49 ms    0.43 ms    63 ms         22 ms        1.7 ms                21 MB
+//	16 million     0.38 ms    0.47 ms    225 ms        78 ms        4.1 ms                84 MB
+//	64 million     0.47 ms    0.44 ms    821 ms        382 ms       6.1 ms                332 MB
 //
 // The classical roadmaps (classic.go, package roadmap and those below it) are there to be
 // seen, compared and named; they are kept apart, brought up to date in the background, and
