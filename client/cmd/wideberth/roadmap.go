@@ -217,7 +217,11 @@ func noteValue(n *wideberthv1.RoadmapNote) string {
 	if n.GetValue() == math.Trunc(n.GetValue()) && math.Abs(n.GetValue()) < 1e15 {
 		v = strconv.FormatFloat(n.GetValue(), 'f', 0, 64)
 	}
-	if u := n.GetUnit(); u != "1" && u != "" {
+	switch u := n.GetUnit(); u {
+	case "1", "":
+	case "m2":
+		v += " m²"
+	default:
 		v += " " + u
 	}
 	return v
