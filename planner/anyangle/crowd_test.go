@@ -15,7 +15,7 @@ import (
 func TestThinnedOutIsTheSame(t *testing.T) {
 	const seed = 55
 	t.Logf("seed %d", seed)
-	cases := 25
+	cases := 10
 	if slow() {
 		cases = 400
 	}

@@ -15,7 +15,7 @@ import (
 func TestClutterIsRefusedBeforeItFillsTheMemory(t *testing.T) {
 	ctx := context.Background()
 	defer func(old int64) { maxBytes = old }(maxBytes)
-	m := randomMask(rand.New(rand.NewPCG(1, 1)), 400, 300, 0.05).floor(t, false)
+	m := randomMask(rand.New(rand.NewPCG(1, 1)), 200, 150, 0.05).floor(t, false)
 	need := Need{ClearanceUm: 60_000}
 	g, err := Build(ctx, m, need)
 	if err != nil {
