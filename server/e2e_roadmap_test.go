@@ -362,6 +362,16 @@ func TestCompareRoadmaps(t *testing.T) {
 					t.Errorf("%s has a smallest clearance of %v m, the Voronoi graph of %v m", row.Roadmap, row.InnerSmallestClearanceM, roomy.InnerSmallestClearanceM)
 				}
 			}
+			// So does the clearest route, ends and all: they are the same for all.
+			answer, err := r.routes.Plan(r.ctx(), &pb.PlanRequest{Floor: "hall", Body: body, Start: q.Start, Goal: q.Goal, Options: &pb.PlanOptions{Preference: pb.Preference_PREFERENCE_CLEAREST}})
+			if err != nil || answer.GetRoute() == nil {
+				t.Fatalf("clearest: %v, %v", answer, err)
+			}
+			for _, row := range got.Rows {
+				if row.GetRoute().SmallestClearanceM > answer.GetRoute().SmallestClearanceM+cell {
+					t.Errorf("%s has a smallest clearance of %v m, the clearest route of %v m", row.Roadmap, row.GetRoute().SmallestClearanceM, answer.GetRoute().SmallestClearanceM)
+				}
+			}
 			if more := seen.GetRoute().LengthM - got.OptimumM; more > slack {
 				t.Errorf("the visibility graph's way is %v m longer than the optimum, wanted at most %v m", more, slack)
 			}
