@@ -12,6 +12,7 @@ import (
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/anyangle"
+	"example.com/wideberth/planner/internal/testfloor"
 )
 
 // rackHall has rows of racks 1.2 m deep and 3 m apart, cut by aisles of 2.5 to 3.5 m.
@@ -72,7 +73,7 @@ var benchFloors = []struct {
 	{"turned1024-raster", func(tb testing.TB) *floor.Map { return hallFloor(tb, 1024, 7*math.Pi/180, false) }},
 	{"hall4096", func(tb testing.TB) *floor.Map { return hallFloor(tb, 4096, 0, false) }},
 	{"random512", func(tb testing.TB) *floor.Map { return clutter(tb, 512, 0.2) }},
-	{"auction-hall", func(tb testing.TB) *floor.Map { return auctionHall(tb) }},
+	{"auction-hall", testfloor.Hall},
 }
 
 // BenchmarkAdvanceVsBuild reports the time of tracing all edges over that of bringing

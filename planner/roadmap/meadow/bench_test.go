@@ -8,8 +8,8 @@ import (
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/anyangle"
+	"example.com/wideberth/planner/internal/testfloor"
 	"example.com/wideberth/planner/roadmap"
-	"example.com/wideberth/planner/roadmap/internal/testfloor"
 )
 
 const benchUm = 450_000

@@ -9,8 +9,8 @@ import (
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/planner/internal/plainfloor"
+	"example.com/wideberth/planner/internal/testfloor"
 	"example.com/wideberth/planner/roadmap"
-	"example.com/wideberth/planner/roadmap/internal/testfloor"
 )
 
 // BenchmarkPatchVsRebuild patches a square metre, on the demonstration floor and on halls of

@@ -12,8 +12,8 @@ import (
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/anyangle"
 	"example.com/wideberth/planner/check"
+	"example.com/wideberth/planner/internal/testfloor"
 	"example.com/wideberth/planner/roadmap"
-	"example.com/wideberth/planner/roadmap/internal/testfloor"
 )
 
 // TestWaysKeepTheirClearance has the independent checker go over the ways of Search and of

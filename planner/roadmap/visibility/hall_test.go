@@ -2,6 +2,7 @@ package visibility
 
 import (
 	"context"
+	"math"
 	"math/rand/v2"
 	"testing"
 	"time"
@@ -11,74 +12,10 @@ import (
 	"example.com/wideberth/planner/anyangle"
 	"example.com/wideberth/planner/check"
 	"example.com/wideberth/planner/clearance"
+	"example.com/wideberth/planner/internal/testfloor"
 	"example.com/wideberth/planner/roadmap"
 	"example.com/wideberth/planner/roadmap/internal/gen"
-	wideberthv1 "example.com/wideberth/proto/wideberth/v1"
-	"example.com/wideberth/testdata"
 )
-
-// auctionHall is the demonstration floor with its solids.
-func auctionHall(tb testing.TB) *floor.Map {
-	tb.Helper()
-	l, err := testdata.Hall()
-	if err != nil {
-		tb.Fatal(err)
-	}
-	um := func(m float64) float64 { return geom.FromMetres(m) }
-	s := floor.Settings{
-		ResolutionUm: int64(um(l.Settings.GetResolutionM())), Columns: int(l.Settings.GetColumns()), Rows: int(l.Settings.GetRows()),
-		CapUm: 5_000_000,
-	}
-	m, err := floor.New(s)
-	if err != nil {
-		tb.Fatal(err)
-	}
-	ring := func(ps []*wideberthv1.Point) (out []geom.Point) {
-		for _, p := range ps {
-			out = append(out, geom.Point{X: um(p.GetXM()), Y: um(p.GetYM())})
-		}
-		return out
-	}
-	var edits []floor.Edit
-	for _, e := range l.Edits {
-		switch {
-		case e.GetClearRect() != nil:
-			a := e.GetClearRect().GetArea()
-			edits = append(edits, floor.Edit{Kind: floor.ClearRect, Rect: s.CellRectOf(geom.Rect{Min: geom.Point{X: um(a.MinXM), Y: um(a.MinYM)}, Max: geom.Point{X: um(a.MaxXM), Y: um(a.MaxYM)}})})
-		case e.GetPaintOccupancy() != nil:
-			r := e.GetPaintOccupancy().GetRect()
-			c := r.GetRect()
-			edits = append(edits, floor.Edit{Kind: floor.PaintRect, Rect: floor.CellRect{X0: int(c.Column), Y0: int(c.Row), X1: int(c.Column + c.Columns), Y1: int(c.Row + c.Rows)}, Fill: floor.Occupancy(int(r.GetOccupancy()) - 1)})
-		case e.GetPutFeature() != nil:
-			f := e.GetPutFeature().GetFeature()
-			v := f.GetSolid()
-			tol := int64(um(v.GetSurveyToleranceM()))
-			var shape floor.Shape
-			switch {
-			case v.GetDisc() != nil:
-				shape = floor.NewDisc(ring([]*wideberthv1.Point{v.GetDisc().GetCenter()})[0], int64(um(v.GetDisc().GetRadiusM())), tol)
-			case v.GetPolyline() != nil:
-				shape = floor.NewPolyline(ring(v.GetPolyline().GetPoints()), int64(um(v.GetPolyline().GetWidthM())), tol)
-			case v.GetPolygon() != nil:
-				shape = floor.NewPolygon([][]geom.Point{ring(v.GetPolygon().GetOuter().GetPoints())}, tol)
-			default:
-				continue
-			}
-			ft := &floor.Feature{Name: f.GetName(), Kind: floor.Solid, Shape: shape, ToleranceUm: tol}
-			switch {
-			case v.GetDisc() != nil:
-				ft.RadiusUm = int64(um(v.GetDisc().GetRadiusM()))
-			case v.GetPolyline() != nil:
-				ft.WidthUm = int64(um(v.GetPolyline().GetWidthM()))
-			}
-			edits = append(edits, floor.Edit{Kind: floor.PutFeature, Feature: ft})
-		}
-	}
-	if m, err = m.Apply(edits); err != nil {
-		tb.Fatal(err)
-	}
-	return m
-}
 
 // hallPairs are places in the hall with room for a body of that clearance.
 func hallPairs(f *clearance.Field, n int, um float64) (out [][2]geom.Point) {
@@ -99,7 +36,7 @@ func hallPairs(f *clearance.Field, n int, um float64) (out [][2]geom.Point) {
 // the arcs, and the graph stays small enough to look at.
 func TestDemoHall(t *testing.T) {
 	const r = 650_000
-	f := auctionHall(t)
+	f := testfloor.Hall(t)
 	fd := field(t, f)
 	g := build(t, f, r)
 	mesh, err := anyangle.Build(context.Background(), f, anyangle.Need{ClearanceUm: r, Zones: true, ZoneUm: r})
@@ -132,8 +69,16 @@ func TestDemoHall(t *testing.T) {
 	if len(d.Nodes) > 600 || len(d.Edges) > 10_000 || len(d.Edges) < len(d.Nodes) {
 		t.Errorf("%d nodes, %d edges", len(d.Nodes), len(d.Edges))
 	}
-	for _, n := range d.Nodes { // no closed zones here: every arc is about a solid
-		if n.ClearanceUm != r {
+	aboutZone := func(p geom.Point) bool {
+		for z := range f.Features() {
+			if d, _ := z.Shape.Dist(p); z.Kind == floor.ClosedZone && math.Abs(d-r) < 1 {
+				return true
+			}
+		}
+		return false
+	}
+	for _, n := range d.Nodes { // every arc is about a solid or a closed zone
+		if n.ClearanceUm != r && !aboutZone(n.At) {
 			t.Errorf("node %v has %d µm", n.At, n.ClearanceUm)
 		}
 	}
@@ -147,7 +92,7 @@ func TestDemoHall(t *testing.T) {
 // BenchmarkAdvanceVsRebuild changes a square metre of the hall: rebuild/advance is for
 // all tangents, kept against found from scratch.
 func BenchmarkAdvanceVsRebuild(b *testing.B) {
-	f := auctionHall(b)
+	f := testfloor.Hall(b)
 	fd := field(b, f)
 	need := roadmap.Need{ClearanceUm: 650_000, Zones: true, ZoneUm: 580_000}
 	ctx := context.Background()
@@ -187,7 +132,7 @@ func BenchmarkAdvanceVsRebuild(b *testing.B) {
 
 // BenchmarkSearchVsMesh is a search over tangents already found against the any-angle mesh.
 func BenchmarkSearchVsMesh(b *testing.B) {
-	f := auctionHall(b)
+	f := testfloor.Hall(b)
 	g := build(b, f, 650_000)
 	mesh, err := anyangle.Build(context.Background(), f, anyangle.Need(g.Need()))
 	if err != nil {

@@ -11,8 +11,8 @@ import (
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/testfloor"
 	"example.com/wideberth/planner/roadmap"
-	"example.com/wideberth/planner/roadmap/internal/testfloor"
 )
 
 func build(t testing.TB, m *floor.Map, need roadmap.Need, chord float64) *Space {

@@ -1,4 +1,4 @@
-// Package testfloor makes floors for the tests of roadmaps: random ones, each from its
+// Package testfloor makes floors for tests of the planner: random ones, each from its
 // generator's seed, and the demonstration floor. Nothing served uses it.
 package testfloor
 
