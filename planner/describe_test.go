@@ -92,7 +92,7 @@ func TestBalancedKeepsAWideBerth(t *testing.T) {
 		t.Errorf("shortest keeps %d, balanced %d µm", short.SmallestUm, wide.SmallestUm)
 	}
 	// Taut about the rack grown by 1 m is the optimum of what is open throughout:
-	// references.md case 2's formula for a = 8 from the corner's side.
+	// two tangents, two arcs and a side (elementary geometry), a = 8 from the corner's side.
 	open := func(r float64) float64 {
 		d := math.Hypot(6, 3) // start to the rack's upper corner
 		return 2*(math.Sqrt(d*d-r*r)+r*(math.Atan2(3, 6)+math.Asin(r/d))) + 4

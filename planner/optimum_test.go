@@ -21,7 +21,7 @@ func pastSquare(a, h, r float64) float64 {
 	return 2*(math.Sqrt(d*d-r*r)+r*(math.Atan2(h, a-h)+math.Asin(r/d))) + 2*h
 }
 
-// Straightened routes against true optima: references.md cases 1 to 3, computed there from
+// Straightened routes against true optima: round a disc, round a square and past two blocks, computed from
 // tangents and arcs (the hull of the grown obstacle). No route may be shorter than
 // its optimum. How much longer one may be comes from where straightening stops: a
 // bend is not moved for less than a fiftieth of a cell, 1 mm here, which on ways of

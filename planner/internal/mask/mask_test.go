@@ -42,7 +42,7 @@ func square(x0, y0, x1, y1 float64) floor.Shape {
 	return floor.NewPolygon([][]geom.Point{{{X: x0, Y: y0}, {X: x1, Y: y0}, {X: x1, Y: y1}, {X: x0, Y: y1}}}, 0)
 }
 
-// Growing a unit square by r covers 1 + 4r + πr² (Steiner; references.md case 12: 3.785398163
+// Growing a unit square by r covers 1 + 4r + πr² (Steiner 1840: 3.785398163
 // at r = 0.5). Cells that are not wholly clear cover that, and beyond it at most a
 // cell's diagonal all round: (4 + 2πr)·h·sqrt 2, and a corner's worth.
 func TestFreeCellsLeaveTheGrownSquare(t *testing.T) {

@@ -52,7 +52,7 @@ func nodes(m *mask.Mask, q int) int {
 	return (4*len(leaves) - 1) / 3
 }
 
-// Node counts of region quadtrees: references.md cases 9 to 9d, computed there; 9d after an exercise in
+// Node counts of region quadtrees: from the definition; that of a square after an exercise in
 // Samet, Foundations of Multidimensional and Metric Data Structures, 2006.
 func TestQuadtreeNodeCounts(t *testing.T) {
 	for _, q := range []int{4, 5, 6} {
