@@ -11,6 +11,7 @@ import (
 	"example.com/wideberth/planner/anyangle"
 	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/judge"
+	"example.com/wideberth/planner/roadmap/cellgrid"
 )
 
 // Describing a course adds points to it: where legs meet, where clearance is
@@ -319,15 +320,7 @@ func (t *task) bound(c *course, r *Route) Bound {
 	case c.bias > 0:
 		b.WidthBiasUm = c.bias
 	default:
-		b.WidthBiasUm = widthBias(t.w.frame.Res)
+		b.WidthBiasUm = cellgrid.WidthBiasUm(t.w.frame.Res)
 	}
 	return b
 }
-
-// widthBias is by how much, in micrometres, a passage may be wider than a body needs and
-// still be missed where cells are free only as a whole. A curve down the middle of
-// a passage passes through a chain of cells that share sides, and no point of
-// those is farther from the curve than a cell's diagonal: with a diagonal more
-// of clearance on either side they are all free. Passages along the axes need only
-// one cell on either side.
-func widthBias(res float64) int64 { return int64(math.Ceil(2 * math.Sqrt2 * res)) }

@@ -4,12 +4,12 @@ import (
 	"context"
 	"math"
 	"math/bits"
-	"reflect"
 	"slices"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/anyangle"
+	"example.com/wideberth/planner/internal/rules"
 )
 
 // onRouteUm is how far, in micrometres, a pose may be from a route and still count as on
@@ -67,7 +67,7 @@ func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *co
 	change := floor.Diff(before, now)
 	grown := standing{float64(t.j.NeedUm) + meshStandsOff, float64(t.j.RadiusUm) + meshStandsOff}
 	for _, f := range change.Features {
-		if grow, ok := grown.of(f.Before); ok && differs(f) && d.overShape(f.Before.Shape, grow) {
+		if grow, ok := grown.of(f.Before); ok && rules.Differs(f) && d.overShape(f.Before.Shape, grow) {
 			return nil
 		}
 	}
@@ -99,7 +99,7 @@ func (t *task) keptRoomy(ctx context.Context, before *floor.Map, pts []geom.Poin
 	grown := standing{p + meshStandsOff, p - float64(t.q.Body.MarginUm) + meshStandsOff}
 	change := floor.Diff(before, now)
 	for _, f := range change.Features {
-		if !differs(f) {
+		if !rules.Differs(f) {
 			continue
 		}
 		for _, f := range [2]*floor.Feature{f.Before, f.After} {
@@ -144,12 +144,6 @@ func (s standing) of(f *floor.Feature) (grow float64, ok bool) {
 		return s.zone, true
 	}
 	return 0, false
-}
-
-// differs says whether what a feature covers, or as what, is not the same.
-func differs(f floor.FeatureChange) bool {
-	b, a := f.Before, f.After
-	return b == nil || a == nil || a.Kind != b.Kind || !reflect.DeepEqual(a.Shape, b.Shape)
 }
 
 // gone and either pick the bits of cells that count, from those solid before and now.

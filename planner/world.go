@@ -3,10 +3,8 @@ package planner
 import (
 	"context"
 	"errors"
-	"reflect"
 
 	"example.com/wideberth/mapstore/floor"
-	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/check"
 	"example.com/wideberth/planner/clearance"
 	"example.com/wideberth/planner/internal/mask"
@@ -78,23 +76,7 @@ func (w *World) Advance(ctx context.Context, m *floor.Map) (*World, error) {
 		return nil, err
 	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, check: check.Of(m), masks: w.masks.Carry(f, r, closedBounds(change)), ways: g, classics: classics, turn: w.turn, frame: w.frame}, nil
-}
-
-// closedBounds are the bounds of the closed zones that differ, before and after.
-func closedBounds(c floor.Change) []geom.Rect {
-	var rs []geom.Rect
-	for _, fc := range c.Features {
-		if fc.Before != nil && fc.After != nil && fc.Before.Kind == fc.After.Kind && reflect.DeepEqual(fc.Before.Shape, fc.After.Shape) {
-			continue
-		}
-		for _, f := range []*floor.Feature{fc.Before, fc.After} {
-			if f != nil && f.Kind == floor.ClosedZone {
-				rs = append(rs, f.Shape.Bounds())
-			}
-		}
-	}
-	return rs
+	return &World{m: m, field: f, rules: r, check: check.Of(m), masks: w.masks.Carry(f, r, rules.ClosedChanges(change)), ways: g, classics: classics, turn: w.turn, frame: w.frame}, nil
 }
 
 // Map is the version the world was made from.

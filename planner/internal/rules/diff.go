@@ -3,8 +3,31 @@ package rules
 import (
 	"reflect"
 
+	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 )
+
+// Differs says whether what a feature covers, or as what, is not the same.
+func Differs(f floor.FeatureChange) bool {
+	b, a := f.Before, f.After
+	return b == nil || a == nil || a.Kind != b.Kind || !reflect.DeepEqual(a.Shape, b.Shape)
+}
+
+// ClosedChanges are the bounds of the closed zones that differ, before and after.
+func ClosedChanges(c floor.Change) []geom.Rect {
+	var out []geom.Rect
+	for _, fc := range c.Features {
+		if !Differs(fc) {
+			continue
+		}
+		for _, f := range [2]*floor.Feature{fc.Before, fc.After} {
+			if f != nil && f.Kind == floor.ClosedZone {
+				out = append(out, f.Shape.Bounds())
+			}
+		}
+	}
+	return out
+}
 
 // OneWayChanges are the bounds of the one-way zones that r and old do not share, in r and
 // in old: outside them the same steps are allowed. Time is linear in the number of zones.

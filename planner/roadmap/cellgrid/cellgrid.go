@@ -13,7 +13,6 @@ import (
 	"fmt"
 	"math"
 	"math/bits"
-	"reflect"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -78,19 +77,8 @@ func (c *Cells) Advance(ctx context.Context, f *clearance.Field, change floor.Ch
 	if f.Map().Settings() != c.field.Map().Settings() {
 		return Build(ctx, f, c.need, c.kind)
 	}
-	var zones []geom.Rect
-	for _, fc := range change.Features {
-		if b, a := fc.Before, fc.After; b != nil && a != nil && b.Kind == a.Kind && reflect.DeepEqual(b.Shape, a.Shape) {
-			continue
-		}
-		for _, z := range [2]*floor.Feature{fc.Before, fc.After} {
-			if z != nil && z.Kind == floor.ClosedZone {
-				zones = append(zones, z.Shape.Bounds())
-			}
-		}
-	}
 	r := rules.Of(f.Map())
-	return of(ctx, f, r, c.set.Carry(f, r, zones), c.need, c.kind)
+	return of(ctx, f, r, c.set.Carry(f, r, rules.ClosedChanges(change)), c.need, c.kind)
 }
 
 // Search finds the shortest way over the roadmap; one-way zones are obeyed.

@@ -62,9 +62,13 @@ func Count(f *clearance.Field, um int64) Tree {
 	return t
 }
 
-// WidthBiasUm is by how much wider than twice the clearance a passage may be and still be
-// missed by whole cells of side h: a cell's diagonal on either side.
-func WidthBiasUm(h float64) int64 { return int64(math.Ceil(2 * math.Sqrt2 * h)) }
+// WidthBiasUm is by how much, in micrometres, a passage may be wider than a body needs and
+// still be missed where cells are free only as a whole. A curve down the middle of
+// a passage passes through a chain of cells that share sides, and no point of
+// those is farther from the curve than a cell's diagonal: with a diagonal more
+// of clearance on either side they are all free. Passages along the axes need only
+// one cell on either side.
+func WidthBiasUm(res float64) int64 { return int64(math.Ceil(2 * math.Sqrt2 * res)) }
 
 func (c *Cells) notes() []roadmap.Note {
 	notes := []roadmap.Note{{Name: "width bias", Value: geom.Metres(float64(WidthBiasUm(c.frame.Res))), Unit: "m"}}
