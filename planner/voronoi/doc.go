@@ -41,10 +41,10 @@
 //
 // # Reading the source
 //
-// size.go has the limits, site.go and curve.go have the elements, outline.go those of a feature, triple.go the branch
-// points, trace.go and hidden.go a block's edges, block.go and join.go their topology, graph.go and advance.go the whole,
-// same.go what two versions have in common. On them are edge.go (edges and gates for the
-// reader), pave.go and roads.go (edges and the open floor for one preferred clearance, by
+// size.go has the limits, site.go and curve.go the elements, outline.go those of a feature,
+// triple.go the branch points, trace.go and hidden.go a block's edges, block.go and join.go
+// their topology, graph.go and advance.go the whole. On them are edge.go (edges and gates for
+// the reader), pave.go and roads.go (edges and the open floor for one preferred clearance, by
 // block and together), widest.go (bottlenecks), enter.go (how ends get there), path.go,
 // search.go and net.go (balanced and clearest) and draw.go (polylines).
 package voronoi
