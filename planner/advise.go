@@ -75,8 +75,8 @@ func (g *guide) hint() Hint {
 	if n.Feature != nil {
 		h.Nearest = n.Feature.Name
 	}
-	h.FreeTravelUm = less(g.w.travel(p, g.r.Pose.Heading, b.RadiusUm, g.w.field.Cap()))
-	far := g.w.travel(p, g.r.Pose.Heading, b.RadiusUm, g.w.stopping(b)) - float64(g.r.SpreadUm)
+	h.FreeTravelUm = less(g.w.travel(g.j, p, g.r.Pose.Heading, b.RadiusUm, g.w.field.Cap()))
+	far := g.w.travel(g.j, p, g.r.Pose.Heading, b.RadiusUm, g.w.stopping(b, math.Inf(1))) - float64(g.r.SpreadUm)
 	h.SpeedCeiling, h.SpeedCause = advised(b, g.w.rules.SpeedLimit(p, p), max(0, far))
 
 	on := project(g.s.Route, p)

@@ -70,6 +70,11 @@ func (t *task) outline(pts []geom.Point) *outline {
 	return o
 }
 
+// survey is for a way about to be judged and described.
+func (t *task) survey(pts []geom.Point) {
+	t.j.Survey(pts, float64(t.w.stopping(t.q.Body, math.Inf(1))))
+}
+
 // cut adds a point near at to piece i, if it is far enough from the piece's ends and if the
 // pieces it makes are as good: they may be driven, and neither is tight unless
 // the whole was.
@@ -202,6 +207,9 @@ func (o *outline) space(most float64) {
 
 // describe turns a course into a route.
 func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
+	if !t.j.Surveyed() {
+		t.survey(c.pts)
+	}
 	o := t.outline(c.pts)
 	o.markSmallest()
 	if most := t.q.Options.MaxSpacingUm; most > 0 {
@@ -303,7 +311,7 @@ func (t *task) leg(o *outline, pts []RoutePoint, i, k int) Leg {
 
 // room is the free width from p along a direction, at most the floor's cap.
 func (t *task) room(p geom.Point, heading float64) int64 {
-	return t.roundedDown(t.w.travel(p, heading, 0, t.w.field.Cap()))
+	return t.roundedDown(t.w.travel(t.j, p, heading, 0, t.w.field.Cap()))
 }
 
 // bound says how good a route is. Its lower bound is the straight distance.

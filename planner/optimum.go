@@ -64,6 +64,7 @@ func (t *task) optimum(ctx context.Context) (c *course, apart bool, err error) {
 		pts = slices.Delete(pts, 1, 2)
 	}
 	t.j.Forget(len(pts))
+	t.survey(pts)
 	for i := 1; i < len(pts); i++ {
 		if _, ok := t.j.Drive(pts[i-1], pts[i]); !ok {
 			return nil, false, nil

@@ -73,6 +73,7 @@ func (w *World) task(q Request) (*task, error) {
 
 // finish fills in the counters and turns a spent time budget into a refusal.
 func (t *task) finish(ctx context.Context, a Answer, err error) (Answer, error) {
+	defer t.j.Release()
 	var fault *CheckError // is told of even when time is up
 	if err != nil && ctx.Err() != nil && !errors.As(err, &fault) {
 		if !errors.Is(context.Cause(ctx), ErrTimeBudget) {

@@ -122,6 +122,8 @@ func (c *piecemeal) straight(from, to int) bool {
 // is not clear then, or not open any more.
 func (c *piecemeal) roundAll() []geom.Point {
 	last := len(c.pts) - 1
+	c.t.j.Forget(len(c.pts))
+	c.t.survey(c.pts)
 	out := make([]geom.Point, 1, last+1)
 	out[0] = c.pts[0]
 	for i := 1; i <= last; i++ {

@@ -4,6 +4,7 @@ import (
 	"math"
 
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/judge"
 )
 
 // ceiling is the advised speed ceiling for leaving a along the straight piece ab: the
@@ -12,10 +13,11 @@ import (
 func (t *task) ceiling(a, b geom.Point, heading float64) (float64, SpeedCause) {
 	// The piece itself is known to be free, whatever rounding makes of its heading.
 	free := geom.Dist(a, b)
-	if most := t.w.stopping(t.q.Body); free < float64(most) {
-		free += t.w.travel(b, heading, t.q.Body.RadiusUm, most-int64(free))
+	limit := t.w.rules.SpeedLimit(a, b)
+	if most := t.w.stopping(t.q.Body, limit); free < float64(most) {
+		free += t.w.travel(t.j, b, heading, t.q.Body.RadiusUm, most-int64(free))
 	}
-	return advised(t.q.Body, t.w.rules.SpeedLimit(a, b), free)
+	return advised(t.q.Body, limit, free)
 }
 
 // advised is the lowest of the body's own speed, a zone's limit, and the speed from
@@ -39,9 +41,9 @@ func roomSpeed(b Body, d float64) float64 {
 }
 
 // stopping is the free travel, in micrometres, beyond which room does not limit the
-// body's speed; at most the floor's diagonal.
-func (w *World) stopping(b Body) int64 {
-	v := b.MaxSpeed
+// body's speed where limit does already; at most the floor's diagonal.
+func (w *World) stopping(b Body, limit float64) int64 {
+	v := min(b.MaxSpeed, limit)
 	d := float64(v*b.Reaction) + float64(v*v)/(2*b.Braking)
 	r := w.field.Bounds()
 	return int64(math.Ceil(min(d*geom.UmPerMetre, geom.Dist(r.Min, r.Max)))) + 1
@@ -49,8 +51,8 @@ func (w *World) stopping(b Body) int64 {
 
 // travel is the field's Travel, which on a floor with an open border ends where the
 // disc's middle would leave the floor.
-func (w *World) travel(p geom.Point, heading float64, radiusUm, most int64) float64 {
-	d := w.field.Travel(p, heading, radiusUm, most)
+func (w *World) travel(j *judge.Judge, p geom.Point, heading float64, radiusUm, most int64) float64 {
+	d := j.Travel(p, heading, radiusUm, most)
 	if !w.m.Settings().OpenBorder {
 		return d
 	}

@@ -30,10 +30,7 @@ type Judge struct {
 
 	Sights, Exacts int64 // lines of sight tried, distances evaluated
 
-	driven []driven // see Drive
-	ask    int
-	ends   []clearance.Nearest // of ends of pieces; see end
-	askEnd int
+	mem *memory // nil: nothing is remembered
 
 	near touch.Solids // see solids
 }
@@ -54,23 +51,24 @@ func (j *Judge) Again() *Judge {
 func (j *Judge) Place(p geom.Point) clearance.Nearest { return j.end(p) }
 
 func (j *Judge) end(p geom.Point) clearance.Nearest {
-	n := len(j.ends)
+	m := j.remember()
+	n := len(m.ends)
 	for i := n - 1; i >= max(0, n-alike); i-- { // one piece ends where the next begins
-		if j.ends[i].On == p {
-			return j.ends[i]
+		if m.ends[i].On == p {
+			return m.ends[i]
 		}
 	}
-	for i := j.askEnd; i < min(n, j.askEnd+alike); i++ {
-		if j.ends[i].On == p {
-			j.askEnd = i + 1
-			return j.ends[i]
+	for i := m.askEnd; i < min(n, m.askEnd+alike); i++ {
+		if m.ends[i].On == p {
+			m.askEnd = i + 1
+			return m.ends[i]
 		}
 	}
 	if n >= mostDriven {
-		j.ends, j.askEnd = j.ends[:0], 0
+		m.ends, m.askEnd = m.ends[:0], 0
 	}
 	near := j.At(p)
-	j.ends = append(j.ends, near)
+	m.ends = append(m.ends, near)
 	return near
 }
 
@@ -78,7 +76,7 @@ func (j *Judge) end(p geom.Point) clearance.Nearest {
 // place is p itself.
 func (j *Judge) At(p geom.Point) clearance.Nearest {
 	j.Exacts++
-	return placed(j.Field.At(p), p)
+	return placed(j.vicinity(p, p).At(p), p)
 }
 
 // Segment is the field's answer, counted. Where nothing is nearer than the cap, both
@@ -89,7 +87,7 @@ func (j *Judge) Segment(a, b geom.Point) clearance.Nearest {
 	}
 	na, nb := j.end(a), j.end(b)
 	j.Exacts++
-	return placed(j.Field.SegmentBetween(a, b, na, nb), a)
+	return placed(j.vicinity(a, b).SegmentBetween(a, b, na, nb), a)
 }
 
 // Drive is Sight and Segment in one. Pieces that may be driven are remembered, for who asks
@@ -103,21 +101,28 @@ func (j *Judge) Drive(a, b geom.Point) (near clearance.Nearest, ok bool) {
 	r := j.Field.Bounds()
 	ok = near.Um >= float64(j.NeedUm) && r.Contains(a) && r.Contains(b) &&
 		(j.NeedUm > 0 && j.RadiusUm > 0 || j.keepsPoint(a, b, near.Um >= 1)) && j.Allowed(a, b)
-	if ok && len(j.driven) < mostDriven {
-		j.driven = append(j.driven, driven{a, b, near})
+	if m := j.remember(); ok && len(m.driven) < mostDriven {
+		m.driven = append(m.driven, driven{a, b, near})
 	}
 	return near, ok
 }
 
 // Forget drops what is remembered, for who is about to ask for other pieces, some n.
-func (j *Judge) Forget(n int) {
+func (j *Judge) Forget(n int) { j.remember().forget(n) }
+
+func (m *memory) forget(n int) {
 	n = min(n+8, mostDriven)
-	j.driven, j.ask = slices.Grow(j.driven[:0], n), 0
-	j.ends, j.askEnd = slices.Grow(j.ends[:0], n), 0
+	m.driven, m.ask = slices.Grow(m.driven[:0], n), 0
+	m.ends, m.askEnd = slices.Grow(m.ends[:0], n), 0
+	m.runs, m.askNear, m.surveyed = 0, 0, false
 }
 
 // Rewind is for who goes over the same pieces once more, from the first on.
-func (j *Judge) Rewind() { j.ask, j.askEnd = 0, 0 }
+func (j *Judge) Rewind() {
+	if m := j.mem; m != nil {
+		m.ask, m.askEnd, m.askNear = 0, 0, 0
+	}
+}
 
 // driven is a piece that may be driven. mostDriven bounds how many are remembered, and how many
 // ends.
@@ -131,9 +136,13 @@ const mostDriven = 4096
 // known is the smallest clearance along a piece driven before; nil when it was not. Pieces
 // are asked for again mostly in the order they came.
 func (j *Judge) known(a, b geom.Point) *clearance.Nearest {
-	for i := j.ask; i < len(j.driven) && i < j.ask+alike; i++ {
-		if d := &j.driven[i]; d.a == a && d.b == b {
-			j.ask = i + 1
+	m := j.mem
+	if m == nil {
+		return nil
+	}
+	for i := m.ask; i < len(m.driven) && i < m.ask+alike; i++ {
+		if d := &m.driven[i]; d.a == a && d.b == b {
+			m.ask = i + 1
 			return &d.near
 		}
 	}
@@ -176,8 +185,8 @@ func (j *Judge) Keeps(a, b geom.Point, least float64) bool {
 	j.Sights++
 	r := j.Field.Bounds()
 	need := max(j.NeedUm, int64(math.Floor(min(least, float64(j.Field.Cap())))))
-	return r.Contains(a) && r.Contains(b) && (need == 0 || j.Field.SegmentClear(a, b, need)) &&
-		(need > 0 && j.RadiusUm > 0 || j.keepsPoint(a, b, need > 0 || j.Field.SegmentClear(a, b, 1))) && j.Allowed(a, b)
+	return r.Contains(a) && r.Contains(b) && (need == 0 || j.vicinity(a, b).SegmentClear(a, b, need)) &&
+		(need > 0 && j.RadiusUm > 0 || j.keepsPoint(a, b, need > 0 || j.vicinity(a, b).SegmentClear(a, b, 1))) && j.Allowed(a, b)
 }
 
 // keepsPoint says whether solids, where NeedUm is 0, and closed zones, where RadiusUm
@@ -242,7 +251,7 @@ func (j *Judge) Weigh(a, b geom.Point) (cost, least float64) {
 // may be something less, but still more than most.
 func (j *Judge) Cost(a, b geom.Point, most float64) float64 {
 	long := geom.Dist(a, b)
-	if j.Weight == 0 || long > most || j.Field.SegmentClear(a, b, j.WideUm) {
+	if j.Weight == 0 || long > most || j.vicinity(a, b).SegmentClear(a, b, j.WideUm) {
 		return long
 	}
 	g := grader{j: j, a: a, b: b, long: long, most: (most - long) / j.Weight}
@@ -253,7 +262,7 @@ func (j *Judge) Cost(a, b geom.Point, most float64) float64 {
 
 // Least is the smallest clearance along the straight piece ab, at most Open.
 func (j *Judge) Least(a, b geom.Point) float64 {
-	if j.WideUm == 0 || j.Field.SegmentClear(a, b, j.WideUm) {
+	if j.WideUm == 0 || j.vicinity(a, b).SegmentClear(a, b, j.WideUm) {
 		return j.Open()
 	}
 	return j.Segment(a, b).Um
@@ -318,7 +327,7 @@ func (t *tightener) halve(from, to float64, na, nb clearance.Nearest) {
 // keeps says whether the clearance along ab is um or more.
 func (j *Judge) keeps(a, b geom.Point, um float64) bool {
 	if um == math.Floor(um) {
-		return j.Field.SegmentClear(a, b, int64(um))
+		return j.vicinity(a, b).SegmentClear(a, b, int64(um))
 	}
 	return j.Segment(a, b).Um >= um
 }
