@@ -4,10 +4,11 @@ package anyangle
 // teeth, whose every chord would cut the aisle before it. A way between two places
 // outside the notch between two teeth never enters it, as long as nothing pokes into it:
 // the notch lies behind a straight line. So there are two meshes: one of the
-// solids, and a lean one with such notches filled, for ways with both ends in it.
+// solids, and a lean one with such notches filled, for ways with both ends in it. So it is with
+// the notches over the gaps in a row of solids, too narrow to go through.
 
-// filling is a filled notch: the hull of two neighbouring corners' pieces, and its
-// side over the notch.
+// filling is a filled notch: the hull of two neighbouring corners' pieces, or what lies between
+// them, and its side over the notch.
 type filling struct {
 	over piece
 	a, b pt
@@ -32,11 +33,12 @@ type cornerKey struct{ x, y, sx, sy int64 }
 type steps struct {
 	treads  []tread
 	risers  map[riserKey]int64 // to the other end's height
+	walls   []cornerKey        // the risers' ends, facing as a corner there would
 	corners map[cornerKey]int32
 }
 
 func (s *steps) reset() {
-	s.treads = s.treads[:0]
+	s.treads, s.walls = s.treads[:0], s.walls[:0]
 	if s.risers == nil {
 		s.risers, s.corners = make(map[riserKey]int64), make(map[cornerKey]int32)
 	}
@@ -47,14 +49,69 @@ func (s *steps) reset() {
 func (s *steps) riser(x, y0, y1 int64, freeLeft bool) {
 	s.risers[riserKey{x, y0, freeLeft, true}] = y1
 	s.risers[riserKey{x, y1, freeLeft, false}] = y0
+	sx := int64(1)
+	if freeLeft {
+		sx = -1
+	}
+	s.walls = append(s.walls, cornerKey{x, y1, sx, 1})
 }
 
-// fills are the notches of single steps: from a corner along a tread, then along the riser at its
-// end, to a corner that faces the same way. pieces holds the corners' pieces, and
+// gaps are the notches over gaps between two corners, on one line along an axis and facing each
+// other, that are too narrow to go through: whatever lies between, the notch is shut off by the
+// line along what the two stand off.
+func (z *rasterizer) gaps(out []filling, free func(a, b pt) bool) []filling {
+	try := func(from cornerKey, level bool) {
+		if _, ok := z.steps.corners[from]; !ok {
+			return
+		}
+		for d := z.h; d < 2*z.r-aloneUm; d += z.h {
+			to := cornerKey{from.x + d, from.y, -1, from.sy}
+			a, b := pt{from.x, from.y + from.sy*z.r}, pt{from.x + d, from.y + from.sy*z.r}
+			over := rectPiece(a.x, min(a.y, from.y), b.x, max(a.y, from.y))
+			if !level {
+				to = cornerKey{from.x, from.y + d, from.sx, -1}
+				a, b = pt{from.x + from.sx*z.r, from.y}, pt{from.x + from.sx*z.r, from.y + d}
+				over = rectPiece(min(a.x, from.x), a.y, max(a.x, from.x), b.y)
+			}
+			if _, ok := z.steps.corners[to]; !ok {
+				continue
+			}
+			if free(a, b) {
+				out = append(out, filling{over: over, a: a, b: b})
+			}
+			return
+		}
+	}
+	for _, t := range z.steps.treads {
+		sy := int64(1)
+		if !t.freeAbove {
+			sy = -1
+		}
+		try(cornerKey{t.x1, t.y, 1, sy}, true)
+	}
+	for _, k := range z.steps.walls {
+		try(k, false)
+	}
+	return out
+}
+
+// fills are the notches over gaps, and those of single steps: from a corner along a tread, then
+// along the riser at its end, to a corner that faces the same way. pieces holds the corners' pieces, and
 // all obstacles that touch the block of w x h; only notches within it, with nothing
 // poking into them, are filled.
 func (z *rasterizer) fills(pieces []piece, w, h int64) []filling {
-	var out []filling
+	free := func(a, b pt) bool {
+		if min(a.x, b.x) < 0 || max(a.x, b.x) > w || min(a.y, b.y) < 0 || max(a.y, b.y) > h {
+			return false
+		}
+		for i := range pieces {
+			if pieces[i].crossedBy(a, b) {
+				return false
+			}
+		}
+		return true
+	}
+	out := z.gaps(nil, free)
 	for _, t := range z.steps.treads {
 		sy := int64(1)
 		if !t.freeAbove {
@@ -77,17 +134,7 @@ func (z *rasterizer) fills(pieces []piece, w, h int64) []filling {
 			if !okA || !okB || cmpProducts(dx, dy, z.r, dx+dy) > 0 {
 				continue
 			}
-			f, ok := hullOver(&pieces[a], &pieces[b], sx, sy)
-			if !ok || min(f.a.x, f.b.x) < 0 || max(f.a.x, f.b.x) > w || min(f.a.y, f.b.y) < 0 || max(f.a.y, f.b.y) > h {
-				continue
-			}
-			free := true
-			for i := range pieces {
-				if free = !pieces[i].crossedBy(f.a, f.b); !free {
-					break
-				}
-			}
-			if free {
+			if f, ok := hullOver(&pieces[a], &pieces[b], sx, sy); ok && free(f.a, f.b) {
 				out = append(out, f)
 			}
 		}

@@ -9,9 +9,9 @@ import (
 type row struct{ y, l, r int32 }
 
 // cell is a convex part of the free space: rows from the lowest up, joined by
-// straight sides.
+// straight sides; or a triangle of a fan (see mitre.go).
 type cell struct {
-	row0, rows int32 // in the block's rows
+	row0, rows int32 // in the block's rows; no rows: where in the block's fans
 	comp       int32 // connected component within the block
 }
 
@@ -42,16 +42,31 @@ type cut struct {
 	cells   []cell
 	rows    []row
 	links   []link
+	fan     []triangle
+	joints  []joint
+	corners []pt // of each fan where the sides meet and the chain's two ends
 	comps   int32
 	contact [5][]contact // by side; inside is not used
 	rounds  []round      // corners of vector obstacles that ways may bend about; none in a lean mesh's own cuts
 }
 
+// rowsOf are a cell's rows, none for a triangle.
 func (c *cut) rowsOf(i int32) []row {
-	return c.rows[c.cells[i].row0 : c.cells[i].row0+c.cells[i].rows]
+	if k := &c.cells[i]; k.rows > 0 {
+		return c.rows[k.row0 : k.row0+k.rows]
+	}
+	return nil
 }
 
-// finish joins trapezoids into convex cells and lays out the cut.
+// triangleOf is the triangle that a cell is, nil when it is none.
+func (c *cut) triangleOf(i int32) *triangle {
+	if k := &c.cells[i]; k.rows == 0 {
+		return &c.fan[k.row0]
+	}
+	return nil
+}
+
+// finish joins trapezoids into convex cells and lays out the cut, but for its components' numbers.
 func (c *cutter) finish() *cut {
 	out := &cut{w: int32(c.w), h: int32(c.h)}
 	cellOf := make([]int32, len(c.traps))
@@ -98,7 +113,6 @@ func (c *cutter) finish() *cut {
 			unite(out.cells, l.a, l.b)
 		}
 	}
-	out.numberComps()
 	return out
 }
 
@@ -161,6 +175,10 @@ func (c *cut) findContacts() {
 	put := func(s int, k contact) { c.contact[side[s]] = append(c.contact[side[s]], k) }
 	for i := range c.cells {
 		id := int32(i)
+		if t := c.triangleOf(id); t != nil {
+			c.touch(t, id)
+			continue
+		}
 		rows := c.rowsOf(id)
 		first, last := rows[0], rows[len(rows)-1]
 		if first.y == 0 {

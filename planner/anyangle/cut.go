@@ -61,6 +61,11 @@ type cutter struct {
 	ivs      []interval
 	free     []*section
 
+	coarse  []piece // the pieces, mitred
+	whole   [][]pt  // their corners, all mitred
+	fans    []fan   // what that took too much
+	refused []pt    // corners not to be mitred
+
 	traps []trap
 	front []int32 // traps whose top is at the current height, from left to right
 	fresh []int32
@@ -82,26 +87,47 @@ type interval struct {
 
 // cut finds the complement of the pieces in [0,w] x [0,h]. It cuts along rows or along
 // columns, whichever leaves fewer cells at the block's border: what a search sees
-// through the border is then in fewer parts. It may reorder the pieces' corners.
+// through the border is then in fewer parts.
 func (c *cutter) cut(w, h int64, pieces []piece, thin bool) *cut {
-	rows := c.cutRows(w, h, pieces, thin)
+	rows := c.cutMitred(w, h, pieces, thin, false)
 	rows.findContacts()
 	if len(rows.cells) < 2 {
 		return rows
 	}
-	for i := range pieces {
-		pieces[i].mirror()
-	}
-	columns := c.cutRows(h, w, pieces, thin)
-	for i := range pieces {
-		pieces[i].mirror()
-	}
-	columns.turned, columns.w, columns.h = true, rows.w, rows.h
+	columns := c.cutMitred(w, h, pieces, thin, true)
 	columns.findContacts()
 	if columns.borders() < rows.borders() {
 		return columns
 	}
 	return rows
+}
+
+// cutMitred cuts along rows, or turned, along columns.
+func (c *cutter) cutMitred(w, h int64, pieces []piece, thin, turned bool) *cut {
+	c.refused = c.refused[:0]
+	for {
+		c.mitred(pieces, w, h)
+		turn := func() {
+			for i := range c.coarse {
+				c.coarse[i].mirror()
+			}
+		}
+		var out *cut
+		if turned {
+			turn()
+			out = c.cutRows(h, w, c.coarse, thin)
+			turn()
+			out.turned, out.w, out.h = true, int32(w), int32(h)
+		} else {
+			out = c.cutRows(w, h, c.coarse, thin)
+		}
+		misfits := out.addFans(c.fans, turned)
+		if len(misfits) == 0 || c.ctx.Err() != nil {
+			out.numberComps()
+			return out
+		}
+		c.refused = append(c.refused, misfits...)
+	}
 }
 
 // borders is how many stretches of the block's border have a cell of their own.

@@ -5,7 +5,9 @@
 // the closed border, vector solids, closed zones) are grown by r as convex
 // polygons on whole micrometres, arcs replaced by chords outside them. What is left
 // of each block of 128x128 cells is cut into trapezoids along rows or along
-// columns, and trapezoids are joined while they stay convex. Cells of two blocks
+// columns, and trapezoids are joined while they stay convex. A corner between sides along the
+// axes that stands alone is cut as if it were square, and what is free of the square is a fan of
+// triangles, which a way that does not turn there never enters. Cells of two blocks
 // are joined where their borders meet. Passages of no width, exactly 2r between
 // sides along an axis, stay: as cells of no width or height, or as single points in
 // which two cells meet.
@@ -22,9 +24,9 @@
 // change: an interval is kept with all the bends that see a part of it, not split
 // among them (see node), which saves a dozenfold at rounded corners.
 //
-// Walls that slant across the raster grow into rows of teeth. The notches between
-// them are left out of a second, lean mesh, which is searched when both ends lie in
-// it: no shortest way between such ends enters a notch.
+// Walls that slant across the raster grow into rows of teeth, and solids in a row into
+// scallops. The notches between them are left out of a second, lean mesh, which is
+// searched when both ends lie in it: no shortest way between such ends enters a notch.
 //
 // A way bends at corners of chords. Taut solves its bends again with common tangents and
 // arcs, which gives the exact length, and draws it as a polyline outside the arcs.
@@ -34,7 +36,7 @@
 // and sharing the others. Noise over millions of cells makes meshes too large to keep; see
 // MaxBytes.
 //
-// Read mesh.go first (size.go has its limit), then cut.go and slab.go for the cells, join.go for portals,
+// Read mesh.go first (size.go has its limit), then cut.go, slab.go and mitre.go for the cells, join.go for portals,
 // search.go, look.go and undercut.go for the search, bridge.go for the lean mesh, taut.go and corner.go
 // for the bends.
 package anyangle

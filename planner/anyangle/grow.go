@@ -35,6 +35,7 @@ type pt struct{ x, y int64 }
 type piece struct {
 	v      []pt
 	lo, hi pt // bounds
+	mitres []mitre
 }
 
 // fpt is a point or a direction.
@@ -64,10 +65,13 @@ func (p *piece) moved(o pt) piece {
 	for i, v := range p.v {
 		q.v[i] = pt{v.x - o.x, v.y - o.y}
 	}
+	for i := range p.mitres {
+		q.mitres = append(q.mitres, p.mitres[i].moved(o))
+	}
 	return q
 }
 
-// mirror exchanges x and y.
+// mirror exchanges x and y, but for the mitres.
 func (p *piece) mirror() {
 	for i, v := range p.v {
 		p.v[i] = pt{v.y, v.x}
@@ -122,6 +126,7 @@ func sideTangent(d fpt) tangent {
 // segment, or a polygon counter-clockwise without repeated points.
 func growConvex(core []fpt, r float64) piece {
 	var out []pt
+	var arcs [][2]int
 	n := len(core)
 	for i, v := range core {
 		var in, to tangent
@@ -144,25 +149,44 @@ func growConvex(core []fpt, r float64) piece {
 			}
 			to.angle = in.angle + turn
 		}
-		out = appendArc(out, v, r, in, to)
+		out, arcs = appendArc(out, arcs, v, r, in, to)
 	}
-	return newPiece(hull(out))
+	chains := slices.Clone(out)
+	p := newPiece(hull(out))
+	for _, a := range arcs {
+		chain := chains[a[0]:a[1]]
+		first, last := chain[0], chain[len(chain)-1]
+		at := pt{first.x, last.y}
+		if first.x != p.lo.x && first.x != p.hi.x { // it lies on a level side
+			at = pt{last.x, first.y}
+		}
+		p.addMitre(at, chain)
+	}
+	return p
 }
 
 // appendArc adds the corners of the chords outside the arc about v from tangent in
-// to tangent to, which is split at the axes so that extents stay exact.
-func appendArc(out []pt, v fpt, r float64, in, to tangent) []pt {
+// to tangent to, which is split at the axes so that extents stay exact, and to arcs where the
+// quarter arcs between two axes begin and end.
+func appendArc(out []pt, arcs [][2]int, v fpt, r float64, in, to tangent) ([]pt, [][2]int) {
+	part := func(in, to tangent) {
+		from := len(out)
+		if out = appendSubArc(out, v, r, in, to); in.exact && to.exact && math.Abs(to.angle-in.angle-math.Pi/2) < minExactTurn {
+			arcs = append(arcs, [2]int{from, len(out)})
+		}
+	}
 	for q := int(math.Floor(in.angle/(math.Pi/2))) + 1; ; q++ {
 		t := axisTangent(q)
 		if t.angle >= to.angle-minExactTurn {
 			break
 		}
 		if t.angle > in.angle+minExactTurn {
-			out = appendSubArc(out, v, r, in, t)
+			part(in, t)
 			in = t
 		}
 	}
-	return appendSubArc(out, v, r, in, to)
+	part(in, to)
+	return out, arcs
 }
 
 // chordsFor is how many chords an arc of that turn needs.

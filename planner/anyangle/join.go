@@ -77,6 +77,12 @@ func (j *joiner) join(around neighbours, thin bool) *block {
 		j.put(l.a, p)
 		j.put(l.b, q)
 	}
+	for i := range c.joints {
+		t := &c.joints[i]
+		back := t.turns&turnA<<1 | t.turns&turnB>>1
+		j.put(t.a, portal{ax: t.px, ay: t.py, bx: t.qx, by: t.qy, to: t.b, turns: t.turns})
+		j.put(t.b, portal{ax: t.qx, ay: t.qy, bx: t.px, by: t.py, to: t.a, turns: back})
+	}
 	for side := rightward; side <= downward; side++ {
 		if n := around.beside(side); n != nil {
 			j.seam(b, c, n, side)
@@ -111,6 +117,9 @@ func (j *joiner) put(from int32, p portal) {
 func (j *joiner) innerTurn(c *cut, l link, p pt) bool {
 	if p.x == 0 || p.x == int64(c.w) || p.y == 0 || p.y == int64(c.h) {
 		return j.turnsAt(p)
+	}
+	if bends, known := c.bendsAt(p); known {
+		return bends
 	}
 	return bendable(j.wedge(c, l.a, p) + j.wedge(c, l.b, p))
 }
@@ -205,7 +214,8 @@ func (j *joiner) freeAt(n *cut, p pt) float64 {
 // wedge is a cell's angle at a point of its border, 0 for other points and for
 // cells of no width or height.
 func (j *joiner) wedge(c *cut, id int32, p pt) float64 {
-	if c.turned {
+	t := c.triangleOf(id)
+	if c.turned && t == nil {
 		p = pt{p.y, p.x}
 	}
 	rows := c.rowsOf(id)
@@ -221,6 +231,11 @@ func (j *joiner) wedge(c *cut, id int32, p pt) float64 {
 	}
 	for i := len(rows) - 1; i >= 0; i-- {
 		put(rows[i].l, rows[i].y)
+	}
+	if t != nil {
+		for _, q := range t {
+			put(q.x, q.y)
+		}
 	}
 	j.poly = v
 	n := len(v)
@@ -342,6 +357,7 @@ func (j *joiner) goRound(c, n *cut, own, theirs []contact, o, t contact, at int3
 		case downward:
 			x, y = at, 0
 		}
+		px, py := x, y
 		if c.turned {
 			x, y = y, x
 		}
@@ -350,6 +366,11 @@ func (j *joiner) goRound(c, n *cut, own, theirs []contact, o, t contact, at int3
 				for _, l := range c.links {
 					if (l.a == list[i].cell && l.b == list[k].cell || l.a == list[k].cell && l.b == list[i].cell) &&
 						l.y == y && l.l <= x && x <= l.r {
+						lead[find(base+i)] = find(base + k)
+					}
+				}
+				for _, t := range c.joints {
+					if (t.a == list[i].cell && t.b == list[k].cell || t.a == list[k].cell && t.b == list[i].cell) && t.ends(px, py) {
 						lead[find(base+i)] = find(base + k)
 					}
 				}

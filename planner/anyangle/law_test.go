@@ -32,6 +32,20 @@ func (g *Mesh) corners(yield func(p geom.Point) bool) {
 			return geom.Point{X: g.o.X + float64(o.x) + x, Y: g.o.Y + float64(o.y) + y}
 		}
 		for c := range b.cells {
+			if t := b.triangleOf(int32(c)); t != nil {
+				var mid geom.Point
+				for _, v := range t {
+					p := geom.Point{X: g.o.X + float64(o.x) + float64(v.x), Y: g.o.Y + float64(o.y) + float64(v.y)}
+					mid = geom.Point{X: mid.X + p.X/3, Y: mid.Y + p.Y/3}
+					if !yield(p) {
+						return
+					}
+				}
+				if !yield(mid) {
+					return
+				}
+				continue
+			}
 			var mx, my, n float64
 			for _, r := range b.rowsOf(int32(c)) {
 				l, rr, y := float64(r.l), float64(r.r), float64(r.y)

@@ -2,6 +2,7 @@ package anyangle
 
 import (
 	"math"
+	"slices"
 
 	"example.com/wideberth/mapstore/geom"
 )
@@ -35,6 +36,20 @@ func (g *Mesh) locate(out []at, p geom.Point, tolerance float64) []at {
 
 // holds says whether a cell holds (x, y), give or take tolerance along x and y.
 func (c *cut) holds(id int32, x, y, tolerance float64) bool {
+	if t := c.triangleOf(id); t != nil {
+		lo, hi := t.bounds(false)
+		if x < float64(lo.x)-tolerance || x > float64(hi.x)+tolerance || y < float64(lo.y)-tolerance || y > float64(hi.y)+tolerance {
+			return false
+		}
+		for i, a := range t {
+			b := t[(i+1)%3]
+			dx, dy := float64(b.x-a.x), float64(b.y-a.y)
+			if off := float64(dx*(y-float64(a.y))) - float64(dy*(x-float64(a.x))); off < -tolerance*math.Sqrt(float64(dx*dx)+float64(dy*dy)) {
+				return false
+			}
+		}
+		return true
+	}
 	if c.turned {
 		x, y = y, x
 	}
@@ -59,6 +74,15 @@ func (c *cut) holds(id int32, x, y, tolerance float64) bool {
 
 // covers says, exactly, whether a cell holds (x, y).
 func (c *cut) covers(id int32, x, y float64) bool {
+	if t := c.triangleOf(id); t != nil {
+		for i, a := range t {
+			b := t[(i+1)%3]
+			if geom.Orient(geom.Point{X: float64(a.x), Y: float64(a.y)}, geom.Point{X: float64(b.x), Y: float64(b.y)}, geom.Point{X: x, Y: y}) < 0 {
+				return false
+			}
+		}
+		return true
+	}
 	if c.turned {
 		x, y = y, x
 	}
@@ -122,6 +146,16 @@ func (c *cut) outline(out []geom.Point, id int32, o geom.Point) []geom.Point {
 			x, y = y, x
 		}
 		out = append(out, geom.Point{X: o.X + float64(x), Y: o.Y + float64(y)})
+	}
+	if t := c.triangleOf(id); t != nil {
+		from := len(out)
+		for _, v := range t {
+			out = append(out, geom.Point{X: o.X + float64(v.x), Y: o.Y + float64(v.y)})
+		}
+		if c.turned {
+			slices.Reverse(out[from:])
+		}
+		return out
 	}
 	rows := c.rowsOf(id)
 	for _, r := range rows {

@@ -2,6 +2,7 @@ package anyangle
 
 import (
 	"math/bits"
+	"slices"
 
 	"example.com/wideberth/mapstore/floor"
 )
@@ -330,5 +331,14 @@ func (z *rasterizer) corner(x, y int64, q int) {
 	}
 	v = append(v, pt{x - sx*z.h, y + sy*z.r})
 	z.steps.corners[cornerKey{x, y, sx, sy}] = int32(len(z.out))
-	z.out = append(z.out, newPiece(hull(v)))
+	p := newPiece(hull(v))
+	chain := make([]pt, 0, len(z.arc))
+	for _, a := range z.arc {
+		chain = append(chain, pt{x + sx*a.x, y + sy*a.y})
+	}
+	if sx != sy {
+		slices.Reverse(chain)
+	}
+	p.addMitre(pt{x + sx*z.r, y + sy*z.r}, chain)
+	z.out = append(z.out, p)
 }

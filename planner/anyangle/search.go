@@ -78,7 +78,7 @@ type search struct {
 	g                 *Mesh
 	start, goal       geom.Point // as asked for
 	tx, ty            float64    // the goal, settled
-	goals             []at
+	starts, goals     []at
 	step              [downward + 1]int32 // Mesh.step
 	open              []at                // dead ends that lead to the goal
 	openLow, openHigh int32               // their blocks
@@ -136,7 +136,7 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 	if len(s.goals) == 0 {
 		return Way{}, false, nil
 	}
-	starts := g.locate(nil, from, g.eps)
+	s.starts = g.locate(s.starts[:0], from, g.eps)
 	sx, sy := from.X-g.o.X, from.Y-g.o.Y
 	s.roots = append(s.roots, root{x: sx, y: sy, parent: none})
 	s.table.find(sx, sy)
@@ -149,7 +149,7 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 		}
 	}
 	h := math.Hypot(sx-s.tx, sy-s.ty)
-	for _, a := range starts {
+	for _, a := range s.starts {
 		if s.isGoal(a.block, a.cell) {
 			return s.straight(start, goal), true, nil
 		}

@@ -32,6 +32,8 @@ func (c *cut) bytes() int64 {
 	return int64(len(c.cells))*int64(unsafe.Sizeof(cell{})+unsafe.Sizeof(span{})+4) +
 		int64(len(c.rows))*int64(unsafe.Sizeof(row{})) +
 		int64(len(c.links))*int64(unsafe.Sizeof(link{})+2*unsafe.Sizeof(portal{})) +
+		int64(len(c.fan))*int64(unsafe.Sizeof(triangle{})) + int64(len(c.corners))*int64(unsafe.Sizeof(pt{})) +
+		int64(len(c.joints))*int64(unsafe.Sizeof(joint{})+2*unsafe.Sizeof(portal{})) +
 		int64(contacts)*int64(unsafe.Sizeof(contact{})) + int64(len(c.rounds))*int64(unsafe.Sizeof(round{}))
 }
 
