@@ -15,7 +15,7 @@ func (s *search) expand(n *node) {
 	b := g.blocks[n.block]
 	ox := float64(int(n.block)%g.bx) * g.side
 	oy := float64(int(n.block)/g.bx) * g.side
-	if b.cells[n.cell].rows == 0 && n.flags&point == 0 && n.fromBlock == n.block {
+	if b.cells[n.cell].rows == 0 && n.flags&point == 0 && n.fromBlock != none {
 		s.round(n, b, ox, oy)
 	}
 	s.out, s.fs = s.out[:0], s.fs[:0]
@@ -65,36 +65,6 @@ func (s *search) lookFrom(n *node) look {
 	return c
 }
 
-// round takes n on through the triangles of a fan, one way on from each, to the last one, or as
-// far as one node comes of it.
-func (s *search) round(n *node, b *block, ox, oy float64) {
-	for {
-		of := b.of[n.cell]
-		portals := b.portals[of.first : of.first+of.count]
-		var p *portal
-		for i := range portals {
-			if q := &portals[i]; q.dir == inside && q.to != n.fromCell && b.cells[q.to].rows == 0 {
-				p = q
-			}
-		}
-		if p == nil || s.isGoal(n.block, p.to) {
-			return
-		}
-		s.out, s.fs = s.out[:0], s.fs[:0]
-		c := s.lookFrom(n)
-		c.passing = true
-		c.block, c.cell = n.block, p.to
-		c.ax, c.ay = ox+float64(p.ax), oy+float64(p.ay)
-		c.bx, c.by = ox+float64(p.bx), oy+float64(p.by)
-		c.turns = p.turns
-		c.portal()
-		if len(s.out) != 1 || s.out[0].flags&point != 0 {
-			return
-		}
-		*n = s.out[0]
-	}
-}
-
 func (s *search) opened(block, cell int32) bool {
 	if block < s.openLow || block > s.openHigh {
 		return false
@@ -123,8 +93,6 @@ type look struct {
 	// loose says that the start is outside its cell, by rounding: what lies along a
 	// side of the cell is then seen at an angle, and a way may have to bend at any end.
 	loose bool
-	// passing says that the node is taken on at once, without a place in the queue.
-	passing bool
 
 	right, left           int32 // roots at the node's ends, once asked for
 	askedRight, askedLeft bool
@@ -368,10 +336,6 @@ func (c *look) stretch(n node, t0, t1 float64) {
 		if ex, ey := n.lx-n.rx, n.ly-n.ry; float64(ex*ex)+float64(ey*ey) <= float64(c.eps*c.eps) {
 			return
 		}
-	}
-	if c.passing {
-		c.put(n, 0)
-		return
 	}
 	n.portal = c.portalAt
 	c.measure(&n, t0, t1)
