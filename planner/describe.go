@@ -38,6 +38,7 @@ const ClearanceShortUm = 1
 type piece struct {
 	a, b geom.Point
 	near clearance.Nearest // smallest clearance along it
+	cost float64           // once described
 }
 
 func (p *piece) tight(below float64) bool { return p.near.Um < below-roundingUm }
@@ -54,7 +55,7 @@ func (t *task) outline(pts []geom.Point) *outline {
 	t.j.Rewind()
 	for i := 1; i < len(pts); i++ {
 		a, b := pts[i-1], pts[i]
-		w := piece{a, b, t.j.Segment(a, b)}
+		w := piece{a: a, b: b, near: t.j.Segment(a, b)}
 		o.pieces = append(o.pieces, w)
 		cuts := t.w.rules.SpeedCuts(nil, a, b)
 		if w.tight(o.below) {
@@ -211,6 +212,7 @@ func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
 		t.survey(c.pts)
 	}
 	o := t.outline(c.pts)
+	n := t.noting(c, o)
 	o.markSmallest()
 	if most := t.q.Options.MaxSpacingUm; most > 0 {
 		long := 0.0
@@ -239,15 +241,21 @@ func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
 	r.LengthUm = pts[len(pts)-1].S
 	for i := range o.pieces {
 		w := &o.pieces[i]
-		if w.near.Um >= t.j.Open() {
-			r.CostUm += geom.Dist(w.a, w.b)
-			continue
-		}
-		cost, _ := t.j.Weigh(w.a, w.b)
-		r.CostUm += cost
+		w.cost = t.cost(w)
+		r.CostUm += w.cost
 	}
 	r.Bound = t.bound(c, r)
+	n.done(r)
 	return r, nil
+}
+
+// cost is what a piece costs.
+func (t *task) cost(w *piece) float64 {
+	if w.near.Um >= t.j.Open() {
+		return geom.Dist(w.a, w.b)
+	}
+	cost, _ := t.j.Weigh(w.a, w.b)
+	return cost
 }
 
 // points are the route's points: the pieces' ends.

@@ -4,7 +4,6 @@ import (
 	"context"
 	"math"
 	"math/bits"
-	"slices"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -18,8 +17,8 @@ import (
 const onRouteUm = 1.5
 
 // kept is the rest of an old any-angle optimum from the pose on, when nothing on this
-// version can be shorter; nil when that is not known without a search. old is that
-// rest, clear on this version.
+// version can be shorter; nil when that is not known without a search. pts are that
+// rest, without points that describing added, clear on this version.
 //
 // Let F be the old version's mesh and F' this one's, T the rest of the old route, from x
 // to g, R what is solid (or a closed zone) in the old version and not in this one, grown as
@@ -38,33 +37,23 @@ const onRouteUm = 1.5
 // zones need no regard: T obeys those of this version, or it would not be clear, and
 // Q is no longer without them. An end outside F' is left to a search, which joins it to F'
 // by exact pieces that may cut a corner short.
-func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *course {
+func (t *task) kept(ctx context.Context, q *ReplanRequest, pts []geom.Point) *course {
 	before, now := q.Old, t.w.m
 	if before.Settings() != now.Settings() || project(q.Previous, t.q.Start.At).off > onRouteUm {
 		return nil
 	}
 	if q.OldBound == RoadmapOptimum && t.q.Options.roomy() {
-		return t.keptRoomy(ctx, before, old)
+		return t.keptRoomy(ctx, before, pts)
 	}
 	if q.OldBound != AnyAngleOptimum || !t.anyAngle() {
 		return nil
-	}
-	pts := slices.Clone(old)
-	for i := 1; i+1 < len(pts); {
-		if d, _ := geom.SegmentDist(pts[i], pts[i-1], pts[i+1]); d <= onRouteUm {
-			if _, ok := t.j.Drive(pts[i-1], pts[i+1]); ok {
-				pts = slices.Delete(pts, i, i+1)
-				continue
-			}
-		}
-		i++
 	}
 	g, err := t.w.ways.meshes.get(ctx, t.needed())
 	if err != nil || !g.Contains(pts[0]) || !g.Contains(pts[len(pts)-1]) {
 		return nil
 	}
 	d := detour{from: pts[0], to: pts[len(pts)-1], long: lengthOf(pts)}
-	change := floor.Diff(before, now)
+	change := t.w.since(before)
 	grown := standing{float64(t.j.NeedUm) + meshStandsOff, float64(t.j.RadiusUm) + meshStandsOff}
 	for _, f := range change.Features {
 		if grow, ok := grown.of(f.Before); ok && rules.Differs(f) && d.overShape(f.Before.Shape, grow) {
@@ -77,6 +66,25 @@ func (t *task) kept(ctx context.Context, q *ReplanRequest, old []geom.Point) *co
 		}
 	}
 	return &course{pts: pts, kind: AnyAngleOptimum, roadmap: math.Inf(1)}
+}
+
+// merged is a way without the points that describing added, as far as the body may drive
+// straight from one that is left to the next.
+func (t *task) merged(way []geom.Point) []geom.Point {
+	pts := append(make([]geom.Point, 0, len(way)), way[0])
+	from := 0
+	for i := 1; i < len(way); i++ {
+		if i+1 < len(way) {
+			if d, _ := geom.SegmentDist(way[i], way[from], way[i+1]); d <= onRouteUm {
+				continue
+			}
+		}
+		if i > from+1 && !t.drives(way[from], way[i]) {
+			pts = append(pts, way[from+1:i]...)
+		}
+		pts, from = append(pts, way[i]), i
+	}
+	return pts
 }
 
 // keptRoomy is kept for the least cost, or the clearest way, over Voronoi edges and the open
@@ -97,7 +105,7 @@ func (t *task) keptRoomy(ctx context.Context, before *floor.Map, pts []geom.Poin
 	now, p := t.w.m, t.j.Open()
 	d := detour{from: pts[0], to: pts[len(pts)-1], long: t.costOf(pts)}
 	grown := standing{p + meshStandsOff, p - float64(t.q.Body.MarginUm) + meshStandsOff}
-	change := floor.Diff(before, now)
+	change := t.w.since(before)
 	for _, f := range change.Features {
 		if !rules.Differs(f) {
 			continue
@@ -163,8 +171,7 @@ func (d *detour) overShape(s floor.Shape, grow float64) bool {
 		return d.over(d.from)
 	}
 	grow += s.Grow
-	box := s.CoreBounds().Grow(grow).Corners()
-	if !d.over(box[:]...) {
+	if box := s.CoreBounds().Grow(grow); !d.overBox(&box) {
 		return false
 	}
 	for a, b := range s.Edges {
@@ -187,8 +194,8 @@ func (d *detour) overShape(s floor.Shape, grow float64) bool {
 func (d *detour) overCells(before, now *floor.Map, c floor.CellRect, grow float64, count func(was, is uint64) uint64) bool {
 	s := now.Settings()
 	over := func(c floor.CellRect) bool {
-		box := s.CellBounds(c).Grow(grow).Corners()
-		return d.over(box[:]...)
+		box := s.CellBounds(c).Grow(grow)
+		return d.overBox(&box)
 	}
 	if !over(c) {
 		return false
@@ -212,6 +219,16 @@ func (d *detour) overCells(before, now *floor.Map, c floor.CellRect, grow float6
 		}
 	}
 	return false
+}
+
+// overBox is about the places of a rectangle.
+func (d *detour) overBox(r *geom.Rect) bool {
+	// No place of it is nearer to either end.
+	if r.Dist(d.from)+r.Dist(d.to) > float64(d.long*(1+keepSlack)) {
+		return false
+	}
+	ring := r.Corners()
+	return d.over(ring[:]...)
 }
 
 // over is about the places of a convex polygon, counter-clockwise, or a point.

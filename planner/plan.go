@@ -43,6 +43,9 @@ type task struct {
 
 	session *Session // nil without
 	mended  bool     // whether a path was found by repairing the session's search
+	past    *past    // what the session knows of the old route; nil for nothing
+	notes   *notes   // of the route described last, for the session
+	retold  *retold  // the route made of past last
 
 	stopgap *stopgap // what to answer when time runs out; nil for none
 	hasty   bool     // looks for a stopgap
@@ -55,6 +58,11 @@ func (w *World) task(q Request) (*task, error) {
 	if err := q.validate(w.m.Settings()); err != nil {
 		return nil, err
 	}
+	return w.taskOf(q), nil
+}
+
+// taskOf is task for a request that is known to be valid.
+func (w *World) taskOf(q Request) *task {
 	b := q.Body
 	t := &task{w: w, q: q, j: judge.New(w.field, w.rules, b.Required(), b.RadiusUm)}
 	t.j.Ends = [2]geom.Point{q.Start.At, q.Goal.At}
@@ -68,7 +76,7 @@ func (w *World) task(q Request) (*task, error) {
 	case Clearest:
 		t.j.WideUm = w.field.Cap()
 	}
-	return t, nil
+	return t
 }
 
 // finish fills in the counters and turns a spent time budget into a refusal.
@@ -285,21 +293,25 @@ func (t *task) straighten(ctx context.Context, pts []geom.Point) ([]geom.Point, 
 
 // route describes a course and has it checked.
 func (t *task) route(ctx context.Context, c *course) (*Route, error) {
+	if r, err := t.retell(ctx, c); r != nil || err != nil {
+		return r, err
+	}
 	r, err := t.describe(ctx, c)
 	if err != nil {
 		return nil, err
 	}
-	return r, t.check(r)
+	return r, t.check(pointsOf(r), r.SmallestUm)
 }
 
-// check compares a route with what code apart from search and field makes of it.
-func (t *task) check(r *Route) error {
-	f := t.w.check.Way(pointsOf(r), t.j.NeedUm, t.q.Body.RadiusUm)
+// check compares a way, and the smallest clearance it is said to have, with what code apart
+// from search and field makes of it.
+func (t *task) check(pts []geom.Point, smallestUm int64) error {
+	f := t.w.check.Way(pts, t.j.NeedUm, t.q.Body.RadiusUm)
 	switch {
 	case f.Problem != "":
 		return &CheckError{f.Problem}
-	case float64(r.SmallestUm) > f.SmallestUm+check.SlackUm:
-		return &CheckError{fmt.Sprintf("smallest clearance said to be %d µm, found to be %.3f µm", r.SmallestUm, f.SmallestUm)}
+	case float64(smallestUm) > f.SmallestUm+check.SlackUm:
+		return &CheckError{fmt.Sprintf("smallest clearance said to be %d µm, found to be %.3f µm", smallestUm, f.SmallestUm)}
 	}
 	return nil
 }

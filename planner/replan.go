@@ -6,6 +6,7 @@ import (
 	"math"
 	"slices"
 
+	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 )
 
@@ -28,16 +29,16 @@ func (w *World) Replan(ctx context.Context, q ReplanRequest) (ReplanAnswer, erro
 
 // ReplanIn is Replan in a session, best the one that the old route was planned in.
 func (w *World) ReplanIn(ctx context.Context, s *Session, q ReplanRequest) (ReplanAnswer, error) {
-	t, err := w.task(q.Request)
-	if err != nil {
+	past := w.recall(s, &q)
+	if err := q.validate(w.m.Settings(), past != nil); err != nil {
 		return ReplanAnswer{}, err
 	}
-	if err := q.validate(); err != nil {
-		return ReplanAnswer{}, err
-	}
-	t.session = s
+	t := w.taskOf(q.Request)
+	t.session, t.past = s, past
 	r, err := t.replan(ctx, &q)
-	r.Answer, err = t.finish(ctx, r.Answer, err)
+	if r.Answer, err = t.finish(ctx, r.Answer, err); err == nil {
+		t.remember(r.Route)
+	}
 	r.Mended = t.mended && !r.Kept && r.Route != nil
 	if r.Refusal != nil {
 		r.Kept = false
@@ -45,11 +46,22 @@ func (w *World) ReplanIn(ctx context.Context, s *Session, q ReplanRequest) (Repl
 	return r, err
 }
 
-func (q *ReplanRequest) validate() error {
+// validate checks the request, but for what a session answered before.
+func (q *ReplanRequest) validate(s floor.Settings, answered bool) error {
 	var f fault
-	f.check(len(q.Previous) >= 2, "previous.legs", "%d points: want 2 or more", len(q.Previous))
-	for i, p := range q.Previous {
-		f.pose(fmt.Sprintf("previous.legs.points[%d]", i), Pose{At: p})
+	if answered {
+		f.pose("start.pose", q.Request.Start)
+	} else {
+		if err := q.Request.validate(s); err != nil {
+			return err
+		}
+		f.check(len(q.Previous) >= 2, "previous.legs", "%d points: want 2 or more", len(q.Previous))
+		for i, p := range q.Previous {
+			var one fault
+			if one.pose("", Pose{At: p}); one.err != nil {
+				f.pose(fmt.Sprintf("previous.legs.points[%d]", i), Pose{At: p})
+			}
+		}
 	}
 	f.check(q.SwitchShare >= 0 && q.SwitchShare <= 1, "switch_share", "%g: want 0 to 1", q.SwitchShare)
 	return f.error()
@@ -73,7 +85,9 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 	case q.Old == nil:
 		r.Cause = VersionGone
 	default:
-		old, r.Cause, r.CutS = t.trim(q)
+		if old, r.Cause, r.CutS = t.trim(q); old != nil && !q.Request.Options.KeepRoadmapPath {
+			old = t.merged(old)
+		}
 	}
 	if old != nil {
 		c := t.direct()
@@ -174,11 +188,21 @@ func (t *task) trim(q *ReplanRequest) (pts []geom.Point, cause ReplanCause, cutS
 // far along it that ends.
 func (t *task) clearOn(old []geom.Point, on spot, rest []geom.Point) (cutS float64, all bool) {
 	a, b := old[on.piece], old[on.piece+1]
-	if !t.j.Sight(a, b) { // else any part of it is clear, too
+	if !t.past.holds(on.piece) && !t.j.Sight(a, b) { // else any part of it is clear, too
 		if s, all := clearFor(t.j, []geom.Point{on.at, b}); !all {
 			return on.s + s, false
 		}
 	}
-	s, all := clearFor(t.j, rest)
+	s, first := 0.0, len(old)-len(rest)
+	all = true
+	for i := 1; i < len(rest) && all; i++ {
+		if t.past.holds(first + i - 1) {
+			s += geom.Dist(rest[i-1], rest[i])
+			continue
+		}
+		var part float64
+		part, all = clearFor(t.j, rest[i-1:i+1])
+		s += part
+	}
 	return on.s + geom.Dist(on.at, rest[0]) + s, all
 }

@@ -7,21 +7,30 @@ import (
 	"example.com/wideberth/planner/internal/roadmap"
 )
 
-// Session keeps the search behind one robot's route, when a grid was named to be searched
-// (Grid4, Grid8), so that the next answer takes work that grows with what changed and not
-// with the floor: D* Lite (Koenig & Likhachev 2002; package dstar). What it answers is what
-// a plan without it answers, point for point, whatever it was used for before; it pays
-// where body, goal and options stay, and the change is nearer to the robot than to the
-// goal. The zero value is ready; nil is no session. It is for one call at a time.
-type Session struct{ search dstar.Session }
+// Session keeps what stands behind one robot's route, so that the next answer takes work that
+// grows with what changed and not with the route or the floor: the route it answered last, with
+// what was found out about each piece of it (record.go), and, when a grid was named to be
+// searched (Grid4, Grid8), the search, D* Lite (Koenig & Likhachev 2002; package dstar). What it
+// answers is what a plan without it answers, to the last digit, whatever it was used for before;
+// it pays where body, goal and options stay, and for the search where the change is nearer to
+// the robot than to the goal. The zero value is ready; nil is no session. It is for one call
+// at a time.
+type Session struct {
+	search dstar.Session
+	last   *record // nil: none
+}
 
-// Bytes is how much memory the session holds: 32 KiB for each 64x64 cells that its search came
-// into, more along the search's rim (see package dstar). 0 is a session that is
-// worth nothing yet.
-func (s *Session) Bytes() int64 { return s.search.Bytes() }
+// Bytes is about how much memory the session holds: some 700 bytes for each point of the route,
+// and 32 KiB for each 64x64 cells that its search came into, more along the search's rim (see
+// package dstar). The version that the route was checked on is kept besides, which shares with
+// others what it has in common with them. 0 is a session that is worth nothing yet.
+func (s *Session) Bytes() int64 { return s.search.Bytes() + s.last.bytes() }
 
 // Release gives that memory back. The session is as new.
-func (s *Session) Release() { s.search.Release() }
+func (s *Session) Release() {
+	s.search.Release()
+	s.last = nil
+}
 
 // PlanIn is Plan in a session.
 func (w *World) PlanIn(ctx context.Context, s *Session, q Request) (Answer, error) {
@@ -31,7 +40,10 @@ func (w *World) PlanIn(ctx context.Context, s *Session, q Request) (Answer, erro
 	}
 	t.session = s
 	a, err := t.plan(ctx)
-	return t.finish(ctx, a, err)
+	if a, err = t.finish(ctx, a, err); err == nil {
+		t.remember(a.Route)
+	}
+	return a, err
 }
 
 // grid searches the named grid for a path, the same one with a session and without.

@@ -8,6 +8,7 @@ import (
 	"pgregory.net/rapid"
 
 	"example.com/wideberth/mapstore/floor"
+	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner"
 )
 
@@ -28,7 +29,12 @@ func TestLaw8SessionAnswersAsAnyOther(t *testing.T) {
 		r, now, w := first.Route, sc.m, sc.w
 		for i := 0; r != nil && i < 4; i++ {
 			from := along(r, rapid.Float64Range(0, 0.6).Draw(t, "driven"))
-			after := newMapFrom(t, now, drawChange(t, now.Settings(), now))
+			change := drawChange(t, now.Settings(), now)
+			if rapid.Bool().Draw(t, "blocked") { // a disc ahead, and nothing else
+				on := along(r, rapid.Float64Range(0.6, 1).Draw(t, "at"))
+				change = []floor.Edit{disc("d", geom.Metres(on.X), geom.Metres(on.Y), geom.Metres(float64(now.Settings().ResolutionUm)))}
+			}
+			after := newMapFrom(t, now, change)
 			if w, err = w.Advance(ctx, after); err != nil {
 				t.Fatal(err)
 			}

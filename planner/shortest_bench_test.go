@@ -235,7 +235,8 @@ func BenchmarkShortestVsGonum(b *testing.B) {
 
 // BenchmarkReplanVsPlan takes routes half driven and changes of 1 m² somewhere in the hall, and
 // reports the time of a fresh plan over that of a replan that kept the route without a
-// search, and over that of one that searched (plan/kept, plan/searched); then reportMending's.
+// search, and over that of one that searched (plan/kept, plan/searched), each in the
+// session that its route was planned in; then reportMending's.
 func BenchmarkReplanVsPlan(b *testing.B) {
 	p := prepare(b, benchFloors[0])
 	ctx := context.Background()
@@ -252,16 +253,22 @@ func BenchmarkReplanVsPlan(b *testing.B) {
 		}
 		for range 10 {
 			k := p.tasks[rng.IntN(len(p.tasks))]
-			r := mustRoute(b, p.w, k.q)
+			var planned planner.Session
+			first, err := p.w.PlanIn(ctx, &planned, k.q)
+			if err != nil || first.Route == nil {
+				b.Fatal(first, err)
+			}
+			r := first.Route
 			q := again(r, p.m, k.q, along(r, 0.5))
 			// The better of four each, taking turns at going first: once alone would time
 			// which of the two found the floor in the caches.
 			var a planner.ReplanAnswer
 			replan, fresh := time.Duration(math.MaxInt64), time.Duration(math.MaxInt64)
 			for turn := range 8 {
+				s := planned
 				t0 := time.Now()
 				if (turn+turn/2)%2 == 0 {
-					if a, err = v.Replan(ctx, q); err != nil {
+					if a, err = v.ReplanIn(ctx, &s, q); err != nil {
 						b.Fatal(err)
 					}
 					replan = min(replan, time.Since(t0))

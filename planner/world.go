@@ -27,8 +27,9 @@ type World struct {
 	classics *shelf[classicKey, roadmaps.Roadmap]
 	// turn is held while one of classics is brought up to date, one at a time in all versions
 	// of a floor: plans come first.
-	turn  chan struct{}
-	frame roadmap.Frame
+	turn    chan struct{}
+	frame   roadmap.Frame
+	changes changes
 }
 
 // ErrTimeBudget is the cause to set on a context whose deadline is the request's own
@@ -76,7 +77,9 @@ func (w *World) Advance(ctx context.Context, m *floor.Map) (*World, error) {
 		return nil, err
 	}
 	r := rules.Of(m)
-	return &World{m: m, field: f, rules: r, check: check.Of(m), masks: w.masks.Carry(f, r, rules.ClosedChanges(change)), ways: g, classics: classics, turn: w.turn, frame: w.frame}, nil
+	n := &World{m: m, field: f, rules: r, check: check.Of(m), masks: w.masks.Carry(f, r, rules.ClosedChanges(change)), ways: g, classics: classics, turn: w.turn, frame: w.frame}
+	n.changes.put(nil, sinceOf(w.m, m, change))
+	return n, nil
 }
 
 // Map is the version the world was made from.
