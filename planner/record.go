@@ -41,7 +41,7 @@ type part struct {
 type bit struct {
 	piece
 	at          RoutePoint // of the end it begins at; S is not kept
-	strip       int // that it is of
+	strip       int        // that it is of
 	long, limit float64
 	roomed      bool // whether it is the narrowest of its leg: then these are known
 	left, right int64

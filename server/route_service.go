@@ -55,7 +55,7 @@ func (v routeService) Plan(ctx context.Context, r *pb.PlanRequest) (*pb.PlanResp
 		return nil, statusOf(ctx, err, about)
 	}
 	var answer planner.Answer
-	session := newSession(q.Options)
+	session := new(planner.Session)
 	err = v.s.search(ctx, snap, q.budget, &answer, func(ctx context.Context, w *planner.World) (err error) {
 		answer, err = w.PlanIn(ctx, session, q.Request)
 		return err
@@ -100,7 +100,7 @@ func (v routeService) Replan(ctx context.Context, r *pb.ReplanRequest) (*pb.Repl
 	}
 	var answer planner.ReplanAnswer
 	driven := r.Previous.RouteId
-	session := v.s.kept.take(driven, q.Options)
+	session := v.s.kept.take(driven)
 	err = v.s.search(ctx, snap, q.budget, &answer.Answer, func(ctx context.Context, w *planner.World) (err error) {
 		answer, err = w.ReplanIn(ctx, session, request)
 		return err

@@ -8,17 +8,17 @@ import (
 	"example.com/wideberth/planner"
 )
 
-// What the kept searches may come to. A search across a busy hall of 1024x1024 cells takes
-// about 9 MiB, one of 4096x4096 up to some 130. The one used longest ago goes first; that
-// costs time when its robot replans, and changes no route.
+// What the kept sessions may come to. A route takes some 700 bytes a point; on a named grid, its
+// search across a busy hall of 1024x1024 cells about 9 MiB besides, one of 4096x4096 up to some
+// 130. The one used longest ago goes first; that costs time when its robot replans, and
+// changes no route.
 const (
-	maxSessions     = 1024
+	maxSessions     = 4096
 	maxSessionBytes = 192 << 20
 	sessionIdle     = 10 * time.Minute // after which it goes in any case, once another is kept
 )
 
-// sessions are the searches kept for robots that drive a route planned on a named grid, by
-// the route's id. A restart loses them.
+// sessions are kept for robots that drive a route, by the route's id. A restart loses them.
 type sessions struct {
 	now   func() time.Time
 	mu    sync.Mutex
@@ -39,31 +39,19 @@ func newSessions(now func() time.Time) *sessions {
 	return &sessions{now: now, by: map[string]*list.Element{}, order: list.New(), most: maxSessionBytes}
 }
 
-// newSession is an empty session, nil when the options have no use for one.
-func newSession(o planner.Options) *planner.Session {
-	if o.Roadmap != planner.Grid4 && o.Roadmap != planner.Grid8 {
-		return nil
+// take is the session of a route, which is the caller's alone until it is kept again; a new
+// one when there is none.
+func (c *sessions) take(id string) *planner.Session {
+	c.mu.Lock()
+	defer c.mu.Unlock()
+	if e := c.by[id]; e != nil {
+		return c.remove(e).s
 	}
 	return new(planner.Session)
 }
 
-// take is the session of a route, which is the caller's alone until it is kept again; a
-// new one when there is none, nil when the options have no use for one.
-func (c *sessions) take(id string, o planner.Options) *planner.Session {
-	s := newSession(o)
-	c.mu.Lock()
-	defer c.mu.Unlock()
-	if e := c.by[id]; e != nil && s != nil {
-		return c.remove(e).s
-	}
-	return s
-}
-
-// keep keeps a session, which may be nil, for the route of that id.
+// keep keeps a session for the route of that id, unless it is worth nothing.
 func (c *sessions) keep(id string, s *planner.Session) {
-	if s == nil {
-		return
-	}
 	k := &kept{id, s, s.Bytes(), c.now()}
 	if k.bytes == 0 {
 		return
