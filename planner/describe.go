@@ -59,6 +59,7 @@ func (t *task) outline(pts []geom.Point) *outline {
 		o.pieces = append(o.pieces, w)
 		cuts := t.w.rules.SpeedCuts(nil, a, b)
 		if w.tight(o.below) {
+			t.j.Focus(a, b, o.below)
 			for _, s := range t.j.Tight(a, b, o.below-roundingUm) {
 				cuts = append(cuts, s.From, s.To)
 			}

@@ -18,6 +18,9 @@ func (t *task) beyondSensing(a, b geom.Point) bool {
 	reach := float64(t.q.Body.SensingUm)
 	limit := min(reach, float64(t.w.field.Cap()))
 	long := geom.Dist(a, b)
+	if t.j.Place(a).Um+long < limit {
+		return false
+	}
 	from := 0.0
 	for _, s := range append(t.j.Tight(a, b, limit), geom.Span{From: 1, To: 1}) {
 		if float64((s.From-from)*long) > judge.TightResolution || long == 0 && s.From > from {

@@ -106,6 +106,9 @@ func (x *Index) Way(pts []geom.Point, needUm, radiusUm int64) Finding {
 			f.Problem = fmt.Sprintf("piece %d leaves the floor", i-1)
 			return f
 		}
+		if lo, hi := extent(a, b); !w.near.tells(lo, hi, float64(needUm)) {
+			w.look(pts[i-1:], float64(needUm), f.SmallestUm)
+		}
 		d, what := w.distance(a, b, f.SmallestUm, float64(needUm))
 		if d < f.SmallestUm {
 			f.SmallestUm, f.Piece = d, i-1
@@ -150,6 +153,7 @@ func outlineOf(f *floor.Feature) outline {
 type walker struct {
 	*Index
 	solids, closed, oneWay []outline
+	near                   about
 }
 
 func (x *Index) walker(pts []geom.Point) *walker {
@@ -162,7 +166,7 @@ func (x *Index) walker(pts []geom.Point) *walker {
 		}
 		return out
 	}
-	return &walker{x, near(x.solids), near(x.closed), near(x.oneWay)}
+	return &walker{Index: x, solids: near(x.solids), closed: near(x.closed), oneWay: near(x.oneWay)}
 }
 
 func extent(pts ...geom.Point) (lo, hi geom.Point) {
@@ -196,16 +200,32 @@ func (w *walker) distance(a, b geom.Point, most, need float64) (float64, string)
 		}
 	}
 	lo, hi := extent(a, b)
-	for i := range w.solids {
-		o := &w.solids[i]
+	outline := func(o *outline) {
 		if o.apart(lo, hi) >= best {
-			continue
+			return
 		}
 		if d := shapeDistance(o.f.Shape, a, b); d < best {
 			best, what = d, o.f.Name
 		}
 	}
-	for reach := need + w.h; ; reach *= 2 {
+	reach := need + w.h
+	if w.near.tells(lo, hi, need) {
+		for _, o := range w.near.solids {
+			outline(o)
+		}
+		limit := min(w.near.reach, best)
+		if d := w.listed(a, b, lo, hi, limit); d < limit {
+			best, what = d, "a cell"
+		}
+		if best <= w.near.reach {
+			return best, what
+		}
+		reach = 2 * w.near.reach
+	}
+	for i := range w.solids {
+		outline(&w.solids[i])
+	}
+	for ; ; reach *= 2 {
 		reach = min(reach, best)
 		if d := w.cells(a, b, reach); d < reach {
 			best, what = d, "a cell"
@@ -325,8 +345,11 @@ func (w *walker) against(a, b geom.Point) string {
 	lo, hi := extent(a, b)
 	for i := range w.oneWay {
 		o := &w.oneWay[i]
+		if o.apart(lo, hi) > 0 {
+			continue
+		}
 		ahead := (b.X-a.X)*math.Cos(o.f.Heading) + (b.Y-a.Y)*math.Sin(o.f.Heading)
-		if o.apart(lo, hi) > 0 || ahead >= -BackwardUm {
+		if ahead >= -BackwardUm {
 			continue
 		}
 		for _, share := range insideShares(o.f.Shape, a, b) {

@@ -43,13 +43,15 @@ type nearPiece struct {
 const mostGathered = 96
 
 // Gather makes v the vicinity of an area, in time proportional to the area's rows and to
-// what is solid in it.
-func (v *Vicinity) Gather(f *Field, area geom.Rect) {
+// what is solid in it. It says no when that is too much; the field is asked everything then.
+func (v *Vicinity) Gather(f *Field, area geom.Rect) bool {
 	v.f, v.area = f, area
 	v.boxes, v.pieces, v.areas = v.boxes[:0], v.pieces[:0], v.areas[:0]
 	if !v.gatherPieces() || !v.gatherCells() {
 		v.area = geom.EmptyRect()
+		return false
 	}
+	return true
 }
 
 // Holds says whether the segment ab lies in the area.

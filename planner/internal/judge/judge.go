@@ -140,7 +140,7 @@ func (j *Judge) known(a, b geom.Point) *clearance.Nearest {
 	if m == nil {
 		return nil
 	}
-	for i := m.ask; i < len(m.driven) && i < m.ask+alike; i++ {
+	for i := max(0, m.ask-1); i < len(m.driven) && i < m.ask+alike; i++ {
 		if d := &m.driven[i]; d.a == a && d.b == b {
 			m.ask = i + 1
 			return &d.near
@@ -268,70 +268,6 @@ func (j *Judge) Least(a, b geom.Point) float64 {
 	return j.Segment(a, b).Um
 }
 
-// TightResolution is the length, in micrometres, down to which Tight tells
-// stretches apart.
-const TightResolution = 1000
-
-// Tight gives the stretches of ab where clearance is below um, in order and apart from one
-// another. What it leaves out has um or more throughout; a stretch may be longer
-// than the truth by up to TightResolution at either end.
-//
-// The smallest clearance over a stretch is exact (clearance.Field.Segment). For
-// the largest: the distance to a convex set is a convex function along a line,
-// largest at an end, so that one convex piece of a solid which both ends are near
-// to settles all between them. What neither settles is halved.
-func (j *Judge) Tight(a, b geom.Point, um float64) []geom.Span {
-	if a == b || um > float64(j.Field.Cap()) { // which no clearance exceeds
-		if j.At(a).Um < um {
-			return []geom.Span{{From: 0, To: 1}}
-		}
-		return nil
-	}
-	t := tightener{j: j, a: a, b: b, um: um, long: geom.Dist(a, b)}
-	t.halve(0, 1, j.end(a), j.end(b))
-	return t.out
-}
-
-type tightener struct {
-	j    *Judge
-	a, b geom.Point
-	um   float64
-	long float64
-	out  []geom.Span
-}
-
-func (t *tightener) halve(from, to float64, na, nb clearance.Nearest) {
-	a, b := na.On, nb.On
-	// Clearance changes no faster than one goes.
-	part := float64((to - from) * t.long)
-	sum := na.Um + nb.Um
-	if sum-part >= 2*t.um || min(na.Um, nb.Um) >= t.um && t.j.keeps(a, b, t.um) {
-		return
-	}
-	settled := part <= TightResolution || sum+part < 2*t.um ||
-		max(na.Um, nb.Um) < t.um && (t.j.ceiling(a, b, na) < t.um || t.j.ceiling(a, b, nb) < t.um)
-	if settled {
-		if n := len(t.out); n > 0 && t.out[n-1].To == from {
-			t.out[n-1].To = to
-		} else {
-			t.out = append(t.out, geom.Span{From: from, To: to})
-		}
-		return
-	}
-	mid := from + (to-from)/2
-	nm := t.j.At(Along(t.a, t.b, mid))
-	t.halve(from, mid, na, nm)
-	t.halve(mid, to, nm, nb)
-}
-
-// keeps says whether the clearance along ab is um or more.
-func (j *Judge) keeps(a, b geom.Point, um float64) bool {
-	if um == math.Floor(um) {
-		return j.vicinity(a, b).SegmentClear(a, b, int64(um))
-	}
-	return j.Segment(a, b).Um >= um
-}
-
 // Along is the point at a share of the way from a to b.
 func Along(a, b geom.Point, share float64) geom.Point {
 	switch share {
@@ -341,95 +277,4 @@ func Along(a, b geom.Point, share float64) geom.Point {
 		return b
 	}
 	return geom.Point{X: a.X + float64(share*(b.X-a.X)), Y: a.Y + float64(share*(b.Y-a.Y))}
-}
-
-// ceiling bounds the clearance over ab from above, by a convex piece of the solid n.
-func (j *Judge) ceiling(a, b geom.Point, n clearance.Nearest) float64 {
-	switch {
-	case n.Feature != nil:
-		return shapeCeiling(&n.Feature.Shape, a, b)
-	case n.Border:
-		return borderCeiling(j.Field.Bounds(), n.At, a, b)
-	case n.Cell:
-		return j.cellCeiling(a, b, n)
-	}
-	return math.Inf(1)
-}
-
-// shapeCeiling takes an edge of the outline: a convex part of the solid.
-func shapeCeiling(s *floor.Shape, a, b geom.Point) float64 {
-	best := math.Inf(1)
-	for c, d := range s.Edges {
-		da, _ := geom.SegmentDist(a, c, d)
-		if da >= best {
-			continue
-		}
-		db, _ := geom.SegmentDist(b, c, d)
-		best = min(best, max(da, db))
-	}
-	return best - s.Grow
-}
-
-// borderCeiling takes the side that at lies on.
-func borderCeiling(r geom.Rect, at, a, b geom.Point) float64 {
-	switch {
-	case at.X == r.Min.X:
-		return max(a.X, b.X) - r.Min.X
-	case at.X == r.Max.X:
-		return r.Max.X - min(a.X, b.X)
-	case at.Y == r.Min.Y:
-		return max(a.Y, b.Y) - r.Min.Y
-	case at.Y == r.Max.Y:
-		return r.Max.Y - min(a.Y, b.Y)
-	}
-	return math.Inf(1)
-}
-
-// cellCeiling takes the run of solid cells, along its row or its column, about the
-// cell that n names.
-func (j *Judge) cellCeiling(a, b geom.Point, n clearance.Nearest) float64 {
-	m := j.Field.Map()
-	s := m.Settings()
-	res := float64(s.ResolutionUm)
-	o := geom.Point{X: float64(s.OriginX), Y: float64(s.OriginY)}
-	d := geom.Dist(n.On, n.At)
-	if d == 0 {
-		return math.Inf(1)
-	}
-	// A micrometre beyond the outline, away from the place asked about.
-	c := int(math.Floor((n.At.X + (n.At.X-n.On.X)/d - o.X) / res))
-	r := int(math.Floor((n.At.Y + (n.At.Y-n.On.Y)/d - o.Y) / res))
-	if c < 0 || r < 0 || c >= s.Columns || r >= s.Rows || !m.Solid(c, r) {
-		return math.Inf(1)
-	}
-	cell := func(c0, r0, c1, r1 int) float64 {
-		q := geom.Rect{
-			Min: geom.Point{X: o.X + float64(float64(c0)*res), Y: o.Y + float64(float64(r0)*res)},
-			Max: geom.Point{X: o.X + float64(float64(c1+1)*res), Y: o.Y + float64(float64(r1+1)*res)},
-		}
-		return max(q.Dist(a), q.Dist(b))
-	}
-	span := func(v, w, origin float64, limit int) (lo, hi int) {
-		lo = int(max(0, math.Floor((min(v, w)-origin)/res)))
-		hi = int(min(float64(limit-1), math.Floor((max(v, w)-origin)/res)))
-		return lo, hi
-	}
-	lo, hi := span(a.X, b.X, o.X, s.Columns)
-	c0, c1 := c, c
-	for c0 > lo && m.Solid(c0-1, r) {
-		c0--
-	}
-	for c1 < hi && m.Solid(c1+1, r) {
-		c1++
-	}
-	best := cell(c0, r, c1, r)
-	lo, hi = span(a.Y, b.Y, o.Y, s.Rows)
-	r0, r1 := r, r
-	for r0 > lo && m.Solid(c, r0-1) {
-		r0--
-	}
-	for r1 < hi && m.Solid(c, r1+1) {
-		r1++
-	}
-	return min(best, cell(c, r0, c, r1))
 }

@@ -12,10 +12,10 @@ import (
 // judged from one look at the floor (clearance.Vicinity). The answers are the same with
 // and without; only the time differs.
 const (
-	// runSide is how wide and how tall a run of points may be, in micrometres.
-	runSide = 2.5 * geom.UmPerMetre
-	// leastRun is from how many points on a look at the floor pays.
-	leastRun = 3
+	// runSide is how wide and how tall a run of points may be, in micrometres, and closeSide
+	// is that among clutter.
+	runSide   = 8 * geom.UmPerMetre
+	closeSide = 2 * geom.UmPerMetre
 	// mostRuns is how many vicinities are kept; further points are judged one by one.
 	mostRuns = 64
 	// runSlack is how much farther than the clearance about a run is looked, in cells.
@@ -28,6 +28,7 @@ type memory struct {
 	ends     []clearance.Nearest
 	near     []clearance.Vicinity // of runs of points, in order; only the first runs of them count
 	runs     int
+	focus    clearance.Vicinity // of one piece; see Focus
 	alone    clearance.Vicinity // knows nothing, and asks the field
 	ask      int                // which of driven, ends and near are likely to be asked for next
 	askEnd   int
@@ -41,6 +42,7 @@ func (j *Judge) remember() *memory {
 	if j.mem == nil {
 		j.mem = memories.Get().(*memory)
 		j.mem.alone.Gather(j.Field, geom.EmptyRect())
+		j.mem.focus.Gather(j.Field, geom.EmptyRect())
 		j.mem.forget(0)
 	}
 	return j.mem
@@ -59,28 +61,50 @@ func (j *Judge) Release() {
 func (j *Judge) Survey(pts []geom.Point, ahead float64) {
 	m := j.remember()
 	m.runs, m.askNear, m.surveyed = 0, 0, true
-	for i := 0; i < len(pts) && m.runs < mostRuns; {
-		k, box := run(pts, i)
-		if k-i >= leastRun {
-			if m.runs == len(m.near) {
-				m.near = append(m.near, clearance.Vicinity{})
-			}
-			m.near[m.runs].Gather(j.Field, j.about(pts[i:k], box, ahead))
-			m.runs++
+	for i := 0; i+1 < len(pts) && m.runs < mostRuns; {
+		if m.runs == len(m.near) {
+			m.near = append(m.near, clearance.Vicinity{})
 		}
-		i = max(k-1, i+1) // the last point of one may be the first of the next
+		next := i + 1
+		for _, side := range [2]float64{runSide, closeSide} {
+			k, box := run(pts, i, side)
+			if k < i+2 {
+				break
+			}
+			if m.near[m.runs].Gather(j.Field, j.about(pts[i:k], box, ahead)) {
+				m.runs++
+				next = k - 1 // the last point of one is the first of the next
+				break
+			}
+		}
+		i = next
+	}
+}
+
+// mostFocus is how large, in square micrometres, an area may be that is looked at for one piece.
+const mostFocus = 400 * geom.UmPerMetre * geom.UmPerMetre
+
+// Focus looks at the floor about a piece that much is about to be asked about, as far as
+// reach from it.
+func (j *Judge) Focus(a, b geom.Point, reach float64) {
+	if j.vicinity(a, b) != &j.mem.alone {
+		return
+	}
+	area := geom.BoundsOf(a, b).Grow(reach + runSlack*float64(j.Field.Map().Settings().ResolutionUm))
+	if area.Width()*area.Height() <= mostFocus {
+		j.mem.focus.Gather(j.Field, area)
 	}
 }
 
 // Surveyed says whether Survey was asked for since the last Forget.
 func (j *Judge) Surveyed() bool { return j.mem != nil && j.mem.surveyed }
 
-// run is the points from i up to k that lie in a box of runSide.
-func run(pts []geom.Point, i int) (k int, box geom.Rect) {
+// run is the points from i up to k that lie in a box of that side.
+func run(pts []geom.Point, i int, side float64) (k int, box geom.Rect) {
 	box = geom.BoundsOf(pts[i])
 	for k = i + 1; k < len(pts); k++ {
 		wider := box.Add(pts[k])
-		if max(wider.Width(), wider.Height()) > runSide {
+		if max(wider.Width(), wider.Height()) > side {
 			break
 		}
 		box = wider
@@ -113,6 +137,9 @@ func (j *Judge) about(pts []geom.Point, box geom.Rect, ahead float64) geom.Rect 
 // vicinity is the one that a piece lies in, or one that knows nothing.
 func (j *Judge) vicinity(a, b geom.Point) *clearance.Vicinity {
 	m := j.remember()
+	if m.focus.Holds(a, b) {
+		return &m.focus
+	}
 	for k := m.askNear; k < min(m.runs, m.askNear+2); k++ {
 		if m.near[k].Holds(a, b) {
 			m.askNear = k
@@ -131,5 +158,9 @@ func (j *Judge) vicinity(a, b geom.Point) *clearance.Vicinity {
 // Travel is the field's answer.
 func (j *Judge) Travel(p geom.Point, heading float64, radiusUm, most int64) float64 {
 	to := geom.Point{X: p.X + float64(float64(most)*math.Cos(heading)), Y: p.Y + float64(float64(most)*math.Sin(heading))}
-	return j.vicinity(p, to).Travel(p, heading, radiusUm, most)
+	v := j.vicinity(p, to)
+	if v == &j.mem.alone {
+		v = j.vicinity(p, p)
+	}
+	return v.Travel(p, heading, radiusUm, most)
 }
