@@ -71,7 +71,8 @@ func TestFilledNotchesChangeNoWay(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			if okL != okF || math.Abs(lean.LengthUm-full.LengthUm) > 1e-9*full.LengthUm {
+			// Corners of the two may be snapUm apart, where their cells end at other heights.
+			if slack := float64(snapUm * len(full.Points)); okL != okF || math.Abs(lean.LengthUm-full.LengthUm) > 1e-9*full.LengthUm+slack {
 				t.Fatalf("case %d: %v to %v: %v (%v) in the lean mesh, %v (%v) in the full one\n%v\n%v", k, a, b,
 					lean.LengthUm, okL, full.LengthUm, okF, lean.Points, full.Points)
 			}

@@ -15,7 +15,7 @@ func (s *search) expand(n *node) {
 	b := g.blocks[n.block]
 	ox := float64(int(n.block)%g.bx) * g.side
 	oy := float64(int(n.block)/g.bx) * g.side
-	if b.cells[n.cell].rows == 0 && n.flags&point == 0 && n.fromBlock != none {
+	if b.cells[n.cell].rows == 0 && n.flags&point == 0 && n.fromBlock == n.block {
 		s.round(n, b, ox, oy)
 	}
 	s.out, s.fs = s.out[:0], s.fs[:0]
@@ -160,11 +160,17 @@ func (c *look) portal() {
 		} else if rb >= -c.eps {
 			c.graze(c.n.rootR, ra >= -c.eps && ra <= c.eps, turnB, c.bx, c.by)
 		}
+		if c.pastLeft { // and the node's stretch is all but in line with the rays
+			c.from(c.atLeft(), 0, 1)
+		}
 	case tr == 0 && tl == 0:
 		if c.n.flags&turnL != 0 {
 			c.from(c.atLeft(), 0, 1)
 		} else if la <= c.eps {
 			c.graze(c.n.rootL, lb >= -c.eps && lb <= c.eps, turnA, c.ax, c.ay)
+		}
+		if c.pastRight {
+			c.from(c.atRight(), 0, 1)
 		}
 	default:
 		// The rays cross on the portal or before it, within rounding: a fan of no width.

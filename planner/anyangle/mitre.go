@@ -241,23 +241,25 @@ func (c *cutter) mitred(pieces []piece, w, h int64) {
 // side is a stretch of cells' upright sides at one x.
 type side struct{ lo, hi, cell int32 }
 
-// touch adds a triangle's sides on the block's border to the contacts.
+// touch adds a triangle's sides, and single corners, on the block's border to the contacts.
 func (c *cut) touch(t *triangle, id int32) {
-	for k, a := range t {
-		b := t[(k+1)%3]
-		if a.x == b.x && (a.x == 0 || a.x == c.w) {
-			s := leftward
-			if a.x > 0 {
-				s = rightward
+	for _, s := range [4]struct {
+		side   int
+		x      bool // it is upright, at that x; else level, at that y
+		v, end int32
+	}{{leftward, true, 0, c.h}, {rightward, true, c.w, c.h}, {downward, false, 0, c.w}, {upward, false, c.h, c.w}} {
+		lo, hi := s.end+1, int32(-1)
+		for _, p := range t {
+			along, v := p.x, p.y
+			if s.x {
+				along, v = v, along
 			}
-			c.contact[s] = append(c.contact[s], contact{min(a.y, b.y), max(a.y, b.y), id})
+			if v == s.v {
+				lo, hi = min(lo, along), max(hi, along)
+			}
 		}
-		if a.y == b.y && (a.y == 0 || a.y == c.h) {
-			s := downward
-			if a.y > 0 {
-				s = upward
-			}
-			c.contact[s] = append(c.contact[s], contact{min(a.x, b.x), max(a.x, b.x), id})
+		if lo <= hi {
+			c.contact[s.side] = append(c.contact[s.side], contact{lo, hi, id})
 		}
 	}
 }

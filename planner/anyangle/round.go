@@ -7,12 +7,19 @@ import (
 )
 
 // round takes n on through the triangles of a fan to the last one, as expand and run would one by
-// one, but without a look at the queue: there is one way on from each. It stops short where a
+// one, but without a look at the queue: there is one way on from each, since what else the first
+// one leads to is in line with where n comes from. It stops short where a
 // triangle is the goal's, and where more than one node, or none, would come of a step.
 func (s *search) round(n *node, b *block, ox, oy float64) {
 	step := b.alongFan(n.cell, n.fromCell)
 	if step == 0 {
 		return
+	}
+	of := b.of[n.cell]
+	for _, p := range b.portals[of.first : of.first+of.count] {
+		if p.dir != inside {
+			return // a side on the block's border leads on, too
+		}
 	}
 	at := &b.fan[b.cells[n.cell].row0]
 	e := rounder{s: s, eps: s.g.eps, px: ox + float64(at[0].x), py: oy + float64(at[0].y), left: step > 0}
