@@ -174,22 +174,23 @@ func (o *outline) legs() []int {
 	return append(starts, len(o.pieces))
 }
 
-// narrowest is the first piece of least clearance from piece i up to k.
-func (o *outline) narrowest(i, k int) int {
-	best := i
-	for ; i < k; i++ {
-		if o.pieces[i].near.Um < o.pieces[best].near.Um {
-			best = i
-		}
+// narrowest is the piece of least clearance from piece i up to k, and that clearance. Of
+// pieces that differ by rounding alone it is the last: it stays ahead of a robot longest.
+func (o *outline) narrowest(i, k int) (best int, least float64) {
+	least = math.Inf(1)
+	for n := i; n < k; n++ {
+		least = min(least, o.pieces[n].near.Um)
 	}
-	return best
+	for best = k - 1; o.pieces[best].near.Um > least+roundingReach; best-- {
+	}
+	return best, least
 }
 
 // markSmallest makes each leg's place of smallest clearance a point.
 func (o *outline) markSmallest() {
 	starts := o.legs()
 	for n := len(starts) - 1; n > 0; n-- {
-		i := o.narrowest(starts[n-1], starts[n])
+		i, _ := o.narrowest(starts[n-1], starts[n])
 		o.cut(i, o.pieces[i].near.On)
 	}
 }
@@ -305,9 +306,9 @@ func (t *task) leg(o *outline, pts []RoutePoint, i, k int) Leg {
 	for n := max(i, 1); n <= min(k, len(pts)-2); n++ {
 		lower(pts[n].SpeedCeiling, pts[n].SpeedCause)
 	}
-	n := o.narrowest(i, k)
+	n, least := o.narrowest(i, k)
 	w := &o.pieces[n]
-	l.SmallestUm = t.roundedDown(w.near.Um + roundingUm)
+	l.SmallestUm = t.roundedDown(least + roundingUm)
 	l.SmallestAt, l.SmallestS = w.near.On, pts[n].S+geom.Dist(w.a, w.near.On)
 	if w.near.Feature != nil {
 		l.Nearest = w.near.Feature.Name

@@ -275,7 +275,10 @@ func (m *many) answer(ctx context.Context, j *job) (Answer, error) {
 		a.Refusal = &Refusal{Reason: j.reason}
 		a.Refusal.Blocked, err = t.blockedEnd(ctx, at, j.blocked.zone)
 	default:
-		a, err = t.between(ctx)
+		var c *course
+		if c, a, err = t.between(ctx); c != nil && err == nil {
+			a, err = t.tell(ctx, c)
+		}
 	}
 	return t.finish(ctx, a, err)
 }

@@ -111,34 +111,49 @@ func (t *task) refused(ctx context.Context) (*Refusal, error) {
 }
 
 func (t *task) plan(ctx context.Context) (Answer, error) {
+	c, a, err := t.find(ctx)
+	if c == nil || err != nil {
+		return a, err
+	}
+	return t.tell(ctx, c)
+}
+
+// find looks for a way; nil when there is none, or when time ran out, for which it gives the
+// answer.
+func (t *task) find(ctx context.Context) (*course, Answer, error) {
 	if ctx.Err() != nil {
-		return Answer{}, context.Cause(ctx)
+		return nil, Answer{}, context.Cause(ctx)
 	}
 	if r, err := t.refused(ctx); r != nil || err != nil {
-		return Answer{Refusal: r}, err
+		return nil, Answer{Refusal: r}, err
 	}
 	return t.between(ctx)
 }
 
-// between plans between ends that can both be stood on.
-func (t *task) between(ctx context.Context) (Answer, error) {
+// between is find between ends that can both be stood on.
+func (t *task) between(ctx context.Context) (*course, Answer, error) {
 	c, err := t.course(ctx)
 	if err == nil && c == nil {
 		var r *Refusal
 		if c, r, err = t.noPassage(ctx); err == nil && r != nil {
-			return Answer{Refusal: r}, nil
+			return nil, Answer{Refusal: r}, nil
 		}
 	}
 	if err != nil {
 		if !spent(ctx) {
-			return Answer{}, err
+			return nil, Answer{}, err
 		}
 		r, late := t.late(ctx)
 		if r == nil && late == nil {
 			late = err
 		}
-		return Answer{Route: r}, late
+		return nil, Answer{Route: r}, late
 	}
+	return c, Answer{}, nil
+}
+
+// tell describes a way that was found, whether or not time runs out meanwhile.
+func (t *task) tell(ctx context.Context, c *course) (Answer, error) {
 	long, stop := lasting(ctx)
 	defer stop()
 	r, err := t.route(long, c)

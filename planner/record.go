@@ -196,12 +196,14 @@ func (n *notes) record() *record {
 	was := outline{t: t, below: o.below, pieces: n.base}
 	starts := was.legs()
 	for l := 1; l < len(starts); l++ {
-		k.parts[was.narrowest(starts[l-1], starts[l])].marked = true
+		i, _ := was.narrowest(starts[l-1], starts[l])
+		k.parts[i].marked = true
 	}
 	starts = o.legs()
 	for l := 1; l < len(starts); l++ {
 		leg := &n.r.Legs[l-1]
-		b := &k.bits[o.narrowest(starts[l-1], starts[l])]
+		i, _ := o.narrowest(starts[l-1], starts[l])
+		b := &k.bits[i]
 		b.roomed, b.left, b.right = true, leg.LeftUm, leg.RightUm
 		if !leg.BeyondSensing && t.q.Body.SensingUm <= t.w.field.Cap() {
 			for f := starts[l-1]; f < starts[l]; f++ {

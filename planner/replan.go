@@ -100,39 +100,30 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 			return r, err
 		}
 	}
-	fresh, err := t.plan(ctx)
+	c, fresh, err := t.find(ctx)
+	// What costs its length need not be described to be compared.
+	if plain := t.j.Weight == 0 && t.q.Options.Preference != Clearest; c != nil && err == nil && (old == nil || !plain) {
+		fresh, err = t.tell(ctx, c)
+		c = nil
+	}
 	if old == nil || ctx.Err() != nil && context.Cause(ctx) != ErrTimeBudget || err != nil && ctx.Err() == nil {
+		if c != nil && err == nil {
+			err = context.Cause(ctx)
+		}
 		r.Answer = fresh
 		return r, err
 	}
-	var room, had float64 // of the fresh route and the old one, where room comes first
-	if t.q.Options.Preference == Clearest && fresh.Route != nil {
-		room, had = t.roomOf(pointsOf(fresh.Route)), t.roomOf(old)
+	if kept, err := t.stays(ctx, q, old, c, fresh.Route); kept != nil || err != nil {
+		r.Answer.Route, r.Kept = kept, err == nil
+		return r, err
 	}
-	dearer := func(cost, share float64) bool {
-		share = max(share, keepSlack)
-		switch {
-		case fresh.Route == nil:
-			return false
-		case math.Abs(room-had) > alikeUm:
-			return room > float64(had*(1+share))
+	if c != nil {
+		if fresh, err = t.tell(ctx, c); err != nil {
+			return r, err
 		}
-		return cost > float64(fresh.Route.CostUm*(1+share))
-	}
-	cost := t.costOf(old)
-	short := spent(ctx) && (fresh.Route == nil || fresh.Route.Bound.CutShort)
-	if !dearer(cost, q.SwitchShare) {
-		c := &course{pts: old, roadmap: math.Inf(1)}
-		if !dearer(cost, 0) && !short {
-			c.kind = AtMostRoadmapOptimum
-		}
-		route, err := t.route(context.WithoutCancel(ctx), c)
-		if err == nil && short {
-			route.cutShort(0)
-		}
-		// The points that describing adds are rounded, which may tip the balance.
-		if err != nil || !dearer(route.CostUm, q.SwitchShare) {
-			r.Answer.Route, r.Kept = route, err == nil
+		// The points that describing adds are rounded, which may have tipped the balance.
+		if kept, err := t.stays(ctx, q, old, nil, fresh.Route); kept != nil || err != nil {
+			r.Answer.Route, r.Kept = kept, err == nil
 			return r, err
 		}
 	}
@@ -141,6 +132,51 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 		r.Cause = OffRoute
 	}
 	return r, nil
+}
+
+// stays is the rest of the old route, described, unless what was found is better by more than
+// the switching share: c when it is not described yet, else fresh, nil when there is no way
+// or it is not known.
+func (t *task) stays(ctx context.Context, q *ReplanRequest, old []geom.Point, c *course, fresh *Route) (*Route, error) {
+	most := math.Inf(1)
+	switch {
+	case c != nil:
+		most = lengthOf(c.pts)
+	case fresh != nil:
+		most = fresh.CostUm
+	}
+	var room, had float64 // of the fresh route and the old one, where room comes first
+	if t.q.Options.Preference == Clearest && fresh != nil {
+		room, had = t.roomOf(pointsOf(fresh)), t.roomOf(old)
+	}
+	dearer := func(cost, share float64) bool {
+		share = max(share, keepSlack)
+		if math.Abs(room-had) > alikeUm {
+			return room > float64(had*(1+share))
+		}
+		return cost > float64(most*(1+share))
+	}
+	cost := t.costOf(old)
+	if dearer(cost, q.SwitchShare) {
+		return nil, nil
+	}
+	short := c == nil && spent(ctx) && (fresh == nil || fresh.Bound.CutShort)
+	k := &course{pts: old, roadmap: math.Inf(1)}
+	if !dearer(cost, 0) && !short {
+		k.kind = AtMostRoadmapOptimum
+	}
+	route, err := t.route(context.WithoutCancel(ctx), k)
+	if err != nil {
+		return nil, err
+	}
+	if short {
+		route.cutShort(0)
+	}
+	// The points that describing adds are rounded, which may tip the balance.
+	if dearer(route.CostUm, q.SwitchShare) {
+		return nil, nil
+	}
+	return route, nil
 }
 
 // alikeUm is how far two smallest clearances may be apart, in micrometres, and still count as

@@ -173,13 +173,15 @@ func (t *task) reoutline(c *course, from []int) *retold {
 	n := &retold{record: k}
 	long := 0.0
 	for i := 0; i < len(k.parts); { // leg by leg, as outline.markSmallest
-		first, best := i, i
-		for ; i < len(k.parts) && k.parts[i].tight(below) == k.parts[first].tight(below); i++ {
-			if k.parts[i].near.Um < k.parts[best].near.Um {
-				best = i
-			}
+		tight, least := k.parts[i].tight(below), math.Inf(1)
+		for ; i < len(k.parts) && k.parts[i].tight(below) == tight; i++ {
+			least = min(least, k.parts[i].near.Um)
 			k.parts[i].marked = false
 			long += geom.Dist(k.parts[i].a, k.parts[i].b)
+		}
+		best := i - 1
+		for k.parts[best].near.Um > least+roundingReach {
+			best--
 		}
 		k.parts[best].marked = true
 	}
@@ -289,7 +291,7 @@ func (t *task) legOf(k *record, pts []RoutePoint, i, j int) Leg {
 			l.SpeedCeiling, l.SpeedCause = v, c
 		}
 	}
-	narrowest := i
+	least := math.Inf(1)
 	for n := i; n < j; n++ {
 		b := &k.bits[n]
 		if b.long > 0 {
@@ -297,15 +299,17 @@ func (t *task) legOf(k *record, pts []RoutePoint, i, j int) Leg {
 		}
 		lower(b.limit, CauseZone)
 		l.BeyondSensing = l.BeyondSensing || !b.sensed && t.beyondSensing(b.a, b.b)
-		if b.near.Um < k.bits[narrowest].near.Um {
-			narrowest = n
-		}
+		least = min(least, b.near.Um)
 	}
 	for n := max(i, 1); n <= min(j, len(pts)-2); n++ {
 		lower(pts[n].SpeedCeiling, pts[n].SpeedCause)
 	}
+	narrowest := j - 1
+	for k.bits[narrowest].near.Um > least+roundingReach {
+		narrowest--
+	}
 	b := &k.bits[narrowest]
-	l.SmallestUm = t.roundedDown(b.near.Um + roundingUm)
+	l.SmallestUm = t.roundedDown(least + roundingUm)
 	l.SmallestAt, l.SmallestS = b.near.On, pts[narrowest].S+geom.Dist(b.a, b.near.On)
 	if b.near.Feature != nil {
 		l.Nearest = b.near.Feature.Name

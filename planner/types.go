@@ -111,8 +111,8 @@ type Leg struct {
 	Points          []RoutePoint
 	LengthUm        float64
 	DurationS       float64
-	SmallestUm      int64 // smallest clearance, rounded down, at most the cap
-	SmallestAt      geom.Point
+	SmallestUm      int64      // smallest clearance, rounded down, at most the cap
+	SmallestAt      geom.Point // of places that differ by 3 µm at most, by rounding, the last
 	SmallestS       float64
 	LeftUm, RightUm int64  // free width at SmallestAt, from the centre line, at most the cap
 	Nearest         string // feature nearest at SmallestAt; "" for a cell or the border
