@@ -165,7 +165,7 @@ func rounded(p geom.Point) iter.Seq[geom.Point] {
 
 // legs gives the index of each leg's first piece, and the number of pieces last.
 func (o *outline) legs() []int {
-	starts := []int{0}
+	starts := make([]int, 1, 8)
 	for i := 1; i < len(o.pieces); i++ {
 		if o.pieces[i].tight(o.below) != o.pieces[i-1].tight(o.below) {
 			starts = append(starts, i)
@@ -229,9 +229,9 @@ func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
 	if ctx.Err() != nil {
 		return nil, context.Cause(ctx)
 	}
-	r := &Route{Start: t.q.Start, Goal: t.q.Goal, SmallestUm: math.MaxInt64}
 	pts := t.points(o)
 	starts := o.legs()
+	r := &Route{Start: t.q.Start, Goal: t.q.Goal, SmallestUm: math.MaxInt64, Legs: make([]Leg, 0, len(starts)-1)}
 	for n := 1; n < len(starts); n++ {
 		l := t.leg(o, pts, starts[n-1], starts[n])
 		r.Legs = append(r.Legs, l)
@@ -288,7 +288,7 @@ func (t *task) points(o *outline) []RoutePoint {
 
 // leg describes the pieces from i up to k.
 func (t *task) leg(o *outline, pts []RoutePoint, i, k int) Leg {
-	l := Leg{Tight: o.pieces[i].tight(o.below), Points: slices.Clone(pts[i : k+1]), LengthUm: pts[k].S - pts[i].S}
+	l := Leg{Tight: o.pieces[i].tight(o.below), Points: pts[i : k+1 : k+1], LengthUm: pts[k].S - pts[i].S}
 	l.SpeedCeiling, l.SpeedCause = t.q.Body.MaxSpeed, CauseBody
 	lower := func(v float64, c SpeedCause) {
 		if v < l.SpeedCeiling {

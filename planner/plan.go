@@ -286,13 +286,14 @@ func (t *task) clearCells(ctx context.Context) (*course, error) {
 
 // joined puts the ends to a path, dropping points that repeat.
 func joined(start geom.Point, path []geom.Point, goal geom.Point) []geom.Point {
-	pts := []geom.Point{start}
-	for _, p := range append(path, goal) {
+	pts := make([]geom.Point, 1, len(path)+2)
+	pts[0] = start
+	for _, p := range path {
 		if p != pts[len(pts)-1] {
 			pts = append(pts, p)
 		}
 	}
-	if len(pts) == 1 {
+	if goal != pts[len(pts)-1] || len(pts) == 1 {
 		pts = append(pts, goal)
 	}
 	return pts
@@ -332,7 +333,12 @@ func (t *task) check(pts []geom.Point, smallestUm int64) error {
 }
 
 // pointsOf is where a route's pieces meet.
-func pointsOf(r *Route) (pts []geom.Point) {
+func pointsOf(r *Route) []geom.Point {
+	n := 0
+	for i := range r.Legs {
+		n += len(r.Legs[i].Points)
+	}
+	pts := make([]geom.Point, 0, n)
 	for i := range r.Legs {
 		for k := range r.Legs[i].Points {
 			if p := r.Legs[i].Points[k].At; len(pts) == 0 || p != pts[len(pts)-1] {

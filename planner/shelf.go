@@ -1,12 +1,14 @@
 package planner
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
 	"runtime/debug"
 	"slices"
 	"sync"
+	"sync/atomic"
 
 	"example.com/wideberth/planner/anyangle"
 	"example.com/wideberth/planner/roadmap"
@@ -28,22 +30,26 @@ const (
 // question, within unattendedLimit.
 type shelf[K comparable, V any] struct {
 	limit int
-	idle  int // 0: shelfIdle
+	idle  int32 // 0: shelfIdle
 	// behind says that structures are brought up to date in the background, whoever asks
 	// for one meanwhile waiting for it.
 	behind bool
 	make   func(context.Context, K) (V, error)
-	mu     sync.Mutex    // held to look at or change the fields below and those of what is kept
-	kept   []*kept[K, V] // at most limit; the one asked for last is last
+	mu     sync.Mutex    // held to look at or change the fields below and those of what is in the making
+	kept   []*kept[K, V] // at most limit
 	// making are those not done yet, kept or not, oldest first.
 	making []*kept[K, V]
+	// there are those of kept that are done, for who asks for one of them, which takes no lock.
+	there atomic.Pointer[[]*kept[K, V]]
+	clock atomic.Int64 // how often one was asked for that was not the last to be asked for
 }
 
 // kept is a structure, or one in the making.
 type kept[K comparable, V any] struct {
 	key     K
-	idle    int // versions since it was asked for
-	waiters int
+	idle    atomic.Int32 // versions since it was asked for
+	asked   atomic.Int64 // the clock when it was last asked for
+	waiters int          // while it is in the making
 	cancel  context.CancelFunc
 	done    chan struct{} // closed once val and err are set
 	val     V
@@ -67,11 +73,43 @@ func (s *shelf[K, V]) get(ctx context.Context, k K) (v V, err error) {
 	return s.wait(ctx, s.find(k))
 }
 
+// done is what is kept and done for k, nil when nothing is.
+func (s *shelf[K, V]) done(k K) *kept[K, V] {
+	if list := s.there.Load(); list != nil {
+		for _, e := range *list {
+			if e.key == k {
+				return e
+			}
+		}
+	}
+	return nil
+}
+
+// show makes what is kept and done known; s.mu is held.
+func (s *shelf[K, V]) show() {
+	list := make([]*kept[K, V], 0, len(s.kept))
+	for _, e := range s.kept {
+		if e.ready() {
+			list = append(list, e)
+		}
+	}
+	s.there.Store(&list)
+}
+
+// touch says that e was asked for. Where it was the last to be, nothing is written that
+// others read.
+func (s *shelf[K, V]) touch(e *kept[K, V]) {
+	if e.idle.Load() != 0 {
+		e.idle.Store(0)
+	}
+	if e.asked.Load() != s.clock.Load() {
+		e.asked.Store(s.clock.Add(1))
+	}
+}
+
 // peek is the structure for k if it is there; it asks for none.
 func (s *shelf[K, V]) peek(k K) (v V, ok bool) {
-	s.mu.Lock()
-	defer s.mu.Unlock()
-	if e := s.held(k); e != nil && e.ready() && e.err == nil {
+	if e := s.done(k); e != nil && e.err == nil {
 		return e.val, true
 	}
 	return v, false
@@ -79,19 +117,19 @@ func (s *shelf[K, V]) peek(k K) (v V, ok bool) {
 
 // wait waits for what find gave.
 func (s *shelf[K, V]) wait(ctx context.Context, e *kept[K, V]) (v V, err error) {
+	if e.ready() {
+		return e.val, e.err
+	}
 	select {
 	case <-e.done:
+		return e.val, e.err
 	case <-ctx.Done():
-		err = context.Cause(ctx)
 	}
 	s.mu.Lock()
 	defer s.mu.Unlock()
 	e.waiters--
-	if err == nil {
-		return e.val, e.err
-	}
 	s.thin()
-	return v, err
+	return v, context.Cause(ctx)
 }
 
 // thin ends makings that nobody waits for, the oldest first, down to the limit; s.mu is held.
@@ -122,18 +160,20 @@ func (s *shelf[K, V]) held(k K) *kept[K, V] {
 	return nil
 }
 
-// find is what is kept for k, its making begun if need be; the caller counts as a waiter.
+// find is what is kept for k, its making begun if need be; the caller counts as a waiter
+// until it is done.
 func (s *shelf[K, V]) find(k K) *kept[K, V] {
+	if e := s.done(k); e != nil {
+		s.touch(e)
+		return e
+	}
 	s.mu.Lock()
 	defer s.mu.Unlock()
 	e := s.held(k)
 	if e == nil {
 		e = s.begin(k, func(ctx context.Context) (V, error) { return s.make(ctx, k) })
-	} else if i := slices.Index(s.kept, e); i < len(s.kept)-1 {
-		copy(s.kept[i:], s.kept[i+1:])
-		s.kept[len(s.kept)-1] = e
 	}
-	e.idle = 0
+	s.touch(e)
 	e.waiters++
 	return e
 }
@@ -154,11 +194,12 @@ func (s *shelf[K, V]) begin(k K, make func(context.Context) (V, error)) *kept[K,
 		}
 		s.making = slices.DeleteFunc(s.making, func(o *kept[K, V]) bool { return o == e })
 		close(e.done)
+		s.show()
 	}()
 	return e
 }
 
-func (s *shelf[K, V]) idleLimit() int {
+func (s *shelf[K, V]) idleLimit() int32 {
 	if s.idle > 0 {
 		return s.idle
 	}
@@ -167,12 +208,19 @@ func (s *shelf[K, V]) idleLimit() int {
 
 func newDone() chan struct{} { return make(chan struct{}) }
 
-// put adds e as the one asked for last; s.mu is held.
+// put adds e as the one asked for last, in the place of the one asked for longest ago
+// where there is no room; s.mu is held.
 func (s *shelf[K, V]) put(e *kept[K, V]) {
 	if len(s.kept) == s.limit {
-		s.kept = slices.Delete(s.kept, 0, 1) // whoever waits for it has it still
+		s.drop(slices.MinFunc(s.kept, longestAgo)) // whoever waits for it has it still
 	}
+	e.asked.Store(s.clock.Add(1))
 	s.kept = append(s.kept, e)
+	s.show()
+}
+
+func longestAgo[K comparable, V any](a, b *kept[K, V]) int {
+	return cmp.Compare(a.asked.Load(), b.asked.Load())
 }
 
 // makeError is a panic in the making of a structure. Whoever logs it has the stack.
@@ -202,6 +250,7 @@ func unfit(err error) bool {
 // drop forgets e; s.mu is held.
 func (s *shelf[K, V]) drop(e *kept[K, V]) {
 	s.kept = slices.DeleteFunc(s.kept, func(o *kept[K, V]) bool { return o == e })
+	s.show()
 }
 
 // errLeftOut is for what is not worth carrying to another version.
@@ -217,9 +266,10 @@ func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(co
 	var ready []*kept[K, V]
 	s.mu.Lock()
 	n.mu.Lock()
-	for _, e := range s.kept {
+	for _, e := range slices.SortedFunc(slices.Values(s.kept), longestAgo) {
+		idle := e.idle.Load() + 1
 		switch {
-		case e.idle >= s.idleLimit(), e.ready() && e.err != nil:
+		case idle > s.idleLimit(), e.ready() && e.err != nil:
 		case !e.ready() || s.behind:
 			e.waiters++
 			n.begin(e.key, func(ctx context.Context) (V, error) {
@@ -234,7 +284,7 @@ func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(co
 					return v, err
 				}
 				return n.make(ctx, e.key)
-			}).idle = e.idle + 1
+			}).idle.Store(idle)
 		default:
 			ready = append(ready, e)
 		}
@@ -251,8 +301,10 @@ func (s *shelf[K, V]) carry(ctx context.Context, n *shelf[K, V], advance func(co
 		}
 		done := newDone()
 		close(done)
+		c := &kept[K, V]{key: e.key, cancel: func() {}, done: done, val: v}
+		c.idle.Store(e.idle.Load() + 1)
 		n.mu.Lock()
-		n.put(&kept[K, V]{key: e.key, idle: e.idle + 1, cancel: func() {}, done: done, val: v})
+		n.put(c)
 		n.mu.Unlock()
 	}
 	return nil

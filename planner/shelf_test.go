@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"strings"
+	"sync"
 	"testing"
 
 	"example.com/wideberth/mapstore/geom"
@@ -46,6 +47,50 @@ func TestWhatIsTooLargeIsTriedOnceAVersion(t *testing.T) {
 		if v, err := n.get(ctx, 2); err != nil || *v != 2 {
 			t.Error(err)
 		}
+	}
+}
+
+// Whoever asks gets what was made for what they asked, while others have it dropped and
+// versions come and go; and what was asked for last stays.
+func TestShelfUnderManyCallers(t *testing.T) {
+	ctx := context.Background()
+	s := &shelf[int, *int]{limit: 4, make: func(_ context.Context, k int) (*int, error) { return &k, nil }}
+	for range 20 {
+		var wg sync.WaitGroup
+		for g := range 4 {
+			wg.Go(func() {
+				for i := range 200 {
+					k := (i*(g+1) + g) % 7
+					if v, err := s.get(ctx, k); err != nil || *v != k {
+						t.Errorf("asked for %d and got %v, %v", k, v, err)
+					}
+					if v, ok := s.peek(k); ok && *v != k {
+						t.Errorf("there is %d for %d", *v, k)
+					}
+				}
+			})
+		}
+		n := &shelf[int, *int]{limit: 4, make: s.make}
+		if err := s.carry(ctx, n, func(_ context.Context, _ int, v *int) (*int, error) { return v, nil }); err != nil {
+			t.Fatal(err)
+		}
+		wg.Wait()
+		if len(s.kept) > 4 || len(n.kept) > 4 {
+			t.Fatalf("%d and %d kept", len(s.kept), len(n.kept))
+		}
+		last, err := n.get(ctx, 9)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for k := range 3 {
+			if _, err := n.get(ctx, k); err != nil {
+				t.Fatal(err)
+			}
+		}
+		if v, ok := n.peek(9); !ok || v != last {
+			t.Fatal("dropped before those asked for longer ago")
+		}
+		s = n
 	}
 }
 

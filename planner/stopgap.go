@@ -113,6 +113,9 @@ func spent(ctx context.Context) bool {
 // lasting is ctx for what is done with a way that was found: it does not end with the
 // time budget.
 func lasting(ctx context.Context) (context.Context, func()) {
+	if ctx.Done() == nil {
+		return ctx, func() {}
+	}
 	long, cancel := context.WithCancelCause(context.WithoutCancel(ctx))
 	stop := context.AfterFunc(ctx, func() {
 		if cause := context.Cause(ctx); !errors.Is(cause, ErrTimeBudget) {

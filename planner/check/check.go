@@ -99,6 +99,8 @@ func (x *Index) Way(pts []geom.Point, needUm, radiusUm int64) Finding {
 		pts = append(pts, pts[0])
 	}
 	w := x.walker(pts)
+	w.near = lists.Get().(*about)
+	defer w.near.release()
 	f := Finding{SmallestUm: w.cap}
 	for i := 1; i < len(pts); i++ {
 		a, b := pts[i-1], pts[i]
@@ -153,7 +155,7 @@ func outlineOf(f *floor.Feature) outline {
 type walker struct {
 	*Index
 	solids, closed, oneWay []outline
-	near                   about
+	near                   *about
 }
 
 func (x *Index) walker(pts []geom.Point) *walker {

@@ -3,6 +3,7 @@ package check
 import (
 	"math"
 	"math/bits"
+	"sync"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -29,6 +30,15 @@ type about struct {
 	solids []*outline
 }
 
+var lists = sync.Pool{New: func() any { return new(about) }}
+
+// release gives the list's memory back, without what belongs to a version.
+func (l *about) release() {
+	l.reach = 0
+	clear(l.solids)
+	lists.Put(l)
+}
+
 // cellsBox is a box of solid cells.
 type cellsBox struct{ x0, y0, x1, y1 float64 }
 
@@ -40,7 +50,7 @@ func (l *about) tells(lo, hi geom.Point, reach float64) bool {
 // look makes the list for the first of the pieces, and as many on from there as lie
 // together. Where the first alone is too long, or near too much, there is none.
 func (w *walker) look(pts []geom.Point, need, most float64) {
-	l := &w.near
+	l := w.near
 	l.reach = 0
 	reach := max(need+w.h, min(most, farUm))
 	for _, side := range [2]float64{togetherUm, closeUm} {
@@ -90,11 +100,6 @@ func (w *walker) list(l *about, reach float64) bool {
 			mask = mask << over >> over
 		}
 		open, was := len(l.boxes), uint64(0)
-		end := func(row int) {
-			for y := w.lo.Y + float64(row)*w.h; open < len(l.boxes); open++ {
-				l.boxes[open].y1 = y
-			}
-		}
 		for row := r0; row <= r1; {
 			blk := w.block(bx, row/size)
 			for next := min(r1+1, row-row%size+size); row < next; row++ {
@@ -102,9 +107,9 @@ func (w *walker) list(l *about, reach float64) bool {
 				if word == was {
 					continue
 				}
-				end(row)
-				was = word
 				y := w.lo.Y + float64(row)*w.h
+				l.end(open, y)
+				open, was = len(l.boxes), word
 				for word != 0 {
 					from := bits.TrailingZeros64(word)
 					n := bits.TrailingZeros64(^(word >> from))
@@ -116,9 +121,16 @@ func (w *walker) list(l *about, reach float64) bool {
 				}
 			}
 		}
-		end(r1 + 1)
+		l.end(open, w.lo.Y+float64(r1+1)*w.h)
 	}
 	return true
+}
+
+// end gives the boxes from one on their upper side.
+func (l *about) end(from int, y float64) {
+	for i := from; i < len(l.boxes); i++ {
+		l.boxes[i].y1 = y
+	}
 }
 
 // listed is the smallest distance from ab to a box of the list below reach, else reach.

@@ -54,6 +54,13 @@ func (v *Vicinity) Gather(f *Field, area geom.Rect) bool {
 	return true
 }
 
+// Release lets go of the field and all that is its; the memory is kept for the next Gather.
+func (v *Vicinity) Release() {
+	v.f, v.area = nil, geom.EmptyRect()
+	clear(v.pieces)
+	clear(v.areas)
+}
+
 // Holds says whether the segment ab lies in the area.
 func (v *Vicinity) Holds(a, b geom.Point) bool { return v.room(a, b) > 0 }
 

@@ -50,8 +50,13 @@ func (j *Judge) remember() *memory {
 
 // Release gives back what is remembered. The judge may still be asked, and then begins anew.
 func (j *Judge) Release() {
-	if j.mem != nil {
-		memories.Put(j.mem)
+	if m := j.mem; m != nil {
+		for i := range m.near {
+			m.near[i].Release()
+		}
+		m.focus.Release()
+		m.alone.Release()
+		memories.Put(m)
 		j.mem = nil
 	}
 }

@@ -40,7 +40,9 @@ func (s *Set) Mask(k Key) *Mask {
 	find := func() *Mask {
 		for _, m := range *s.list.Load() {
 			if m.key == k {
-				m.used.Store(s.clock.Add(1))
+				if m.used.Load() != s.clock.Load() { // else nothing is written that others read
+					m.used.Store(s.clock.Add(1))
+				}
 				return m
 			}
 		}
