@@ -25,10 +25,6 @@ var ErrTooLarge = errors.New("anyangle: the search came to its bound of nodes")
 // pollEvery is how many expansions pass between looks at the context.
 const pollEvery = 1024
 
-// maxSteps is how many cells a search goes on, where there is but one way on, before the node
-// waits in the queue: most cells are such, and four spare most of the queueing.
-const maxSteps = 4
-
 // tieUm is the difference of two path lengths that counts as none, in
 // micrometres: above the rounding of sums of a kilometre's length, and 1e-11 of
 // a metre.
@@ -71,6 +67,7 @@ const (
 	turnL = 1 << iota // a way may bend at l
 	turnR             // and at r
 	point             // the root lies on the cell itself
+	gone              // its stretch is a part of another node's now
 )
 
 // search is the scratch of one search.
@@ -87,12 +84,12 @@ type search struct {
 	nodes   []node
 	spare   []int32
 	queue   queue
-	table   table     // numbers places
-	best    []int32   // the best root at each place
-	visited table     // roots with cells that they lie on, queued before
-	within  []float64 // for a portal, all points of it are reached by ways as short
-	cells   []int32   // for a cell, its first portal in that list
-	base    []reached // for a block, its first cell in that list
+	table   table        // numbers places
+	best    []int32      // the best root at each place
+	visited table        // roots with cells that they lie on, queued before
+	notes   []portalNote // of each portal
+	cells   []int32      // for a cell, its first portal in that list
+	base    []reached    // for a block, its first cell in that list
 	stamp   uint32
 	out     []node
 	fs      []float64
@@ -168,7 +165,12 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 		}
 		n := s.nodes[i]
 		s.spare = append(s.spare, i)
-		steps := 0
+		if n.flags&gone != 0 {
+			continue
+		}
+		if n.flags&point == 0 && s.notes[n.portal].last == i {
+			s.notes[n.portal].last = none
+		}
 		for s.trim(&n, &f) && !s.undercut(&n) {
 			if f > s.most {
 				s.gaveUp = true
@@ -186,8 +188,7 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 				}
 			}
 			s.expand(&n)
-			// The best successor is looked into at once when it would be the next, or when it is
-			// the only one, for some steps.
+			// The best successor is looked into at once when it would be the next.
 			best := -1
 			for k := range s.out {
 				if best < 0 || s.fs[k] < s.fs[best] {
@@ -195,10 +196,7 @@ func (s *search) run(ctx context.Context, g *Mesh, start, goal geom.Point) (Way,
 				}
 			}
 			if best >= 0 && !(s.fs[best] < s.queue.least()) {
-				steps++
-				if len(s.out) > 1 || steps > maxSteps || s.fs[best] > s.most || s.isGoal(s.out[0].block, s.out[0].cell) {
-					best = -1
-				}
+				best = -1
 			}
 			for k := range s.out {
 				if k != best {
@@ -299,6 +297,9 @@ func (s *search) stale(r int32) bool {
 }
 
 func (s *search) push(n *node, f float64) {
+	if n.flags&point == 0 && s.join(n, f) {
+		return
+	}
 	s.queued++
 	var i int32
 	if k := len(s.spare); k > 0 {
@@ -308,6 +309,10 @@ func (s *search) push(n *node, f float64) {
 	} else {
 		i = int32(len(s.nodes))
 		s.nodes = append(s.nodes, *n)
+	}
+	if n.flags&point == 0 {
+		e := &s.notes[n.portal]
+		e.last, e.f = i, f
 	}
 	s.queue.push(f, s.roots[n.apex].g, i)
 }

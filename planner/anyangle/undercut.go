@@ -18,7 +18,7 @@ type reached struct {
 
 // resetPortals begins a search.
 func (s *search) resetPortals() {
-	s.within, s.cells = s.within[:0], s.cells[:0]
+	s.notes, s.cells = s.notes[:0], s.cells[:0]
 	s.base = slices.Grow(s.base[:0], len(s.g.blocks))[:len(s.g.blocks)]
 	if s.stamp++; s.stamp == 0 {
 		clear(s.base[:cap(s.base)])
@@ -38,9 +38,9 @@ func (s *search) portals(block, cell, count int32) int32 {
 	}
 	first := &s.cells[e.first+cell]
 	if *first == none {
-		*first = int32(len(s.within))
+		*first = int32(len(s.notes))
 		for range count {
-			s.within = append(s.within, math.Inf(1))
+			s.notes = append(s.notes, portalNote{within: math.Inf(1), last: none})
 		}
 	}
 	return *first
@@ -53,7 +53,7 @@ const undercutUm = 1e-3
 // undercut says whether every point of n's stretch is known to be reached by a shorter way than
 // over its fan: then it is on no shortest way.
 func (s *search) undercut(n *node) bool {
-	return n.flags&point == 0 && n.least > s.within[n.portal]+undercutUm
+	return n.flags&point == 0 && n.least > s.notes[n.portal].within+undercutUm
 }
 
 // measure bounds the ways over n's fan to its stretch, the part t0 to t1 of c's portal. Along a
@@ -82,7 +82,55 @@ func (c *look) measure(n *node, t0, t1 float64) {
 	if t1 < 1 {
 		dl += dist(c.bx, c.by, n.lx, n.ly)
 	}
-	if most := max(dr, dl); most < s.within[n.portal] {
-		s.within[n.portal] = most
+	if most := max(dr, dl); most < s.notes[n.portal].within {
+		s.notes[n.portal].within = most
 	}
+}
+
+// portalNote is what a search knows of a portal: all points of it are reached by ways as short as
+// within; the node put into the queue last with a stretch of it, if it is still there, and
+// its place in the queue.
+type portalNote struct {
+	within, f float64
+	last      int32
+}
+
+// join puts n's stretch and that of the portal's last node in the queue together where one root
+// sees the ends at which they meet, and says whether that node has taken n in; else n
+// may have taken in that node.
+func (s *search) join(n *node, f float64) bool {
+	e := &s.notes[n.portal]
+	if e.last == none {
+		return false
+	}
+	m := &s.nodes[e.last]
+	u := *m
+	switch eps := s.g.eps; {
+	case m.rootL == n.rootR && math.Abs(m.lx-n.rx) <= eps && math.Abs(m.ly-n.ry) <= eps:
+		u.lx, u.ly, u.rootL = n.lx, n.ly, n.rootL
+		u.flags = m.flags&turnR | n.flags&turnL
+		if m.apex == m.rootL {
+			u.apex = n.apex
+		} else if n.apex != n.rootR {
+			return false
+		}
+	case m.rootR == n.rootL && math.Abs(m.rx-n.lx) <= eps && math.Abs(m.ry-n.ly) <= eps:
+		u.rx, u.ry, u.rootR = n.rx, n.ry, n.rootR
+		u.flags = m.flags&turnL | n.flags&turnR
+		if m.apex == m.rootR {
+			u.apex = n.apex
+		} else if n.apex != n.rootL {
+			return false
+		}
+	default:
+		return false
+	}
+	u.least = min(m.least, n.least)
+	if f >= e.f {
+		*m = u
+		return true
+	}
+	m.flags |= gone
+	*n = u
+	return false
 }
