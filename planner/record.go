@@ -3,36 +3,49 @@ package planner
 import (
 	"math"
 	"slices"
+	"unsafe"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/clearance"
 )
 
 // record is a route as it was answered on a version, with what describing it found out
-// about each of its pieces. It never changes.
+// about each of its pieces: head, and then the rest of tail, which it may share with the
+// record of the route before. It never changes.
 type record struct {
-	m      *floor.Map
-	q      Request
-	pts    []geom.Point // where its pieces meet
+	m     *floor.Map
+	q     Request
+	head  stock
+	tail  stock
+	from  cut        // where tail's rest begins
+	goal  RoutePoint // S is not kept
+	near  clearance.Nearest
+	ahead reach // what goal and near, what is nearest to it, depend on
+}
+
+// stock are straight pieces in a row: strips, the parts of each, and the bits of those.
+type stock struct {
 	strips []strip
 	parts  []part
 	bits   []bit
-	goal   RoutePoint
-	ahead  reach // what goal depends on
 }
+
+// cut is a place between two strips of a stock.
+type cut struct{ strips, parts, bits int }
 
 // strip is a straight piece of the course, between two bends.
 type strip struct {
 	a, b  geom.Point
-	parts int  // the first of its parts
-	clear bool // the body may drive it, as a whole and bit by bit
+	near  clearance.Nearest // what is nearest to a
+	first cut               // where it begins in its stock
+	clear bool              // the body may drive it, as a whole and bit by bit
 	reach reach
 }
 
 // part is a strip, or where it is cut for a speed limit or for being tight.
 type part struct {
 	piece
-	strip  int  // that it is of
 	bits   int  // the first of its bits
 	marked bool // cut where clearance is smallest in a leg
 }
@@ -46,19 +59,63 @@ type bit struct {
 	roomed      bool // whether it is the narrowest of its leg: then these are known
 	left, right int64
 	sensed      bool // known not to be beyond the sensing range
-	fresh       bool // judged on the record's version
+	fresh       bool // judged on the version that its stock was made on
 }
 
-// mostRecorded is of how many pieces a route may be to be recorded, which takes about half
-// a kilobyte each.
+// mostRecorded is of how many pieces a route may be to be recorded.
 const mostRecorded = 1000
 
 // bytes is about how much memory the record takes.
-func (r *record) bytes() int64 {
-	if r == nil {
+func (k *record) bytes() int64 {
+	if k == nil {
 		return 0
 	}
-	return int64(64*len(r.pts) + 128*len(r.strips) + 144*len(r.parts) + 288*len(r.bits))
+	n := int64(unsafe.Sizeof(*k))
+	for _, s := range [2]*stock{&k.head, &k.tail} {
+		n += int64(cap(s.strips))*int64(unsafe.Sizeof(strip{})) + int64(cap(s.parts))*int64(unsafe.Sizeof(part{})) + int64(cap(s.bits))*int64(unsafe.Sizeof(bit{}))
+	}
+	return n
+}
+
+// strips and bits are how many there are, strip and bit one of them.
+func (k *record) strips() int { return len(k.head.strips) + len(k.tail.strips) - k.from.strips }
+func (k *record) bits() int   { return len(k.head.bits) + len(k.tail.bits) - k.from.bits }
+
+func (k *record) strip(i int) *strip {
+	if i < len(k.head.strips) {
+		return &k.head.strips[i]
+	}
+	return &k.tail.strips[i-len(k.head.strips)+k.from.strips]
+}
+
+func (k *record) bit(i int) *bit {
+	if i < len(k.head.bits) {
+		return &k.head.bits[i]
+	}
+	return &k.tail.bits[i-len(k.head.bits)+k.from.bits]
+}
+
+// stripOf is the strip that a bit is of.
+func (k *record) stripOf(i int) int {
+	if i < len(k.head.bits) {
+		return k.head.bits[i].strip
+	}
+	return k.bit(i).strip - k.from.strips + len(k.head.strips)
+}
+
+// end is where a strip of a stock ends, bitsOf where the bits of a part do.
+func (s *stock) end(i int) cut {
+	if i+1 < len(s.strips) {
+		return s.strips[i+1].first
+	}
+	return cut{len(s.strips), len(s.parts), len(s.bits)}
+}
+
+func (s *stock) bitsOf(p int) (from, to int) {
+	if p+1 < len(s.parts) {
+		return s.parts[p].bits, s.parts[p+1].bits
+	}
+	return s.parts[p].bits, len(s.bits)
 }
 
 // reach is a segment and the distance from it within which something must have changed for
@@ -153,68 +210,67 @@ func (n *notes) record() *record {
 	if len(o.pieces) > mostRecorded {
 		return nil
 	}
-	k := &record{
-		m: t.w.m, q: t.q,
-		pts:    make([]geom.Point, 0, len(o.pieces)+1),
-		strips: make([]strip, 0, len(n.c.pts)), parts: make([]part, len(n.base)), bits: make([]bit, 0, len(o.pieces)),
-	}
-	i := 0 // the base piece at hand
-	for j := 1; j < len(n.c.pts); j++ {
-		k.strips = append(k.strips, strip{a: n.c.pts[j-1], b: n.c.pts[j], parts: i})
-		for ; i < len(n.base) && n.base[i].b != n.c.pts[j]; i++ {
-			k.parts[i].strip = j - 1
-		}
-		if i < len(n.base) {
-			k.parts[i].strip = j - 1
-		}
-		i++
-	}
-	i = 0
+	k := &record{m: t.w.m, q: t.q}
+	s := &k.tail
+	s.strips, s.parts, s.bits = make([]strip, 0, len(n.c.pts)-1), make([]part, 0, len(n.base)), make([]bit, 0, len(o.pieces))
 	var all []RoutePoint
 	for l := range n.r.Legs {
 		all = append(all[:max(0, len(all)-1)], n.r.Legs[l].Points...)
 	}
-	for f := range o.pieces {
-		w := &o.pieces[f]
-		if w.a == w.b || i == len(n.base) {
+	k.goal = all[len(all)-1]
+	t.j.Rewind()
+	base, f := n.base, 0
+	for j := 1; j < len(n.c.pts); j++ {
+		a, b := n.c.pts[j-1], n.c.pts[j]
+		if a == b { // stands still
 			return nil
 		}
-		if w.a == n.base[i].a {
-			k.parts[i].piece, k.parts[i].bits = n.base[i], f
+		s.strips = append(s.strips, strip{a: a, b: b, near: t.j.Place(a), first: cut{j - 1, len(s.parts), len(s.bits)}})
+		for at := a; at != b; base = base[1:] {
+			if len(base) == 0 {
+				return nil
+			}
+			s.parts = append(s.parts, part{piece: base[0], bits: len(s.bits)})
+			for ; at != base[0].b; f++ {
+				if f == len(o.pieces) || o.pieces[f].a == o.pieces[f].b {
+					return nil
+				}
+				w := &o.pieces[f]
+				s.bits = append(s.bits, bit{
+					piece: *w, strip: j - 1, fresh: true, at: all[f],
+					long: geom.Dist(w.a, w.b), limit: t.w.rules.SpeedLimit(w.a, w.b), sensed: t.q.Body.SensingUm == 0,
+				})
+				at = w.b
+			}
 		}
-		strip := k.parts[i].strip
-		if w.b == n.base[i].b {
-			i++
-		}
-		k.pts = append(k.pts, w.a)
-		k.bits = append(k.bits, bit{
-			piece: *w, strip: strip, fresh: true, at: all[f], long: geom.Dist(w.a, w.b), limit: t.w.rules.SpeedLimit(w.a, w.b), sensed: t.q.Body.SensingUm == 0,
-		})
 	}
-	k.pts = append(k.pts, o.pieces[len(o.pieces)-1].b)
-	k.goal = all[len(all)-1]
 	was := outline{t: t, below: o.below, pieces: n.base}
 	starts := was.legs()
 	for l := 1; l < len(starts); l++ {
 		i, _ := was.narrowest(starts[l-1], starts[l])
-		k.parts[i].marked = true
+		s.parts[i].marked = true
 	}
 	starts = o.legs()
 	for l := 1; l < len(starts); l++ {
 		leg := &n.r.Legs[l-1]
 		i, _ := o.narrowest(starts[l-1], starts[l])
-		b := &k.bits[i]
-		b.roomed, b.left, b.right = true, leg.LeftUm, leg.RightUm
+		b := &s.bits[i]
+		// Where it is no more than the smallest clearance it may have been less.
+		b.roomed, b.left, b.right = min(leg.LeftUm, leg.RightUm) > leg.SmallestUm, leg.LeftUm, leg.RightUm
 		if !leg.BeyondSensing && t.q.Body.SensingUm <= t.w.field.Cap() {
 			for f := starts[l-1]; f < starts[l]; f++ {
-				k.bits[f].sensed = true
+				s.bits[f].sensed = true
 			}
 		}
 	}
-	for s := range k.strips {
-		t.aim(k, s)
+	for i := range s.strips {
+		next := k.goal.ClearanceUm
+		if end := s.end(i); end.bits < len(s.bits) {
+			next = s.bits[end.bits].at.ClearanceUm
+		}
+		t.aim(s, i, next)
 	}
-	k.ahead = t.aheadOf(k.goal)
+	k.near, k.ahead = t.j.Place(k.goal.At), t.aheadOf(k.goal)
 	return k
 }
 
@@ -226,48 +282,28 @@ func (t *task) aheadOf(goal RoutePoint) reach {
 	return t.about(goal.At, to, goal.ClearanceUm, min(goal.ClearanceUm+int64(most), t.w.field.Cap()), most, false)
 }
 
-// partsOf and bitsOf are the range of a strip's parts, and of a part's bits.
-func (k *record) partsOf(s int) (from, to int) {
-	if s+1 < len(k.strips) {
-		return k.strips[s].parts, k.strips[s+1].parts
-	}
-	return k.strips[s].parts, len(k.parts)
-}
-
-func (k *record) bitsOf(p int) (from, to int) {
-	if p+1 < len(k.parts) {
-		return k.parts[p].bits, k.parts[p+1].bits
-	}
-	return k.parts[p].bits, len(k.bits)
-}
-
-// aim finds out whether a strip may be driven and what its description depends on.
-func (t *task) aim(k *record, s int) {
-	w := &k.strips[s]
-	p0, p1 := k.partsOf(s)
-	b0, _ := k.bitsOf(p0)
-	_, b1 := k.bitsOf(p1 - 1)
+// aim finds out whether a strip may be driven and what its description depends on. next is the
+// clearance at its end.
+func (t *task) aim(s *stock, i int, next int64) {
+	w := &s.strips[i]
+	end := s.end(i)
 	zones := t.w.rules.HasClosed() || t.w.rules.HasOneWay()
 	w.clear = true
 	stretches := t.j.Weight > 0 || t.q.Body.SensingUm > 0
-	for p := p0; p < p1; p++ {
-		stretches = stretches || k.parts[p].tight(float64(t.q.Options.TightBelowUm))
+	for p := w.first.parts; p < end.parts; p++ {
+		stretches = stretches || s.parts[p].tight(float64(t.q.Options.TightBelowUm))
 	}
-	for b := b0; b < b1; b++ {
-		v := &k.bits[b]
+	for b := w.first.bits; b < end.bits; b++ {
+		v := &s.bits[b]
 		w.clear = w.clear && v.near.Um >= float64(t.j.NeedUm) && (!zones || t.j.Allowed(v.a, v.b))
 	}
-	if w.clear && b1-b0 > 1 {
+	if w.clear && end.bits-w.first.bits > 1 {
 		_, w.clear = t.j.Drive(w.a, w.b)
 	}
-	next := k.goal.ClearanceUm
-	if b1 < len(k.bits) {
-		next = k.bits[b1].at.ClearanceUm
-	}
-	last := &k.bits[b1-1]
+	last := &s.bits[end.bits-1]
 	far := geom.Dist(w.a, w.b)
 	if most := float64(t.w.stopping(t.q.Body, math.Inf(1))); last.long < most {
 		far += most - last.long
 	}
-	w.reach = t.about(w.a, w.b, k.bits[b0].at.ClearanceUm, next, far, stretches)
+	w.reach = t.about(w.a, w.b, s.bits[w.first.bits].at.ClearanceUm, next, far, stretches)
 }

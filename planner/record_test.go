@@ -10,6 +10,7 @@ import (
 	"github.com/google/go-cmp/cmp"
 	"pgregory.net/rapid"
 
+	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/planner"
 )
 
@@ -129,5 +130,82 @@ func TestLaw8SessionRecallsAmongClutter(t *testing.T) {
 	t.Logf("%d replans, %d kept, %d asked less of the floor", asked, kept, less)
 	if less < asked/4 {
 		t.Errorf("%d replans, %d asked less of the floor: want a quarter", asked, less)
+	}
+}
+
+// The same in halls and offices, where a route is long and most changes are far from it, for
+// robots that drive on between changes. WIDEBERTH_SLOW=1 tries ten times as many.
+func TestLaw8SessionRecallsInHalls(t *testing.T) {
+	const seed = 80
+	t.Logf("seed %d", seed)
+	routes := 40
+	if os.Getenv("WIDEBERTH_SLOW") != "" {
+		routes *= 10
+	}
+	for _, i := range []int{0, 1, 5} {
+		hall := benchFloors[i]
+		first, err := hall.make()
+		if err != nil {
+			t.Fatal(err)
+		}
+		rng := rand.New(rand.NewPCG(seed, uint64(i)))
+		whole := newWorld(t, first)
+		s := first.Settings()
+		asked, less := 0, 0
+		for range routes {
+			bd := body(hall.radius)
+			bd.PreferredUm, bd.SensingUm = 600_000, int64(rng.IntN(3))*4_000_000
+			spot := func() planner.Pose {
+				return planner.Pose{At: s.Vertex(10+rng.IntN(s.Columns-20), 10+rng.IntN(s.Rows-20))}
+			}
+			q := shortest(bd, spot(), spot())
+			q.Options.TightBelowUm, q.Options.MaxSpacingUm = int64(rng.IntN(3))*600_000, int64(rng.IntN(2))*700_000
+			if i != 1 && rng.IntN(3) == 0 { // Voronoi edges of a turned hall take long
+				q.Options.Preference, q.Options.TightWeight = planner.Balanced, 1
+			}
+			var session planner.Session
+			m, w := first, whole
+			a, err := w.PlanIn(context.Background(), &session, q)
+			if err != nil {
+				t.Fatal(err)
+			}
+			for range 6 {
+				if a.Route == nil {
+					break
+				}
+				old, from := m, along(a.Route, 0.3*rng.Float64())
+				x, y := rng.IntN(s.Columns), rng.IntN(s.Rows)
+				if rng.IntN(3) == 0 { // near the route
+					x, y, _ = s.CellAt(along(a.Route, rng.Float64()))
+					x, y = x+rng.IntN(80)-40, y+rng.IntN(80)-40
+				}
+				r := floor.CellRect{X0: x, Y0: y, X1: x + 1 + rng.IntN(20), Y1: y + 1 + rng.IntN(20)}.Intersect(s.AllCells())
+				if r.IsEmpty() {
+					continue
+				}
+				m = newMapFrom(t, m, []floor.Edit{{Kind: floor.PaintRect, Fill: floor.Occupancy(rng.IntN(2)), Rect: r}})
+				if w, err = w.Advance(context.Background(), m); err != nil {
+					t.Fatal(err)
+				}
+				ask := again(a.Route, old, q, from)
+				q = ask.Request
+				got, err := w.ReplanIn(context.Background(), &session, ask)
+				if err != nil {
+					t.Fatal(err)
+				}
+				want := replan(t, w, ask)
+				if d := differs(got, want); d != "" {
+					t.Fatalf("%s: %s", hall.name, d)
+				}
+				a = got.Answer
+				if asked++; got.Counters.ExactChecks < want.Counters.ExactChecks {
+					less++
+				}
+			}
+		}
+		t.Logf("%s: %d replans, %d asked less of the floor", hall.name, asked, less)
+		if less < asked/2 {
+			t.Errorf("%s: %d replans, %d asked less of the floor: want half", hall.name, asked, less)
+		}
 	}
 }

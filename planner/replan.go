@@ -36,9 +36,10 @@ func (w *World) ReplanIn(ctx context.Context, s *Session, q ReplanRequest) (Repl
 	t := w.taskOf(q.Request)
 	t.session, t.past = s, past
 	r, err := t.replan(ctx, &q)
-	if r.Answer, err = t.finish(ctx, r.Answer, err); err == nil {
+	if err == nil {
 		t.remember(r.Route)
 	}
+	r.Answer, err = t.finish(ctx, r.Answer, err)
 	r.Mended = t.mended && !r.Kept && r.Route != nil
 	if r.Refusal != nil {
 		r.Kept = false
@@ -208,6 +209,9 @@ func (t *task) trim(q *ReplanRequest) (pts []geom.Point, cause ReplanCause, cutS
 	}
 	if pose == goal {
 		return []geom.Point{pose, goal}, 0, 0
+	}
+	if n := t.past.place(len(q.Previous) - len(rest)); n != nil {
+		t.j.Tell(*n)
 	}
 	if _, ok := t.j.Drive(pose, rest[0]); ok {
 		return append([]geom.Point{pose}, rest...), 0, 0

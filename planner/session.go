@@ -40,10 +40,10 @@ func (w *World) PlanIn(ctx context.Context, s *Session, q Request) (Answer, erro
 	}
 	t.session = s
 	a, err := t.plan(ctx)
-	if a, err = t.finish(ctx, a, err); err == nil {
+	if err == nil {
 		t.remember(a.Route)
 	}
-	return a, err
+	return t.finish(ctx, a, err)
 }
 
 // grid searches the named grid for a path, the same one with a session and without.
