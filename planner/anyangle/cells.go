@@ -13,6 +13,7 @@ type row struct{ y, l, r int32 }
 type cell struct {
 	row0, rows int32 // in the block's rows; no rows: where in the block's fans
 	comp       int32 // connected component within the block
+	lo, hi     int32 // its heights, in a turned cut from left to right
 }
 
 // link says that the cells a, below, and b, above, share the points from l to r at height y.
@@ -105,7 +106,8 @@ func (c *cutter) finish() *cut {
 			u.merged = true
 			t = u
 		}
-		out.cells = append(out.cells, cell{row0: int32(first), rows: int32(len(out.rows) - first), comp: id})
+		out.cells = append(out.cells, cell{row0: int32(first), rows: int32(len(out.rows) - first), comp: id,
+			lo: out.rows[first].y, hi: out.rows[len(out.rows)-1].y})
 	}
 	for _, l := range c.links {
 		if l.a, l.b = cellOf[l.a], cellOf[l.b]; l.a != l.b {

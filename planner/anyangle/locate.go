@@ -36,9 +36,20 @@ func (g *Mesh) locate(out []at, p geom.Point, tolerance float64) []at {
 
 // holds says whether a cell holds (x, y), give or take tolerance along x and y.
 func (c *cut) holds(id int32, x, y, tolerance float64) bool {
+	v := y
+	if c.turned {
+		v = x
+	}
+	if k := &c.cells[id]; v < float64(k.lo)-tolerance || v > float64(k.hi)+tolerance {
+		return false
+	}
 	if t := c.triangleOf(id); t != nil {
-		lo, hi := t.bounds(false)
-		if x < float64(lo.x)-tolerance || x > float64(hi.x)+tolerance || y < float64(lo.y)-tolerance || y > float64(hi.y)+tolerance {
+		lo, hi := t.bounds(c.turned)
+		across := x
+		if c.turned {
+			across = y
+		}
+		if across < float64(lo.x)-tolerance || across > float64(hi.x)+tolerance {
 			return false
 		}
 		for i, a := range t {
@@ -54,9 +65,6 @@ func (c *cut) holds(id int32, x, y, tolerance float64) bool {
 		x, y = y, x
 	}
 	rows := c.rowsOf(id)
-	if y < float64(rows[0].y)-tolerance || y > float64(rows[len(rows)-1].y)+tolerance {
-		return false
-	}
 	k := 1
 	for k < len(rows)-1 && y > float64(rows[k].y) {
 		k++

@@ -361,8 +361,10 @@ func (out *cut) addFan(f *mitre, turned bool, v, l pt, over []side, beyond int32
 	at := f.at
 	for i := 1; i < n; i++ {
 		a, b := f.chain[i-1], f.chain[i]
-		out.cells = append(out.cells, cell{row0: int32(len(out.fan)), comp: int32(len(out.cells))})
-		out.fan = append(out.fan, triangle{{int32(at.x), int32(at.y)}, {int32(b.x), int32(b.y)}, {int32(a.x), int32(a.y)}})
+		t := triangle{{int32(at.x), int32(at.y)}, {int32(b.x), int32(b.y)}, {int32(a.x), int32(a.y)}}
+		lo, hi := t.bounds(turned)
+		out.cells = append(out.cells, cell{row0: int32(len(out.fan)), comp: int32(len(out.cells)), lo: int32(lo.y), hi: int32(hi.y)})
+		out.fan = append(out.fan, t)
 	}
 	put := func(a, b int32, p, q pt, turns uint8) {
 		out.joints = append(out.joints, joint{a, b, int32(p.x), int32(p.y), int32(q.x), int32(q.y), turns})

@@ -91,17 +91,17 @@ func (p *Probe) Aim(g *Mesh, r geom.Rect) {
 				x0, x1, y0, y1 = y0, y1, x0, x1
 			}
 			for c := range b.cells {
+				if k := &b.cells[c]; float64(k.lo) > y1 || float64(k.hi) < y0 {
+					continue
+				}
 				if t := b.triangleOf(int32(c)); t != nil {
 					lo, hi := t.bounds(b.turned)
-					if float64(lo.x) <= x1 && float64(hi.x) >= x0 && float64(lo.y) <= y1 && float64(hi.y) >= y0 {
+					if float64(lo.x) <= x1 && float64(hi.x) >= x0 {
 						p.cells = append(p.cells, at{int32(i), int32(c)})
 					}
 					continue
 				}
 				rows := b.rowsOf(int32(c))
-				if float64(rows[0].y) > y1 || float64(rows[len(rows)-1].y) < y0 {
-					continue
-				}
 				left, right := true, true // of r, with all of its rows
 				for _, w := range rows {
 					left, right = left && float64(w.r) < x0, right && float64(w.l) > x1
