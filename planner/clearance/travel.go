@@ -56,9 +56,22 @@ func (t *traveller) at(s float64) geom.Point {
 
 // trace moves lo on by what clearance is left there, for as long as there is some, and
 // gives a place beyond lo to ask about. It says no where the disc may not even stand.
+// Clearance is taken from the lattice's vertices as long as there is much.
 func (t *traveller) trace() (guess float64, ok bool) {
-	step := t.v.f.h
+	f := t.v.f
+	step := f.h
 	for range 16 {
+		for p := t.at(t.lo); f.bounds.Contains(p); p = t.at(t.lo) {
+			least, _ := f.bracket(p)
+			surplus := least - t.radius - roundSlack
+			if surplus < f.h {
+				break
+			}
+			if t.lo += surplus; t.lo >= t.hi {
+				t.lo = t.hi
+				return t.lo + step, true
+			}
+		}
 		um := t.v.At(t.at(t.lo)).Um
 		if t.lo == 0 && (um < t.radius || um <= 0) {
 			return 0, false
