@@ -121,7 +121,7 @@ func (c *cutter) cutMitred(w, h int64, pieces []piece, thin, turned bool) *cut {
 		} else {
 			out = c.cutRows(w, h, c.coarse, thin)
 		}
-		misfits := out.addFans(c.fans, turned)
+		misfits := out.addFans(c.fans)
 		if len(misfits) == 0 || c.ctx.Err() != nil {
 			out.numberComps()
 			return out

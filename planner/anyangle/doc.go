@@ -36,7 +36,7 @@
 // and sharing the others. Noise over millions of cells makes meshes too large to keep; see
 // MaxBytes.
 //
-// Read mesh.go first (size.go has its limit), then cut.go, slab.go and mitre.go for the cells, join.go for portals,
-// search.go, look.go and undercut.go for the search, bridge.go for the lean mesh, taut.go and corner.go
+// Read mesh.go first (size.go has its limit), then cut.go, slab.go, mitre.go and fan.go for the cells, join.go for portals,
+// search.go, look.go, round.go and undercut.go for the search, bridge.go for the lean mesh, taut.go and corner.go
 // for the bends.
 package anyangle
