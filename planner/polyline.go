@@ -59,16 +59,31 @@ func clearFor(j *judge.Judge, pts []geom.Point) (s float64, all bool) {
 			s += long
 			continue
 		}
-		// A piece that may not be driven stays so when it gets longer.
-		lo, hi := 0.0, 1.0
-		for float64((hi-lo)*long) > 1 {
-			if mid := (lo + hi) / 2; j.Sight(a, judge.Along(a, b, mid)) {
-				lo = mid
-			} else {
-				hi = mid
-			}
-		}
-		return s + float64(lo*long), false
+		return s + drivable(j, a, b, long), false
 	}
 	return s, true
+}
+
+// drivable is how far from a, to a micrometre, the body may drive towards b, which it may not
+// reach: a piece that may not be driven stays so when it gets longer. What was found to be
+// clear is not looked at again, nor a place for which the lattice tells that it is too near.
+func drivable(j *judge.Judge, a, b geom.Point, long float64) float64 {
+	point := j.NeedUm == 0 || j.RadiusUm == 0
+	lo, hi, at := 0.0, 1.0, a
+	for float64((hi-lo)*long) > 1 {
+		mid := (lo + hi) / 2
+		p := judge.Along(a, b, mid)
+		clear := false
+		if point || !j.Field.Bounds().Contains(p) {
+			clear = j.Sight(a, p)
+		} else if _, most := j.Field.Bracket(p); most >= float64(j.NeedUm) {
+			clear = j.Sight(at, p) && j.Allowed(a, p)
+		}
+		if clear {
+			lo, at = mid, p
+		} else {
+			hi = mid
+		}
+	}
+	return float64(lo * long)
 }
