@@ -20,9 +20,7 @@ type Vicinity struct {
 	pieces []nearPiece
 	areas  []*solid // polygons whose inside may come into the area
 
-	rim  []int32  // boxes that reach up to the row before, by column
-	next []int32  // the same for the row at hand
-	was  []uint64 // that row's words
+	rim []rimRun // of the column of blocks at hand
 }
 
 // cellBox is a rectangle of solid cells.
@@ -117,99 +115,105 @@ func (v *Vicinity) gatherCells() bool {
 	r0, r1 := f.cellAt(r.Min.Y-roundSlack-f.oy, 0, f.rows), f.cellAt(r.Max.Y+roundSlack-f.oy, 0, f.rows)
 	// A cell to the left touches the area where its side is on a lattice line.
 	c0, r0 = max(0, c0-1), max(0, r0-1)
-	b0, b1 := c0>>blockShift, c1>>blockShift
-	first, last := uint64(allBytes)<<(c0&blockMask), uint64(allBytes)>>(blockMask-c1&blockMask)
-	v.was, v.rim = grow(v.was, b1-b0+1), v.rim[:0]
-	clear(v.was)
-	for row := r0; row <= r1; row++ {
-		line, y := f.bits.rows[row>>blockShift], row&blockMask
-		same, any := true, uint64(0)
-		for bx := b0; bx <= b1; bx++ {
-			var word uint64
-			if b := line[bx]; b != nil {
-				word = b[y]
-			}
-			if bx == b0 {
-				word &= first
-			}
-			if bx == b1 {
-				word &= last
-			}
-			any |= word
-			if k := bx - b0; word != v.was[k] {
-				v.was[k], same = word, false
-			}
+	left := 0 // the first box of the block column before
+	for bx := c0 >> blockShift; bx <= c1>>blockShift; bx++ {
+		mask := uint64(allBytes)
+		if bx == c0>>blockShift {
+			mask &= allBytes << (c0 & blockMask)
 		}
-		switch {
-		case same:
-			for _, k := range v.rim {
-				v.boxes[k].r1 = row
-			}
-		case any == 0:
-			v.rim = v.rim[:0]
-		case !v.row(row, b0):
+		if bx == c1>>blockShift {
+			mask &= allBytes >> (blockMask - c1&blockMask)
+		}
+		first := len(v.boxes)
+		if !v.column(bx, r0, r1, mask) {
 			return false
 		}
+		v.join(left, first)
+		left = first
 	}
-	for i := range v.boxes {
-		b := &v.boxes[i]
-		b.Rect = geom.Rect{Min: f.point(b.c0, b.r0), Max: f.point(b.c1+1, b.r1+1)}
+	kept := v.boxes[:0]
+	for _, b := range v.boxes {
+		if b.c0 <= b.c1 {
+			b.Rect = geom.Rect{Min: f.point(b.c0, b.r0), Max: f.point(b.c1+1, b.r1+1)}
+			kept = append(kept, b)
+		}
+	}
+	v.boxes = kept
+	return true
+}
+
+// rimRun is a run of cells of a block's row, and the box that it is the last row of.
+type rimRun struct {
+	bits uint64
+	box  int
+}
+
+// column gathers the masked cells of rows r0 to r1 of a column of blocks. It says no when
+// they are too many.
+func (v *Vicinity) column(bx, r0, r1 int, mask uint64) bool {
+	v.rim = v.rim[:0]
+	was := uint64(0)
+	for row := r0; row <= r1; {
+		end := min(r1+1, row|blockMask+1)
+		blk := v.f.bits.rows[row>>blockShift][bx]
+		if blk == nil {
+			v.turn(0, bx, row)
+			was, row = 0, end
+			continue
+		}
+		for ; row < end; row++ {
+			word := blk[row&blockMask] & mask
+			if word == was {
+				continue
+			}
+			if !v.turn(word, bx, row) {
+				return false
+			}
+			was = word
+		}
+	}
+	return v.turn(0, bx, r1+1)
+}
+
+// turn begins a row other than the one before: runs that go on as they are stay, others end,
+// and new ones begin.
+func (v *Vicinity) turn(word uint64, bx, row int) bool {
+	fresh, rim := word, v.rim[:0]
+	for _, o := range v.rim {
+		if word&(o.bits|o.bits<<1|o.bits>>1) == o.bits {
+			fresh &^= o.bits
+			rim = append(rim, o)
+		} else {
+			v.boxes[o.box].r1 = row - 1
+		}
+	}
+	v.rim = rim
+	for fresh != 0 {
+		lo := bits.TrailingZeros64(fresh)
+		n := bits.TrailingZeros64(^(fresh >> lo))
+		run := uint64(allBytes) >> (blockSize - n) << lo
+		fresh &^= run
+		if len(v.boxes) == mostGathered {
+			return false
+		}
+		v.rim = append(v.rim, rimRun{run, len(v.boxes)})
+		v.boxes = append(v.boxes, cellBox{c0: bx<<blockShift + lo, c1: bx<<blockShift + lo + n - 1, r0: row})
 	}
 	return true
 }
 
-// row enters the runs of the row whose words are in was, from block column b0 on: into the
-// box below where that is as wide, else as boxes of their own.
-func (v *Vicinity) row(row, b0 int) bool {
-	v.next = v.next[:0]
-	k := 0
-	run := func(c0, c1 int) bool {
-		for k < len(v.rim) && v.boxes[v.rim[k]].c0 < c0 {
-			k++
-		}
-		if k < len(v.rim) && v.boxes[v.rim[k]].c0 == c0 && v.boxes[v.rim[k]].c1 == c1 {
-			v.boxes[v.rim[k]].r1 = row
-			v.next = append(v.next, v.rim[k])
-			return true
-		}
-		if len(v.boxes) == mostGathered {
-			return false
-		}
-		v.next = append(v.next, int32(len(v.boxes)))
-		v.boxes = append(v.boxes, cellBox{c0: c0, c1: c1, r0: row, r1: row})
-		return true
-	}
-	from := -1 // where a run that goes on into the next word began
-	for i, word := range v.was {
-		at := (b0 + i) << blockShift
-		if from >= 0 {
-			if word == allBytes {
-				continue
-			}
-			n := bits.TrailingZeros64(^word)
-			if !run(from, at+n-1) {
-				return false
-			}
-			word, from = word&^(1<<n-1), -1
-		}
-		for word != 0 {
-			lo := bits.TrailingZeros64(word)
-			n := bits.TrailingZeros64(^(word >> lo))
-			if lo+n >= blockSize {
-				from = at + lo
+// join makes one of a box up to first and one from there on where they meet in full.
+func (v *Vicinity) join(left, first int) {
+	for i := left; i < first; i++ {
+		for k := first; k < len(v.boxes); k++ {
+			b, o := &v.boxes[i], &v.boxes[k]
+			if b.c1+1 == o.c0 && b.r0 == o.r0 && b.r1 == o.r1 && b.c0 <= b.c1 {
+				o.c0 = b.c0
+				b.c0 = b.c1 + 1 // nothing is left of it
 				break
 			}
-			if !run(at+lo, at+lo+n-1) {
-				return false
-			}
-			word &^= (1<<n - 1) << lo
 		}
 	}
-	if from >= 0 && !run(from, (b0+len(v.was))<<blockShift-1) {
-		return false
-	}
-	v.rim, v.next = v.next, v.rim
-	return true
 }
 
 // At is Field.At.
