@@ -54,6 +54,22 @@
 // Before it is given, every route is gone over by package check, which shares
 // nothing with any of this. Should they disagree, the answer is a *CheckError.
 //
+// # What a replan does anew
+//
+// An old route is trimmed to the pose, judged, and kept without a search when a certificate says
+// that nothing is cheaper (keep.go); else it is compared with what a search finds. A Session
+// records the route it answered last, piece by piece, with the distance that all that was
+// found out about a piece depends on (record.go). What differs between two versions is
+// found once for all robots (since.go). Pieces that nothing changed near are taken from the
+// record (retell.go): they are as clear, as dear and described as they were, and were checked on
+// a version that is the same there. The others, and the new first piece, are judged, described
+// and checked. An answer in a session is the one without, to the last digit.
+//
+// Measured, for a body of 0.45 m half its way through a hall of 1024 by 1024 cells, after a
+// change of 1 m² (means of the best of 20; two processors with much else to do): a plan 30 µs,
+// a kept route that nothing changed near 7.4 µs, a third of it for judging and checking the new
+// first piece; straight to the goal, where all is new, 10 µs either way.
+//
 // # Which structure answers what
 //
 //	question                          structure                         cost
@@ -80,6 +96,7 @@
 //	                                                                    mesh, and about 0.1 µs an edge opened
 //	the gate of the widest way        a spanning tree of the roads      a few µs
 //	can a kept route be undercut      what changed, by ellipses         about 0.1 µs a run of cells or an edge
+//	what of a route still holds       a record, in a Session            about 10 ns a piece and a thing that changed
 //	is the route right                check.Index: cells and features   cells along the route
 //
 // One-way zones are no part of meshes, edges or regions: a goal they shut off is found out by
@@ -119,7 +136,8 @@
 // structures that shelf.go keeps (meshes.go, roads.go); keep.go knows when an old answer
 // stands; ends.go joins ends to cells, gate.go and bottleneck.go explain refusals, stopgap.go
 // answers in time, describe.go makes legs and points, replan.go keeps or replaces old routes,
-// session.go keeps a named grid's search for the next answer (package dstar),
+// session.go keeps what stands behind an answer for the next one: record.go the route, which
+// retell.go takes up, and package dstar a named grid's search;
 // advise.go guides, classic.go asks the classical roadmaps. Beneath: internal/judge decides exactly and says what a metre costs,
 // internal/touch knows points, internal/mask holds free cells, internal/roadmap searches,
 // internal/pull straightens, internal/rules knows the zones.

@@ -146,8 +146,8 @@ type retold struct {
 }
 
 // retell describes a course, as describe does, from what is known of its strips, and has
-// checked what is new of it: the rest was on a version that is the same near it. Nil when
-// nothing is known of it.
+// checked what is new of it: the rest was on a version that is the same near it. Nil when too
+// little is known of it.
 func (t *task) retell(ctx context.Context, c *course) (*Route, error) {
 	if t.past == nil || len(c.pts) > mostRecorded || slices.ContainsFunc(c.pts[1:], func(p geom.Point) bool { return p == c.pts[0] }) {
 		return nil, nil
@@ -277,8 +277,8 @@ func (t *task) toGoal(k *record) {
 	}
 }
 
-// splice makes the record of a course some pieces of which are known strips, nil when none
-// is or when it has too many points.
+// splice makes the record of a course many pieces of which are known strips, nil when there are
+// not enough or it has too many points.
 func (t *task) splice(c *course) *record {
 	p, below := t.past, float64(t.q.Options.TightBelowUm)
 	p.ask = 0
@@ -286,14 +286,16 @@ func (t *task) splice(c *course) *record {
 	d := &k.tail
 	from := make([]int, len(c.pts)-1) // the strip that a piece is, or -1
 	var src []source                  // of parts
-	any := false
+	known := 0
 	for i := range from {
-		if from[i] = p.find(c.pts[i], c.pts[i+1]); c.pts[i] == c.pts[i+1] {
+		if from[i] = p.find(c.pts[i], c.pts[i+1]); from[i] >= 0 {
+			known++
+		}
+		if c.pts[i] == c.pts[i+1] {
 			return nil
 		}
-		any = any || from[i] >= 0
 	}
-	if !any {
+	if 2*known < len(from) { // describing all is as fast
 		return nil
 	}
 	for i, s := range from {
@@ -475,7 +477,7 @@ func (t *task) beside(b *bit) *reach {
 	wide := float64(t.w.field.Cap())
 	x, y := float64(wide*math.Cos(b.at.Heading)), float64(wide*math.Sin(b.at.Heading))
 	on := b.near.On
-	um := (b.near.Um+float64(max(b.left, b.right)))/2 + reachSlack
+	um := (b.near.Um+float64(max(b.left, b.right)))/2 + 2*t.w.frame.Res + reachSlack
 	r := reachOf(geom.Point{X: on.X - y, Y: on.Y + x}, geom.Point{X: on.X + y, Y: on.Y - x}, um)
 	return &r
 }

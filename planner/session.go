@@ -20,8 +20,8 @@ type Session struct {
 	last   *record // nil: none
 }
 
-// Bytes is about how much memory the session holds: some 700 bytes for each point of the route,
-// and 32 KiB for each 64x64 cells that its search came into, more along the search's rim (see
+// Bytes is about how much memory the session holds: half a kilobyte for each point of the
+// route, and 32 KiB for each 64x64 cells that its search came into, more along the search's rim (see
 // package dstar). The version that the route was checked on is kept besides, which shares with
 // others what it has in common with them. 0 is a session that is worth nothing yet.
 func (s *Session) Bytes() int64 { return s.search.Bytes() + s.last.bytes() }

@@ -8,7 +8,7 @@ import (
 	"example.com/wideberth/planner"
 )
 
-// What the kept sessions may come to. A route takes some 700 bytes a point; on a named grid, its
+// What the kept sessions may come to. A route takes half a kilobyte a point; on a named grid, its
 // search across a busy hall of 1024x1024 cells about 9 MiB besides, one of 4096x4096 up to some
 // 130. The one used longest ago goes first; that costs time when its robot replans, and
 // changes no route.
