@@ -147,11 +147,12 @@ func legOut(l planner.Leg) *pb.Leg {
 	if l.Tight {
 		out.Kind = pb.LegKind_LEG_KIND_TIGHT
 	}
-	for i, p := range l.Points {
-		out.Points[i] = &pb.RoutePoint{
-			XM: geom.Metres(p.At.X), YM: geom.Metres(p.At.Y), HeadingRad: p.Heading, SM: geom.Metres(p.S),
-			ClearanceM: wire.Metres(p.ClearanceUm), SpeedCeilingMps: p.SpeedCeiling, SpeedCause: speedCauses.out(p.SpeedCause),
-		}
+	points := make([]pb.RoutePoint, len(l.Points)) // in one piece of memory
+	for i := range l.Points {
+		p, o := &l.Points[i], &points[i]
+		o.XM, o.YM, o.HeadingRad, o.SM = geom.Metres(p.At.X), geom.Metres(p.At.Y), p.Heading, geom.Metres(p.S)
+		o.ClearanceM, o.SpeedCeilingMps, o.SpeedCause = wire.Metres(p.ClearanceUm), p.SpeedCeiling, speedCauses.out(p.SpeedCause)
+		out.Points[i] = o
 	}
 	return out
 }
