@@ -30,5 +30,5 @@
 // raster.go has the distance transform, solid.go the index of vector solids, vector.go
 // their part in the values, build.go and advance.go put them together, cell.go and
 // node.go answer for cells and squares, query.go, segment.go and travel.go for places,
-// vicinity.go for many of them next to one another.
+// vicinity.go and gather.go for many of them next to one another.
 package clearance
