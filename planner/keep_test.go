@@ -211,6 +211,9 @@ func TestLaw7ReplannedRoomyCostsNoMore(t *testing.T) {
 			}
 			slack := 3.4e-4*fresh.Route.CostUm + 2*500*(1+q.Options.TightWeight)
 			more := got.Route.CostUm - fresh.Route.CostUm
+			if q.Options.Preference == planner.Clearest && w.RoomOf(q, points(got.Route)) > w.RoomOf(q, points(fresh.Route))+2 {
+				more = 0 // room comes first; whole micrometres may take two off it
+			}
 			if worst = max(worst, more/slack); more > slack || q.Options.Preference == planner.Clearest && got.Route.SmallestUm < fresh.Route.SmallestUm-2 {
 				t.Errorf("floor %d: costs %f, keeps %d, kept %v; a fresh plan %f and %d\n%v\n%v", k, got.Route.CostUm, got.Route.SmallestUm, got.Kept,
 					fresh.Route.CostUm, fresh.Route.SmallestUm, points(got.Route), points(fresh.Route))
