@@ -39,7 +39,7 @@ const onRouteUm = 1.5
 // by exact pieces that may cut a corner short.
 func (t *task) kept(ctx context.Context, q *ReplanRequest, pts []geom.Point) *course {
 	before, now := q.Old, t.w.m
-	if before.Settings() != now.Settings() || project(q.Previous, t.q.Start.At).off > onRouteUm {
+	if before.Settings() != now.Settings() || t.offUm > onRouteUm {
 		return nil
 	}
 	if q.OldBound == RoadmapOptimum && t.q.Options.roomy() {

@@ -43,6 +43,7 @@ type task struct {
 
 	session *Session // nil without
 	mended  bool     // whether a path was found by repairing the session's search
+	offUm   float64  // how far a replan's pose is from the old route
 	past    *past    // what the session knows of the old route; nil for nothing
 	notes   *notes   // of the route described last, for the session
 	retold  *retold  // the route made of past last

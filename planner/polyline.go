@@ -21,8 +21,11 @@ func project(pts []geom.Point, p geom.Point) spot {
 	s := 0.0
 	for i := 1; i < len(pts); i++ {
 		a, b := pts[i-1], pts[i]
-		if d, on := geom.SegmentDist(p, a, b); d < best.off {
-			best = spot{i - 1, on, s + geom.Dist(a, on), d}
+		apart := max(min(a.X, b.X)-p.X, p.X-max(a.X, b.X), min(a.Y, b.Y)-p.Y, p.Y-max(a.Y, b.Y))
+		if apart <= float64(best.off*(1+keepSlack)) {
+			if d, on := geom.SegmentDist(p, a, b); d < best.off {
+				best = spot{i - 1, on, s + geom.Dist(a, on), d}
+			}
 		}
 		s += geom.Dist(a, b)
 	}

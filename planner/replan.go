@@ -129,7 +129,7 @@ func (t *task) replan(ctx context.Context, q *ReplanRequest) (ReplanAnswer, erro
 		}
 	}
 	r.Answer = fresh
-	if r.Cause = Cheaper; project(q.Previous, t.q.Start.At).off > t.w.frame.Res {
+	if r.Cause = Cheaper; t.offUm > t.w.frame.Res {
 		r.Cause = OffRoute
 	}
 	return r, nil
@@ -199,6 +199,7 @@ func (t *task) costOf(pts []geom.Point) float64 {
 func (t *task) trim(q *ReplanRequest) (pts []geom.Point, cause ReplanCause, cutS float64) {
 	pose, goal := t.q.Start.At, t.q.Goal.At
 	on := project(q.Previous, pose)
+	t.offUm = on.off
 	rest := slices.Clone(q.Previous[on.piece+1:])
 	rest[len(rest)-1] = goal
 	for len(rest) > 1 && rest[0] == pose {
