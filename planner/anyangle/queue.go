@@ -81,11 +81,14 @@ func (q *queue) pop() (node int32, f float64, ok bool) {
 }
 
 // table numbers pairs of numbers in the order in which they come. Entries of earlier
-// searches are told by their stamp.
+// searches are told by their stamp. A search begins with a small part of the memory, which stays in
+// the processor's caches, whatever came before it.
 type table struct {
 	entries []entry
+	spare   []entry // those to be put in again while it grows
 	count   int32
 	stamp   uint32
+	mask    uint64 // places in use, less one
 }
 
 type entry struct {
@@ -99,6 +102,12 @@ const firstTable = 1 << 10
 
 func (t *table) reset() {
 	t.count = 0
+	t.renew()
+	t.mask = firstTable - 1
+}
+
+// renew forgets all entries.
+func (t *table) renew() {
 	t.stamp++
 	if t.entries == nil || t.stamp == 0 {
 		t.entries = make([]entry, max(firstTable, len(t.entries)))
@@ -114,15 +123,14 @@ func (t *table) find(x, y float64) (index int32, found bool) {
 	}
 	*e = entry{x, y, t.count, t.stamp}
 	t.count++
-	if int(t.count) > len(t.entries)/2 {
+	if uint64(t.count) > t.mask/2 {
 		t.grow()
 	}
 	return t.count - 1, false
 }
 
 func (t *table) slot(x, y float64) *entry {
-	mask := uint64(len(t.entries) - 1)
-	for i := hash(x, y) & mask; ; i = (i + 1) & mask {
+	for i := hash(x, y) & t.mask; ; i = (i + 1) & t.mask {
 		if e := &t.entries[i]; e.stamp != t.stamp || e.x == x && e.y == y {
 			return e
 		}
@@ -130,12 +138,20 @@ func (t *table) slot(x, y float64) *entry {
 }
 
 func (t *table) grow() {
-	old := t.entries
-	t.entries = make([]entry, 2*len(old))
-	for i := range old {
-		if e := &old[i]; e.stamp == t.stamp {
-			*t.slot(e.x, e.y) = *e
+	t.spare = t.spare[:0]
+	for i := range t.entries[:t.mask+1] {
+		if e := &t.entries[i]; e.stamp == t.stamp {
+			t.spare = append(t.spare, *e)
 		}
+	}
+	t.mask = 2*t.mask + 1
+	if uint64(len(t.entries)) <= t.mask {
+		t.entries = make([]entry, t.mask+1)
+	}
+	t.renew()
+	for _, e := range t.spare {
+		e.stamp = t.stamp
+		*t.slot(e.x, e.y) = e
 	}
 }
 

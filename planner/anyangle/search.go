@@ -4,9 +4,9 @@ import (
 	"context"
 	"errors"
 	"math"
-	"sync"
 
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/spare"
 )
 
 // MaxNodes bounds the nodes, and the bends, that a search may keep at once. A node
@@ -99,7 +99,11 @@ type search struct {
 	gaveUp           bool    // because there is none shorter
 }
 
-var pool = sync.Pool{New: func() any { return new(search) }}
+var scratch spare.Shelf[search]
+
+// mostKept is how many nodes or bends a search may have had for its memory to be kept for the next
+// one: some 30 MB of it.
+const mostKept = 1 << 17
 
 // Shortest finds a shortest way from start to goal. ok is false when there is none:
 // an end is not in the mesh, or the two are not connected, which is found without

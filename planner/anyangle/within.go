@@ -12,11 +12,13 @@ func (g *Mesh) ShortestWithin(ctx context.Context, start, goal geom.Point, mostU
 	if err := ctx.Err(); err != nil {
 		return Way{}, false, err
 	}
-	s := pool.Get().(*search)
+	s := scratch.Get()
 	s.most = mostUm + tieUm
 	defer func() {
 		s.g = nil // an idle search keeps no version alive
-		pool.Put(s)
+		if max(cap(s.nodes), cap(s.roots)) <= mostKept {
+			scratch.Put(s)
+		}
 	}()
 	// A goal behind a notch of the lean mesh needs the full one, and so does a way
 	// that the lean one does not have.

@@ -99,7 +99,7 @@ func (x *Index) Way(pts []geom.Point, needUm, radiusUm int64) Finding {
 		pts = append(pts, pts[0])
 	}
 	w := x.walker(pts)
-	w.near = lists.Get().(*about)
+	w.near = lists.Get()
 	defer w.near.release()
 	f := Finding{SmallestUm: w.cap}
 	for i := 1; i < len(pts); i++ {

@@ -3,10 +3,10 @@ package check
 import (
 	"math"
 	"math/bits"
-	"sync"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/spare"
 )
 
 // Pieces of a route that lie close together are checked against one list of what is about
@@ -30,7 +30,7 @@ type about struct {
 	solids []*outline
 }
 
-var lists = sync.Pool{New: func() any { return new(about) }}
+var lists spare.Shelf[about]
 
 // release gives the list's memory back, without what belongs to a version.
 func (l *about) release() {

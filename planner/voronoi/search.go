@@ -3,9 +3,9 @@ package voronoi
 import (
 	"context"
 	"math"
-	"sync"
 
 	"example.com/wideberth/mapstore/geom"
+	"example.com/wideberth/planner/internal/spare"
 )
 
 // seeker is one search. A node is in one of two states: come to along a road, or in
@@ -35,7 +35,10 @@ type seeker struct {
 	q     queue
 }
 
-var seekers = sync.Pool{New: func() any { return new(seeker) }}
+var seekers spare.Shelf[seeker]
+
+// mostKept is of how many states a search's memory is kept for the next one: some 20 MB of it.
+const mostKept = 1 << 19
 
 // search finds the cheapest way at clearance r. Its estimates are those of the roads
 // that have clearance netAt, at most r.
@@ -45,7 +48,7 @@ func (w *Roads) search(ctx context.Context, s, t geom.Point, r, ends, netAt, wei
 	if !ok1 || !ok2 || from.um < ends-tieUm || to.um < ends-tieUm {
 		return Path{}, false, ctx.Err()
 	}
-	k := seekers.Get().(*seeker)
+	k := seekers.Get()
 	defer k.drop()
 	k.Roads, k.net, k.ctx, k.r, k.endUm, k.weight = w, w.netOf(netAt), ctx, r, ends, weight
 	k.from, k.to, k.goalPiece, k.least = from, to, -1, inf
@@ -70,7 +73,9 @@ func (k *seeker) clear(states int) {
 func (k *seeker) drop() {
 	clear(k.ways)
 	*k = seeker{best: k.best, known: k.known, count: k.count, ways: k.ways[:0], q: k.q}
-	seekers.Put(k)
+	if len(k.best) <= mostKept {
+		seekers.Put(k)
+	}
 }
 
 // state is the number of a node's state.

@@ -2,10 +2,10 @@ package judge
 
 import (
 	"math"
-	"sync"
 
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/clearance"
+	"example.com/wideberth/planner/internal/spare"
 )
 
 // Points of a way that lie close together, such as the chords of a turn about a corner, are
@@ -36,11 +36,11 @@ type memory struct {
 	surveyed bool
 }
 
-var memories = sync.Pool{New: func() any { return new(memory) }}
+var memories spare.Shelf[memory]
 
 func (j *Judge) remember() *memory {
 	if j.mem == nil {
-		j.mem = memories.Get().(*memory)
+		j.mem = memories.Get()
 		j.mem.alone.Gather(j.Field, geom.EmptyRect())
 		j.mem.focus.Gather(j.Field, geom.EmptyRect())
 		j.mem.forget(0)
@@ -66,6 +66,9 @@ func (j *Judge) Release() {
 func (j *Judge) Survey(pts []geom.Point, ahead float64) {
 	m := j.remember()
 	m.runs, m.askNear, m.surveyed = 0, 0, true
+	if j.NeedUm == 0 {
+		return // what touches a point is asked of the field anyway
+	}
 	for i := 0; i+1 < len(pts) && m.runs < mostRuns; {
 		if m.runs == len(m.near) {
 			m.near = append(m.near, clearance.Vicinity{})

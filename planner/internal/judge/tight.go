@@ -28,7 +28,7 @@ func (j *Judge) Tight(a, b geom.Point, um float64) []geom.Span {
 		}
 		return nil
 	}
-	t := tightener{j: j, a: a, b: b, um: um, parts: 1, long: geom.Dist(a, b)}
+	t := tightener{j: j, a: a, b: b, um: um, parts: 1, long: geom.Dist(a, b), out: make([]geom.Span, 0, 4)}
 	for t.long/t.parts > TightResolution {
 		t.parts *= 2
 	}
