@@ -51,13 +51,14 @@ type outline struct {
 }
 
 func (t *task) outline(pts []geom.Point) *outline {
-	o := &outline{t: t, below: float64(t.q.Options.TightBelowUm), pieces: make([]piece, 0, len(pts)+2)}
+	o := &outline{t: t, below: float64(t.q.Options.TightBelowUm), pieces: make([]piece, 0, 2*len(pts)+16)}
 	t.j.Rewind()
+	var room [16]float64
 	for i := 1; i < len(pts); i++ {
 		a, b := pts[i-1], pts[i]
 		w := piece{a: a, b: b, near: t.j.Segment(a, b)}
 		o.pieces = append(o.pieces, w)
-		cuts := t.w.rules.SpeedCuts(nil, a, b)
+		cuts := t.w.rules.SpeedCuts(room[:0], a, b)
 		if w.tight(o.below) {
 			t.j.Focus(a, b, o.below)
 			for _, s := range t.j.Tight(a, b, o.below-roundingUm) {
@@ -88,8 +89,10 @@ func (o *outline) cut(i int, at geom.Point) bool {
 	was := w.tight(o.below)
 	// Where it is clear that both sides will be tight, the first rounding will do.
 	both := was && o.t.j.At(at).Um < o.below-roundingReach
-	var spare *[2]piece
-	var put []geom.Point // tight themselves, and so no side of theirs is open
+	var spare [2]piece // to fall back on
+	found := false
+	var buf [9]geom.Point
+	put := buf[:0] // tight themselves, and so no side of theirs is open
 	try := func(p geom.Point) (two [2]piece, ok bool) {
 		two = [2]piece{{a: w.a, b: p}, {a: p, b: w.b}}
 		for k := range two {
@@ -114,20 +117,18 @@ func (o *outline) cut(i int, at geom.Point) bool {
 		}
 		if was && is0 && is1 && p != at && !both {
 			// One side was to be open, perhaps, and rounding made it tight.
-			if spare == nil {
-				spare = &two
+			if !found {
+				spare, found = two, true
 			}
 			continue
 		}
 		o.pieces = slices.Replace(o.pieces, i, i+1, two[0], two[1])
 		return true
 	}
-	for k := 0; spare == nil && k < len(put); k++ {
-		if two, ok := try(put[k]); ok {
-			spare = &two
-		}
+	for k := 0; !found && k < len(put); k++ {
+		spare, found = try(put[k])
 	}
-	if spare == nil {
+	if !found {
 		return false
 	}
 	o.pieces = slices.Replace(o.pieces, i, i+1, spare[0], spare[1])

@@ -18,7 +18,12 @@ func (t *task) beyondSensing(a, b geom.Point) bool {
 	reach := float64(t.q.Body.SensingUm)
 	limit := min(reach, float64(t.w.field.Cap()))
 	long := geom.Dist(a, b)
-	if t.j.Place(a).Um+long < limit {
+	was, is := t.j.Place(a).Um, t.j.Place(b).Um
+	most := was + long
+	if was < limit && is < limit { // exact, and no more than half way between is farther
+		most = (was + is + long) / 2
+	}
+	if most < limit || most < reach && max(was, is) < limit {
 		return false
 	}
 	from := 0.0
