@@ -18,12 +18,8 @@ func (t *task) beyondSensing(a, b geom.Point) bool {
 	reach := float64(t.q.Body.SensingUm)
 	limit := min(reach, float64(t.w.field.Cap()))
 	long := geom.Dist(a, b)
-	was, is := t.j.Place(a).Um, t.j.Place(b).Um
-	most := was + long
-	if was < limit && is < limit { // exact, and no more than half way between is farther
-		most = (was + is + long) / 2
-	}
-	if most < limit || most < reach && max(was, is) < limit {
+	was := t.j.Place(a).Um
+	if was+long < limit || t.allNear(a, b, was, t.j.Place(b).Um, reach) {
 		return false
 	}
 	from := 0.0
@@ -36,6 +32,27 @@ func (t *task) beyondSensing(a, b geom.Point) bool {
 		from = s.To
 	}
 	return false
+}
+
+// leastHalved is, in micrometres, how long a piece must be for allNear to look at its middle.
+const leastHalved = 2 * geom.UmPerMetre
+
+// allNear says whether a solid is sure to be within reach of every place along ab, of clearance
+// ua and ub at its ends: clearance changes no faster than one goes, and is exact below the cap.
+func (t *task) allNear(a, b geom.Point, ua, ub, reach float64) bool {
+	long := geom.Dist(a, b)
+	if most := float64(t.w.field.Cap()); max(ua, ub) >= most {
+		return false
+	}
+	if (ua+ub+long)/2 < reach {
+		return true
+	}
+	if long < leastHalved {
+		return false
+	}
+	m := judge.Along(a, b, 0.5)
+	um := t.j.At(m).Um
+	return t.allNear(a, m, ua, um, reach) && t.allNear(m, b, um, ub, reach)
 }
 
 // nothingNear says whether somewhere along ab no solid is within reach.
