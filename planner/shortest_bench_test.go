@@ -247,18 +247,26 @@ func BenchmarkShortestVsGonum(b *testing.B) {
 	}
 }
 
-// BenchmarkReplanVsPlan takes routes half driven and changes of 1 m² somewhere in the hall, and
+// BenchmarkReplanVsPlan takes routes half driven and changes of 1 m² somewhere on the floor, and
 // reports the time of a fresh plan over that of a replan that kept the route without a
 // search, and over that of one that searched (plan/kept, plan/searched), each in the
 // session that its route was planned in; then reportMending's.
 func BenchmarkReplanVsPlan(b *testing.B) {
-	p := prepare(b, benchFloors[0])
+	for _, f := range benchFloors {
+		if f.name == "hall1024" || f.name == "hall4096" || f.name == "office1024" {
+			b.Run(f.name, func(b *testing.B) { replanVsPlan(b, prepare(b, f), f.name == "hall1024") })
+		}
+	}
+}
+
+func replanVsPlan(b *testing.B, p *prepared, mending bool) {
 	ctx := context.Background()
+	s := p.m.Settings()
 	rng := rand.New(rand.NewPCG(21, 21))
 	var kept, searched, planKept, planSearched time.Duration
 	nKept, nSearched := 0, 0
 	for b.Loop() {
-		x, y := rng.IntN(1000), rng.IntN(1000)
+		x, y := rng.IntN(s.Columns-20), rng.IntN(s.Rows-20)
 		after := newMapFrom(b, p.m, []floor.Edit{{Kind: floor.PaintRect, Fill: floor.Occupancy(rng.IntN(2)),
 			Rect: floor.CellRect{X0: x, Y0: y, X1: x + 20, Y1: y + 20}}})
 		v, err := p.w.Advance(ctx, after)
@@ -303,7 +311,11 @@ func BenchmarkReplanVsPlan(b *testing.B) {
 	b.ReportMetric(float64(planKept)/float64(max(1, kept)), "plan/kept")
 	b.ReportMetric(float64(planSearched)/float64(max(1, searched)), "plan/searched")
 	b.ReportMetric(float64(nKept)/float64(nKept+nSearched), "kept-share")
-	reportMending(b, p)
+	b.ReportMetric(float64(planKept.Microseconds())/float64(max(1, nKept)), "plan_us")
+	b.ReportMetric(float64(kept.Microseconds())/float64(max(1, nKept)), "kept_us")
+	if mending {
+		reportMending(b, p)
+	}
 }
 
 // BenchmarkParallelPlans reports the time of the same plans one after the other over that on
