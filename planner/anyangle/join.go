@@ -277,7 +277,7 @@ func (j *joiner) seam(b *block, c, n *cut, side int) {
 		for k := start; k < len(theirs) && theirs[k].lo <= o.hi; k++ {
 			t := theirs[k]
 			lo, hi := max(o.lo, t.lo), min(o.hi, t.hi)
-			if lo > hi || lo == hi && (!j.thin || j.goRound(c, n, own, theirs, o, t, lo, side)) {
+			if lo > hi || lo == hi && (!j.thin || c.tip(o) || n.tip(t) || j.goRound(c, n, own, theirs, o, t, lo, side)) {
 				continue
 			}
 			p := sidePortal(c, side, lo, hi)
@@ -313,6 +313,10 @@ func sidePortal(c *cut, side int, lo, hi int32) portal {
 	}
 	return portal{ax: lo, ay: 0, bx: hi, by: 0}
 }
+
+// tip says whether a contact is the single corner of a fan's triangle: those of its fan next to it
+// lead round it.
+func (c *cut) tip(k contact) bool { return k.lo == k.hi && c.triangleOf(k.cell) != nil }
 
 // goRound says whether cells o and t, which share but one point of a side, are
 // joined about that point through others anyway.
