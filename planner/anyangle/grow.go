@@ -126,7 +126,7 @@ func sideTangent(d fpt) tangent {
 // segment, or a polygon counter-clockwise without repeated points.
 func growConvex(core []fpt, r float64) piece {
 	var out []pt
-	var arcs [][2]int
+	var arcs []arc
 	n := len(core)
 	for i, v := range core {
 		var in, to tangent
@@ -154,25 +154,32 @@ func growConvex(core []fpt, r float64) piece {
 	chains := slices.Clone(out)
 	p := newPiece(hull(out))
 	for _, a := range arcs {
-		chain := chains[a[0]:a[1]]
+		chain := chains[a.from:a.to]
 		first, last := chain[0], chain[len(chain)-1]
-		at := pt{first.x, last.y}
-		if first.x != p.lo.x && first.x != p.hi.x { // it lies on a level side
-			at = pt{last.x, first.y}
+		at := pt{last.x, first.y}
+		if a.upright {
+			at = pt{first.x, last.y}
 		}
 		p.addMitre(at, chain)
 	}
 	return p
 }
 
+// arc is where the corners of a quarter arc between two axes begin and end, and whether the
+// first lies on an upright side.
+type arc struct {
+	from, to int
+	upright  bool
+}
+
 // appendArc adds the corners of the chords outside the arc about v from tangent in
-// to tangent to, which is split at the axes so that extents stay exact, and to arcs where the
-// quarter arcs between two axes begin and end.
-func appendArc(out []pt, arcs [][2]int, v fpt, r float64, in, to tangent) ([]pt, [][2]int) {
+// to tangent to, which is split at the axes so that extents stay exact, and to arcs the
+// quarter arcs between two axes.
+func appendArc(out []pt, arcs []arc, v fpt, r float64, in, to tangent) ([]pt, []arc) {
 	part := func(in, to tangent) {
 		from := len(out)
 		if out = appendSubArc(out, v, r, in, to); in.exact && to.exact && math.Abs(to.angle-in.angle-math.Pi/2) < minExactTurn {
-			arcs = append(arcs, [2]int{from, len(out)})
+			arcs = append(arcs, arc{from, len(out), in.n.x != 0})
 		}
 	}
 	for q := int(math.Floor(in.angle/(math.Pi/2))) + 1; ; q++ {

@@ -23,7 +23,8 @@ type fan struct {
 // aloneUm is how far other obstacles must be from a fan: sides may be off by snapUm.
 const aloneUm = 4 * snapUm
 
-// addMitre keeps the quarter arc of corners chain if the piece has them all in a row.
+// addMitre keeps the quarter arc of corners chain if the piece has them all in a row, between two
+// sides along the axes: beside a side that is almost one the corner on it is put a little off it.
 func (p *piece) addMitre(at pt, chain []pt) {
 	if len(chain) < 2 {
 		return
@@ -37,6 +38,12 @@ func (p *piece) addMitre(at pt, chain []pt) {
 		if p.v[(i+k)%n] != q {
 			return
 		}
+	}
+	along := func(a, b pt) bool {
+		return a.x == at.x && b.x == at.x && a.y != at.y || a.y == at.y && b.y == at.y && a.x != at.x
+	}
+	if !along(p.v[(i+n-1)%n], chain[0]) || !along(p.v[(i+len(chain))%n], chain[len(chain)-1]) {
+		return
 	}
 	p.mitres = append(p.mitres, mitre{at, slices.Clone(chain)})
 }

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"example.com/wideberth/mapstore/floor"
@@ -72,6 +73,35 @@ func TestMitredCutsCoverWhatPlainOnesDo(t *testing.T) {
 	t.Logf("%d triangles, %d of them on a border", triangles, onBorder)
 	if triangles < 20*cases || onBorder < cases/2 {
 		t.Errorf("%d triangles, %d of them on a border", triangles, onBorder)
+	}
+}
+
+// TestSidesNearlyAlongAnAxisKeepTheClearance has a solid with a side along an axis next to one
+// that is half a hundredth of a radian off it, across a block's border, all ways round.
+func TestSidesNearlyAlongAnAxisKeepTheClearance(t *testing.T) {
+	ring := points(-500_000, -1_400_000, 495_000, -1_400_000, 500_000, -400_000, 500_000, 1_100_000, -500_000, 1_100_000)
+	for k := range 8 {
+		v := slices.Clone(ring)
+		for i, p := range v {
+			if k&1 != 0 {
+				p.X = -p.X
+			}
+			if k&2 != 0 {
+				p.Y = -p.Y
+			}
+			if k&4 != 0 {
+				p.X, p.Y = p.Y, p.X
+			}
+			v[i] = geom.Point{X: p.X + blockCells*benchCell, Y: p.Y + blockCells*benchCell}
+		}
+		f := solids(t, 2*blockCells, 2*blockCells, nil, floor.NewPolygon([][]geom.Point{v}, 0))
+		g, cores := build(t, f, 450_000), coresOf(f)
+		for p := range g.corners {
+			// 1e-6 µm: rounding of a distance.
+			if d := trueClearance(f, cores, p); d < 450_000-1e-6 {
+				t.Fatalf("way round %d: %v of the mesh has clearance %v, wanted 450000 µm", k, p, d)
+			}
+		}
 	}
 }
 
