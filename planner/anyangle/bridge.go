@@ -58,13 +58,18 @@ func (s *steps) riser(x, y0, y1 int64, freeLeft bool) {
 
 // gaps are the notches over gaps between two corners, on one line along an axis and facing each
 // other, that are too narrow to go through: whatever lies between, the notch is shut off by the
-// line along what the two stand off.
-func (z *rasterizer) gaps(out []filling, free func(a, b pt) bool) []filling {
+// line along what the two stand off. A gap that does not begin and end in the block of w x h is
+// not looked for.
+func (z *rasterizer) gaps(out []filling, w, h int64, free func(a, b pt) bool) []filling {
 	try := func(from cornerKey, level bool) {
-		if _, ok := z.steps.corners[from]; !ok {
+		begin, end := from.x, w
+		if !level {
+			begin, end = from.y, h
+		}
+		if _, ok := z.steps.corners[from]; !ok || begin < 0 {
 			return
 		}
-		for d := z.h; d < 2*z.r-aloneUm; d += z.h {
+		for d := z.h; d < 2*z.r-aloneUm && begin+d <= end; d += z.h {
 			to := cornerKey{from.x + d, from.y, -1, from.sy}
 			a, b := pt{from.x, from.y + from.sy*z.r}, pt{from.x + d, from.y + from.sy*z.r}
 			over := rectPiece(a.x, min(a.y, from.y), b.x, max(a.y, from.y))
@@ -111,7 +116,7 @@ func (z *rasterizer) fills(pieces []piece, w, h int64) []filling {
 		}
 		return true
 	}
-	out := z.gaps(nil, free)
+	out := z.gaps(nil, w, h, free)
 	for _, t := range z.steps.treads {
 		sy := int64(1)
 		if !t.freeAbove {

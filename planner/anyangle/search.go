@@ -10,9 +10,10 @@ import (
 )
 
 // MaxNodes bounds the nodes, and the bends, that a search may keep at once. A node
-// takes 104 bytes with its place in the queue, a bend 72 with its place in the
-// table, so a search takes at most about 700 MB; it is cut short only in clutter
-// over more than a hundred million cells.
+// takes 104 bytes with its place in the queue, a bend about 90 with its place in the
+// table, so the two take at most about 800 MB. What is noted of the portals of cells that were
+// looked into comes to that, as much as those take in the mesh (see MaxBytes). A search is cut
+// short only in clutter over more than a hundred million cells.
 const MaxNodes = 4_000_000
 
 // maxExpanded bounds the nodes that a search may look at, some ten times as many as it may
@@ -100,10 +101,6 @@ type search struct {
 }
 
 var scratch spare.Shelf[search]
-
-// mostKept is how many nodes or bends a search may have had for its memory to be kept for the next
-// one: some 30 MB of it.
-const mostKept = 1 << 17
 
 // Shortest finds a shortest way from start to goal. ok is false when there is none:
 // an end is not in the mesh, or the two are not connected, which is found without

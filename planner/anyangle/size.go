@@ -7,7 +7,7 @@ import (
 
 // MaxBytes is how much memory the cells and portals of a mesh may take, those of its lean
 // twin included: 512 MiB, and up to a fifth more for the room that growing lists leave. It is that
-// of five million cells of noise with one in twenty solid; as many cells of a hall take about a
+// of three and a half million cells of noise with one in twenty solid; as many cells of a hall take about a
 // hundredth. What would take more is refused with ErrTooLarge.
 const MaxBytes = 512 << 20
 

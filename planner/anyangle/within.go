@@ -2,6 +2,7 @@ package anyangle
 
 import (
 	"context"
+	"unsafe"
 
 	"example.com/wideberth/mapstore/geom"
 )
@@ -16,7 +17,7 @@ func (g *Mesh) ShortestWithin(ctx context.Context, start, goal geom.Point, mostU
 	s.most = mostUm + tieUm
 	defer func() {
 		s.g = nil // an idle search keeps no version alive
-		if max(cap(s.nodes), cap(s.roots)) <= mostKept {
+		if s.bytes() <= mostKept {
 			scratch.Put(s)
 		}
 	}()
@@ -30,4 +31,17 @@ func (g *Mesh) ShortestWithin(ctx context.Context, start, goal geom.Point, mostU
 	way.Expanded += lean.Expanded
 	way.Queued += lean.Queued
 	return way, ok && way.LengthUm <= s.most, err
+}
+
+// mostKept is how many bytes of memory a search may have for them to be kept for the next one.
+const mostKept = 32 << 20
+
+// bytes is about how much memory the search has.
+func (s *search) bytes() uintptr {
+	size := func(n int, one uintptr) uintptr { return uintptr(n) * one }
+	entries := cap(s.table.entries) + cap(s.table.spare) + cap(s.visited.entries) + cap(s.visited.spare)
+	return size(cap(s.nodes), unsafe.Sizeof(node{})) + size(cap(s.queue.items), unsafe.Sizeof(item{})) +
+		size(cap(s.roots), unsafe.Sizeof(root{})) + size(entries, unsafe.Sizeof(entry{})) +
+		size(cap(s.notes), unsafe.Sizeof(portalNote{})) + size(cap(s.cells)+cap(s.spare)+cap(s.best), 4) +
+		size(cap(s.base), unsafe.Sizeof(reached{}))
 }
