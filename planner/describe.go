@@ -230,25 +230,15 @@ func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
 	if ctx.Err() != nil {
 		return nil, context.Cause(ctx)
 	}
-	pts := t.points(o)
-	starts := o.legs()
-	r := &Route{Start: t.q.Start, Goal: t.q.Goal, SmallestUm: math.MaxInt64, Legs: make([]Leg, 0, len(starts)-1)}
-	for n := 1; n < len(starts); n++ {
-		l := t.leg(o, pts, starts[n-1], starts[n])
-		r.Legs = append(r.Legs, l)
-		r.DurationS += l.DurationS
-		if l.SmallestUm < r.SmallestUm {
-			r.SmallestUm, r.SmallestAt = l.SmallestUm, l.SmallestAt
-		}
-	}
-	r.LengthUm = pts[len(pts)-1].S
+	k := &record{tail: stock{bits: make([]bit, len(o.pieces))}}
+	t.j.Rewind()
 	for i := range o.pieces {
-		w := &o.pieces[i]
-		w.cost = t.cost(w)
-		r.CostUm += w.cost
+		k.tail.bits[i] = t.bit(&o.pieces[i])
 	}
+	t.toGoal(k)
+	r := t.assemble(k)
 	r.Bound = t.bound(c, r)
-	n.done(r)
+	t.noted(n, k, r)
 	return r, nil
 }
 
@@ -261,62 +251,106 @@ func (t *task) cost(w *piece) float64 {
 	return cost
 }
 
-// points are the route's points: the pieces' ends.
-func (t *task) points(o *outline) []RoutePoint {
-	n := len(o.pieces)
-	pts := make([]RoutePoint, n+1)
-	t.j.Rewind()
-	for i := range pts {
-		p := &pts[i]
-		if i < n {
-			w := &o.pieces[i]
-			p.At, p.Heading = w.a, bearing(w.a, w.b)
-			if w.a == w.b {
-				p.Heading = t.q.Start.Heading
-			}
-			p.SpeedCeiling, p.SpeedCause = t.ceiling(w.a, w.b, p.Heading)
-		} else {
-			p.At, p.Heading = o.pieces[n-1].b, t.q.Goal.Heading
-			p.SpeedCeiling, p.SpeedCause = t.ceiling(p.At, p.At, p.Heading)
-		}
-		if i > 0 {
-			p.S = pts[i-1].S + geom.Dist(pts[i-1].At, p.At)
-		}
-		p.ClearanceUm = t.roundedDown(t.j.Place(p.At).Um + roundingUm)
+// bit describes a piece.
+func (t *task) bit(w *piece) bit {
+	w.cost = t.cost(w)
+	b := bit{
+		piece: *w, at: RoutePoint{At: w.a, Heading: bearing(w.a, w.b)}, fresh: true,
+		long: geom.Dist(w.a, w.b), limit: t.w.rules.SpeedLimit(w.a, w.b), sensed: t.q.Body.SensingUm == 0,
 	}
-	return pts
+	if w.a == w.b {
+		b.at.Heading = t.q.Start.Heading
+	}
+	b.at.SpeedCeiling, b.at.SpeedCause = t.ceiling(w.a, w.b, b.at.Heading)
+	b.at.ClearanceUm = t.roundedDown(t.j.Place(w.a).Um + roundingUm)
+	return b
 }
 
-// leg describes the pieces from i up to k.
-func (t *task) leg(o *outline, pts []RoutePoint, i, k int) Leg {
-	l := Leg{Tight: o.pieces[i].tight(o.below), Points: pts[i : k+1 : k+1], LengthUm: pts[k].S - pts[i].S}
+// toGoal sets what is said of the goal.
+func (t *task) toGoal(k *record) {
+	at := k.bit(k.bits() - 1).b
+	k.near = t.j.Place(at)
+	k.goal = RoutePoint{At: at, Heading: t.q.Goal.Heading, ClearanceUm: t.roundedDown(k.near.Um + roundingUm)}
+	k.goal.SpeedCeiling, k.goal.SpeedCause = t.ceiling(at, at, k.goal.Heading)
+	k.ahead = t.aheadOf(k.goal)
+}
+
+// assemble makes a route of its bits.
+func (t *task) assemble(k *record) *Route {
+	below := float64(t.q.Options.TightBelowUm)
+	r := &Route{Start: t.q.Start, Goal: t.q.Goal, SmallestUm: math.MaxInt64}
+	n := k.bits()
+	pts := make([]RoutePoint, n+1)
+	along := 0.0
+	for i := range n {
+		b := k.bit(i)
+		pts[i] = b.at
+		pts[i].S = along
+		along += b.long
+		r.CostUm += b.cost
+	}
+	pts[n] = k.goal
+	pts[n].S = along
+	r.LengthUm = along
+	for i := 0; i < n; {
+		first := i
+		for i++; i < n && k.bit(i).tight(below) == k.bit(first).tight(below); i++ {
+		}
+		l := t.legOf(k, pts, first, i)
+		r.Legs = append(r.Legs, l)
+		r.DurationS += l.DurationS
+		if l.SmallestUm < r.SmallestUm {
+			r.SmallestUm, r.SmallestAt = l.SmallestUm, l.SmallestAt
+		}
+	}
+	return r
+}
+
+// legOf is the leg of the bits from i up to j.
+func (t *task) legOf(k *record, pts []RoutePoint, i, j int) Leg {
+	l := Leg{Tight: k.bit(i).tight(float64(t.q.Options.TightBelowUm)), Points: pts[i : j+1 : j+1], LengthUm: pts[j].S - pts[i].S}
 	l.SpeedCeiling, l.SpeedCause = t.q.Body.MaxSpeed, CauseBody
 	lower := func(v float64, c SpeedCause) {
 		if v < l.SpeedCeiling {
 			l.SpeedCeiling, l.SpeedCause = v, c
 		}
 	}
-	for n := i; n < k; n++ {
-		w := &o.pieces[n]
-		if long := geom.Dist(w.a, w.b); long > 0 {
-			l.DurationS += geom.Metres(long) / pts[n].SpeedCeiling
+	least := math.Inf(1)
+	for n := i; n < j; n++ {
+		b := k.bit(n)
+		if b.long > 0 {
+			l.DurationS += geom.Metres(b.long) / pts[n].SpeedCeiling
 		}
-		lower(t.w.rules.SpeedLimit(w.a, w.b), CauseZone)
-		l.BeyondSensing = l.BeyondSensing || t.beyondSensing(w.a, w.b)
+		lower(b.limit, CauseZone)
+		l.BeyondSensing = l.BeyondSensing || !b.sensed && t.beyondSensing(b.a, b.b)
+		least = min(least, b.near.Um)
 	}
-	for n := max(i, 1); n <= min(k, len(pts)-2); n++ {
+	for n := i; n < j && !l.BeyondSensing && t.q.Body.SensingUm <= t.w.field.Cap() && k.owns(n); n++ {
+		k.bit(n).sensed = true
+	}
+	for n := max(i, 1); n <= min(j, len(pts)-2); n++ {
 		lower(pts[n].SpeedCeiling, pts[n].SpeedCause)
 	}
-	n, least := o.narrowest(i, k)
-	w := &o.pieces[n]
+	at := j - 1 // as outline.narrowest
+	for k.bit(at).near.Um > least+roundingReach {
+		at--
+	}
+	b := k.bit(at)
 	l.SmallestUm = t.roundedDown(least + roundingUm)
-	l.SmallestAt, l.SmallestS = w.near.On, pts[n].S+geom.Dist(w.a, w.near.On)
-	if w.near.Feature != nil {
-		l.Nearest = w.near.Feature.Name
+	l.SmallestAt, l.SmallestS = b.near.On, pts[at].S+geom.Dist(b.a, b.near.On)
+	if b.near.Feature != nil {
+		l.Nearest = b.near.Feature.Name
+	}
+	left, right := b.left, b.right
+	if !b.roomed {
+		left = t.room(l.SmallestAt, b.at.Heading+math.Pi/2)
+		right = t.room(l.SmallestAt, b.at.Heading-math.Pi/2)
+		if k.owns(at) {
+			b.roomed, b.left, b.right = true, left, right
+		}
 	}
 	// Nothing is nearer than the smallest clearance, to either side.
-	l.LeftUm = max(l.SmallestUm, t.room(l.SmallestAt, pts[n].Heading+math.Pi/2))
-	l.RightUm = max(l.SmallestUm, t.room(l.SmallestAt, pts[n].Heading-math.Pi/2))
+	l.LeftUm, l.RightUm = max(l.SmallestUm, left), max(l.SmallestUm, right)
 	return l
 }
 

@@ -5,7 +5,6 @@ import (
 	"slices"
 	"unsafe"
 
-	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
 	"example.com/wideberth/planner/clearance"
 )
@@ -14,14 +13,14 @@ import (
 // about each of its pieces: head, and then the rest of tail, which it may share with the
 // record of the route before. It never changes.
 type record struct {
-	m     *floor.Map
-	q     Request
-	head  stock
-	tail  stock
-	from  cut        // where tail's rest begins
-	goal  RoutePoint // S is not kept
-	near  clearance.Nearest
-	ahead reach // what goal and near, what is nearest to it, depend on
+	digest [32]byte // of the version
+	q      Request
+	head   stock
+	tail   stock
+	from   cut        // where tail's rest begins
+	goal   RoutePoint // S is not kept
+	near   clearance.Nearest
+	ahead  reach // what goal and near, what is nearest to it, depend on
 }
 
 // stock are straight pieces in a row: strips, the parts of each, and the bits of those.
@@ -94,6 +93,9 @@ func (k *record) bit(i int) *bit {
 	}
 	return &k.tail.bits[i-len(k.head.bits)+k.from.bits]
 }
+
+// owns says whether bit i is this record's alone.
+func (k *record) owns(i int) bool { return i < len(k.head.bits) || len(k.head.bits) == 0 }
 
 // stripOf is the strip that a bit is of.
 func (k *record) stripOf(i int) int {
@@ -168,10 +170,9 @@ func (t *task) about(a, b geom.Point, ca, cb int64, far float64, stretches bool)
 
 // notes are what is taken down while a course is described.
 type notes struct {
-	t    *task
 	c    *course
-	o    *outline
 	base []piece // before points were added to legs
+	k    *record // but for its strips and parts
 	r    *Route
 }
 
@@ -181,13 +182,13 @@ func (t *task) noting(c *course, o *outline) *notes {
 	if t.session == nil || t.j.NeedUm == 0 || t.j.RadiusUm == 0 || len(c.pts) > mostRecorded {
 		return nil
 	}
-	return &notes{t: t, c: c, o: o, base: slices.Clone(o.pieces)}
+	return &notes{c: c, base: slices.Clone(o.pieces)}
 }
 
-// done takes down the route that the course became.
-func (n *notes) done(r *Route) {
+// noted takes down the route that the course became.
+func (t *task) noted(n *notes, k *record, r *Route) {
 	if n != nil {
-		n.r, n.t.notes = r, n
+		n.k, n.r, t.notes = k, r, n
 	}
 }
 
@@ -198,26 +199,21 @@ func (t *task) remember(r *Route) {
 	case t.retold != nil && t.retold.r == r:
 		t.session.last = t.retold.record
 	case t.notes != nil && t.notes.r == r:
-		t.session.last = t.notes.record()
+		t.session.last = t.record(t.notes)
 	default:
 		t.session.last = nil
 	}
 }
 
 // record is the route that was described; nil when it cannot be recorded.
-func (n *notes) record() *record {
-	t, o := n.t, n.o
-	if len(o.pieces) > mostRecorded {
+func (t *task) record(n *notes) *record {
+	k := n.k
+	s := &k.tail
+	if len(s.bits) > mostRecorded {
 		return nil
 	}
-	k := &record{m: t.w.m, q: t.q}
-	s := &k.tail
-	s.strips, s.parts, s.bits = make([]strip, 0, len(n.c.pts)-1), make([]part, 0, len(n.base)), make([]bit, 0, len(o.pieces))
-	var all []RoutePoint
-	for l := range n.r.Legs {
-		all = append(all[:max(0, len(all)-1)], n.r.Legs[l].Points...)
-	}
-	k.goal = all[len(all)-1]
+	k.q, k.digest = t.q, t.w.m.Digest()
+	s.strips, s.parts = make([]strip, 0, len(n.c.pts)-1), make([]part, 0, len(n.base))
 	t.j.Rewind()
 	base, f := n.base, 0
 	for j := 1; j < len(n.c.pts); j++ {
@@ -225,44 +221,22 @@ func (n *notes) record() *record {
 		if a == b { // stands still
 			return nil
 		}
-		s.strips = append(s.strips, strip{a: a, b: b, near: t.j.Place(a), first: cut{j - 1, len(s.parts), len(s.bits)}})
+		s.strips = append(s.strips, strip{a: a, b: b, near: t.j.Place(a), first: cut{j - 1, len(s.parts), f}})
 		for at := a; at != b; base = base[1:] {
 			if len(base) == 0 {
 				return nil
 			}
-			s.parts = append(s.parts, part{piece: base[0], bits: len(s.bits)})
+			s.parts = append(s.parts, part{piece: base[0], bits: f})
 			for ; at != base[0].b; f++ {
-				if f == len(o.pieces) || o.pieces[f].a == o.pieces[f].b {
+				if f == len(s.bits) || s.bits[f].a == s.bits[f].b {
 					return nil
 				}
-				w := &o.pieces[f]
-				s.bits = append(s.bits, bit{
-					piece: *w, strip: j - 1, fresh: true, at: all[f],
-					long: geom.Dist(w.a, w.b), limit: t.w.rules.SpeedLimit(w.a, w.b), sensed: t.q.Body.SensingUm == 0,
-				})
-				at = w.b
+				s.bits[f].strip = j - 1
+				at = s.bits[f].b
 			}
 		}
 	}
-	was := outline{t: t, below: o.below, pieces: n.base}
-	starts := was.legs()
-	for l := 1; l < len(starts); l++ {
-		i, _ := was.narrowest(starts[l-1], starts[l])
-		s.parts[i].marked = true
-	}
-	starts = o.legs()
-	for l := 1; l < len(starts); l++ {
-		leg := &n.r.Legs[l-1]
-		i, _ := o.narrowest(starts[l-1], starts[l])
-		b := &s.bits[i]
-		// Where it is no more than the smallest clearance it may have been less.
-		b.roomed, b.left, b.right = min(leg.LeftUm, leg.RightUm) > leg.SmallestUm, leg.LeftUm, leg.RightUm
-		if !leg.BeyondSensing && t.q.Body.SensingUm <= t.w.field.Cap() {
-			for f := starts[l-1]; f < starts[l]; f++ {
-				s.bits[f].sensed = true
-			}
-		}
-	}
+	t.mark(len(s.parts), len(s.parts), func(i int) *part { return &s.parts[i] })
 	for i := range s.strips {
 		next := k.goal.ClearanceUm
 		if end := s.end(i); end.bits < len(s.bits) {
@@ -270,7 +244,6 @@ func (n *notes) record() *record {
 		}
 		t.aim(s, i, next)
 	}
-	k.near, k.ahead = t.j.Place(k.goal.At), t.aheadOf(k.goal)
 	return k
 }
 

@@ -22,8 +22,7 @@ type Session struct {
 
 // Bytes is about how much memory the session holds: half a kilobyte for each point of the
 // route, and 32 KiB for each 64x64 cells that its search came into, more along the search's rim (see
-// package dstar). The version that the route was checked on is kept besides, which shares with
-// others what it has in common with them. 0 is a session that is worth nothing yet.
+// package dstar). It keeps no version's map in memory. 0 is a session that is worth nothing yet.
 func (s *Session) Bytes() int64 { return s.search.Bytes() + s.last.bytes() }
 
 // Release gives that memory back. The session is as new.
