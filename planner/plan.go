@@ -277,6 +277,7 @@ func (t *task) clearCells(ctx context.Context) (*course, error) {
 		}
 		n.free = t.w.masks.Mask(mask.Key{Um: j.NeedUm, RadiusUm: j.RadiusUm, Zones: true})
 		c, err := n.overCells(ctx)
+		j.Release()
 		t.search, t.shut = n.search, n.shut
 		if c != nil || err != nil {
 			return c, err

@@ -46,7 +46,9 @@ func (t *task) hurry(ctx context.Context) {
 	if t.quick(ctx) {
 		return
 	}
-	if n := t.twin(); t.q.Options.Roadmap == Auto {
+	if t.q.Options.Roadmap == Auto {
+		n := t.twin()
+		defer n.j.Release()
 		if c, err := n.overCells(ctx); err == nil && c != nil {
 			c.kind = AtMostRoadmapOptimum
 			t.stopgap = &stopgap{c: c}
@@ -59,7 +61,9 @@ func (t *task) quick(ctx context.Context) bool {
 	if _, ok := t.w.ways.meshes.peek(t.needed()); !ok || t.q.Options.KeepRoadmapPath || t.q.Options.Roadmap != Auto && t.q.Options.Roadmap != ConvexCells {
 		return false
 	}
-	c, _, err := t.twin().optimum(ctx)
+	n := t.twin()
+	defer n.j.Release()
+	c, _, err := n.optimum(ctx)
 	if err != nil || c == nil {
 		return false
 	}

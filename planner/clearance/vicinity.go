@@ -42,6 +42,7 @@ const mostGathered = 96
 // Gather makes v the vicinity of an area, in time proportional to the area's rows and to
 // what is solid in it. It says no when that is too much; the field is asked everything then.
 func (v *Vicinity) Gather(f *Field, area geom.Rect) bool {
+	v.Release() // else what is longer now than then would hold on to another version
 	v.f, v.area = f, area
 	v.boxes, v.pieces, v.areas = v.boxes[:0], v.pieces[:0], v.areas[:0]
 	if !v.gatherPieces() || !v.gatherCells() {
