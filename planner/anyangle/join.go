@@ -124,10 +124,11 @@ func (j *joiner) innerTurn(c *cut, l link, p pt) bool {
 	return bendable(j.wedge(c, l.a, p) + j.wedge(c, l.b, p))
 }
 
-// angleSlack tells a free angle of half a turn from a larger one, in radians. The
-// corners of a block are whole micrometres at most 6.4e8 µm apart, so a true bend is
-// at least 1.5e-9 (1 µm in 640 m); sums of a few atan2 are right to 1e-14.
-const angleSlack = 1e-10
+// angleSlack tells a free angle of half a turn from a larger one, in radians: sums of a few atan2
+// are right to 1e-14. Three corners on whole micrometres may be out of line by less than any slack,
+// but a ray that the middle one of them keeps off the last, of a block at most 1.3e9 µm wide, is
+// then so near to it, within minEpsUm, that the search takes it to see the last.
+const angleSlack = 5e-14
 
 // bendable says whether a way may bend at a point about which that angle is free.
 func bendable(free float64) bool { return free > math.Pi+angleSlack && free < 2*math.Pi-angleSlack }

@@ -287,3 +287,41 @@ func TestRoundedRowsStayConvex(t *testing.T) {
 		t.Error("no way on the second floor")
 	}
 }
+
+// TestSidesAllButAlongAnAxisAreFollowed goes along a side that is a millimetre in ten metres off
+// an axis, where a post's end cuts the cells beside it: their corners there, on whole micrometres,
+// bend the side by less than a billionth of a radian, and a ray that misses its end may not be lost.
+func TestSidesAllButAlongAnAxisAreFollowed(t *testing.T) {
+	const r = 60_000
+	rack := points(600_000, 3_000_000, 5_600_000, 3_000_500, 5_600_000, 5_000_000, 600_000, 5_000_000)
+	s, e := geom.Point{X: 5_750_000, Y: 3_300_000}, geom.Point{X: 300_000, Y: 3_300_000}
+	for k := range 4 {
+		turned := func(ps ...geom.Point) (out []geom.Point) {
+			for _, p := range ps {
+				if k&1 != 0 {
+					p.X = 6_500_000 - p.X
+				}
+				if k&2 != 0 {
+					p.X, p.Y = p.Y, p.X
+				}
+				out = append(out, p)
+			}
+			return out
+		}
+		shape := func(ring []geom.Point) floor.Shape { return floor.NewPolygon([][]geom.Point{turned(ring...)}, 0) }
+		ends := turned(s, e)
+		want, ok := checkPair(t, build(t, solids(t, 130, 130, nil, shape(rack)), r), ends[0], ends[1])
+		if !ok {
+			t.Fatal("no way")
+		}
+		for up := 5.0; up < 500; up += 31 {
+			y := 3_000_000 - 2*r + up
+			post := points(5_900_000, 2_000_000, 6_000_000, 2_000_000, 6_000_000, y, 5_900_000, y)
+			got, ok := checkPair(t, build(t, solids(t, 130, 130, nil, shape(rack), shape(post)), r), ends[0], ends[1])
+			// Corners of the two may be snapUm apart.
+			if !ok || math.Abs(got-want) > 20*snapUm {
+				t.Errorf("way round %d: %v µm with a post %v µm up, %v without", k, got, up, want)
+			}
+		}
+	}
+}
