@@ -72,6 +72,7 @@ func (w *walker) look(pts []geom.Point, need, most float64) {
 			break
 		}
 	}
+	clear(l.solids) // release does not see what lies past the end of fewer
 	l.solids = l.solids[:0]
 	for i := range w.solids {
 		if w.solids[i].apart(l.lo, l.hi) < reach {

@@ -44,6 +44,8 @@ const mostGathered = 96
 func (v *Vicinity) Gather(f *Field, area geom.Rect) bool {
 	v.Release() // else what is longer now than then would hold on to another version
 	v.f, v.area = f, area
+	clear(v.pieces) // Release does not see what lies past the end of fewer
+	clear(v.areas)
 	v.boxes, v.pieces, v.areas = v.boxes[:0], v.pieces[:0], v.areas[:0]
 	if !v.gatherPieces() || !v.gatherCells() {
 		v.area = geom.EmptyRect()
