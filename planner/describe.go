@@ -164,38 +164,6 @@ func rounded(p geom.Point) iter.Seq[geom.Point] {
 	}
 }
 
-// legs gives the index of each leg's first piece, and the number of pieces last.
-func (o *outline) legs() []int {
-	starts := make([]int, 1, 8)
-	for i := 1; i < len(o.pieces); i++ {
-		if o.pieces[i].tight(o.below) != o.pieces[i-1].tight(o.below) {
-			starts = append(starts, i)
-		}
-	}
-	return append(starts, len(o.pieces))
-}
-
-// narrowest is the piece of least clearance from piece i up to k, and that clearance. Of
-// pieces that differ by rounding alone it is the last: it stays ahead of a robot longest.
-func (o *outline) narrowest(i, k int) (best int, least float64) {
-	least = math.Inf(1)
-	for n := i; n < k; n++ {
-		least = min(least, o.pieces[n].near.Um)
-	}
-	for best = k - 1; o.pieces[best].near.Um > least+roundingReach; best-- {
-	}
-	return best, least
-}
-
-// markSmallest makes each leg's place of smallest clearance a point.
-func (o *outline) markSmallest() {
-	starts := o.legs()
-	for n := len(starts) - 1; n > 0; n-- {
-		i, _ := o.narrowest(starts[n-1], starts[n])
-		o.cut(i, o.pieces[i].near.On)
-	}
-}
-
 // space cuts pieces longer than most into equal parts.
 func (o *outline) space(most float64) {
 	for i := 0; i < len(o.pieces); i++ {
@@ -209,36 +177,84 @@ func (o *outline) space(most float64) {
 	}
 }
 
+// mark marks where clearance is smallest in each leg of n parts. Of parts that differ by rounding
+// alone it is the last: it stays ahead of a robot longest. It says no when parts from own on,
+// which others share, are marked otherwise, or the route would have too many points.
+func (t *task) mark(n, own int, at func(int) *part) bool {
+	below, long, legs := float64(t.q.Options.TightBelowUm), 0.0, 0
+	for i := 0; i < n; {
+		first := i
+		tight, least := at(i).tight(below), math.Inf(1)
+		for ; i < n && at(i).tight(below) == tight; i++ {
+			w := at(i)
+			least = min(least, w.near.Um)
+			long += geom.Dist(w.a, w.b)
+		}
+		legs++
+		last := i - 1
+		for at(last).near.Um > least+roundingReach {
+			last--
+		}
+		for f := first; f < i; f++ {
+			switch w := at(f); {
+			case f < own:
+				w.marked = f == last
+			case w.marked != (f == last):
+				return false
+			}
+		}
+	}
+	most := float64(t.q.Options.MaxSpacingUm)
+	return most == 0 || long/most+float64(n+legs) <= MaxRoutePoints
+}
+
+// split appends the bits of a part: cut where it is marked, and as the spacing asks.
+func (t *task) split(bits []bit, strip int, w *part) []bit {
+	most := t.q.Options.MaxSpacingUm
+	o := outline{t: t, below: float64(t.q.Options.TightBelowUm), pieces: append(t.spare[:0], w.piece)}
+	if w.marked {
+		o.cut(0, w.near.On)
+	}
+	if most > 0 {
+		o.space(float64(most))
+	}
+	for i := range o.pieces {
+		b := t.bit(&o.pieces[i])
+		b.strip = strip
+		bits = append(bits, b)
+	}
+	t.spare = o.pieces
+	return bits
+}
+
 // describe turns a course into a route.
 func (t *task) describe(ctx context.Context, c *course) (*Route, error) {
 	if !t.j.Surveyed() {
 		t.survey(c.pts)
 	}
-	o := t.outline(c.pts)
-	n := t.noting(c, o)
-	o.markSmallest()
-	if most := t.q.Options.MaxSpacingUm; most > 0 {
-		long := 0.0
-		for i := range o.pieces {
-			long += geom.Dist(o.pieces[i].a, o.pieces[i].b)
-		}
-		if long/float64(most)+float64(len(o.pieces)) > MaxRoutePoints {
-			return nil, &RequestError{"options.max_spacing_m", "the route would have more than 100000 points: want a wider spacing"}
-		}
-		o.space(float64(most))
+	k := &record{}
+	s := &k.tail
+	pieces := t.outline(c.pts).pieces
+	s.parts = make([]part, len(pieces))
+	for i, w := range pieces {
+		s.parts[i].piece = w
 	}
-	if ctx.Err() != nil {
-		return nil, context.Cause(ctx)
+	if !t.mark(len(s.parts), len(s.parts), func(i int) *part { return &s.parts[i] }) {
+		return nil, &RequestError{"options.max_spacing_m", "the route would have more than 100000 points: want a wider spacing"}
 	}
-	k := &record{tail: stock{bits: make([]bit, len(o.pieces))}}
 	t.j.Rewind()
-	for i := range o.pieces {
-		k.tail.bits[i] = t.bit(&o.pieces[i])
+	s.bits = make([]bit, 0, len(s.parts)+8)
+	for i := range s.parts {
+		if ctx.Err() != nil {
+			return nil, context.Cause(ctx)
+		}
+		s.parts[i].bits = len(s.bits)
+		s.bits = t.split(s.bits, 0, &s.parts[i])
 	}
 	t.toGoal(k)
 	r := t.assemble(k)
 	r.Bound = t.bound(c, r)
-	t.noted(n, k, r)
+	t.noted(c, k, r)
 	return r, nil
 }
 
@@ -331,7 +347,7 @@ func (t *task) legOf(k *record, pts []RoutePoint, i, j int) Leg {
 	for n := max(i, 1); n <= min(j, len(pts)-2); n++ {
 		lower(pts[n].SpeedCeiling, pts[n].SpeedCause)
 	}
-	at := j - 1 // as outline.narrowest
+	at := j - 1 // as task.mark
 	for k.bit(at).near.Um > least+roundingReach {
 		at--
 	}

@@ -47,6 +47,7 @@ type task struct {
 	past    *past    // what the session knows of the old route; nil for nothing
 	notes   *notes   // of the route described last, for the session
 	retold  *retold  // the route made of past last
+	spare   []piece  // scratch memory of split
 
 	stopgap *stopgap // what to answer when time runs out; nil for none
 	hasty   bool     // looks for a stopgap

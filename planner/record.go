@@ -2,7 +2,6 @@ package planner
 
 import (
 	"math"
-	"slices"
 	"unsafe"
 
 	"example.com/wideberth/mapstore/geom"
@@ -168,27 +167,18 @@ func (t *task) about(a, b geom.Point, ca, cb int64, far float64, stretches bool)
 	return reachOf(a, b, um+2*t.w.frame.Res+reachSlack)
 }
 
-// notes are what is taken down while a course is described.
+// notes are of a route that was described: its record, but for its strips.
 type notes struct {
-	c    *course
-	base []piece // before points were added to legs
-	k    *record // but for its strips and parts
-	r    *Route
+	c *course
+	k *record
+	r *Route
 }
 
-// noting is for a course about to be described; nil when there is no session to record it in,
+// noted takes down the route that a course became, unless there is no session to record it in,
 // or it cannot be recorded: what a point may do hangs on the ends of its route.
-func (t *task) noting(c *course, o *outline) *notes {
-	if t.session == nil || t.j.NeedUm == 0 || t.j.RadiusUm == 0 || len(c.pts) > mostRecorded {
-		return nil
-	}
-	return &notes{c: c, base: slices.Clone(o.pieces)}
-}
-
-// noted takes down the route that the course became.
-func (t *task) noted(n *notes, k *record, r *Route) {
-	if n != nil {
-		n.k, n.r, t.notes = k, r, n
+func (t *task) noted(c *course, k *record, r *Route) {
+	if t.session != nil && t.j.NeedUm > 0 && t.j.RadiusUm > 0 && len(k.tail.bits) <= mostRecorded {
+		t.notes = &notes{c, k, r}
 	}
 }
 
@@ -209,34 +199,23 @@ func (t *task) remember(r *Route) {
 func (t *task) record(n *notes) *record {
 	k := n.k
 	s := &k.tail
-	if len(s.bits) > mostRecorded {
-		return nil
-	}
 	k.q, k.digest = t.q, t.w.m.Digest()
-	s.strips, s.parts = make([]strip, 0, len(n.c.pts)-1), make([]part, 0, len(n.base))
+	s.strips = make([]strip, 0, len(n.c.pts)-1)
 	t.j.Rewind()
-	base, f := n.base, 0
+	p := 0
 	for j := 1; j < len(n.c.pts); j++ {
 		a, b := n.c.pts[j-1], n.c.pts[j]
 		if a == b { // stands still
 			return nil
 		}
-		s.strips = append(s.strips, strip{a: a, b: b, near: t.j.Place(a), first: cut{j - 1, len(s.parts), f}})
-		for at := a; at != b; base = base[1:] {
-			if len(base) == 0 {
-				return nil
-			}
-			s.parts = append(s.parts, part{piece: base[0], bits: f})
-			for ; at != base[0].b; f++ {
-				if f == len(s.bits) || s.bits[f].a == s.bits[f].b {
-					return nil
-				}
+		s.strips = append(s.strips, strip{a: a, b: b, near: t.j.Place(a), first: cut{j - 1, p, s.parts[p].bits}})
+		for at := a; at != b; p++ {
+			at = s.parts[p].b
+			for f, end := s.bitsOf(p); f < end; f++ {
 				s.bits[f].strip = j - 1
-				at = s.bits[f].b
 			}
 		}
 	}
-	t.mark(len(s.parts), len(s.parts), func(i int) *part { return &s.parts[i] })
 	for i := range s.strips {
 		next := k.goal.ClearanceUm
 		if end := s.end(i); end.bits < len(s.bits) {

@@ -90,53 +90,6 @@ func (t *task) follow(c *course) *record {
 	return k
 }
 
-// mark marks where clearance is smallest in each leg of n parts, as outline.markSmallest. It says
-// no when parts from own on, which others share, are marked otherwise, or the route would
-// have too many points.
-func (t *task) mark(n, own int, at func(int) *part) bool {
-	below, long := float64(t.q.Options.TightBelowUm), 0.0
-	for i := 0; i < n; {
-		first := i
-		tight, least := at(i).tight(below), math.Inf(1)
-		for ; i < n && at(i).tight(below) == tight; i++ {
-			w := at(i)
-			least = min(least, w.near.Um)
-			long += geom.Dist(w.a, w.b)
-		}
-		last := i - 1
-		for at(last).near.Um > least+roundingReach {
-			last--
-		}
-		for f := first; f < i; f++ {
-			switch w := at(f); {
-			case f < own:
-				w.marked = f == last
-			case w.marked != (f == last):
-				return false
-			}
-		}
-	}
-	most := float64(t.q.Options.MaxSpacingUm)
-	return most == 0 || long/most+float64(n) <= MaxRoutePoints
-}
-
-// split appends the bits of a part, described on this version.
-func (t *task) split(bits []bit, strip int, w *part) []bit {
-	o := outline{t: t, below: float64(t.q.Options.TightBelowUm), pieces: []piece{w.piece}}
-	if w.marked {
-		o.cut(0, w.near.On)
-	}
-	if most := t.q.Options.MaxSpacingUm; most > 0 {
-		o.space(float64(most))
-	}
-	for i := range o.pieces {
-		b := t.bit(&o.pieces[i])
-		b.strip = strip
-		bits = append(bits, b)
-	}
-	return bits
-}
-
 // recallGoal sets what is said of the goal, from what is known of it if that holds.
 func (t *task) recallGoal(k *record) {
 	if p := t.past; p.ahead.meets(p.boxes) {
