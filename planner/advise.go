@@ -32,6 +32,7 @@ func (w *World) Advise(s GuideSetup, r GuideReport) Hint {
 		return Hint{Explanation: why, SpeedCause: CauseRoom}
 	}
 	g := guide{w: w, s: &s, r: &r, j: judge.New(w.field, w.rules, s.Body.Required(), s.Body.RadiusUm)}
+	defer g.j.Release()
 	g.j.Ends = [2]geom.Point{r.Pose.At, s.Route[len(s.Route)-1]}
 	return g.hint()
 }

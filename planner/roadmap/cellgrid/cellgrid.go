@@ -84,6 +84,7 @@ func (c *Cells) Advance(ctx context.Context, f *clearance.Field, change floor.Ch
 // Search finds the shortest way over the roadmap; one-way zones are obeyed.
 func (c *Cells) Search(ctx context.Context, s, t geom.Point) (roadmap.Way, bool, error) {
 	j := judge.New(c.field, c.rules, c.need.ClearanceUm, c.need.ZoneUm)
+	defer j.Release()
 	j.Ends = [2]geom.Point{s, t}
 	var count search.Counters
 	leaves := c.kind == Quadtree

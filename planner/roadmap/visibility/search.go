@@ -62,6 +62,7 @@ type search struct {
 // The error is ctx's.
 func (g *Graph) Search(ctx context.Context, s, t geom.Point) (roadmap.Way, bool, error) {
 	j := g.judge()
+	defer j.Release()
 	j.Ends = [2]geom.Point{s, t}
 	if ctx.Err() != nil {
 		return roadmap.Way{}, false, ctx.Err()

@@ -163,6 +163,7 @@ func (g *Graph) Describe() roadmap.Description {
 	}
 	_ = g.Complete(context.Background()) // nothing ends it
 	j := g.judge()
+	defer j.Release()
 	for k := range g.links {
 		node := int32(k)
 		for _, l := range g.linksOf(node, j) {
