@@ -3,9 +3,9 @@ package anyangle
 // Stairs of raster cells, as slanting walls have them, grow into walls of round
 // teeth, whose every chord would cut the aisle before it. A way between two places
 // outside the notch between two teeth never enters it, as long as nothing pokes into it:
-// the notch lies behind a straight line. So there are two meshes: one of the
-// solids, and a lean one with such notches filled, for ways with both ends in it. So it is with
-// the notches over the gaps in a row of solids, too narrow to go through.
+// the notch lies behind a straight line. So it is with the notches over the gaps in a row of solids,
+// too narrow to go through. So there are two meshes: one of the solids, and a lean one with such
+// notches filled, for ways with both ends in it.
 
 // filling is a filled notch: the hull of two neighbouring corners' pieces, or what lies between
 // them, and its side over the notch.
@@ -59,7 +59,7 @@ func (s *steps) riser(x, y0, y1 int64, freeLeft bool) {
 // gaps are the notches over gaps between two corners, on one line along an axis and facing each
 // other, that are too narrow to go through: whatever lies between, the notch is shut off by the
 // line along what the two stand off. A gap that does not begin and end in the block of w x h is
-// not looked for.
+// not looked for; a notch's tip beyond the block's border stays, cut off from the rest.
 func (z *rasterizer) gaps(out []filling, w, h int64, free func(a, b pt) bool) []filling {
 	try := func(from cornerKey, level bool) {
 		begin, end := from.x, w

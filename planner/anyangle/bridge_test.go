@@ -10,7 +10,7 @@ import (
 	"example.com/wideberth/mapstore/geom"
 )
 
-// stairFloor has slanting shapes drawn as cells, and a few lone cells.
+// stairFloor has slanting shapes drawn as cells, rows of boxes, and a few lone cells.
 func stairFloor(t testing.TB, rng *rand.Rand, w, h int) *floor.Map {
 	f := newMask(w, h).floor(t, rng.IntN(3) == 0)
 	var edits []floor.Edit
@@ -24,6 +24,18 @@ func stairFloor(t testing.TB, rng *rand.Rand, w, h int) *floor.Map {
 	for range rng.IntN(6) {
 		x, y := rng.IntN(w), rng.IntN(h)
 		edits = append(edits, floor.Edit{Kind: floor.PaintRect, Fill: floor.Occupied, Rect: floor.CellRect{X0: x, Y0: y, X1: x + 1, Y1: y + 1}})
+	}
+	if rng.IntN(2) == 0 {
+		x, y, long, step := rng.IntN(w/2), rng.IntN(h/2), 1+rng.IntN(8), 2+rng.IntN(24)
+		for k := range 2 + rng.IntN(4) {
+			r := floor.CellRect{X0: x + k*step, Y0: y, X1: min(w, x+k*step+max(1, step/2)), Y1: y + long}
+			if step%2 == 0 {
+				r = floor.CellRect{X0: x, Y0: y + k*step, X1: x + long, Y1: min(h, y+k*step+max(1, step/2))}
+			}
+			if r.X0 < r.X1 && r.Y0 < r.Y1 {
+				edits = append(edits, floor.Edit{Kind: floor.PaintRect, Fill: floor.Occupied, Rect: r})
+			}
+		}
 	}
 	if rng.IntN(2) == 0 {
 		edits = append(edits, floor.Edit{Kind: floor.PutFeature, Feature: randomSolid(rng, "v", f.Bounds())})
