@@ -35,7 +35,7 @@ var lists spare.Shelf[about]
 // release gives the list's memory back, without what belongs to a version.
 func (l *about) release() {
 	l.reach = 0
-	clear(l.solids[:cap(l.solids)])
+	clear(l.solids)
 	lists.Put(l)
 }
 

@@ -42,7 +42,6 @@ const mostGathered = 96
 // Gather makes v the vicinity of an area, in time proportional to the area's rows and to
 // what is solid in it. It says no when that is too much; the field is asked everything then.
 func (v *Vicinity) Gather(f *Field, area geom.Rect) bool {
-	v.Release() // else what is longer now than then would hold on to another version
 	v.f, v.area = f, area
 	clear(v.pieces) // Release does not see what lies past the end of fewer
 	clear(v.areas)
