@@ -65,10 +65,10 @@
 // a version that is the same there. The others, and the new first piece, are judged, described
 // and checked. An answer in a session is the one without, to the last digit.
 //
-// Measured, for a body of 0.45 m half its way through a hall of 1024 by 1024 cells, after a
-// change of 1 m² (means of the best of 20; two processors with much else to do): a plan 30 µs,
-// a kept route that nothing changed near 7.4 µs, a third of it for judging and checking the new
-// first piece; straight to the goal, where all is new, 10 µs either way.
+// Measured, for a body of 0.45 m half its way, after a change of 1 m² (means of the better of four;
+// BenchmarkReplanVsPlan): in a hall of 1024 by 1024 cells a plan 30 µs, a kept route 9 to 12 µs;
+// 4096 by 4096 cells, 150 to 250 µs and 11 to 25 µs; an office, 110 µs and 17 µs. Straight to the
+// goal all of a route is new, and a replan costs what a plan does.
 //
 // # Which structure answers what
 //
@@ -102,29 +102,41 @@
 // One-way zones are no part of meshes, edges or regions: a goal they shut off is found out by
 // searching all cells that can be reached.
 //
-// Measured, milliseconds for one plan, the best of 40 on a machine with much else to do; the
-// hall has 2400 by 1600 cells, the route is 77 to 89 m, 10,000 nodes of the mesh or 255,000
+// Measured, milliseconds for one plan, the best of 100 on two processors; the
+// hall has 2400 by 1600 cells, the route is 77 to 89 m, 400 nodes of the mesh or 255,000
 // cells are opened. First is with nothing made yet for such a body on that version,
-// which Advance spares the next one: 50 ms for all structures of this table together
+// which Advance spares the next one: 31 ms for all structures of this table together
 // after a change of 1 m².
 //
 //	                                  again   first
-//	shortest, any angle               2.8     610
-//	balanced                          2.4     1,500
-//	clearest                          8.2     700, the graph being there
-//	no passage, with its gate         0.02    960, the graph without zones being made
-//	shortest, 8-connected grid        34      200
-//	shortest, quadtree                38      80
+//	shortest, any angle               0.27    110
+//	balanced                          0.30    330
+//	clearest                          5.0     420
+//	no passage, with its gate         0.01    680
+//	shortest, 8-connected grid        24      36
+//	shortest, quadtree                39      50
 //
 // As halls grow, with the same 8 rows of racks crossed, a plan costs the same; making a version
 // ready from scratch costs its area, a patch what it changes (BenchmarkPlanAsHallGrows, body
 // of 0.45 m, medians of 60 plans, each the best of five; two processors):
 //
 //	cells          shortest   balanced   world built   first plan   push and first plan   heap
-//	1 million      0.47 ms    0.32 ms    27 ms         7 ms         1.6 ms                5 MB
-//	4 million      0.49 ms    0.43 ms    63 ms         22 ms        1.7 ms                21 MB
-//	16 million     0.38 ms    0.47 ms    225 ms        78 ms        4.1 ms                84 MB
-//	64 million     0.47 ms    0.44 ms    821 ms        382 ms       6.1 ms                332 MB
+//	1 million      0.15 ms    0.12 ms    21 ms         8 ms         0.9 ms                6 MB
+//	4 million      0.15 ms    0.14 ms    43 ms         24 ms        1.5 ms                22 MB
+//	16 million     0.15 ms    0.13 ms    186 ms        100 ms       1.5 ms                87 MB
+//	64 million     0.14 ms    0.13 ms    605 ms        472 ms       3.2 ms                349 MB
+//
+// Against A* over an array of the same cells, how many times as fast whole plans for shortest
+// are (BenchmarkShortestVsGridAStar; body of 0.45 m, a point on maze and random):
+//
+//	                              each in its turn   taking turns   median plan
+//	rack hall, 1024²              104 to 119         58 to 61       0.09 ms
+//	the same turned by 7°         39                 30             0.26 ms
+//	the same turned, as cells     25 to 30           20 to 23       0.35 ms
+//	rack hall, 4096²              178 to 183         153 to 156     0.67 ms
+//	office of rooms, 1024²        50                 37             0.33 ms
+//	maze, 512²                    5.2                4.9            2.5 ms
+//	one cell in five solid, 512²  1.1                1.0            1.7 ms
 //
 // The classical roadmaps (classic.go, package roadmap and those below it) are there to be
 // seen, compared and named; they are kept apart, brought up to date in the background, and
@@ -137,7 +149,7 @@
 // stands; ends.go joins ends to cells, gate.go and bottleneck.go explain refusals, stopgap.go
 // answers in time, describe.go makes legs and points, replan.go keeps or replaces old routes,
 // session.go keeps what stands behind an answer for the next one: record.go the route, which
-// retell.go takes up, and package dstar a named grid's search;
+// recall.go looks things up in and retell.go takes up, and package dstar a named grid's search;
 // advise.go guides, classic.go asks the classical roadmaps. Beneath: internal/judge decides exactly and says what a metre costs,
 // internal/touch knows points, internal/mask holds free cells, internal/roadmap searches,
 // internal/pull straightens, internal/rules knows the zones.
