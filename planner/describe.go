@@ -359,8 +359,8 @@ func (t *task) legOf(k *record, pts []RoutePoint, i, j int) Leg {
 	}
 	left, right := b.left, b.right
 	if !b.roomed {
-		left = t.room(l.SmallestAt, b.at.Heading+math.Pi/2)
-		right = t.room(l.SmallestAt, b.at.Heading-math.Pi/2)
+		left = t.room(&b.near, b.at.Heading+math.Pi/2)
+		right = t.room(&b.near, b.at.Heading-math.Pi/2)
 		if k.owns(at) {
 			b.roomed, b.left, b.right = true, left, right
 		}
@@ -370,9 +370,19 @@ func (t *task) legOf(k *record, pts []RoutePoint, i, j int) Leg {
 	return l
 }
 
-// room is the free width from p along a direction, at most the floor's cap.
-func (t *task) room(p geom.Point, heading float64) int64 {
-	return t.roundedDown(t.w.travel(t.j, p, heading, 0, t.w.field.Cap()))
+// asideUm is how far beside a ray, in micrometres, a place may be computed that is on it.
+const asideUm = 1e-3
+
+// room is the free width from a place of clearance n along a direction, at most the floor's
+// cap: mostly, to one side, it ends at what is nearest.
+func (t *task) room(n *clearance.Nearest, heading float64) int64 {
+	if x, y := n.At.X-n.On.X, n.At.Y-n.On.Y; n.Feature != nil || n.Border || n.Cell {
+		ux, uy := math.Cos(heading), math.Sin(heading)
+		if float64(ux*x)+float64(uy*y) > 0 && math.Abs(float64(ux*y)-float64(uy*x)) <= asideUm {
+			return t.roundedDown(n.Um + roundingUm)
+		}
+	}
+	return t.roundedDown(t.w.travel(t.j, n.On, heading, 0, t.w.field.Cap()))
 }
 
 // bound says how good a route is. Its lower bound is the straight distance.
