@@ -112,6 +112,12 @@ func TestShortestFromBesideASlantingWall(t *testing.T) {
 	}
 }
 
+// isOneWay says whether a one-way zone has that name.
+func (s *scene) isOneWay(name string) bool {
+	f, ok := s.m.Feature(name)
+	return ok && f.Kind == floor.OneWayZone
+}
+
 // No plain grid, straightened, does better than the optimum at the same clearance plus
 // what the optimum is within.
 func TestLaw7ShortestIsShortest(t *testing.T) {
@@ -133,6 +139,11 @@ func TestLaw7ShortestIsShortest(t *testing.T) {
 				continue
 			}
 			if a.Route == nil {
+				// The optimum may go against a one-way zone, and cells, which are asked then, may miss
+				// a narrow way past it that the wider body's optimum takes by itself.
+				if b := a.Refusal.Bottleneck; b != nil && sc.isOneWay(b.Zone) {
+					continue
+				}
 				t.Fatalf("refused, with more clearance there is a way: %+v", a.Refusal)
 			}
 			if k := a.Route.Bound.Kind; k == planner.AnyAngleOptimum || k == planner.Straight {
