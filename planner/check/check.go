@@ -280,19 +280,31 @@ func (w *walker) cells(a, b geom.Point, reach float64) float64 {
 func (w *walker) any(row, c0, c1 int) bool {
 	const size = floor.BlockSize
 	for bx := c0 / size; bx <= c1/size; bx++ {
-		word := w.block(bx, row/size)[row%size]
-		if skip := c0 - bx*size; skip > 0 {
-			word >>= skip
-			word <<= skip
-		}
-		if over := bx*size + size - 1 - c1; over > 0 {
-			word <<= over
-		}
-		if word != 0 {
+		if w.block(bx, row/size)[row%size]&columns(bx, c0, c1) != 0 {
 			return true
 		}
 	}
 	return false
+}
+
+// columns are the bits of a row of block bx from column c0 to c1.
+func columns(bx, c0, c1 int) uint64 {
+	const size = floor.BlockSize
+	mask := uint64(math.MaxUint64)
+	if skip := c0 - bx*size; skip > 0 {
+		mask = mask >> skip << skip
+	}
+	if over := bx*size + size - 1 - c1; over > 0 {
+		mask = mask << over >> over
+	}
+	return mask
+}
+
+// firstRun is where the first run of set bits is and how long it is, and the bits after it.
+func firstRun(word uint64) (from, n int, rest uint64) {
+	from = bits.TrailingZeros64(word)
+	n = bits.TrailingZeros64(^(word >> from))
+	return from, n, word &^ ((math.MaxUint64 >> (floor.BlockSize - n)) << from)
 }
 
 // row looks at the solid cells of a row from column c0 to c1. From x0 to x1 is the part of ab
@@ -305,17 +317,10 @@ func (w *walker) row(a, b geom.Point, row, c0, c1 int, x0, x1, gap, best float64
 		if blk == &empty {
 			continue
 		}
-		word := blk[row%size]
-		if skip := c0 - bx*size; skip > 0 {
-			word = word >> skip << skip
-		}
-		if over := bx*size + size - 1 - c1; over > 0 {
-			word = word << over >> over
-		}
+		word := blk[row%size] & columns(bx, c0, c1)
 		for word != 0 { // by runs of cells that make one box
-			from := bits.TrailingZeros64(word)
-			n := bits.TrailingZeros64(^(word >> from))
-			word &^= (math.MaxUint64 >> (size - n)) << from
+			var from, n int
+			from, n, word = firstRun(word)
 			l := w.lo.X + float64(bx*size+from)*w.h
 			r := l + float64(n)*w.h
 			if side := max(0, l-x1, x0-r); side*side+gap*gap >= best*best {

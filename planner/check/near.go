@@ -2,7 +2,6 @@ package check
 
 import (
 	"math"
-	"math/bits"
 
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/mapstore/geom"
@@ -93,13 +92,7 @@ func (w *walker) list(l *about, reach float64) bool {
 	r0, r1 := cell(l.lo.Y-reach, w.lo.Y, w.s.Rows), cell(l.hi.Y+reach, w.lo.Y, w.s.Rows)
 	for bx := c0 / size; bx <= c1/size; bx++ {
 		left := w.lo.X + float64(bx*size)*w.h
-		mask := uint64(math.MaxUint64)
-		if skip := c0 - bx*size; skip > 0 {
-			mask = mask >> skip << skip
-		}
-		if over := bx*size + size - 1 - c1; over > 0 {
-			mask = mask << over >> over
-		}
+		mask := columns(bx, c0, c1)
 		open, was := len(l.boxes), uint64(0)
 		for row := r0; row <= r1; {
 			blk := w.block(bx, row/size)
@@ -112,9 +105,8 @@ func (w *walker) list(l *about, reach float64) bool {
 				l.end(open, y)
 				open, was = len(l.boxes), word
 				for word != 0 {
-					from := bits.TrailingZeros64(word)
-					n := bits.TrailingZeros64(^(word >> from))
-					word &^= (math.MaxUint64 >> (size - n)) << from
+					var from, n int
+					from, n, word = firstRun(word)
 					if len(l.boxes) == mostListed {
 						return false
 					}

@@ -3,7 +3,6 @@ package check
 import (
 	"fmt"
 	"math"
-	"math/bits"
 	"slices"
 
 	"example.com/wideberth/mapstore/floor"
@@ -168,17 +167,10 @@ func (w *walker) cellsAbout(a, b geom.Point, do func(x0, y0, x1, y1 float64)) {
 			if blk == &empty {
 				continue
 			}
-			word := blk[r%floor.BlockSize]
-			if skip := first - bx*floor.BlockSize; skip > 0 {
-				word = word >> skip << skip
-			}
-			if over := bx*floor.BlockSize + floor.BlockSize - 1 - last; over > 0 {
-				word = word << over >> over
-			}
+			word := blk[r%floor.BlockSize] & columns(bx, first, last)
 			for word != 0 {
-				from := bits.TrailingZeros64(word)
-				n := bits.TrailingZeros64(^(word >> from))
-				word &^= (math.MaxUint64 >> (floor.BlockSize - n)) << from
+				var from, n int
+				from, n, word = firstRun(word)
 				x0 := w.lo.X + float64(bx*floor.BlockSize+from)*w.h
 				x1 := x0 + float64(n)*w.h
 				if boxDistance(x0, y, x1, y+w.h, a, b) <= SlackUm {
