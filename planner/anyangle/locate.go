@@ -36,20 +36,15 @@ func (g *Mesh) locate(out []at, p geom.Point, tolerance float64) []at {
 
 // holds says whether a cell holds (x, y), give or take tolerance along x and y.
 func (c *cut) holds(id int32, x, y, tolerance float64) bool {
-	v := y
+	u, v := x, y // as the cut has them
 	if c.turned {
-		v = x
+		u, v = y, x
 	}
 	if k := &c.cells[id]; v < float64(k.lo)-tolerance || v > float64(k.hi)+tolerance {
 		return false
 	}
 	if t := c.triangleOf(id); t != nil {
-		lo, hi := t.bounds(c.turned)
-		across := x
-		if c.turned {
-			across = y
-		}
-		if across < float64(lo.x)-tolerance || across > float64(hi.x)+tolerance {
+		if lo, hi := t.bounds(c.turned); u < float64(lo.x)-tolerance || u > float64(hi.x)+tolerance {
 			return false
 		}
 		for i, a := range t {
@@ -61,23 +56,20 @@ func (c *cut) holds(id int32, x, y, tolerance float64) bool {
 		}
 		return true
 	}
-	if c.turned {
-		x, y = y, x
-	}
 	rows := c.rowsOf(id)
 	k := 1
-	for k < len(rows)-1 && y > float64(rows[k].y) {
+	for k < len(rows)-1 && v > float64(rows[k].y) {
 		k++
 	}
 	if k >= len(rows) {
-		return x >= float64(rows[0].l)-tolerance && x <= float64(rows[0].r)+tolerance
+		return u >= float64(rows[0].l)-tolerance && u <= float64(rows[0].r)+tolerance
 	}
 	a, b := rows[k-1], rows[k]
-	t := (y - float64(a.y)) / float64(b.y-a.y)
+	t := (v - float64(a.y)) / float64(b.y-a.y)
 	t = min(max(t, 0), 1)
 	l := float64(a.l) + float64(float64(b.l-a.l)*t)
 	r := float64(a.r) + float64(float64(b.r-a.r)*t)
-	return x >= l-tolerance && x <= r+tolerance
+	return u >= l-tolerance && u <= r+tolerance
 }
 
 // covers says, exactly, whether a cell holds (x, y).

@@ -148,14 +148,8 @@ func (j *Judge) vicinity(a, b geom.Point) *clearance.Vicinity {
 	if m.focus.Holds(a, b) {
 		return &m.focus
 	}
-	for k := m.askNear; k < min(m.runs, m.askNear+2); k++ {
-		if m.near[k].Holds(a, b) {
-			m.askNear = k
-			return &m.near[k]
-		}
-	}
-	for k := max(0, m.askNear-1); k < m.askNear; k++ {
-		if m.near[k].Holds(a, b) {
+	for _, k := range [3]int{m.askNear, m.askNear + 1, m.askNear - 1} {
+		if k >= 0 && k < m.runs && m.near[k].Holds(a, b) {
 			m.askNear = k
 			return &m.near[k]
 		}
