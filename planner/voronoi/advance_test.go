@@ -11,30 +11,11 @@ import (
 	"example.com/wideberth/mapstore/floor"
 	"example.com/wideberth/planner/anyangle"
 	"example.com/wideberth/planner/clearance"
+	"example.com/wideberth/planner/internal/testfloor"
 )
 
 func randomEdits(rng *rand.Rand, f *floor.Map) []floor.Edit {
-	s := f.Settings()
-	var out []floor.Edit
-	for range 1 + rng.IntN(3) {
-		switch rng.IntN(4) {
-		case 0, 1:
-			x, y := rng.IntN(s.Columns), rng.IntN(s.Rows)
-			out = append(out, paint(x, y, min(s.Columns, x+1+rng.IntN(8)), min(s.Rows, y+1+rng.IntN(8)), floor.Occupancy(rng.IntN(3))))
-		default:
-			ft := randomSolid(rng, string(rune('a'+rng.IntN(5))), f.Bounds())
-			if rng.IntN(3) == 0 && ft.Shape.Kind == floor.Polygon {
-				ft.Kind, ft.ToleranceUm, ft.Shape.Grow = floor.ClosedZone, 0, 0
-			}
-			out = append(out, floor.Edit{Kind: floor.PutFeature, Feature: ft})
-		}
-	}
-	for ft := range f.Features() {
-		if rng.IntN(12) == 0 {
-			return []floor.Edit{{Kind: floor.RemoveFeature, Name: ft.Name}}
-		}
-	}
-	return out
+	return testfloor.EditsOf(rng, f, randomSolid)
 }
 
 // sameRoads says what differs between two versions' roads; "" for nothing.

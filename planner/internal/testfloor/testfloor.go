@@ -150,7 +150,10 @@ func Random(t testing.TB, rng *rand.Rand, w, h int) *floor.Map {
 
 // Edits are a few random edits of a floor: cells painted, solids and closed zones put,
 // features removed.
-func Edits(rng *rand.Rand, m *floor.Map) []floor.Edit {
+func Edits(rng *rand.Rand, m *floor.Map) []floor.Edit { return EditsOf(rng, m, RandomSolid) }
+
+// EditsOf is Edits with solids of another making.
+func EditsOf(rng *rand.Rand, m *floor.Map, solid func(*rand.Rand, string, geom.Rect) *floor.Feature) []floor.Edit {
 	s := m.Settings()
 	var out []floor.Edit
 	for range 1 + rng.IntN(3) {
@@ -159,7 +162,7 @@ func Edits(rng *rand.Rand, m *floor.Map) []floor.Edit {
 			x, y := rng.IntN(s.Columns), rng.IntN(s.Rows)
 			out = append(out, Paint(x, y, min(s.Columns, x+1+rng.IntN(8)), min(s.Rows, y+1+rng.IntN(8)), floor.Occupancy(rng.IntN(3))))
 		default:
-			ft := RandomSolid(rng, string(rune('a'+rng.IntN(5))), m.Bounds())
+			ft := solid(rng, string(rune('a'+rng.IntN(5))), m.Bounds())
 			if rng.IntN(3) == 0 && ft.Shape.Kind == floor.Polygon {
 				ft.Kind, ft.ToleranceUm, ft.Shape.Grow = floor.ClosedZone, 0, 0
 			}
